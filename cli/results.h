@@ -1,0 +1,151 @@
+/* Everything a run finds out, ready to be written down: what the CSV and JSON writers, the report, the audit and the
+ * screen summary read. Not for computing: pipeline.c fills it, nothing else changes it.
+ * Times in seconds since the recording's first frame; arrays are GArray of the struct named beside them. */
+#pragma once
+
+#include <glib.h>
+#include <stdbool.h>
+#include <stdint.h>
+
+#include "calib/units.h"
+#include "physics/trail.h"
+
+typedef struct { /* one row of paths.csv */
+    unsigned droplet;
+    int64_t frame;
+    uint8_t field;       /* interlaced: 0 first, 1 second field in time */
+    bool seen;           /* measured, not bridged */
+    double time_s;
+    double x_px, y_px;   /* stored pixels; the measurement itself where seen */
+    double u_x_px, u_y_px;
+    double x_mm, y_mm;   /* x across gravity, y along it */
+    double smooth_x_px, smooth_y_px, u_smooth_x_px, u_smooth_y_px; /* fixed-interval smoother */
+    double snr;
+} RfPathRow;
+
+typedef struct { /* one row of segments.csv: a droplet in one field state without interruption */
+    unsigned droplet, segment;
+    double start_s, end_s;
+    RfFieldState field;
+    double voltage_V;      /* signed: top against bottom */
+    RfValue fall_mm_s, drift_mm_s;
+    unsigned frames;
+} RfSegmentRow;
+
+typedef struct { /* one row of switches.csv */
+    unsigned number;
+    RfValue time_s;
+    RfFieldState from, to;
+    unsigned droplets;     /* how many tell of it */
+    double log_time_s;     /* on the log's own clock */
+    bool has_log_time;
+} RfSwitchRow;
+
+typedef struct { /* one row of steps.csv */
+    unsigned droplet;
+    RfValue time_s;
+    RfValue before_C, after_C;
+    double whole_multiples_p; /* chance of a step this far from whole multiples of the unit; -1: not tested */
+} RfStepRow;
+
+typedef struct { /* one row of droplets.csv: one spell of constant charge */
+    unsigned droplet, spell;
+    double start_s, end_s;
+    unsigned frames;
+    RfValue fall_mm_s;       /* field-off speed v_g, random part */
+    RfValue radius_um;
+    RfValue charge_C;        /* sigma: everything */
+    double u_random_C;       /* the part that is this droplet's own */
+    bool has_charge;         /* false: no field was ever on */
+    RfValue radius_fall_um, radius_spread_um; /* the radius seen twice; sigma 0: not available */
+    double radius_agreement_p;
+    int units;
+    bool has_units;          /* probability >= 0.95 */
+    double units_probability;
+    bool accepted;
+    char *reason;            /* why set aside; "" if accepted */
+    double median_snr;
+} RfDropletRow;
+
+typedef struct {
+    bool found;
+    double px_per_mm_x, px_per_mm_y, u_px_per_mm_x, u_px_per_mm_y;
+    double rotation_deg;
+    unsigned lines_found;
+    double residual_px;
+    char *source;            /* "reticle.png" or "the recording's own background" */
+} RfScaleRow;
+
+typedef struct { /* one line of the uncertainty budget of the charge, for a typical accepted droplet */
+    char *input;             /* "plate gap" */
+    char *stated;            /* "6.000(10) mm" */
+    double relative_u;       /* of the input */
+    double charge_relative_u;     /* JCGM 100 */
+    double charge_relative_u_mc;  /* JCGM 101; negative: not computed */
+    bool is_common;          /* shared by all droplets */
+} RfBudgetRow;
+
+typedef struct {
+    bool resolved;
+    RfValue unit_C;          /* valid if resolved; sigma with the common part */
+    double u_random_C;
+    char *reason;            /* why not resolved, or what supports it */
+    double chance;           /* that charges without a common unit would look as good */
+    GArray *curve_unit_C;    /* double: trial units */
+    GArray *curve_log_likelihood; /* double: relative to the best */
+} RfUnitResult;
+
+typedef struct { /* one row of audit.csv */
+    unsigned entry;
+    char *label;
+    unsigned droplet;        /* 0: none matched */
+    RfValue hand_time_s, tracked_time_s;
+    bool has_tracked;
+    double difference_s, en_number;
+    const char *finding;     /* static: as in the contract */
+    char *evidence;          /* in words, with the frames to look at */
+    double match_confidence;
+    double start_s;          /* where in the recording to look */
+} RfAuditRow;
+
+typedef struct { /* a setting as it was used, for report and summary.json */
+    char *group, *key, *value;
+    bool is_default;
+    char *remark;            /* where a default comes from */
+} RfUsedSetting;
+
+typedef struct { /* an input file and its digest */
+    char *role, *path, *sha256;
+} RfInputFile;
+
+typedef struct {
+    char *sheet_path;
+    GArray *inputs;          /* RfInputFile */
+    GArray *settings;        /* RfUsedSetting */
+    GArray *notes;           /* RfUsedSetting: the sheet's [notes], word for word */
+    GPtrArray *warnings;     /* char* */
+
+    int width, height;
+    double pixel_aspect;
+    int64_t frames;
+    double duration_s;
+    char *recording_summary; /* "640 x 480, H.264, 30 frames/s, 60.0 s" */
+    double gravity_axis_deg; /* from the picture's +y towards its -x: camera roll found */
+
+    GArray *paths;           /* RfPathRow, by droplet, then time */
+    GArray *segments;        /* RfSegmentRow */
+    GArray *switches;        /* RfSwitchRow */
+    GArray *steps;           /* RfStepRow */
+    GArray *droplets;        /* RfDropletRow */
+    GArray *budget;          /* RfBudgetRow */
+    GArray *audit;           /* RfAuditRow; empty when no timings were given */
+    RfScaleRow scale;
+    RfUnitResult unit;
+    GBytes *view_png;        /* the background with the paths drawn over it, or NULL */
+    bool measured;           /* false: ran, but nothing could be measured (exit 3) */
+    char *verdict;           /* one sentence */
+} RfResults;
+
+RfResults *rf_results_new(void);
+void rf_results_free(RfResults *results);
+G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfResults, rf_results_free)
