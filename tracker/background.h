@@ -1,0 +1,58 @@
+/* The fixed part of the picture, and how noisy it is: learned once from frames spread over the recording,
+ * then only read. Not for droplets: what moves is left out by a per-pixel median, what stays (reticle,
+ * numerals, dust, hot pixels) is part of it. Levels are grey levels of the file's bit depth; images are row
+ * after row, no padding. */
+#pragma once
+
+#include "tracker/frame.h"
+#include "tracker/sightings.h"
+
+#include <glib.h>
+
+/* Frames kept for learning: copies, so the reader may go on. */
+typedef struct RfPictureSample RfPictureSample;
+
+/*  pixel_aspect  > 0: width of a stored pixel over its height */
+RfPictureSample *rf_picture_sample_new(double pixel_aspect);
+void rf_picture_sample_free(RfPictureSample *sample);
+G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfPictureSample, rf_picture_sample_free)
+
+/* How many frames of this size are worth keeping (8..60; at most 128 MB in all). Spread them evenly. */
+unsigned rf_picture_sample_capacity(const RfFrame *frame);
+/* Copies the frame. Fails where its size, bit depth or interlacing differs from the first one's. */
+bool rf_picture_sample_add(RfPictureSample *sample, const RfFrame *frame, GError **error);
+unsigned rf_picture_sample_frames(const RfPictureSample *sample);
+/* (borrowed until the sample is freed) frame `i` in the order of adding */
+const RfFrame *rf_picture_sample_frame(const RfPictureSample *sample, unsigned i);
+double rf_picture_sample_pixel_aspect(const RfPictureSample *sample);
+
+typedef enum {
+    RF_PIXEL_LINE = 1 << 0, /* something dark of the reticle (line, numeral) lies here */
+    RF_PIXEL_BAD = 1 << 1, /* hot, dead or flickering pixel, or a small bright speck: left out of every fit */
+} RfPixelFlags;
+
+/* Variance of one pixel: read_var + photon_var_per_level * max(0, level - black_level), grey levels squared.
+ */
+typedef struct {
+    double read_var, photon_var_per_level, black_level;
+} RfPixelNoise;
+
+typedef struct {
+    int width, height, bit_depth;
+    double pixel_aspect;
+    bool is_interlaced, is_top_field_first;
+    bool is_moving;          /* the camera moves: `level` is in the reference picture's place */
+    double saturation_level; /* at or above: the pixel tells nothing */
+    RfPixelNoise noise;
+    float *level;          /* the reference picture */
+    float *transmission;   /* (0, 1]: what reticle lines leave of the light, also of a droplet's */
+    uint8_t *flags;        /* RfPixelFlags; LINE in the reference picture's place */
+    uint8_t *sensor_flags; /* RF_PIXEL_BAD at stored pixels: bad pixels stay with the sensor when the camera
+                              moves */
+} RfBackground;
+
+/* Needs 8 frames or more. The reference picture of a moving camera is that of the sample's middle frame. */
+RfBackground *rf_background_learn(const RfPictureSample *sample, GError **error);
+void rf_background_free(RfBackground *background);
+G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfBackground, rf_background_free)
+double rf_pixel_noise_var(const RfPixelNoise *noise, double level);
