@@ -1,0 +1,3 @@
+#include "physics/physics_error.h"
+
+G_DEFINE_QUARK(rf - physics - error - quark, rf_physics_error)
