@@ -1,0 +1,99 @@
+/* The run sheet: a key file becomes one validated struct in SI units. Not for using it: pipeline.c does.
+ *
+ * Anything wrong with a sheet is an RF_SETTINGS_ERROR that begins `sheet.ini: line 12: [cell] plate_gap: ` and says what was seen
+ * and what would do. GKeyFile merges repeated groups and keys in silence and stops at a byte-order mark, so the text is
+ * looked through line by line before GKeyFile sees it. Loading doesn't touch the recording; small tables that the sheet
+ * names for a thermistor are read, all other files only resolved. */
+#pragma once
+
+#include <glib.h>
+#include <stdbool.h>
+
+#include "calib/length_scale.h"
+#include "calib/picture_frame.h"
+#include "calib/units.h"
+#include "physics/trail.h"
+
+typedef enum {
+    RF_SETTINGS_ERROR_FILE,    /* can't be read, isn't a key file, a group or key that is repeated */
+    RF_SETTINGS_ERROR_UNKNOWN, /* group or key that doesn't exist */
+    RF_SETTINGS_ERROR_MISSING, /* needed, not there */
+    RF_SETTINGS_ERROR_VALUE,   /* wrong form, dimension, or impossible */
+} RfSettingsError;
+
+#define RF_SETTINGS_ERROR (rf_settings_error_quark())
+GQuark rf_settings_error_quark(void);
+
+typedef struct {
+    bool is_set;
+    RfValue v;
+} RfMaybeValue;
+
+/* Text that stands in the sheet as it is: notes and names of shared inputs. */
+typedef struct {
+    char *key, *value;
+} RfSheetText;
+
+typedef struct {
+    char *path; /* of the sheet, as given */
+
+    /* [recording] */
+    GPtrArray *videos; /* char*: resolved paths, in order; at least one */
+    RfMaybeValue start_s, stop_s;
+    RfMaybeValue frame_rate_hz;
+    char *timings, *review;     /* resolved paths or NULL */
+    RfGravityDirection gravity; /* meaningless if finds_gravity */
+    bool finds_gravity;
+
+    /* [reticle] */
+    char *reticle_image; /* resolved path or NULL: the recording's own background */
+    RfValue spacing_m;
+    RfReticleLines lines;
+    RfValue plane_ratio; /* unitless */
+
+    /* [cell]: gravity as a value, or from latitude and height, or neither */
+    RfValue plate_gap_m;
+    RfMaybeValue gravity_m_s2;
+    RfMaybeValue latitude_rad, height_m;
+
+    /* [oil] */
+    RfValue density_kg_m3;
+    RfMaybeValue density_at_kelvin, density_slope_kg_m3_kelvin; /* both or neither */
+
+    /* [air]: the temperature is that of the thermistor where the sheet gives a resistance */
+    RfValue temperature_kelvin;
+    bool is_thermistor;
+    RfMaybeValue resistance_ohm;
+    RfValue pressure_pa;
+    RfValue humidity; /* unitless, 0..1 */
+
+    /* [supply]: voltages are magnitudes */
+    RfMaybeValue voltage_V, voltage_top_plus_V, voltage_top_minus_V; /* at least one unless there is a log */
+    RfFieldState states[3]; /* in the order in which they first occur */
+    unsigned n_states;      /* 0: not given, only with a log */
+    char *log;              /* resolved path or NULL */
+
+    /* [analysis] */
+    char *slip;               /* kim-2005 ... one-term: one of the contract's words */
+    RfMaybeValue slip_b_pa_m; /* set if and only if slip is one-term */
+    char *viscosity_law;      /* iso-15900, us-1976, or NULL where a value is given */
+    RfMaybeValue viscosity_pa_s;
+
+    GArray *shared; /* RfSheetText: [shared], input -> name of the one measurement */
+    GArray *notes;  /* RfSheetText: [notes], word for word */
+    GArray *used;   /* RfUsedSetting (cli/results.h): every key in force, defaults marked and explained */
+} RfSettings;
+
+/* (returns new), or NULL with the reason. Safe from any thread. */
+RfSettings *rf_settings_load(const char *path, GError **error);
+/* The same from text; relative paths resolve against `path`'s folder. */
+RfSettings *rf_settings_parse(const char *text, size_t length, const char *path, GError **error);
+void rf_settings_free(RfSettings *settings);
+G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfSettings, rf_settings_free)
+
+/* Magnitude of the voltage in a state: the polarity's own if the sheet gives one, else `voltage`; {0, 0} when off. False: a log must
+ * say, the sheet doesn't. */
+bool rf_settings_voltage(const RfSettings *settings, RfFieldState state, RfValue *voltage_V);
+
+/* The sheet's own manual: every group and key with its unit, default and one sentence. (returns new) */
+char *rf_settings_help(void);
