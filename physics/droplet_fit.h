@@ -1,0 +1,102 @@
+/* One droplet's radius, charges and noise from its path, by joint maximum likelihood over all field states.
+ * Not for finding switches or steps (field_timeline.h, charge_step.h); both are taken as given.
+ *
+ * Model: along gravity the speed is v(V) = v_g(a) + q V/(k(a) d), across it a constant; diffusion D = k_B T/k(a) on
+ * both axes (Stokes-Einstein, A. Einstein, Ann. Phys. 17 (1905) 549, with the slip of the same law); one free noise
+ * parameter per axis. The radius is thus seen twice, in the fall and in the spread. Charges and the drift are
+ * integrated out with flat priors (restricted likelihood), which keeps D unbiased in short paths. Sigma is from the
+ * observed information; rf_droplet_fit_profile checks it. */
+#pragma once
+
+#include <stdbool.h>
+#include <stddef.h>
+
+#include "calib/units.h"
+#include "physics/common_drift.h"
+#include "physics/field_timeline.h"
+#include "physics/medium.h"
+#include "physics/path_likelihood.h"
+#include "physics/trail.h"
+
+enum { RF_DROPLET_SPELLS_MAX = 32, RF_DROPLET_SAMPLES_MIN = 12 };
+
+/* Inputs shared by all droplets, for the budget. */
+typedef enum {
+    RF_INPUT_SCALE, /* metres per metre, both axes */
+    RF_INPUT_PLATE_GAP,
+    RF_INPUT_VOLTAGE,
+    RF_INPUT_OIL_DENSITY,
+    RF_INPUT_AIR_DENSITY,
+    RF_INPUT_VISCOSITY,
+    RF_INPUT_MEAN_FREE_PATH,
+    RF_INPUT_SLIP,        /* Cc - 1 as a whole */
+    RF_INPUT_TEMPERATURE, /* through k_B T only; its way through viscosity is the caller's */
+    RF_INPUT_GRAVITY,
+    RF_INPUTS
+} RfInput;
+
+const char *rf_droplet_fit_input_to_string(RfInput input);
+
+typedef struct {
+    const RfMedium *medium;          /* (borrowed) */
+    const RfFieldTimeline *timeline; /* (borrowed) or NULL: no field ever */
+    const RfCommonDrift *drift;      /* (borrowed) or NULL */
+    const double *step_s; /* (borrowed) instants at which this droplet's charge changed, ascending */
+    size_t steps;         /* < RF_DROPLET_SPELLS_MAX */
+    RfNoiseMemory fall_memory, across_memory;
+} RfDropletModel;
+
+typedef enum {
+    RF_FIT_DONE,
+    RF_FIT_TOO_SHORT, /* fewer than RF_DROPLET_SAMPLES_MIN samples */
+    RF_FIT_NO_MAXIMUM, /* likelihood without an inner maximum: not a falling Brownian sphere of 0.02 to 20 um */
+} RfFitState;
+
+const char *rf_droplet_fit_state_to_string(RfFitState state);
+
+typedef struct {
+    double start_s, end_s; /* first and last sample in it, cut by steps */
+    size_t samples;
+    double on_s;            /* watched with a field on */
+    bool has_charge;        /* some field in it */
+    RfValue charge_coulomb; /* signed; sigma: random part */
+    RfValue speed_per_volt_m_s_v;
+    double charge_slope_coulomb[RF_INPUTS]; /* d charge/d ln(input) with the data fixed */
+} RfSpellFit;
+
+typedef struct {
+    RfFitState state; /* the rest holds only when done */
+    RfValue radius_m, fall_m_s, across_m_s, diffusion_m2_s;
+    RfValue fall_extra_variance_m2, across_extra_variance_m2;
+    double radius_slope[RF_INPUTS]; /* d ln(radius)/d ln(input) */
+    RfValue radius_fall_m;     /* from the speed alone; sigma 0: not seen (too uncertain, or not falling) */
+    RfValue radius_spread_m;   /* from the diffusion alone; sigma 0: not seen */
+    double radius_agreement_p; /* chance of a difference at least this large; 1 where either is not seen */
+    double log_likelihood;
+    size_t spells;
+    RfSpellFit spell[RF_DROPLET_SPELLS_MAX];
+} RfDropletFit;
+
+/* Pure; safe from any thread with its own arguments. */
+void rf_droplet_fit(const RfTrail *trail, const RfDropletModel *model, RfDropletFit *fit);
+
+/* The interval in which the log-likelihood, maximised over all else, is within 1/2 of its top: 68 % for ln(radius). */
+bool rf_droplet_fit_profile_radius(const RfTrail *trail, const RfDropletModel *model, const RfDropletFit *fit,
+                                   double *low_m, double *high_m);
+
+/* The best that anyone could do (Cramer-Rao), for planning. */
+typedef struct {
+    double radius_m, charge_coulomb;
+    double off_s, on_s, voltage_v, frame_rate_hz;
+    double u_position_m; /* localisation, its size taken as unknown */
+} RfObservationPlan;
+
+typedef struct {
+    double u_charge_joint_coulomb,
+        u_charge_speeds_coulomb; /* radius from fall and spread; from the fall alone */
+    double u_radius_joint_m, u_radius_speeds_m;
+    double fall_m_s, on_speed_m_s;
+} RfAttainable;
+
+void rf_droplet_fit_attainable(const RfObservationPlan *plan, const RfMedium *medium,
+                               RfAttainable *attainable);

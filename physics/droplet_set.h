@@ -1,0 +1,37 @@
+/* All droplets of one recording: timeline, common drift, memory of the noise, fits, steps; each helped by the others.
+ * Not for the common inputs' uncertainty (the budget), nor for the unit. */
+#pragma once
+
+#include <glib.h>
+
+#include "physics/charge_step.h"
+
+/* Calls work(context, i) for each i below n, in any order, perhaps from several threads; returns when all are done. */
+typedef void (*RfForEach)(void *user, size_t n, void (*work)(void *context, size_t i), void *context);
+
+typedef struct {
+    const RfMedium *medium;    /* (borrowed) */
+    const RfFieldSheet *sheet; /* (borrowed) */
+    RfForEach for_each;        /* or NULL: one after another */
+    void *for_each_user;
+} RfDropletSetSettings;
+
+typedef struct {
+    RfDropletFit fit;
+    GArray *steps; /* RfChargeStep */
+} RfDropletResult;
+
+typedef struct {
+    RfFieldTimeline *timeline;
+    RfCommonDrift *drift;
+    RfNoiseMemory fall_memory, across_memory;
+    size_t n;
+    RfDropletResult *droplets; /* n, in the order of the trails */
+} RfDropletSet;
+
+/*   trails       n > 0, each numbered
+ *   returns new, or NULL with error (a log that can't be matched) */
+RfDropletSet *rf_droplet_set_measure(const RfTrail *trails, size_t n, const RfDropletSetSettings *settings,
+                                     GError **error);
+void rf_droplet_set_free(RfDropletSet *set);
+G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfDropletSet, rf_droplet_set_free)
