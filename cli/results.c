@@ -1,0 +1,88 @@
+#include "cli/results.h"
+
+static void setting_clear(void *item)
+{
+    RfUsedSetting *setting = item;
+    g_free(setting->group);
+    g_free(setting->key);
+    g_free(setting->value);
+    g_free(setting->remark);
+}
+
+static void input_clear(void *item)
+{
+    RfInputFile *input = item;
+    g_free(input->role);
+    g_free(input->path);
+    g_free(input->sha256);
+}
+
+static void droplet_clear(void *item)
+{
+    g_free(((RfDropletRow *)item)->reason);
+}
+
+static void budget_clear(void *item)
+{
+    RfBudgetRow *row = item;
+    g_free(row->input);
+    g_free(row->stated);
+}
+
+static void audit_clear(void *item)
+{
+    RfAuditRow *row = item;
+    g_free(row->label);
+    g_free(row->evidence);
+}
+
+static GArray *rows(size_t size, GDestroyNotify clear)
+{
+    GArray *array = g_array_new(FALSE, TRUE, (guint)size);
+    if (clear) g_array_set_clear_func(array, clear);
+    return array;
+}
+
+RfResults *rf_results_new(void)
+{
+    RfResults *results = g_new0(RfResults, 1);
+    results->inputs = rows(sizeof(RfInputFile), input_clear);
+    results->settings = rows(sizeof(RfUsedSetting), setting_clear);
+    results->notes = rows(sizeof(RfUsedSetting), setting_clear);
+    results->warnings = g_ptr_array_new_with_free_func(g_free);
+    results->pixel_aspect = 1;
+    results->paths = rows(sizeof(RfPathRow), NULL);
+    results->segments = rows(sizeof(RfSegmentRow), NULL);
+    results->switches = rows(sizeof(RfSwitchRow), NULL);
+    results->steps = rows(sizeof(RfStepRow), NULL);
+    results->droplets = rows(sizeof(RfDropletRow), droplet_clear);
+    results->budget = rows(sizeof(RfBudgetRow), budget_clear);
+    results->audit = rows(sizeof(RfAuditRow), audit_clear);
+    results->unit.curve_unit_C = rows(sizeof(double), NULL);
+    results->unit.curve_log_likelihood = rows(sizeof(double), NULL);
+    return results;
+}
+
+/* The caller may have put other arrays, or none, in place of those that new made. */
+static void free_array(GArray *array)
+{
+    if (array) g_array_unref(array);
+}
+
+void rf_results_free(RfResults *results)
+{
+    if (!results) return;
+    GArray *arrays[] = {results->inputs, results->settings,          results->notes,
+                        results->paths,  results->segments,          results->switches,
+                        results->steps,  results->droplets,          results->budget,
+                        results->audit,  results->unit.curve_unit_C, results->unit.curve_log_likelihood};
+    for (size_t i = 0; i < G_N_ELEMENTS(arrays); i++) free_array(arrays[i]);
+    if (results->warnings) g_ptr_array_unref(results->warnings);
+    if (results->view_png) g_bytes_unref(results->view_png);
+    g_free(results->sheet_path);
+    g_free(results->recording_summary);
+    g_free(results->scale.source);
+    g_free(results->unit.reason);
+    g_free(results->verdict);
+    g_free(results);
+}

@@ -1,0 +1,269 @@
+#include "cli/write_csv.h"
+
+#include <math.h>
+#include <string.h>
+
+#include "cli/tally.h"
+#include "cli/text_number.h"
+
+/* Digits behind the point. Places to 1e-4 px, a thousandth of the best localisation; millimetres to match at any
+ * usual magnification; charges as six digits behind the point, a ten-thousandth of e at 100 e. */
+enum {
+    TIME = 6,
+    PLACE_PX = 4,
+    PLACE_MM = 7,
+    SPEED = 6,
+    RADIUS = 5,
+    VOLTS = 3,
+    RATIO = 3,
+    CHANCE = 6,
+    EXPONENT = 6
+};
+
+static void fixed(GString *out, double value, int decimals)
+{
+    rf_text_number_append_fixed(out, value, decimals);
+    g_string_append_c(out, ',');
+}
+
+static void fixed_if(GString *out, bool present, double value, int decimals)
+{
+    if (present) rf_text_number_append_fixed(out, value, decimals);
+    g_string_append_c(out, ',');
+}
+
+static void exponent(GString *out, double value)
+{
+    rf_text_number_append_exponent(out, value, EXPONENT);
+    g_string_append_c(out, ',');
+}
+
+static void exponent_if(GString *out, bool present, double value)
+{
+    if (present) rf_text_number_append_exponent(out, value, EXPONENT);
+    g_string_append_c(out, ',');
+}
+
+static void whole(GString *out, int64_t value)
+{
+    char text[24];
+    size_t at = sizeof text;
+    uint64_t rest = value < 0 ? -(uint64_t)value : (uint64_t)value;
+    text[--at] = ',';
+    do {
+        text[--at] = (char)('0' + rest % 10);
+        rest /= 10;
+    } while (rest);
+    if (value < 0) text[--at] = '-';
+    g_string_append_len(out, text + at, (gssize)(sizeof text - at));
+}
+
+/* RFC 4180, 2.6 and 2.7. */
+static void words(GString *out, const char *text)
+{
+    if (!text) text = "";
+    if (!strpbrk(text, ",\"\r\n")) {
+        g_string_append(out, text);
+    } else {
+        g_string_append_c(out, '"');
+        for (const char *c = text; *c; c++) {
+            if (*c == '"') g_string_append_c(out, '"');
+            g_string_append_c(out, *c);
+        }
+        g_string_append_c(out, '"');
+    }
+    g_string_append_c(out, ',');
+}
+
+/* Every cell ends in a comma; the last one of a row becomes the end of the line. */
+static void end_row(GString *out)
+{
+    out->str[out->len - 1] = '\n';
+}
+
+static GString *table(const char *header, size_t rows, size_t row_bytes)
+{
+    GString *out = g_string_sized_new(strlen(header) + rows * row_bytes + 1);
+    g_string_append(out, header);
+    return out;
+}
+
+static void path_row(GString *out, const RfPathRow *row)
+{
+    whole(out, row->droplet);
+    whole(out, row->frame);
+    fixed(out, row->time_s, TIME);
+    fixed(out, row->x_px, PLACE_PX);
+    fixed(out, row->y_px, PLACE_PX);
+    fixed(out, sqrt((row->u_x_px * row->u_x_px + row->u_y_px * row->u_y_px) / 2), PLACE_PX);
+    fixed(out, row->x_mm, PLACE_MM);
+    fixed(out, row->y_mm, PLACE_MM);
+    whole(out, row->seen);
+    whole(out, row->field);
+    fixed(out, row->u_x_px, PLACE_PX);
+    fixed(out, row->u_y_px, PLACE_PX);
+    fixed(out, row->smooth_x_px, PLACE_PX);
+    fixed(out, row->smooth_y_px, PLACE_PX);
+    fixed(out, row->u_smooth_x_px, PLACE_PX);
+    fixed(out, row->u_smooth_y_px, PLACE_PX);
+    fixed(out, row->snr, RATIO);
+    end_row(out);
+}
+
+GString *rf_write_csv_paths(const RfResults *results)
+{
+    GString *out = table("droplet,frame,time_s,x_px,y_px,u_px,x_mm,y_mm,seen,field,u_x_px,u_y_px,"
+                         "smooth_x_px,smooth_y_px,u_smooth_x_px,u_smooth_y_px,snr\n",
+                         results->paths->len, 144);
+    for (guint i = 0; i < results->paths->len; i++)
+        path_row(out, &g_array_index(results->paths, RfPathRow, i));
+    return out;
+}
+
+GString *rf_write_csv_segments(const RfResults *results)
+{
+    GString *out = table("droplet,segment,start_s,end_s,field,voltage_V,fall_mm_s,u_fall_mm_s,drift_mm_s,"
+                         "u_drift_mm_s,frames\n",
+                         results->segments->len, 96);
+    for (guint i = 0; i < results->segments->len; i++) {
+        const RfSegmentRow *row = &g_array_index(results->segments, RfSegmentRow, i);
+        whole(out, row->droplet);
+        whole(out, row->segment);
+        fixed(out, row->start_s, TIME);
+        fixed(out, row->end_s, TIME);
+        words(out, rf_tally_field_to_string(row->field));
+        fixed(out, row->voltage_V, VOLTS);
+        fixed(out, row->fall_mm_s.value, SPEED);
+        fixed(out, row->fall_mm_s.sigma, SPEED);
+        fixed(out, row->drift_mm_s.value, SPEED);
+        fixed(out, row->drift_mm_s.sigma, SPEED);
+        whole(out, row->frames);
+        end_row(out);
+    }
+    return out;
+}
+
+GString *rf_write_csv_switches(const RfResults *results)
+{
+    GString *out = table("switch,time_s,u_time_s,from,to,droplets,log_time_s\n", results->switches->len, 48);
+    for (guint i = 0; i < results->switches->len; i++) {
+        const RfSwitchRow *row = &g_array_index(results->switches, RfSwitchRow, i);
+        whole(out, row->number);
+        fixed(out, row->time_s.value, TIME);
+        fixed(out, row->time_s.sigma, TIME);
+        words(out, rf_tally_field_to_string(row->from));
+        words(out, rf_tally_field_to_string(row->to));
+        whole(out, row->droplets);
+        fixed_if(out, row->has_log_time, row->log_time_s, TIME);
+        end_row(out);
+    }
+    return out;
+}
+
+GString *rf_write_csv_steps(const RfResults *results)
+{
+    GString *out = table("droplet,time_s,u_time_s,charge_before_C,charge_after_C,u_charge_before_C,"
+                         "u_charge_after_C,whole_multiples_p\n",
+                         results->steps->len, 96);
+    for (guint i = 0; i < results->steps->len; i++) {
+        const RfStepRow *row = &g_array_index(results->steps, RfStepRow, i);
+        whole(out, row->droplet);
+        fixed(out, row->time_s.value, TIME);
+        fixed(out, row->time_s.sigma, TIME);
+        exponent(out, row->before_C.value);
+        exponent(out, row->after_C.value);
+        exponent(out, row->before_C.sigma);
+        exponent(out, row->after_C.sigma);
+        fixed_if(out, row->whole_multiples_p >= 0, row->whole_multiples_p, CHANCE);
+        end_row(out);
+    }
+    return out;
+}
+
+static void droplet_row(GString *out, const RfDropletRow *row)
+{
+    whole(out, row->droplet);
+    whole(out, row->spell);
+    fixed(out, row->start_s, TIME);
+    fixed(out, row->end_s, TIME);
+    whole(out, row->frames);
+    fixed(out, row->fall_mm_s.value, SPEED);
+    fixed(out, row->fall_mm_s.sigma, SPEED);
+    fixed(out, row->radius_um.value, RADIUS);
+    fixed(out, row->radius_um.sigma, RADIUS);
+    exponent_if(out, row->has_charge, row->charge_C.value);
+    exponent_if(out, row->has_charge, row->charge_C.sigma);
+    exponent_if(out, row->has_charge, row->u_random_C);
+    if (row->has_units)
+        whole(out, row->units);
+    else
+        g_string_append_c(out, ',');
+    words(out, row->accepted ? "accepted" : "set aside");
+    words(out, row->reason);
+    fixed_if(out, row->has_charge, row->units_probability, CHANCE);
+    const bool from_fall = row->radius_fall_um.sigma > 0, from_spread = row->radius_spread_um.sigma > 0;
+    fixed_if(out, from_fall, row->radius_fall_um.value, RADIUS);
+    fixed_if(out, from_fall, row->radius_fall_um.sigma, RADIUS);
+    fixed_if(out, from_spread, row->radius_spread_um.value, RADIUS);
+    fixed_if(out, from_spread, row->radius_spread_um.sigma, RADIUS);
+    fixed_if(out, from_fall && from_spread, row->radius_agreement_p, CHANCE);
+    fixed(out, row->median_snr, RATIO);
+    end_row(out);
+}
+
+GString *rf_write_csv_droplets(const RfResults *results)
+{
+    GString *out =
+        table("droplet,spell,start_s,end_s,frames,fall_mm_s,u_fall_mm_s,radius_um,u_radius_um,charge_C,"
+              "u_charge_C,u_random_C,units,verdict,reason,units_probability,radius_fall_um,"
+              "u_radius_fall_um,radius_spread_um,u_radius_spread_um,radius_agreement_p,median_snr\n",
+              results->droplets->len, 240);
+    for (guint i = 0; i < results->droplets->len; i++)
+        droplet_row(out, &g_array_index(results->droplets, RfDropletRow, i));
+    return out;
+}
+
+GString *rf_write_csv_audit(const RfResults *results)
+{
+    GString *out = table("entry,droplet,hand_time_s,tracked_time_s,difference_s,en_number,finding,label,"
+                         "u_hand_time_s,u_tracked_time_s,match_confidence,start_s,evidence\n",
+                         results->audit->len, 160);
+    for (guint i = 0; i < results->audit->len; i++) {
+        const RfAuditRow *row = &g_array_index(results->audit, RfAuditRow, i);
+        whole(out, row->entry);
+        if (row->droplet)
+            whole(out, row->droplet);
+        else
+            g_string_append_c(out, ',');
+        fixed(out, row->hand_time_s.value, TIME);
+        fixed_if(out, row->has_tracked, row->tracked_time_s.value, TIME);
+        fixed_if(out, row->has_tracked, row->difference_s, TIME);
+        fixed_if(out, row->has_tracked, row->en_number, RATIO);
+        words(out, row->finding);
+        words(out, row->label);
+        fixed(out, row->hand_time_s.sigma, TIME);
+        fixed_if(out, row->has_tracked, row->tracked_time_s.sigma, TIME);
+        fixed(out, row->match_confidence, CHANCE);
+        fixed_if(out, row->has_tracked, row->start_s, TIME);
+        words(out, row->evidence);
+        end_row(out);
+    }
+    return out;
+}
+
+GString *rf_write_csv_budget(const RfResults *results)
+{
+    GString *out = table("input,stated,relative_u,charge_relative_u,charge_relative_u_mc,common\n",
+                         results->budget->len, 80);
+    for (guint i = 0; i < results->budget->len; i++) {
+        const RfBudgetRow *row = &g_array_index(results->budget, RfBudgetRow, i);
+        words(out, row->input);
+        words(out, row->stated);
+        exponent(out, row->relative_u);
+        exponent(out, row->charge_relative_u);
+        exponent_if(out, row->charge_relative_u_mc >= 0, row->charge_relative_u_mc);
+        whole(out, row->is_common);
+        end_row(out);
+    }
+    return out;
+}

@@ -1,0 +1,17 @@
+/* The tables of the result folder as text: results -> string, nothing else. RFC 4180 quoting, lines end in '\n', the
+ * decimal sign is a point in every locale, and every column has a fixed number of digits, so that the same results
+ * give the same bytes. An empty cell means "not there". All functions return a new string. */
+#pragma once
+
+#include <glib.h>
+
+#include "cli/results.h"
+
+GString *rf_write_csv_paths(const RfResults *results);
+GString *rf_write_csv_segments(const RfResults *results);
+GString *rf_write_csv_switches(const RfResults *results);
+GString *rf_write_csv_steps(const RfResults *results);
+GString *rf_write_csv_droplets(const RfResults *results);
+GString *rf_write_csv_audit(const RfResults *results);
+/* input, stated, relative_u, charge_relative_u, charge_relative_u_mc, common (1 shared by all droplets, 0 not) */
+GString *rf_write_csv_budget(const RfResults *results);

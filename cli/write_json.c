@@ -1,0 +1,159 @@
+#include "cli/write_json.h"
+
+#include <json-glib/json-glib.h>
+#include <math.h>
+
+#include "cli/tally.h"
+#include "cli/version.h"
+
+/* JSON has no word for what is not a number: such a value is null. */
+static void number(JsonBuilder *json, const char *key, double value)
+{
+    json_builder_set_member_name(json, key);
+    if (isfinite(value))
+        json_builder_add_double_value(json, value);
+    else
+        json_builder_add_null_value(json);
+}
+
+static void number_if(JsonBuilder *json, const char *key, bool present, double value)
+{
+    number(json, key, present ? value : (double)NAN);
+}
+
+static void whole(JsonBuilder *json, const char *key, int64_t value)
+{
+    json_builder_set_member_name(json, key);
+    json_builder_add_int_value(json, value);
+}
+
+static void truth(JsonBuilder *json, const char *key, bool value)
+{
+    json_builder_set_member_name(json, key);
+    json_builder_add_boolean_value(json, value);
+}
+
+/* JSON is UTF-8: a path or note in another encoding is carried over with the odd bytes marked. */
+static void words(JsonBuilder *json, const char *key, const char *text)
+{
+    if (key) json_builder_set_member_name(json, key);
+    if (!text) {
+        json_builder_add_null_value(json);
+        return;
+    }
+    g_autofree char *valid = g_utf8_make_valid(text, -1);
+    json_builder_add_string_value(json, valid);
+}
+
+static char *finish(JsonBuilder *json)
+{
+    json_builder_end_object(json);
+    g_autoptr(JsonNode) root = json_builder_get_root(json);
+    g_autofree char *text = json_to_string(root, TRUE);
+    return g_strconcat(text, "\n", NULL);
+}
+
+char *rf_write_json_scale(const RfResults *results)
+{
+    const RfScaleRow *scale = &results->scale;
+    g_autoptr(JsonBuilder) json = json_builder_new_immutable();
+    json_builder_begin_object(json);
+    number_if(json, "px_per_mm_x", scale->found, scale->px_per_mm_x);
+    number_if(json, "px_per_mm_y", scale->found, scale->px_per_mm_y);
+    number_if(json, "u_px_per_mm_x", scale->found, scale->u_px_per_mm_x);
+    number_if(json, "u_px_per_mm_y", scale->found, scale->u_px_per_mm_y);
+    number_if(json, "rotation_deg", scale->found, scale->rotation_deg);
+    whole(json, "lines_found", scale->lines_found);
+    number_if(json, "residual_px", scale->found, scale->residual_px);
+    words(json, "source", scale->source);
+    return finish(json);
+}
+
+static void unit(JsonBuilder *json, const RfUnitResult *found)
+{
+    number_if(json, "unit_charge_C", found->resolved, found->unit_C.value);
+    number_if(json, "u_unit_charge_C", found->resolved, found->unit_C.sigma);
+    truth(json, "unit_resolved", found->resolved);
+    words(json, "unit_reason", found->reason);
+    number_if(json, "u_random_unit_charge_C", found->resolved, found->u_random_C);
+    number(json, "unit_chance", found->chance);
+}
+
+static void recording(JsonBuilder *json, const RfResults *results)
+{
+    json_builder_set_member_name(json, "recording");
+    json_builder_begin_object(json);
+    words(json, "summary", results->recording_summary);
+    whole(json, "width_px", results->width);
+    whole(json, "height_px", results->height);
+    number(json, "pixel_aspect", results->pixel_aspect);
+    whole(json, "frames", results->frames);
+    number(json, "duration_s", results->duration_s);
+    number(json, "gravity_axis_deg", results->gravity_axis_deg);
+    json_builder_end_object(json);
+}
+
+static void inputs(JsonBuilder *json, const GArray *files)
+{
+    json_builder_set_member_name(json, "inputs");
+    json_builder_begin_array(json);
+    for (guint i = 0; i < files->len; i++) {
+        const RfInputFile *file = &g_array_index(files, RfInputFile, i);
+        json_builder_begin_object(json);
+        words(json, "role", file->role);
+        words(json, "path", file->path);
+        words(json, "sha256", file->sha256);
+        json_builder_end_object(json);
+    }
+    json_builder_end_array(json);
+}
+
+static void settings(JsonBuilder *json, const char *name, const GArray *rows)
+{
+    json_builder_set_member_name(json, name);
+    json_builder_begin_array(json);
+    for (guint i = 0; i < rows->len; i++) {
+        const RfUsedSetting *row = &g_array_index(rows, RfUsedSetting, i);
+        json_builder_begin_object(json);
+        words(json, "group", row->group);
+        words(json, "key", row->key);
+        words(json, "value", row->value);
+        truth(json, "default", row->is_default);
+        words(json, "remark", row->remark);
+        json_builder_end_object(json);
+    }
+    json_builder_end_array(json);
+}
+
+static void warnings(JsonBuilder *json, const GPtrArray *list)
+{
+    json_builder_set_member_name(json, "warnings");
+    json_builder_begin_array(json);
+    for (guint i = 0; i < list->len; i++) words(json, NULL, list->pdata[i]);
+    json_builder_end_array(json);
+}
+
+char *rf_write_json_summary(const RfResults *results)
+{
+    const RfTally tally = rf_tally_droplets(results);
+    g_autoptr(JsonBuilder) json = json_builder_new_immutable();
+    json_builder_begin_object(json);
+    words(json, "program", "risefall");
+    words(json, "program_version", RF_VERSION);
+    truth(json, "measured", results->measured);
+    words(json, "verdict", results->verdict);
+    unit(json, &results->unit);
+    whole(json, "droplets_accepted", tally.droplets_accepted);
+    whole(json, "droplets_set_aside", tally.droplets - tally.droplets_accepted);
+    whole(json, "spells_accepted", tally.spells_accepted);
+    whole(json, "spells_set_aside", tally.spells - tally.spells_accepted);
+    whole(json, "switches", results->switches->len);
+    whole(json, "steps", results->steps->len);
+    warnings(json, results->warnings);
+    words(json, "sheet", results->sheet_path);
+    recording(json, results);
+    inputs(json, results->inputs);
+    settings(json, "settings", results->settings);
+    settings(json, "notes", results->notes);
+    return finish(json);
+}

@@ -1,0 +1,8 @@
+/* scale.json and summary.json as text: results -> string. Key order is fixed; what could not be found is null, with
+ * the reason in a key beside it. Both return a new string that ends in a newline. */
+#pragma once
+
+#include "cli/results.h"
+
+char *rf_write_json_scale(const RfResults *results);
+char *rf_write_json_summary(const RfResults *results);
