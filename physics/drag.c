@@ -52,7 +52,7 @@ void rf_drag_choose_slip(RfMedium *medium, RfSlipLaw law, double slip_b_pa_m, do
 
 double rf_drag_slip_relative_u(RfSlipLaw law)
 {
-    return law == RF_SLIP_ONE_TERM ? 0.0 : 0.036 / sqrt(3.0);
+    return law == RF_SLIP_ONE_TERM ? 0.0 : 0.042 / sqrt(3.0);
 }
 
 /* exp(-gamma/Kn), which vanishes without slip. */
@@ -116,23 +116,31 @@ static double one_term_radius_m(double stokes2_m2, double reach_m)
     return 2.0 * stokes2_m2 / (reach_m + sqrt(reach_m * reach_m + 4.0 * stokes2_m2));
 }
 
+/* Two equations of one shape, a^power Cc(a)^sign = target: settling fixes a^2 Cc, drag fixes a/Cc. Both left sides
+ * rise steadily with a. */
 typedef struct {
     const RfMedium *medium;
-    double stokes2_m2;
+    double target;
+    bool is_settling;
 } RadiusEquation;
 
-/* a^2 Cc(a)/a0^2 - 1: rises steadily through zero at the radius sought. */
 static double radius_equation(double radius_m, void *context)
 {
     const RadiusEquation *eq = context;
-    return radius_m * radius_m * rf_drag_slip_factor(eq->medium, radius_m) / eq->stokes2_m2 - 1.0;
+    const double slip = rf_drag_slip_factor(eq->medium, radius_m);
+    return (eq->is_settling ? radius_m * radius_m * slip : radius_m / slip) / eq->target - 1.0;
 }
 
-static double root_between(gsl_function *equation, double low, double high)
+static double root_between(RadiusEquation *context, double low, double high)
 {
+    /* Where exp(-gamma/Kn) underflows the two enclosing radii meet, and rounding may leave no change of sign. */
+    if (radius_equation(high, context) <= 0.0) return high;
+    if (radius_equation(low, context) >= 0.0) return low;
+
+    gsl_function equation = {radius_equation, context};
     gsl_root_fsolver *solver = gsl_root_fsolver_alloc(gsl_root_fsolver_brent);
     double root = 0.5 * (low + high);
-    if (gsl_root_fsolver_set(solver, equation, low, high) == GSL_SUCCESS) {
+    if (gsl_root_fsolver_set(solver, &equation, low, high) == GSL_SUCCESS) {
         for (int i = 0; i < 100; i++) {
             if (gsl_root_fsolver_iterate(solver) != GSL_SUCCESS) break;
             root = gsl_root_fsolver_root(solver);
@@ -148,16 +156,35 @@ static double root_between(gsl_function *equation, double low, double high)
 double rf_drag_radius_m(const RfMedium *medium, double speed_m_s)
 {
     const double stokes2_m2 = 4.5 * medium->viscosity_pa_s * speed_m_s / rf_drag_net_weight_n_m3(medium);
-    const double high = one_term_radius_m(stokes2_m2, medium->mean_free_path_m * medium->slip.alpha);
-    if (medium->slip.beta == 0.0 || medium->mean_free_path_m == 0.0) return high;
-    const double low =
-        one_term_radius_m(stokes2_m2, medium->mean_free_path_m * (medium->slip.alpha + medium->slip.beta));
-
-    RadiusEquation context = {medium, stokes2_m2};
-    gsl_function equation = {radius_equation, &context};
-    /* Where exp(-gamma/Kn) underflows the two enclosing radii meet, and rounding may leave no change of sign.
-     */
-    if (radius_equation(high, &context) <= 0.0) return high;
-    if (radius_equation(low, &context) >= 0.0) return low;
+    const double path_m = medium->mean_free_path_m;
+    const RfSlip *slip = &medium->slip;
+    const double high = one_term_radius_m(stokes2_m2, path_m * slip->alpha);
+    if (slip->beta == 0.0 || path_m == 0.0) return high;
+    const double low = one_term_radius_m(stokes2_m2, path_m * (slip->alpha + slip->beta));
+    RadiusEquation equation = {medium, stokes2_m2, true};
     return root_between(&equation, low, high);
+}
+
+/* Positive root of a^2 = stokes (a + reach). */
+static double one_term_radius_of_drag_m(double stokes_m, double reach_m)
+{
+    return 0.5 * (stokes_m + sqrt(stokes_m * stokes_m + 4.0 * stokes_m * reach_m));
+}
+
+double rf_drag_radius_of_coefficient_m(const RfMedium *medium, double coefficient_kg_s)
+{
+    const double stokes_m = coefficient_kg_s / (6.0 * M_PI * medium->viscosity_pa_s);
+    const double path_m = medium->mean_free_path_m;
+    const RfSlip *slip = &medium->slip;
+    const double low = one_term_radius_of_drag_m(stokes_m, path_m * slip->alpha);
+    if (slip->beta == 0.0 || path_m == 0.0) return low;
+    const double high = one_term_radius_of_drag_m(stokes_m, path_m * (slip->alpha + slip->beta));
+    RadiusEquation equation = {medium, stokes_m, false};
+    return root_between(&equation, low, high);
+}
+
+double rf_drag_radius_of_diffusion_m(const RfMedium *medium, double diffusion_m2_s)
+{
+    return rf_drag_radius_of_coefficient_m(medium,
+                                           RF_BOLTZMANN_J_K * medium->temperature_kelvin / diffusion_m2_s);
 }

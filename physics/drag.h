@@ -34,10 +34,10 @@ bool rf_slip_law_from_string(const char *text, RfSlipLaw *law);
  * RF_SLIP_ONE_TERM only. */
 void rf_drag_choose_slip(RfMedium *medium, RfSlipLaw law, double slip_b_pa_m, double pressure_pa);
 
-/* Relative standard uncertainty of Cc - 1 that a slip law itself brings. At 0.5 um diameter the laws above
- * give Cc - 1 from 0.311 to 0.334: half of that range is 3.6 %, taken as the half-width of a rectangular: 2.1
- * %. In charge, which goes as Cc^-1.5 at a given settling speed and field, that is 0.4 % at a radius of 0.5
- * um and 0.2 % at 1 um. For the one-term form the caller's sigma of b is taken instead. */
+/* Relative standard uncertainty of Cc - 1 that a slip law itself brings. At 0.5 um diameter in a room the laws
+ * above, each with its own path, give Cc - 1 from 0.311 to 0.338: half of that range is 4.2 %, taken as the half-width
+ * of a rectangular: 2.4 %. In charge, which goes as Cc^-1.5 at a given settling speed and field, that is 0.5 % at a
+ * radius of 0.5 um and 0.3 % at 1 um. For the one-term form 0: the caller's sigma of b is taken instead. */
 double rf_drag_slip_relative_u(RfSlipLaw law);
 
 /* radius_m > 0 in all that follows. Below 20 nm the slip laws are extrapolated. */
@@ -59,3 +59,7 @@ double rf_drag_settling_slope_per_s(const RfMedium *medium, double radius_m);
 /* The one radius that settles at speed_m_s > 0 (the speed rises steadily with radius): closed form for
  * one-term slip, else by root finding between the two one-term radii that enclose it, to 1e-12. */
 double rf_drag_radius_m(const RfMedium *medium, double speed_m_s);
+
+/* The one radius with this drag coefficient, or this diffusion coefficient (both > 0). */
+double rf_drag_radius_of_coefficient_m(const RfMedium *medium, double coefficient_kg_s);
+double rf_drag_radius_of_diffusion_m(const RfMedium *medium, double diffusion_m2_s);
