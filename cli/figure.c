@@ -1,0 +1,123 @@
+#include "cli/figure.h"
+
+#include <string.h>
+
+#include "cli/figure_script.h"
+
+static void figure_free(void *item)
+{
+    RfFigure *figure = item;
+    g_free(figure->name);
+    g_free(figure->title);
+    g_free(figure->alt);
+    g_free(figure->svg);
+    g_free(figure);
+}
+
+void rf_figure_set_free(RfFigureSet *set)
+{
+    if (!set) return;
+    g_ptr_array_unref(set->figures);
+    g_free(set->warning);
+    g_free(set);
+}
+
+/* Works with gnuplot 5.2 and later; the PDF only where that terminal was built in. */
+static char *whole_script(const RfFigureScript *what, const char *body)
+{
+    const char *size = strcmp(what->name, "radius") == 0 ? "560,460" : "860,430";
+    const char *page = strcmp(what->name, "radius") == 0 ? "12cm,10cm" : "17cm,8.5cm";
+    return g_strdup_printf(
+        "# %s. Run in this folder: gnuplot %s.gp\n"
+        "reset\nset encoding utf8\nset key off\nset border 3 lw 0.8\nset tics nomirror out scale 0.5\n"
+        "set grid lt 1 lc rgb '#808080' lw 0.4\n"
+        "set terminal svg size %s dynamic enhanced font 'sans-serif,14'\nset output '%s.svg'\n%s"
+        "set output\n"
+        "if (strstrt(GPVAL_TERMINALS, 'pdfcairo') > 0) {\n"
+        "  set terminal pdfcairo size %s enhanced font 'sans,9'\n  set output '%s.pdf'\n  replot\n"
+        "  set output\n}\n",
+        what->title, what->name, size, what->name, body, page, what->name);
+}
+
+static bool add_figure(RfFigureSet *set, const RfFigureScript *what, const RfResults *results,
+                       RfResultFolder *folder, GError **error)
+{
+    g_autoptr(GString) data = g_string_new(NULL), body = g_string_new(NULL), alt = g_string_new(NULL);
+    if (!what->write(results, data, body, alt)) return true;
+    g_autofree char *script = whole_script(what, body->str);
+    g_autofree char *data_name = g_strdup_printf("figures/%s.dat", what->name);
+    g_autofree char *script_name = g_strdup_printf("figures/%s.gp", what->name);
+    if (!rf_result_folder_add(folder, data_name, data->str, data->len, error)) return false;
+    if (!rf_result_folder_add_text(folder, script_name, script, error)) return false;
+    RfFigure *figure = g_new0(RfFigure, 1);
+    figure->name = g_strdup(what->name);
+    figure->title = g_strdup(what->title);
+    figure->alt = g_strdup(alt->str);
+    g_ptr_array_add(set->figures, figure);
+    return true;
+}
+
+/* Fixed surroundings: nobody's start-up file, locale or clock in the picture. */
+static bool run_plotter(const char *program, const char *inside, const char *script, char **complaint)
+{
+    const char *const arguments[] = {program, "-d", script, NULL};
+    const char *const surroundings[] = {"PATH=/usr/local/bin:/usr/bin:/bin", "LC_ALL=C.UTF-8",
+                                        "HOME=/nonexistent", "SOURCE_DATE_EPOCH=0", NULL};
+    g_autoptr(GError) error = NULL;
+    g_autofree char *talk = NULL;
+    int status = 0;
+    bool is_done = g_spawn_sync(inside, (char **)arguments, (char **)surroundings,
+                                G_SPAWN_STDOUT_TO_DEV_NULL | G_SPAWN_CLOEXEC_PIPES, NULL, NULL, NULL, &talk,
+                                &status, &error) &&
+                   g_spawn_check_wait_status(status, &error);
+    if (!is_done)
+        *complaint = g_strdup_printf("%s: %s%s%s", script, error->message, talk && *talk ? "; it said: " : "",
+                                     talk && *talk ? g_strstrip(talk) : "");
+    return is_done;
+}
+
+static void draw_one(RfFigureSet *set, RfFigure *figure, const char *program, const char *inside)
+{
+    g_autofree char *script = g_strconcat(figure->name, ".gp", NULL);
+    g_autofree char *picture = g_strconcat(inside, "/", figure->name, ".svg", NULL);
+    g_autofree char *complaint = NULL;
+    const bool is_done = run_plotter(program, inside, script, &complaint);
+    if (is_done && g_file_get_contents(picture, &figure->svg, NULL, NULL)) return;
+    if (set->warning) return;
+    set->warning = g_strdup_printf("figures: gnuplot failed on %s; data and scripts are in figures/",
+                                   complaint ? complaint : picture);
+}
+
+RfFigureSet *rf_figure_draw_with(const RfResults *results, RfResultFolder *folder, const char *plotter,
+                                 GError **error)
+{
+    g_autoptr(RfFigureSet) set = g_new0(RfFigureSet, 1);
+    set->figures = g_ptr_array_new_with_free_func(figure_free);
+    for (size_t i = 0; i < rf_figure_scripts_n; i++)
+        if (!add_figure(set, &rf_figure_scripts[i], results, folder, error)) return NULL;
+    if (set->figures->len == 0) return g_steal_pointer(&set);
+    g_autofree char *program = g_find_program_in_path(plotter);
+    if (!program) {
+        set->warning = g_strdup_printf(
+            "figures: %s is not installed, so there are no pictures; data and scripts are in figures/",
+            plotter);
+        return g_steal_pointer(&set);
+    }
+    g_autofree char *inside = g_build_filename(rf_result_folder_path(folder), "figures", NULL);
+    for (guint i = 0; i < set->figures->len; i++) draw_one(set, set->figures->pdata[i], program, inside);
+    return g_steal_pointer(&set);
+}
+
+RfFigureSet *rf_figure_draw(const RfResults *results, RfResultFolder *folder, GError **error)
+{
+    return rf_figure_draw_with(results, folder, "gnuplot", error);
+}
+
+const RfFigure *rf_figure_find(const RfFigureSet *set, const char *name)
+{
+    for (guint i = 0; set && i < set->figures->len; i++) {
+        const RfFigure *figure = set->figures->pdata[i];
+        if (strcmp(figure->name, name) == 0) return figure;
+    }
+    return NULL;
+}

@@ -1,0 +1,19 @@
+/* What each figure shows: a data file and a gnuplot script that draws it. Not for running gnuplot: see figure.h. Only
+ * text that gnuplot can't take for a command leaves this file. */
+#pragma once
+
+#include <glib.h>
+#include <stdbool.h>
+
+#include "cli/results.h"
+
+typedef struct {
+    const char *name;
+    const char *title;
+    /* Fills data and script, and says in `alt` what is to be seen. False: nothing to draw. */
+    bool (*write)(const RfResults *results, GString *data, GString *script, GString *alt);
+} RfFigureScript;
+
+/* In the order of the report. */
+extern const RfFigureScript rf_figure_scripts[];
+extern const size_t rf_figure_scripts_n;
