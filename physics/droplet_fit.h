@@ -57,10 +57,11 @@ const char *rf_droplet_fit_state_to_string(RfFitState state);
 typedef struct {
     double start_s, end_s; /* first and last sample in it, cut by steps */
     size_t samples;
-    double on_s;            /* watched with a field on */
-    bool has_charge;        /* some field in it */
-    RfValue charge_coulomb; /* signed; sigma: random part */
-    RfValue speed_per_volt_m_s_v;
+    double on_s;                            /* watched with a field on */
+    bool has_charge;                        /* some field in it */
+    RfValue charge_coulomb;                 /* signed; sigma: random part */
+    double covariance_with_next_coulomb2;   /* of this charge with the next spell's */
+    RfValue speed_per_volt_m_s_v;           /* sigma with the radius held */
     double charge_slope_coulomb[RF_INPUTS]; /* d charge/d ln(input) with the data fixed */
 } RfSpellFit;
 
