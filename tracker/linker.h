@@ -30,6 +30,13 @@ typedef struct {
         .least_extent_px = 3, .decision_log_odds = 3                                                         \
     }
 
+typedef enum {
+    RF_LINKER_ERROR_ORDER, /* exposures or spots are not in the order that the sightings promise */
+} RfLinkerError;
+
+#define RF_LINKER_ERROR (rf_linker_error_quark())
+GQuark rf_linker_error_quark(void);
+
 /* (returns new) Paths in order of first appearance; none found is a legal result. NULL and error only where
  * exposures are out of order or spots don't belong to them. options NULL: defaults. */
 RfPaths *rf_linker_run(const RfSightings *sightings, const RfFieldCourse *field,

@@ -1,0 +1,11 @@
+/* Whether the spots' stated uncertainties are what their scatter says: pooled covariances of the paths' increments.
+ * Source: A. J. Berglund, Phys. Rev. E 82 (2010) 011917: increments of a drifting Brownian path have variance
+ * 2 D dt (1 - 2 R) + 2 s^2 and neighbours covariance 2 R D dt - s^2. Not for a droplet's own D. */
+#pragma once
+
+#include "tracker/chain.h"
+
+RfPathNoise rf_path_noise_measure(const RfLinkScene *scene, const GPtrArray *chains);
+
+/* What a stated uncertainty is multiplied by: the scale where it is above 1 beyond doubt (two sigma), else 1. */
+double rf_path_noise_widening(double scale, double u_scale);
