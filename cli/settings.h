@@ -12,6 +12,8 @@
 #include "calib/length_scale.h"
 #include "calib/picture_frame.h"
 #include "calib/units.h"
+#include "physics/air.h"
+#include "physics/drag.h"
 #include "physics/trail.h"
 
 typedef enum {
@@ -28,11 +30,6 @@ typedef struct {
     bool is_set;
     RfValue v;
 } RfMaybeValue;
-
-/* Text that stands in the sheet as it is: notes and names of shared inputs. */
-typedef struct {
-    char *key, *value;
-} RfSheetText;
 
 typedef struct {
     char *path; /* of the sheet, as given */
@@ -51,10 +48,9 @@ typedef struct {
     RfReticleLines lines;
     RfValue plane_ratio; /* unitless */
 
-    /* [cell]: gravity as a value, or from latitude and height, or neither */
+    /* [cell] */
     RfValue plate_gap_m;
-    RfMaybeValue gravity_m_s2;
-    RfMaybeValue latitude_rad, height_m;
+    RfValue gravity_m_s2; /* from the sheet, or its latitude and height, or for a place unknown */
 
     /* [oil] */
     RfValue density_kg_m3;
@@ -62,8 +58,7 @@ typedef struct {
 
     /* [air]: the temperature is that of the thermistor where the sheet gives a resistance */
     RfValue temperature_kelvin;
-    bool is_thermistor;
-    RfMaybeValue resistance_ohm;
+    RfMaybeValue resistance_ohm; /* of the thermistor, where it serves */
     RfValue pressure_pa;
     RfValue humidity; /* unitless, 0..1 */
 
@@ -74,14 +69,15 @@ typedef struct {
     char *log;              /* resolved path or NULL */
 
     /* [analysis] */
-    char *slip;               /* kim-2005 ... one-term: one of the contract's words */
+    RfSlipLaw slip;
     RfMaybeValue slip_b_pa_m; /* set if and only if slip is one-term */
-    char *viscosity_law;      /* iso-15900, us-1976, or NULL where a value is given */
+    RfViscosityLaw viscosity; /* RF_VISCOSITY_GIVEN: viscosity_pa_s is set */
     RfMaybeValue viscosity_pa_s;
 
-    GArray *shared; /* RfSheetText: [shared], input -> name of the one measurement */
-    GArray *notes;  /* RfSheetText: [notes], word for word */
-    GArray *used;   /* RfUsedSetting (cli/results.h): every key in force, defaults marked and explained */
+    /* RfUsedSetting (cli/results.h); results may hold on to them with g_array_ref */
+    GArray *shared; /* [shared]: input -> name of the one measurement */
+    GArray *notes;  /* [notes], word for word */
+    GArray *used;   /* every key in force, defaults marked and explained */
 } RfSettings;
 
 /* (returns new), or NULL with the reason. Safe from any thread. */

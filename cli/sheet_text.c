@@ -1,0 +1,167 @@
+#include "cli/sheet_text.h"
+
+#include <string.h>
+
+#include "cli/settings.h"
+
+typedef struct {
+    RfSheetText *sheet;
+    char *group; /* the one that lines belong to now */
+    unsigned line;
+} Scan;
+
+static void entry_free(void *data)
+{
+    RfSheetEntry *entry = data;
+    g_free(entry->group);
+    g_free(entry->key);
+    g_free(entry->value);
+    g_free(entry);
+}
+
+void rf_sheet_text_free(RfSheetText *sheet)
+{
+    if (!sheet) return;
+    g_free(sheet->path);
+    g_ptr_array_unref(sheet->entries);
+    g_hash_table_unref(sheet->groups);
+    g_key_file_unref(sheet->key_file);
+    g_free(sheet);
+}
+
+const RfSheetEntry *rf_sheet_text_find(const RfSheetText *sheet, const char *group, const char *key)
+{
+    for (unsigned i = 0; i < sheet->entries->len; i++) {
+        const RfSheetEntry *entry = sheet->entries->pdata[i];
+        if (strcmp(entry->group, group) == 0 && strcmp(entry->key, key) == 0) return entry;
+    }
+    return NULL;
+}
+
+static bool refuse(const Scan *scan, GError **error, const char *format, ...) G_GNUC_PRINTF(3, 4);
+static bool refuse(const Scan *scan, GError **error, const char *format, ...)
+{
+    va_list arguments;
+    va_start(arguments, format);
+    g_autofree char *what = g_strdup_vprintf(format, arguments);
+    va_end(arguments);
+    g_set_error(error, RF_SETTINGS_ERROR, RF_SETTINGS_ERROR_FILE, "%s: line %u: %s", scan->sheet->path,
+                scan->line, what);
+    return false;
+}
+
+static bool take_group(Scan *scan, char *line, GError **error)
+{
+    char *end = strchr(line, ']');
+    if (!end || end[1] != '\0' || end == line + 1)
+        return refuse(scan, error, "seen `%.60s`; a group's line is its name in brackets, such as [cell]",
+                      line);
+    *end = '\0';
+    unsigned before = GPOINTER_TO_UINT(g_hash_table_lookup(scan->sheet->groups, line + 1));
+    if (before)
+        return refuse(scan, error, "[%s] stands here and in line %u; a group may stand once", line + 1,
+                      before);
+    g_free(scan->group);
+    scan->group = g_strdup(line + 1);
+    g_hash_table_insert(scan->sheet->groups, g_strdup(scan->group), GUINT_TO_POINTER(scan->line));
+    return true;
+}
+
+static bool take_key(Scan *scan, char *line, GError **error)
+{
+    char *equals = strchr(line, '=');
+    if (!equals || equals == line)
+        return refuse(scan, error, "seen `%.60s`; a line is [group], key=value, a # comment, or blank", line);
+    *equals = '\0';
+    const char *key = g_strchomp(line);
+    if (!scan->group)
+        return refuse(scan, error,
+                      "the key `%.60s` stands before the first group; a [group] line is needed above", key);
+    const RfSheetEntry *before = rf_sheet_text_find(scan->sheet, scan->group, key);
+    if (before)
+        return refuse(scan, error, "[%s] %s: stands here and in line %u; a key may stand once", scan->group,
+                      key, before->line);
+    RfSheetEntry *entry = g_new0(RfSheetEntry, 1);
+    *entry = (RfSheetEntry){g_strdup(scan->group), g_strdup(key), NULL, scan->line};
+    g_ptr_array_add(scan->sheet->entries, entry);
+    return true;
+}
+
+static bool take_line(Scan *scan, char *line, GError **error)
+{
+    if (!g_utf8_validate(line, -1, NULL))
+        return refuse(scan, error, "seen bytes that aren't UTF-8; saved as UTF-8 the sheet would do");
+    g_strstrip(line);
+    if (*line == '\0' || *line == '#') return true;
+    return *line == '[' ? take_group(scan, line, error) : take_key(scan, line, error);
+}
+
+static bool take_lines(RfSheetText *sheet, const char *text, GError **error)
+{
+    Scan scan = {sheet, NULL, 0};
+    g_auto(GStrv) lines = g_strsplit(text, "\n", -1);
+    bool is_good = true;
+    for (size_t i = 0; lines[i] && is_good; i++) {
+        scan.line = (unsigned)i + 1;
+        is_good = take_line(&scan, lines[i], error);
+    }
+    g_free(scan.group);
+    return is_good;
+}
+
+static bool read_values(RfSheetText *sheet, const char *text, GError **error)
+{
+    g_autoptr(GError) why = NULL;
+    if (!g_key_file_load_from_data(sheet->key_file, text, strlen(text), G_KEY_FILE_NONE, &why)) {
+        g_set_error(error, RF_SETTINGS_ERROR, RF_SETTINGS_ERROR_FILE, "%s: isn't a key file: %s", sheet->path,
+                    why->message);
+        return false;
+    }
+    for (unsigned i = 0; i < sheet->entries->len; i++) {
+        RfSheetEntry *entry = sheet->entries->pdata[i];
+        entry->value = g_key_file_get_string(sheet->key_file, entry->group, entry->key, &why);
+        if (!entry->value) {
+            g_set_error(error, RF_SETTINGS_ERROR, RF_SETTINGS_ERROR_FILE,
+                        "%s: line %u: [%s] %s: can't be read: %s", sheet->path, entry->line, entry->group,
+                        entry->key, why->message);
+            return false;
+        }
+        g_strstrip(entry->value);
+    }
+    return true;
+}
+
+static char *without_marks(const char *text, size_t length)
+{
+    if (length >= 3 && memcmp(text, "\xef\xbb\xbf", 3) == 0) {
+        text += 3;
+        length -= 3;
+    }
+    g_auto(GStrv) pieces = NULL;
+    g_autofree char *copy = g_strndup(text, length);
+    pieces = g_strsplit(copy, "\r\n", -1);
+    return g_strjoinv("\n", pieces);
+}
+
+RfSheetText *rf_sheet_text_parse(const char *text, size_t length, const char *path, GError **error)
+{
+    const char *what = NULL;
+    if (length > 1 << 20)
+        what = "larger than 1 MiB; a run sheet is a short text";
+    else if (length >= 2 && (memcmp(text, "\xff\xfe", 2) == 0 || memcmp(text, "\xfe\xff", 2) == 0))
+        what = "seen UTF-16 text; saved as UTF-8 it would do";
+    else if (length && memchr(text, '\0', length))
+        what = "seen binary data; a run sheet is a text of [group] and key=value lines";
+    if (what) {
+        g_set_error(error, RF_SETTINGS_ERROR, RF_SETTINGS_ERROR_FILE, "%s: %s", path, what);
+        return NULL;
+    }
+    g_autofree char *plain = without_marks(text, length);
+    g_autoptr(RfSheetText) sheet = g_new0(RfSheetText, 1);
+    sheet->path = g_strdup(path);
+    sheet->entries = g_ptr_array_new_with_free_func(entry_free);
+    sheet->groups = g_hash_table_new_full(g_str_hash, g_str_equal, g_free, NULL);
+    sheet->key_file = g_key_file_new();
+    if (!take_lines(sheet, plain, error) || !read_values(sheet, plain, error)) return NULL;
+    return g_steal_pointer(&sheet);
+}
