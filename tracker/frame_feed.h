@@ -39,10 +39,10 @@ typedef struct {
 bool rf_frame_feed_run(const RfVideoFile *file, const RfFrameLook *look, const RfFrameFeedOptions *options,
                        RfVideoFaults *faults, GError **error);
 
-/* About `frames` frames spread evenly over the part in use, in ascending order, for learning the background.
- * Where keyframes suffice, only these are decoded. Where they don't, every keyframe is followed by further
- * samples `spacing_frames` (>= 1) apart, as far as the group reaches. Where frames can't be reached on their
- * own, every so many-th frame of a sequential pass is taken. Deterministic. take() returns false to stop
- * early (not an error). */
+/* About `frames` frames spread evenly over the part in use, in ascending order, for learning the background. Where
+ * keyframes suffice, only these are decoded. Where they don't, every keyframe is followed by further samples
+ * `spacing_frames` (>= 1) apart, as far as its group reaches. Where frames can't be reached on their own (not indexed, or
+ * no keyframe in the part), samples are `spacing_frames` apart from the start on. Deterministic. take() returns false to
+ * stop early (not an error). */
 bool rf_frame_feed_sample(const RfVideoFile *file, int frames, int spacing_frames,
                           bool (*take)(const RfFrame *frame, void *user), void *user, GError **error);

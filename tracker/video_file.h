@@ -163,7 +163,8 @@ typedef struct {
     int keyframe_every; /* 0: the encoder's own choice */
     int b_frames;       /* H.264, MPEG2 */
     bool is_open_gop;   /* H.264, MPEG2: leading B frames may refer to the group before */
-    double quality;     /* H.264: crf 0..51 (0 lossless); MJPEG, MPEG2: 1 (best)..31; 0: 18 and 3 */
+    double quality;     /* H.264: crf > 0 to 51; MJPEG, MPEG2: 1 (best)..31; 0: 18 and 3 */
+    bool is_lossless;   /* H.264: crf 0 */
     const char *preset; /* H.264: "ultrafast" .. "veryslow"; NULL: "medium" */
     int slices;         /* FFV1: 4, 6, 9, 12, ...; 0: 4 */
 } RfVideoWriterOptions;
