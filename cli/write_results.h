@@ -7,7 +7,7 @@
 
 typedef enum {
     RF_WRITE_RESULTS_ALL,   /* run, charge */
-    RF_WRITE_RESULTS_PATHS, /* paths: paths.csv, segments-free: scale.json and summary.json beside it */
+    RF_WRITE_RESULTS_PATHS, /* paths: paths.csv with scale.json and summary.json */
 } RfWriteResultsPart;
 
 /* Adds the files; the caller commits. Warnings about figures are added to results->warnings. */

@@ -229,8 +229,8 @@ static void add_audit(RfResults *results)
 static void add_unit(RfUnitResult *unit)
 {
     unit->resolved = true;
-    unit->unit_C = (RfValue){1.6049e-19, 1.3e-21};
-    unit->u_random_C = 5.2e-22;
+    unit->unit_C = (RfValue){1.6049e-19, 1.3e-22};
+    unit->u_random_C = 5.2e-23;
     unit->chance = 3.1e-5;
     unit->reason = g_strdup(
         "largest unit that seven charges support; charges without one look this good in 3 of 100000 draws");

@@ -1,0 +1,92 @@
+#include <math.h>
+
+#include "cli/report_parts.h"
+#include "cli/tally.h"
+#include "cli/text_number.h"
+
+static const double CODATA_E_C = 1.602176634e-19; /* SI Brochure, 9th edition: exact */
+
+static void unit_fact(GString *out, const RfUnitResult *unit)
+{
+    g_string_append(out, "<div><dt>Unit of charge</dt><dd class=\"big\">");
+    if (unit->resolved)
+        rf_report_text_charge(out, unit->unit_C);
+    else
+        g_string_append(out, "not resolved");
+    g_string_append(out, "</dd><dd class=\"note\">");
+    if (unit->resolved && unit->unit_C.sigma > 0) {
+        const double away = fabs(unit->unit_C.value - CODATA_E_C) / unit->unit_C.sigma;
+        g_string_append(out, "Found from these charges alone. The accepted value of e lies ");
+        rf_text_number_append_fixed(out, away, 1);
+        g_string_append(out, " standard uncertainties away.");
+    } else {
+        rf_report_text(out, unit->reason);
+    }
+    g_string_append(out, "</dd></div>\n");
+}
+
+static const char *many(unsigned n)
+{
+    return n == 1 ? "" : "s";
+}
+
+static void droplets_fact(GString *out, const RfResults *results)
+{
+    const RfTally tally = rf_tally_droplets(results);
+    const unsigned switches = results->switches->len, steps = results->steps->len;
+    g_string_append_printf(
+        out,
+        "<div><dt>Droplets</dt><dd class=\"big\">%u accepted, <span class=\"nowrap\">%u set aside</span></dd>"
+        "<dd class=\"note\">%u spell%s of constant charge, %u field switch%s, %u charge step%s.</dd></div>\n",
+        tally.droplets_accepted, tally.droplets - tally.droplets_accepted, tally.spells, many(tally.spells),
+        switches, switches == 1 ? "" : "es", steps, many(steps));
+}
+
+static void limit_fact(GString *out, const RfResults *results)
+{
+    const RfBudgetRow *limit = rf_tally_limiting_input(results);
+    g_string_append(out, "<div><dt>What limits the charges</dt><dd class=\"big\">");
+    if (!limit) {
+        g_string_append(out, "no charges</dd><dd class=\"note\">There is nothing to budget.</dd></div>\n");
+        return;
+    }
+    rf_report_text(out, limit->input);
+    g_string_append(out, "</dd><dd class=\"note\">Adds ");
+    rf_report_text_percent(out, limit->charge_relative_u);
+    g_string_append(out, " to a typical charge");
+    if (limit->stated && *limit->stated) {
+        g_string_append(out, "; used: ");
+        rf_report_text(out, limit->stated);
+    }
+    g_string_append(out, limit->is_common ? ". Shared by all droplets, so more of them don’t average it out."
+                                          : ". Longer watching or more droplets reduce it.");
+    g_string_append(out, "</dd></div>\n");
+}
+
+static void warnings(GString *out, const GPtrArray *list)
+{
+    if (list->len == 0) return;
+    g_string_append_printf(
+        out, "<div class=\"warnings\"><p>%u thing%s to know before using these numbers</p><ul>\n", list->len,
+        many(list->len));
+    for (guint i = 0; i < list->len; i++) {
+        g_string_append(out, "<li>");
+        rf_report_text(out, list->pdata[i]);
+        g_string_append(out, "</li>\n");
+    }
+    g_string_append(out, "</ul></div>\n");
+}
+
+void rf_report_first_screen(GString *out, const RfResults *results)
+{
+    g_string_append(
+        out, "<section id=\"verdict\" aria-labelledby=\"verdict-heading\">\n<h1 id=\"verdict-heading\">");
+    rf_report_text(out, results->verdict ? results->verdict : "No verdict was reached");
+    g_string_append(out, "</h1>\n<dl class=\"facts\">\n");
+    unit_fact(out, &results->unit);
+    droplets_fact(out, results);
+    limit_fact(out, results);
+    g_string_append(out, "</dl>\n");
+    warnings(out, results->warnings);
+    rf_report_text_close(out);
+}

@@ -1,0 +1,155 @@
+#include "cli/report_html.h"
+
+#include "cli/report_parts.h"
+#include "cli/version.h"
+
+static const char *const STYLE[] = {
+#include "cli/report_style.inc"
+};
+
+static const char *const SCRIPT[] = {
+#include "cli/report_script.inc"
+};
+
+static char *joined(const char *const *lines, size_t n)
+{
+    GString *text = g_string_new(NULL);
+    for (size_t i = 0; i < n; i++) g_string_append(text, lines[i]);
+    return g_string_free(text, FALSE);
+}
+
+/* The browser runs the one script with this digest, and nothing that a label might bring. */
+static char *script_digest(const char *script)
+{
+    guint8 digest[32];
+    gsize length = sizeof digest;
+    g_autoptr(GChecksum) sum = g_checksum_new(G_CHECKSUM_SHA256);
+    g_checksum_update(sum, (const guchar *)script, -1);
+    g_checksum_get_digest(sum, digest, &length);
+    return g_base64_encode(digest, length);
+}
+
+static void head(GString *out, const RfResults *results, const char *script)
+{
+    g_autofree char *style = joined(STYLE, G_N_ELEMENTS(STYLE));
+    g_autofree char *digest = script_digest(script);
+    g_string_append_printf(
+        out,
+        "<!DOCTYPE html>\n<html lang=\"en\">\n<head>\n<meta charset=\"utf-8\">\n"
+        "<meta name=\"viewport\" content=\"width=device-width, initial-scale=1\">\n"
+        "<meta http-equiv=\"Content-Security-Policy\" content=\"default-src 'none'; img-src data:; "
+        "style-src 'unsafe-inline'; script-src 'sha256-%s'\">\n<title>",
+        digest);
+    rf_report_text(out, results->sheet_path ? results->sheet_path : "report");
+    g_string_append_printf(out, " · risefall</title>\n<style>\n%s</style>\n</head>\n", style);
+}
+
+static void banner(GString *out, const RfResults *results)
+{
+    g_string_append(out, "<body>\n<a class=\"skip\" href=\"#verdict\">To the result</a>\n<header><p><span "
+                         "class=\"name\">risefall</span> "
+                         "charges of droplets");
+    if (results->sheet_path) {
+        g_string_append(out, " · ");
+        rf_report_text(out, results->sheet_path);
+    }
+    g_string_append(out, "</p><p>");
+    rf_report_text(out, results->recording_summary);
+    g_string_append(out, "</p></header>\n<main>\n");
+}
+
+static void contents(GString *out, const RfResults *results, const RfFigureSet *figures)
+{
+    const struct {
+        const char *id, *name;
+        bool is_there;
+    } parts[] = {
+        {"view", "View", results->width > 0 && results->height > 0},
+        {"charges", "Charges", rf_figure_find(figures, "charges") != NULL},
+        {"velocities", "Velocities", rf_figure_find(figures, "velocities") != NULL},
+        {"droplets", "Droplets", true},
+        {"aside", "Set aside", true},
+        {"events", "Switches and steps", true},
+        {"unit", "Unit", true},
+        {"radius", "Radius twice", rf_figure_find(figures, "radius") != NULL},
+        {"budget", "Uncertainty", results->budget->len > 0},
+        {"audit", "Hand timings", results->audit->len > 0},
+        {"sources", "Inputs", true},
+        {"cautions", "Cautions", true},
+    };
+    g_string_append(out, "<nav aria-label=\"Parts of this report\"><ul>");
+    for (size_t i = 0; i < G_N_ELEMENTS(parts); i++)
+        if (parts[i].is_there)
+            g_string_append_printf(out, "<li><a href=\"#%s\">%s</a></li>", parts[i].id, parts[i].name);
+    g_string_append(out, "</ul></nav>\n");
+}
+
+static void figure_section(GString *out, const RfFigureSet *figures, const char *name, const char *heading,
+                           const char *caption)
+{
+    if (!rf_figure_find(figures, name)) return;
+    rf_report_text_open(out, name, heading);
+    rf_report_text_figure(out, figures, name, caption);
+    rf_report_text_close(out);
+}
+
+static void unit_section(GString *out, const RfResults *results, const RfFigureSet *figures)
+{
+    rf_report_text_open(out, "unit",
+                        results->unit.resolved ? "The unit of charge" : "Why there is no unit of charge");
+    g_string_append(out, "<p>");
+    if (results->unit.resolved) {
+        g_string_append(out, "Found: ");
+        rf_report_text_charge(out, results->unit.unit_C);
+        g_string_append(out, ", of which the droplets’ own part is ");
+        rf_report_text_percent(out, results->unit.u_random_C / results->unit.unit_C.value);
+        g_string_append(out, ". ");
+    }
+    rf_report_text(out, results->unit.reason);
+    g_string_append(out, "</p>\n");
+    rf_report_text_figure(out, figures, "unit",
+                          "Every half, third and so on of a unit explains the charges as well as the unit "
+                          "does: the largest unit that the "
+                          "charges support is the one taken.");
+    rf_report_text_close(out);
+}
+
+static void foot(GString *out, const char *script)
+{
+    g_string_append_printf(
+        out,
+        "</main>\n<footer>Written by risefall " RF_VERSION
+        ". The tables behind this page are the CSV and JSON files "
+        "beside it; the figures, with their data and scripts, are in <code>figures/</code>.</footer>\n"
+        "<p id=\"chosen\" role=\"status\"></p>\n<script>%s</script>\n</body>\n</html>\n",
+        script);
+}
+
+GString *rf_report_html_new(const RfResults *results, const RfFigureSet *figures)
+{
+    g_autofree char *script = joined(SCRIPT, G_N_ELEMENTS(SCRIPT));
+    GString *out = g_string_sized_new(1 << 18);
+    head(out, results, script);
+    banner(out, results);
+    rf_report_first_screen(out, results);
+    contents(out, results, figures);
+    rf_report_view(out, results);
+    figure_section(out, figures, "charges", "Charges against whole multiples",
+                   "Bars are one standard uncertainty, the common part included. Filled circles: accepted. "
+                   "Open squares: set aside.");
+    figure_section(out, figures, "velocities", "Velocities in time",
+                   "One bar per stretch in one field state; broken upright lines are field switches, open "
+                   "triangles charge steps.");
+    rf_report_droplets(out, results);
+    rf_report_set_aside(out, results);
+    rf_report_events(out, results);
+    unit_section(out, results, figures);
+    figure_section(out, figures, "radius", "The radius, seen twice",
+                   "Once in the speed of the fall, once in the spread of the path. Points far from the line "
+                   "deserve a second look.");
+    rf_report_budget(out, results, figures);
+    rf_report_audit(out, results);
+    rf_report_sources(out, results);
+    foot(out, script);
+    return out;
+}

@@ -1,0 +1,31 @@
+// Choosing a droplet, in a table or in a figure, marks it everywhere. Without this the page is complete all the same.
+(function () {
+  'use strict';
+  var chosen = null;
+  var status = document.getElementById('chosen');
+
+  function choose(number) {
+    chosen = number;
+    document.documentElement.classList.toggle('has-chosen', chosen !== null);
+    document.querySelectorAll('[data-droplet]').forEach(function (element) {
+      element.classList.toggle('is-chosen', element.dataset.droplet === chosen);
+    });
+    document.querySelectorAll('a.pick').forEach(function (link) {
+      if (link.textContent === chosen) link.setAttribute('aria-current', 'true');
+      else link.removeAttribute('aria-current');
+    });
+    status.textContent = chosen === null ? '' : 'Droplet ' + chosen + ' is marked in every figure and table. Escape: show all.';
+  }
+
+  document.addEventListener('click', function (event) {
+    var hit = event.target.closest('[data-droplet]');
+    if (!hit || String(window.getSelection()) !== '') return;
+    event.preventDefault();
+    choose(hit.dataset.droplet === chosen ? null : hit.dataset.droplet);
+  });
+  document.addEventListener('keydown', function (event) {
+    if (event.key === 'Escape') choose(null);
+  });
+  var asked = /^#droplet-(\d+)$/.exec(window.location.hash);
+  if (asked) choose(asked[1]);
+})();

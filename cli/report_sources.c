@@ -1,0 +1,161 @@
+#include "cli/report_parts.h"
+#include "cli/text_number.h"
+#include "cli/version.h"
+
+static void budget_row(GString *out, const RfBudgetRow *row)
+{
+    g_string_append(out, "<tr><th scope=\"row\">");
+    rf_report_text(out, row->input);
+    g_string_append(out, "</th>");
+    rf_report_text_cell(out, false, row->stated);
+    const double parts[] = {row->relative_u, row->charge_relative_u, row->charge_relative_u_mc};
+    for (size_t i = 0; i < G_N_ELEMENTS(parts); i++) {
+        g_string_append(out, "<td class=\"number\">");
+        if (parts[i] >= 0)
+            rf_report_text_percent(out, parts[i]);
+        else
+            g_string_append(out, "–");
+        g_string_append(out, "</td>");
+    }
+    rf_report_text_cell(out, false, row->is_common ? "all droplets" : "each droplet");
+    g_string_append(out, "</tr>\n");
+}
+
+void rf_report_budget(GString *out, const RfResults *results, const RfFigureSet *figures)
+{
+    if (results->budget->len == 0) return;
+    rf_report_text_open(out, "budget", "What the uncertainty is made of");
+    g_string_append(out, "<p>For a typical accepted droplet. Parts shared by all droplets don’t average out "
+                         "over them; a droplet’s own "
+                         "part does.</p>\n");
+    rf_report_text_figure(out, figures, "budget",
+                          "Bars: analytic propagation (JCGM 100). Diamonds: Monte Carlo (JCGM 101).");
+    rf_report_text_table(out, "Table of the uncertainty budget",
+                         "<th scope=\"col\">Input</th><th scope=\"col\">Value used</th><th scope=\"col\" "
+                         "class=\"number\">u of the input</th>"
+                         "<th scope=\"col\" class=\"number\">u in the charge</th><th scope=\"col\" "
+                         "class=\"number\">by Monte Carlo</th>"
+                         "<th scope=\"col\">Shared by</th>");
+    for (guint i = 0; i < results->budget->len; i++)
+        budget_row(out, &g_array_index(results->budget, RfBudgetRow, i));
+    rf_report_text_table_end(out);
+    rf_report_text_close(out);
+}
+
+static void fact(GString *out, const char *name, const char *format, ...) G_GNUC_PRINTF(3, 4);
+static void fact(GString *out, const char *name, const char *format, ...)
+{
+    va_list arguments;
+    va_start(arguments, format);
+    g_autofree char *text = g_strdup_vprintf(format, arguments);
+    va_end(arguments);
+    g_string_append_printf(out, "<tr><th scope=\"row\">%s</th>", name);
+    rf_report_text_cell(out, false, text);
+    g_string_append(out, "</tr>\n");
+}
+
+static void recording(GString *out, const RfResults *results)
+{
+    const RfScaleRow *scale = &results->scale;
+    g_string_append(out, "<h3>Recording and scale</h3>\n");
+    rf_report_text_table(out, "Recording and scale",
+                         "<th scope=\"col\">What</th><th scope=\"col\">Found</th>");
+    if (results->recording_summary) fact(out, "Recording", "%s", results->recording_summary);
+    fact(out, "Used", "%" G_GINT64_FORMAT " frames, %.2f s", results->frames, results->duration_s);
+    fact(out, "Gravity in the picture", "%.2f° from the picture’s upright", results->gravity_axis_deg);
+    if (scale->found) {
+        g_autofree char *x = rf_text_number_concise((RfValue){scale->px_per_mm_x, scale->u_px_per_mm_x});
+        g_autofree char *y = rf_text_number_concise((RfValue){scale->px_per_mm_y, scale->u_px_per_mm_y});
+        fact(out, "Scale", "%s px/mm across, %s px/mm upright, turned by %.3f°", x, y, scale->rotation_deg);
+        fact(out, "Reticle", "%u lines in %s, residual %.3f px rms", scale->lines_found,
+             scale->source ? scale->source : "the reticle", scale->residual_px);
+    } else {
+        fact(out, "Scale", "not found");
+    }
+    rf_report_text_table_end(out);
+}
+
+static void settings(GString *out, const GArray *rows)
+{
+    g_string_append(out, "<h3>Every setting used</h3>\n");
+    rf_report_text_table(out, "Table of settings",
+                         "<th scope=\"col\">Group</th><th scope=\"col\">Key</th><th "
+                         "scope=\"col\">Value</th><th scope=\"col\">From</th>");
+    for (guint i = 0; i < rows->len; i++) {
+        const RfUsedSetting *row = &g_array_index(rows, RfUsedSetting, i);
+        g_string_append(out, "<tr>");
+        rf_report_text_cell(out, false, row->group);
+        rf_report_text_cell(out, false, row->key);
+        rf_report_text_cell(out, false, row->value);
+        g_string_append(out, row->is_default ? "<td>default" : "<td>the sheet");
+        if (row->remark && *row->remark) {
+            g_string_append(out, ": ");
+            rf_report_text(out, row->remark);
+        }
+        g_string_append(out, "</td></tr>\n");
+    }
+    rf_report_text_table_end(out);
+}
+
+static void notes(GString *out, const GArray *rows)
+{
+    if (rows->len == 0) return;
+    g_string_append(out, "<h3>Notes of the sheet, word for word</h3>\n");
+    rf_report_text_table(out, "Notes of the sheet", "<th scope=\"col\">Note</th><th scope=\"col\">Text</th>");
+    for (guint i = 0; i < rows->len; i++) {
+        const RfUsedSetting *row = &g_array_index(rows, RfUsedSetting, i);
+        g_string_append(out, "<tr><th scope=\"row\">");
+        rf_report_text(out, row->key);
+        g_string_append(out, "</th>");
+        rf_report_text_cell(out, false, row->value);
+        g_string_append(out, "</tr>\n");
+    }
+    rf_report_text_table_end(out);
+}
+
+static void files(GString *out, const RfResults *results)
+{
+    g_string_append(out, "<h3>Input files and program</h3>\n");
+    rf_report_text_table(
+        out, "Table of input files",
+        "<th scope=\"col\">File</th><th scope=\"col\">Path</th><th scope=\"col\">SHA-256</th>");
+    for (guint i = 0; i < results->inputs->len; i++) {
+        const RfInputFile *file = &g_array_index(results->inputs, RfInputFile, i);
+        g_string_append(out, "<tr><th scope=\"row\">");
+        rf_report_text(out, file->role);
+        g_string_append(out, "</th>");
+        rf_report_text_cell(out, false, file->path);
+        g_string_append(out, "<td><code>");
+        rf_report_text(out, file->sha256);
+        g_string_append(out, "</code></td></tr>\n");
+    }
+    g_string_append(out,
+                    "<tr><th scope=\"row\">program</th><td>risefall " RF_VERSION "</td><td></td></tr>\n");
+    rf_report_text_table_end(out);
+}
+
+static void cautions(GString *out)
+{
+    g_string_append(out, "<section id=\"cautions\" aria-labelledby=\"cautions-heading\"><h2 "
+                         "id=\"cautions-heading\">Cautions</h2>\n"
+                         "<p class=\"cautions\">Bare plates at high voltage can give a dangerous shock, also "
+                         "for a while after the supply "
+                         "is off. An ionising source in the cell must be handled, kept and accounted for as "
+                         "its licence says. Oil mist "
+                         "irritates and burns: keep it small, away from sparks and out of breath. Local "
+                         "rules, and the people licensed "
+                         "to decide, come before anything written here; this report says nothing about "
+                         "whether a set-up is safe.</p>\n"
+                         "</section>\n");
+}
+
+void rf_report_sources(GString *out, const RfResults *results)
+{
+    rf_report_text_open(out, "sources", "Where the numbers come from");
+    recording(out, results);
+    settings(out, results->settings);
+    notes(out, results->notes);
+    files(out, results);
+    rf_report_text_close(out);
+    cautions(out);
+}
