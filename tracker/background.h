@@ -4,27 +4,10 @@
  * after row, no padding. */
 #pragma once
 
-#include "tracker/frame.h"
+#include "tracker/picture_sample.h"
 #include "tracker/sightings.h"
 
 #include <glib.h>
-
-/* Frames kept for learning: copies, so the reader may go on. */
-typedef struct RfPictureSample RfPictureSample;
-
-/*  pixel_aspect  > 0: width of a stored pixel over its height */
-RfPictureSample *rf_picture_sample_new(double pixel_aspect);
-void rf_picture_sample_free(RfPictureSample *sample);
-G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfPictureSample, rf_picture_sample_free)
-
-/* How many frames of this size are worth keeping (8..60; at most 128 MB in all). Spread them evenly. */
-unsigned rf_picture_sample_capacity(const RfFrame *frame);
-/* Copies the frame. Fails where its size, bit depth or interlacing differs from the first one's. */
-bool rf_picture_sample_add(RfPictureSample *sample, const RfFrame *frame, GError **error);
-unsigned rf_picture_sample_frames(const RfPictureSample *sample);
-/* (borrowed until the sample is freed) frame `i` in the order of adding */
-const RfFrame *rf_picture_sample_frame(const RfPictureSample *sample, unsigned i);
-double rf_picture_sample_pixel_aspect(const RfPictureSample *sample);
 
 typedef enum {
     RF_PIXEL_LINE = 1 << 0, /* something dark of the reticle (line, numeral) lies here */
@@ -42,6 +25,7 @@ typedef struct {
     double pixel_aspect;
     bool is_interlaced, is_top_field_first;
     bool is_moving;          /* the camera moves: `level` is in the reference picture's place */
+    double movement_rms_px;  /* of the camera over the sample */
     double saturation_level; /* at or above: the pixel tells nothing */
     RfPixelNoise noise;
     float *level;          /* the reference picture */

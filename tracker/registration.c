@@ -1,0 +1,371 @@
+#include "tracker/registration.h"
+
+#include "tracker/interpolate.h"
+#include "tracker/luma.h"
+
+#include <math.h>
+#include <string.h>
+
+enum {
+    LEVELS = 3,        /* pictures reduced by 8, 4 and 1 */
+    POINTS = 3000,     /* steep pixels used per level, at most */
+    LEAST_POINTS = 60, /* fewer: nothing to hold on to */
+    UNKNOWNS = 5,      /* shift x, shift y, angle, gain, offset */
+    STEPS = 12,        /* Gauss-Newton steps per level, at most */
+    REACH_CELLS = 10,  /* coarse search: this many pixels of the smallest picture either way */
+};
+static const int REDUCTION[LEVELS] = {8, 4, 1};
+
+/* One steep pixel of a reduced reference picture; places from the picture's middle, in full-size stored pixels. */
+typedef struct {
+    float x_px, y_px;
+    float level;
+    float slope_x, slope_y; /* grey levels per full-size stored pixel */
+} SteepPixel;
+
+typedef struct {
+    int width, height;
+    unsigned n;
+    SteepPixel *points;
+} Level;
+
+struct RfRegistration {
+    int width, height;
+    double pixel_aspect;
+    double noise_sd;
+    Level levels[LEVELS];
+};
+
+struct RfRegistrationScratch {
+    float *picture[LEVELS];
+};
+
+/* Mean of reduction x reduction pixels; what doesn't fill a cell at the right and bottom is left out. */
+static void reduce_row(const float *const *rows, int reduction, int width, float *out)
+{
+    float scale = 1.0f / (float)(reduction * reduction);
+    for (int i = 0; i < width; i++) {
+        float sum = 0;
+        for (int j = 0; j < reduction; j++)
+            for (int k = 0; k < reduction; k++) sum += rows[j][i * reduction + k];
+        out[i] = sum * scale;
+    }
+}
+
+static void reduce(const float *image, int full_width, int reduction, int width, int height, float *out)
+{
+    const float *rows[8];
+    for (int y = 0; y < height; y++) {
+        for (int j = 0; j < reduction; j++)
+            rows[j] = image + (size_t)(y * reduction + j) * (size_t)full_width;
+        reduce_row(rows, reduction, width, out + (size_t)y * (size_t)width);
+    }
+}
+
+/* 1 2 1 in both directions: a lone steep line becomes wide enough to be caught from two pixels away. */
+static void soften(float *image, int width, int height)
+{
+    for (int y = 0; y < height; y++) {
+        float *row = image + (size_t)y * (size_t)width, before = row[0];
+        for (int x = 0; x < width - 1; x++) {
+            float here = row[x];
+            row[x] = 0.25f * (before + 2 * here + row[x + 1]);
+            before = here;
+        }
+    }
+    for (int x = 0; x < width; x++) {
+        float *column = image + x, before = column[0];
+        for (int y = 0; y < height - 1; y++, column += width) {
+            float here = column[0];
+            column[0] = 0.25f * (before + 2 * here + column[width]);
+            before = here;
+        }
+    }
+}
+
+typedef struct {
+    float steepness;
+    int x, y;
+} Steep;
+
+static int by_steepness(const void *a, const void *b)
+{
+    const Steep *p = a, *q = b;
+    if (p->steepness != q->steepness) return p->steepness > q->steepness ? -1 : 1;
+    return p->y != q->y ? p->y - q->y : p->x - q->x;
+}
+
+/* The steepest pixels, taken evenly from all over the picture: the picture in 12 x 8 tiles, so many from each. */
+static void choose_points(Level *level, const float *image, int reduction, const RfRegistration *all)
+{
+    enum { ACROSS = 12, DOWN = 8 };
+    unsigned per_tile = POINTS / (ACROSS * DOWN);
+    g_autoptr(GArray) steep = g_array_new(false, false, sizeof(Steep));
+    level->points = g_new(SteepPixel, POINTS);
+    int w = level->width, h = level->height;
+    float least = (float)(4 * all->noise_sd) / (float)reduction;
+    for (int tile = 0; tile < ACROSS * DOWN; tile++) {
+        int x0 = MAX(3, w * (tile % ACROSS) / ACROSS), x1 = MIN(w - 3, w * (tile % ACROSS + 1) / ACROSS);
+        int y0 = MAX(3, h * (tile / ACROSS) / DOWN), y1 = MIN(h - 3, h * (tile / ACROSS + 1) / DOWN);
+        g_array_set_size(steep, 0);
+        for (int y = y0; y < y1; y++)
+            for (int x = x0; x < x1; x++) {
+                const float *p = image + (size_t)y * (size_t)w + x;
+                Steep s = {hypotf(p[1] - p[-1], p[w] - p[-w]), x, y};
+                if (s.steepness > least) g_array_append_val(steep, s);
+            }
+        g_array_sort(steep, by_steepness);
+        for (unsigned i = 0; i < MIN(per_tile, steep->len); i++) {
+            Steep s = g_array_index(steep, Steep, i);
+            const float *p = image + (size_t)s.y * (size_t)w + s.x;
+            float half = 0.5f * (float)(reduction - 1);
+            level->points[level->n++] = (SteepPixel){
+                .x_px = (float)(s.x * reduction) + half - 0.5f * (float)(all->width - 1),
+                .y_px = (float)(s.y * reduction) + half - 0.5f * (float)(all->height - 1),
+                .level = p[0],
+                .slope_x = 0.5f * (p[1] - p[-1]) / (float)reduction,
+                .slope_y = 0.5f * (p[w] - p[-w]) / (float)reduction,
+            };
+        }
+    }
+}
+
+RfRegistration *rf_registration_new(const float *image, int width, int height, double pixel_aspect,
+                                    double noise_sd)
+{
+    RfRegistration *registration = g_new0(RfRegistration, 1);
+    registration->width = width;
+    registration->height = height;
+    registration->pixel_aspect = pixel_aspect;
+    registration->noise_sd = noise_sd;
+    for (int i = 0; i < LEVELS; i++) {
+        Level *level = &registration->levels[i];
+        level->width = width / REDUCTION[i];
+        level->height = height / REDUCTION[i];
+        if (level->width < 16 || level->height < 16) continue;
+        g_autofree float *small = g_new(float, (size_t)level->width *(size_t)level->height);
+        reduce(image, width, REDUCTION[i], level->width, level->height, small);
+        if (REDUCTION[i] > 1) soften(small, level->width, level->height);
+        choose_points(level, small, REDUCTION[i], registration);
+    }
+    return registration;
+}
+
+void rf_registration_free(RfRegistration *registration)
+{
+    if (!registration) return;
+    for (int i = 0; i < LEVELS; i++) g_free(registration->levels[i].points);
+    g_free(registration);
+}
+
+RfRegistrationScratch *rf_registration_scratch_new(const RfRegistration *registration)
+{
+    RfRegistrationScratch *scratch = g_new0(RfRegistrationScratch, 1);
+    for (int i = 0; i < LEVELS; i++)
+        scratch->picture[i] =
+            g_new0(float, (size_t)registration->levels[i].width *(size_t)registration->levels[i].height + 1);
+    return scratch;
+}
+
+void rf_registration_scratch_free(RfRegistrationScratch *scratch)
+{
+    if (!scratch) return;
+    for (int i = 0; i < LEVELS; i++) g_free(scratch->picture[i]);
+    g_free(scratch);
+}
+
+static void fill_pictures(const RfRegistration *registration, RfRegistrationScratch *scratch,
+                          const RfFrame *frame)
+{
+    float *full = scratch->picture[LEVELS - 1];
+    for (int y = 0; y < frame->height; y++)
+        rf_luma_copy_row(frame, y, full + (size_t)y * (size_t)frame->width);
+    for (int i = 0; i < LEVELS - 1; i++) {
+        const Level *level = &registration->levels[i];
+        if (!level->n) continue;
+        reduce(full, frame->width, REDUCTION[i], level->width, level->height, scratch->picture[i]);
+        soften(scratch->picture[i], level->width, level->height);
+    }
+}
+
+/* Correlation of the smallest pictures' steep pixels at a shift of whole pixels, or -1 where too few overlap. */
+static double correlation_at(const Level *level, const float *picture, int full_width, int full_height,
+                             int dx, int dy)
+{
+    double n = 0, s_a = 0, s_b = 0, s_aa = 0, s_bb = 0, s_ab = 0;
+    float half = 0.5f * (float)(REDUCTION[0] - 1);
+    for (unsigned i = 0; i < level->n; i++) {
+        const SteepPixel *p = &level->points[i];
+        int x = (int)lrintf((p->x_px + 0.5f * (float)(full_width - 1) - half) / (float)REDUCTION[0]) + dx;
+        int y = (int)lrintf((p->y_px + 0.5f * (float)(full_height - 1) - half) / (float)REDUCTION[0]) + dy;
+        if (x < 0 || y < 0 || x >= level->width || y >= level->height) continue;
+        double a = (double)p->level, b = (double)picture[(size_t)y * (size_t)level->width + (size_t)x];
+        n += 1, s_a += a, s_b += b, s_aa += a * a, s_bb += b * b, s_ab += a * b;
+    }
+    if (n < 0.5 * level->n || n < 8) return -1;
+    double var_a = s_aa - s_a * s_a / n, var_b = s_bb - s_b * s_b / n;
+    return var_a > 0 && var_b > 0 ? (s_ab - s_a * s_b / n) / sqrt(var_a * var_b) : -1;
+}
+
+/* A reticle looks nearly the same one spacing on: of shifts that fit about as well, the smallest is taken. */
+static void search_coarsely(const RfRegistration *registration, const RfRegistrationScratch *scratch,
+                            RfPose *pose)
+{
+    const Level *level = &registration->levels[0];
+    double best = -2;
+    for (int dy = -REACH_CELLS; level->n && dy <= REACH_CELLS; dy++)
+        for (int dx = -REACH_CELLS; dx <= REACH_CELLS; dx++) {
+            double score = correlation_at(level, scratch->picture[0], registration->width,
+                                          registration->height, dx, dy) -
+                           0.015 * hypot(dx, dy);
+            if (score > best) {
+                best = score;
+                pose->shift_x_px = dx * REDUCTION[0];
+                pose->shift_y_px = dy * REDUCTION[0];
+            }
+        }
+}
+
+/* Normal equations of one Gauss-Newton step. */
+typedef struct {
+    double matrix[UNKNOWNS][UNKNOWNS], right[UNKNOWNS];
+    double weighted_square, weight;
+    unsigned n;
+} Normal;
+
+static void add_equation(Normal *normal, const double row[UNKNOWNS], double residual, double weight)
+{
+    for (int i = 0; i < UNKNOWNS; i++) {
+        for (int j = 0; j <= i; j++) normal->matrix[i][j] += weight * row[i] * row[j];
+        normal->right[i] += weight * row[i] * residual;
+    }
+    normal->weighted_square += weight * residual * residual;
+    normal->weight += weight;
+    normal->n++;
+}
+
+/* Cholesky; false where the picture doesn't fix all unknowns. The inverse's first two diagonal elements come along. */
+static bool solve(Normal *normal, double solution[UNKNOWNS], double variance[2])
+{
+    double(*a)[UNKNOWNS] = normal->matrix;
+    for (int j = 0; j < UNKNOWNS; j++) {
+        double before = a[j][j];
+        for (int k = 0; k < j; k++) a[j][j] -= a[j][k] * a[j][k];
+        if (!(a[j][j] > 1e-9 * before)) return false;
+        a[j][j] = sqrt(a[j][j]);
+        for (int i = j + 1; i < UNKNOWNS; i++) {
+            for (int k = 0; k < j; k++) a[i][j] -= a[i][k] * a[j][k];
+            a[i][j] /= a[j][j];
+        }
+    }
+    for (int column = -1; column < 2; column++) {
+        double z[UNKNOWNS];
+        for (int i = 0; i < UNKNOWNS; i++) {
+            z[i] = column < 0 ? normal->right[i] : i == column;
+            for (int k = 0; k < i; k++) z[i] -= a[i][k] * z[k];
+            z[i] /= a[i][i];
+        }
+        for (int i = UNKNOWNS - 1; i >= 0; i--) {
+            for (int k = i + 1; k < UNKNOWNS; k++) z[i] -= a[k][i] * z[k];
+            z[i] /= a[i][i];
+        }
+        if (column < 0)
+            memcpy(solution, z, sizeof z);
+        else
+            variance[column] = z[column];
+    }
+    return true;
+}
+
+typedef struct {
+    RfPose pose;
+    double gain, offset;
+    double scale; /* of the residuals, grey levels */
+} Guess;
+
+/* Linearised at the guess: frame(place) - gain * level - offset = -(slope . d place) * gain + ... */
+static void gather(const RfRegistration *registration, const Level *level, int reduction,
+                   const float *picture, const Guess *guess, Normal *normal)
+{
+    double aspect = registration->pixel_aspect, c = cos(guess->pose.angle_rad),
+           s = sin(guess->pose.angle_rad);
+    float half = 0.5f * (float)(reduction - 1);
+    memset(normal, 0, sizeof *normal);
+    for (unsigned i = 0; i < level->n; i++) {
+        const SteepPixel *p = &level->points[i];
+        double right = (double)p->x_px * aspect, down = (double)p->y_px;
+        double x = (c * right - s * down) / aspect + guess->pose.shift_x_px + 0.5 * (registration->width - 1);
+        double y = s * right + c * down + guess->pose.shift_y_px + 0.5 * (registration->height - 1);
+        float seen;
+        if (!rf_interpolate_cubic(picture, level->width, level->height, ((float)x - half) / (float)reduction,
+                                  ((float)y - half) / (float)reduction, &seen))
+            continue;
+        double residual = (double)seen - guess->gain * (double)p->level - guess->offset;
+        double slope_x = (double)p->slope_x * guess->gain, slope_y = (double)p->slope_y * guess->gain;
+        double row[UNKNOWNS] = {-slope_x, -slope_y, slope_x * down / aspect - slope_y * right,
+                                (double)p->level, 1};
+        double in_scale = residual / (4.685 * guess->scale); /* Tukey's biweight, 95 % efficient */
+        double weight = fabs(in_scale) < 1 ? (1 - in_scale * in_scale) * (1 - in_scale * in_scale) : 0;
+        /* -slope: moving the picture by +d shows at a fixed place what lay at -d */
+        if (weight > 0) add_equation(normal, row, residual, weight);
+    }
+}
+
+static double residual_scale(const RfRegistration *registration, const Level *level, int reduction,
+                             const float *picture, Guess *guess)
+{
+    Guess open = *guess;
+    open.scale = 1e6; /* no robust weight: all points count */
+    Normal normal;
+    gather(registration, level, reduction, picture, &open, &normal);
+    return normal.n ? sqrt(normal.weighted_square / normal.weight) : 0;
+}
+
+/* Gauss-Newton at one level. The robust scale starts at the plain rms and only shrinks. */
+static bool refine(const RfRegistration *registration, const RfRegistrationScratch *scratch, int which,
+                   Guess *guess, double *u_px)
+{
+    const Level *level = &registration->levels[which];
+    const float *picture = scratch->picture[which];
+    double floor = registration->noise_sd / REDUCTION[which];
+    guess->scale = MAX(floor, residual_scale(registration, level, REDUCTION[which], picture, guess));
+    for (int step = 0; step < STEPS; step++) {
+        Normal normal;
+        double d[UNKNOWNS] = {0}, variance[2] = {0};
+        gather(registration, level, REDUCTION[which], picture, guess, &normal);
+        if (normal.n < LEAST_POINTS || normal.n < level->n / 4 || !solve(&normal, d, variance)) return false;
+        guess->pose.shift_x_px += d[0];
+        guess->pose.shift_y_px += d[1];
+        guess->pose.angle_rad += d[2];
+        guess->gain += d[3];
+        guess->offset += d[4];
+        guess->scale = CLAMP(1.3 * sqrt(normal.weighted_square / normal.weight), floor, guess->scale);
+        *u_px = sqrt(MAX(variance[0], variance[1])) * guess->scale;
+        if (fabs(d[0]) + fabs(d[1]) < 2e-4 && fabs(d[2]) * registration->width < 4e-4) return true;
+    }
+    return *u_px < 0.2;
+}
+
+bool rf_registration_find(const RfRegistration *registration, RfRegistrationScratch *scratch,
+                          const RfFrame *frame, RfPose *pose, double *u_px)
+{
+    g_assert(frame->width == registration->width && frame->height == registration->height);
+    Guess guess = {.gain = 1};
+    double u = 0;
+    *pose = (RfPose){0};
+    fill_pictures(registration, scratch, frame);
+    search_coarsely(registration, scratch, &guess.pose);
+    for (int i = 0; i < LEVELS; i++) {
+        Guess tried = guess;
+        bool is_found =
+            registration->levels[i].n >= LEAST_POINTS && refine(registration, scratch, i, &tried, &u);
+        if (is_found)
+            guess = tried;
+        else if (i == LEVELS - 1)
+            return false;
+    }
+    if (guess.gain < 0.3 || guess.gain > 3) return false;
+    *pose = guess.pose;
+    if (u_px) *u_px = u;
+    return true;
+}

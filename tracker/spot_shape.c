@@ -1,0 +1,113 @@
+#include "tracker/spot_shape.h"
+
+#include <gsl/gsl_sf_bessel.h>
+#include <math.h>
+
+enum {
+    ROWS = 44,     /* widths of 1, 1.1, ... times the focus width */
+    PER_UNIT = 16, /* table steps per focus width along the radius */
+    ENTRIES = 16 * PER_UNIT,
+    SLICES = 48, /* of the disc's radius, for Simpson's rule */
+    NUMBERS = 2, /* value, slope */
+};
+static const double WIDTH_STEP = 0.1; /* of the focus width, from row to row */
+
+struct RfSpotShape {
+    double focus_width_px;
+    float table[ROWS][ENTRIES + 1][NUMBERS];
+};
+
+/* Disc of radius t smoothed by a unit Gaussian, relative to its middle: with I0 the modified Bessel function,
+ *   f(u) = integral_0^t rho exp(-(u^2 + rho^2)/2) I0(u rho) d rho / (1 - exp(-t^2/2)),
+ * and f'(u)/u from d/du of the integrand. */
+static void smoothed_disc(double u, double t, double *value, double *slope_over_u)
+{
+    if (t < 1e-6) {
+        *value = exp(-u * u / 2);
+        *slope_over_u = -*value;
+        return;
+    }
+    double sum = 0, slope = 0, h = t / SLICES;
+    for (int i = 1; i <= SLICES; i++) { /* the integrand vanishes at 0 */
+        double rho = i * h, weight = i == SLICES ? 1 : i % 2 ? 4 : 2;
+        double bell = weight * rho * exp(-(u - rho) * (u - rho) / 2);
+        double i0 = gsl_sf_bessel_I0_scaled(u * rho);
+        double i1_over_u = u > 1e-3 ? gsl_sf_bessel_I1_scaled(u * rho) / u : rho / 2;
+        sum += bell * i0;
+        slope += bell * (rho * i1_over_u - i0);
+    }
+    double norm = h / 3 / (1 - exp(-t * t / 2));
+    *value = sum * norm;
+    *slope_over_u = slope * norm;
+}
+
+RfSpotShape *rf_spot_shape_new(double focus_width_px)
+{
+    g_assert(focus_width_px > 0);
+    RfSpotShape *shape = g_new0(RfSpotShape, 1);
+    shape->focus_width_px = focus_width_px;
+    for (int row = 0; row < ROWS; row++) {
+        double width = 1 + row * WIDTH_STEP, disc = 2 * sqrt(width * width - 1);
+        for (int i = 0; i <= ENTRIES; i++) {
+            double value, slope_over_u;
+            smoothed_disc((double)i / PER_UNIT, disc, &value, &slope_over_u);
+            shape->table[row][i][0] = (float)value;
+            shape->table[row][i][1] = (float)slope_over_u;
+        }
+    }
+    return shape;
+}
+
+void rf_spot_shape_free(RfSpotShape *shape)
+{
+    g_free(shape);
+}
+
+double rf_spot_shape_focus_width_px(const RfSpotShape *shape)
+{
+    return shape->focus_width_px;
+}
+
+double rf_spot_shape_widest_px(const RfSpotShape *shape)
+{
+    return shape->focus_width_px * (1 + (ROWS - 1) * WIDTH_STEP);
+}
+
+RfSpotProfile rf_spot_shape_profile(const RfSpotShape *shape, double width_px)
+{
+    double relative = width_px / shape->focus_width_px;
+    double at = CLAMP((relative - 1) / WIDTH_STEP, 0.0, ROWS - 1.0);
+    int row = MIN((int)at, ROWS - 2);
+    bool is_sharp = relative <= 1;
+    return (RfSpotProfile){
+        .row = shape->table[row][0],
+        .wider_row = shape->table[row + 1][0],
+        .part = (float)(at - row),
+        .per_scale = (float)(1 / (is_sharp ? width_px : shape->focus_width_px)),
+        .width_px = (float)width_px,
+        .step_px = (float)(WIDTH_STEP * shape->focus_width_px),
+        .is_sharp = is_sharp,
+    };
+}
+
+RfSpotValue rf_spot_profile_at(const RfSpotProfile *profile, float r2_px2)
+{
+    float u = sqrtf(r2_px2) * profile->per_scale, at = u * PER_UNIT;
+    if (at >= ENTRIES) return (RfSpotValue){0};
+    int i = (int)at;
+    float t = at - (float)i;
+    const float *a = profile->row + NUMBERS * i, *b = profile->wider_row + NUMBERS * i;
+    float value = a[0] + t * (a[2] - a[0]), slope = a[1] + t * (a[3] - a[1]);
+    RfSpotValue out;
+    if (profile->is_sharp) {
+        out.value = value;
+        out.per_width = -u * u * slope * profile->per_scale;
+    } else {
+        float wider = b[0] + t * (b[2] - b[0]), wider_slope = b[1] + t * (b[3] - b[1]);
+        out.value = value + profile->part * (wider - value);
+        out.per_width = (wider - value) / profile->step_px;
+        slope += profile->part * (wider_slope - slope);
+    }
+    out.per_r2 = slope * profile->per_scale * profile->per_scale;
+    return out;
+}

@@ -1,0 +1,40 @@
+/* What a droplet's picture looks like: a round spot, one number wide. In focus it is a Gaussian; out of focus the blur
+ * disc of the lens (geometrical optics) smoothed by that Gaussian, so a wide spot is flat on top with edges as steep as
+ * the sharp spot's. `width` is the standard deviation along one axis: width^2 = focus_width^2 + (disc radius)^2 / 4.
+ * Not for diffraction rings. Immutable; safe from any thread. */
+#pragma once
+
+#include <glib.h>
+#include <stdbool.h>
+
+typedef struct RfSpotShape RfSpotShape;
+
+/*  focus_width_px  > 0: standard deviation of the sharpest spots; narrower ones are taken as plain Gaussians */
+RfSpotShape *rf_spot_shape_new(double focus_width_px);
+void rf_spot_shape_free(RfSpotShape *shape);
+G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfSpotShape, rf_spot_shape_free)
+
+double rf_spot_shape_focus_width_px(const RfSpotShape *shape);
+double rf_spot_shape_widest_px(const RfSpotShape *shape); /* wider spots can't be drawn */
+
+/* The spot of one width, prepared for many pixels. */
+typedef struct {
+    const float *row, *wider_row; /* into the table */
+    float part;                   /* from row to wider_row, 0..1 */
+    float per_scale;              /* 1 / length scale, 1/px */
+    float width_px;
+    float step_px; /* of width from row to wider_row */
+    bool is_sharp; /* plain Gaussian */
+} RfSpotProfile;
+
+RfSpotProfile rf_spot_shape_profile(const RfSpotShape *shape, double width_px);
+
+/* At squared distance r2_px2 from the middle, relative to the peak there:
+ *   value     0..1
+ *   per_r2    d value / d x = per_r2 * x, where x is the offset from the middle along either axis, 1/px^2
+ *   per_width d value / d width, 1/px */
+typedef struct {
+    float value, per_r2, per_width;
+} RfSpotValue;
+
+RfSpotValue rf_spot_profile_at(const RfSpotProfile *profile, float r2_px2);
