@@ -2,6 +2,7 @@
 
 #include "cli/version.h"
 
+#include <inttypes.h>
 #include <signal.h>
 #include <stdatomic.h>
 #include <stdio.h>

@@ -19,6 +19,7 @@ typedef struct { /* one row of paths.csv */
     double x_px, y_px;   /* stored pixels; the measurement itself where seen */
     double u_x_px, u_y_px;
     double x_mm, y_mm;   /* x across gravity, y along it */
+    double u_x_mm, u_y_mm;
     double smooth_x_px, smooth_y_px, u_smooth_x_px, u_smooth_y_px; /* fixed-interval smoother */
     double snr;
 } RfPathRow;

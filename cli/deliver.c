@@ -1,0 +1,63 @@
+#include "cli/deliver.h"
+
+#include "cli/pipeline.h"
+#include "cli/result_folder.h"
+#include "cli/screen_summary.h"
+#include "cli/write_results.h"
+
+#include <stdio.h>
+#include <unistd.h>
+
+enum { SCREEN_LINES = 24 };
+
+static RfResults *make(const RfSettings *settings, const char *paths_csv, RfDeliverKind kind, GError **error)
+{
+    const RfWatchHooks hooks = {
+        .threads = rf_command_common()->threads,
+        .progress = rf_command_progress,
+        .is_cancelled = rf_command_is_cancelled,
+    };
+    switch (kind) {
+    case RF_DELIVER_PATHS:
+        return rf_pipeline_paths(settings, &hooks, error);
+    case RF_DELIVER_CHARGE:
+        return rf_pipeline_charge(settings, paths_csv, &hooks, error);
+    case RF_DELIVER_RUN:
+        break;
+    }
+    return rf_pipeline_run(settings, &hooks, error);
+}
+
+static bool write_down(RfResults *results, const char *out, RfDeliverKind kind, GError **error)
+{
+    g_autoptr(RfResultFolder) folder = rf_result_folder_open(out, error);
+    RfWriteResultsPart part = kind == RF_DELIVER_PATHS ? RF_WRITE_RESULTS_PATHS : RF_WRITE_RESULTS_ALL;
+    return folder && rf_write_results(results, folder, part, error) && rf_result_folder_commit(folder, error);
+}
+
+static void tell(const RfResults *results, const char *out)
+{
+    if (rf_command_common()->is_quiet)
+        return;
+    g_autofree char *summary =
+        rf_screen_summary_new(results, out, SCREEN_LINES, rf_screen_summary_wants_colour(STDOUT_FILENO));
+    fputs(summary, stdout);
+    for (guint i = 0; i < results->warnings->len; i++)
+        fprintf(stderr, "risefall: note: %s\n", (const char *)g_ptr_array_index(results->warnings, i));
+}
+
+RfExit rf_deliver(const char *sheet, const char *paths_csv, const char *out, RfDeliverKind kind, GError **error)
+{
+    /* A target that can't be replaced is said now, not after the work. */
+    if (!rf_result_folder_may_replace(out, error))
+        return RF_EXIT_INPUT;
+    g_autoptr(RfSettings) settings = rf_settings_load(sheet, error);
+    if (!settings)
+        return RF_EXIT_INPUT;
+    g_autoptr(RfResults) results = make(settings, paths_csv, kind, error);
+    rf_command_progress_end();
+    if (!results || !write_down(results, out, kind, error))
+        return RF_EXIT_INPUT;
+    tell(results, out);
+    return results->measured ? RF_EXIT_DONE : RF_EXIT_NOT_MEASURED;
+}

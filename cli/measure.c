@@ -1,0 +1,244 @@
+#include "cli/measure.h"
+
+#include "calib/table.h"
+#include "cli/assess.h"
+#include "cli/trails.h"
+
+#include <math.h>
+
+/* ---- the supply ---- */
+
+static bool read_log(const char *path, RfSupply *supply, GError **error)
+{
+    g_autoptr(RfTable) table = rf_table_read(path, error);
+    if (!table)
+        return false;
+    double time_scale, voltage_scale;
+    int time = rf_table_find_quantity(table, "time", "s", &time_scale);
+    int voltage = rf_table_find_quantity(table, "voltage", "V", &voltage_scale);
+    size_t required;
+    if ((time < 0 && !rf_table_require(table, "time_s", &required, error)) ||
+        (voltage < 0 && !rf_table_require(table, "voltage_V", &required, error)))
+        return false;
+    supply->log_time_s = g_array_new(FALSE, FALSE, sizeof(double));
+    supply->log_voltage_v = g_array_new(FALSE, FALSE, sizeof(double));
+    for (size_t row = 0; row < rf_table_rows(table); row++) {
+        double time_s, voltage_v;
+        if (!rf_table_number(table, row, (size_t)time, &time_s, error) ||
+            !rf_table_number(table, row, (size_t)voltage, &voltage_v, error))
+            return false;
+        time_s *= time_scale;
+        voltage_v *= voltage_scale;
+        g_array_append_val(supply->log_time_s, time_s);
+        g_array_append_val(supply->log_voltage_v, voltage_v);
+    }
+    supply->sheet.log_time_s = (const double *)(const void *)supply->log_time_s->data;
+    supply->sheet.log_voltage_v = (const double *)(const void *)supply->log_voltage_v->data;
+    supply->sheet.log_samples = supply->log_time_s->len;
+    return true;
+}
+
+RfSupply *rf_measure_supply_new(const RfSettings *settings, GError **error)
+{
+    g_autoptr(RfSupply) supply = g_new0(RfSupply, 1);
+    supply->sheet.states = settings->n_states;
+    RfValue voltage = {0};
+    for (unsigned i = 0; i < settings->n_states; i++)
+        supply->sheet.state[i] = settings->states[i];
+    if (rf_settings_voltage(settings, RF_FIELD_TOP_PLUS, &voltage))
+        supply->sheet.top_plus_v = voltage.value;
+    if (rf_settings_voltage(settings, RF_FIELD_TOP_MINUS, &voltage))
+        supply->sheet.top_minus_v = -voltage.value;
+    if (settings->log && !read_log(settings->log, supply, error))
+        return NULL;
+    return g_steal_pointer(&supply);
+}
+
+void rf_measure_supply_free(RfSupply *supply)
+{
+    if (!supply)
+        return;
+    if (supply->log_time_s)
+        g_array_unref(supply->log_time_s);
+    if (supply->log_voltage_v)
+        g_array_unref(supply->log_voltage_v);
+    g_free(supply);
+}
+
+/* ---- droplets side by side ---- */
+
+typedef struct {
+    void (*work)(void *context, size_t i);
+    void *context;
+} Job;
+
+static void do_job(void *item, void *user)
+{
+    const Job *job = user;
+    job->work(job->context, GPOINTER_TO_SIZE(item) - 1);
+}
+
+static void for_each(void *user, size_t n, void (*work)(void *context, size_t i), void *context)
+{
+    int threads = *(const int *)user;
+    Job job = {work, context};
+    GThreadPool *pool = threads == 1 ? NULL : g_thread_pool_new(do_job, &job, threads, TRUE, NULL);
+    for (size_t i = 0; i < n; i++)
+        if (pool)
+            g_thread_pool_push(pool, GSIZE_TO_POINTER(i + 1), NULL);
+        else
+            work(context, i);
+    if (pool)
+        g_thread_pool_free(pool, FALSE, TRUE);
+}
+
+/* ---- rows ---- */
+
+static void add_switches(RfResults *results, const RfFieldTimeline *timeline)
+{
+    for (guint i = 0; i < timeline->switches->len; i++) {
+        const RfFieldSwitch *one = &g_array_index(timeline->switches, RfFieldSwitch, i);
+        RfSwitchRow row = {
+            .number = i + 1,
+            .time_s = one->time_s,
+            .from = one->from,
+            .to = one->to,
+            .droplets = one->droplets,
+            .log_time_s = one->log_time_s,
+            .has_log_time = one->has_log_time,
+        };
+        g_array_append_val(results->switches, row);
+    }
+}
+
+/* Mean velocity of samples [first, end) on one axis, by generalised least squares under the path's own noise. */
+static RfValue velocity_mm_s(const RfTrail *trail, size_t first, size_t end, bool is_fall, double diffusion_m2_s,
+                             double extra_variance_m2)
+{
+    size_t n = end - first;
+    g_autofree double *times_s = g_new(double, n), *u_m = g_new(double, n), *columns = g_new(double, 2 * n);
+    for (size_t i = 0; i < n; i++) {
+        const RfSample *sample = &trail->samples[first + i];
+        times_s[i] = sample->time_s;
+        u_m[i] = is_fall ? sample->u_fall_m : sample->u_drift_m;
+        columns[2 * i] = is_fall ? sample->fall_m : sample->drift_m;
+        columns[2 * i + 1] = sample->time_s - trail->samples[first].time_s;
+    }
+    RfPathNoise noise = {.diffusion_m2_s = diffusion_m2_s, .extra_variance_m2 = extra_variance_m2};
+    double log_det, log_det_information, rest, velocity_m_s, variance;
+    if (!rf_path_likelihood_whiten(&noise, n, times_s, u_m, 2, columns, &log_det) ||
+        !rf_path_likelihood_solve(n, 2, columns, &velocity_m_s, &variance, &rest, &log_det_information))
+        return (RfValue){0};
+    return (RfValue){velocity_m_s * 1e3, sqrt(variance) * 1e3};
+}
+
+enum { SEGMENT_SAMPLES_MIN = 3 };
+
+static void add_segments_of(RfResults *results, const RfTrail *trail, const RfDropletFit *fit,
+                            const RfFieldTimeline *timeline)
+{
+    size_t first = 0;
+    unsigned number = 0;
+    for (guint k = 0; k < timeline->intervals->len; k++) {
+        const RfFieldInterval *interval = &g_array_index(timeline->intervals, RfFieldInterval, k);
+        while (first < trail->n && trail->samples[first].time_s < interval->start_s)
+            first++;
+        size_t end = first;
+        while (end < trail->n && (trail->samples[end].time_s < interval->end_s || k + 1 == timeline->intervals->len))
+            end++;
+        if (end - first < SEGMENT_SAMPLES_MIN)
+            continue;
+        RfSegmentRow row = {
+            .droplet = trail->droplet,
+            .segment = ++number,
+            .start_s = trail->samples[first].time_s,
+            .end_s = trail->samples[end - 1].time_s,
+            .field = interval->state,
+            .voltage_V = interval->voltage_v,
+            .fall_mm_s = velocity_mm_s(trail, first, end, true, fit->diffusion_m2_s.value,
+                                       fit->fall_extra_variance_m2.value),
+            .drift_mm_s = velocity_mm_s(trail, first, end, false, fit->diffusion_m2_s.value,
+                                        fit->across_extra_variance_m2.value),
+            .frames = (unsigned)(end - first),
+        };
+        g_array_append_val(results->segments, row);
+    }
+}
+
+static void add_segments(RfResults *results, const RfTrailSet *trails, const RfDropletSet *set)
+{
+    for (size_t i = 0; i < trails->n; i++)
+        if (set->droplets[i].fit.state == RF_FIT_DONE)
+            add_segments_of(results, &trails->trails[i], &set->droplets[i].fit, set->timeline);
+}
+
+/* ---- what a reader should know ---- */
+
+static void warn(RfResults *results, const char *format, ...) G_GNUC_PRINTF(2, 3);
+
+static void warn(RfResults *results, const char *format, ...)
+{
+    va_list arguments;
+    va_start(arguments, format);
+    g_ptr_array_add(results->warnings, g_strdup_vprintf(format, arguments));
+    va_end(arguments);
+}
+
+static void warn_of_log(RfResults *results, const RfLogFinding *finding)
+{
+    switch (finding->kind) {
+    case RF_LOG_AGREES:
+        break;
+    case RF_LOG_MISSING:
+        warn(results, "the droplets show a switch at %.2f s that the voltage log doesn't have", finding->time_s);
+        break;
+    case RF_LOG_EXTRA:
+        warn(results, "the voltage log has a switch at %.2f s that the droplets contradict", finding->time_s);
+        break;
+    case RF_LOG_UNSEEN:
+        warn(results, "the voltage log's switch at %.2f s was seen by no charged droplet", finding->time_s);
+        break;
+    case RF_LOG_LATE:
+        warn(results, "the voltage log's switch at %.2f s is %.3f s off what the droplets show (u = %.3f s)",
+             finding->time_s, finding->difference.value, finding->difference.sigma);
+        break;
+    case RF_LOG_VOLTAGE_MISFIT:
+        warn(results, "from %.2f s on the droplets move as under %.1f V more than the log says (u = %.1f V)",
+             finding->time_s, finding->difference.value, finding->difference.sigma);
+        break;
+    }
+}
+
+static void warn_of_timeline(RfResults *results, const RfFieldTimeline *timeline)
+{
+    if (timeline->labels_ambiguous)
+        warn(results, "motion alone can't settle which field state is which; signs of charges may be swapped");
+    for (guint i = 0; i < timeline->findings->len; i++)
+        warn_of_log(results, &g_array_index(timeline->findings, RfLogFinding, i));
+}
+
+bool rf_measure_paths(RfResults *results, const RfConditions *conditions, const RfSupply *supply, int threads,
+                      GError **error)
+{
+    g_autoptr(RfTrailSet) trails = rf_trails_new(results->paths);
+    if (trails->n > 0) {
+        int workers = threads > 0 ? threads : (int)g_get_num_processors();
+        RfDropletSetSettings how = {
+            .medium = &conditions->medium,
+            .sheet = &supply->sheet,
+            .for_each = for_each,
+            .for_each_user = &workers,
+        };
+        g_autoptr(RfDropletSet) set = rf_droplet_set_measure(trails->trails, trails->n, &how, error);
+        if (!set)
+            return false;
+        add_switches(results, set->timeline);
+        add_segments(results, trails, set);
+        rf_assess_droplets(results, trails->trails, set, conditions);
+        rf_assess_budget(results, trails->trails, set, conditions);
+        warn_of_timeline(results, set->timeline);
+    }
+    rf_assess_unit(results);
+    rf_assess_run(results);
+    return true;
+}

@@ -1,0 +1,26 @@
+/* From paths in millimetres to everything that is reported of them: segments, switches, steps, droplets with charge and
+ * verdict, the unit, the budget. Not for pictures: the rows may come from a recording or from a paths.csv. */
+#pragma once
+
+#include <glib.h>
+#include <stdbool.h>
+
+#include "cli/conditions.h"
+#include "cli/results.h"
+#include "cli/settings.h"
+#include "physics/droplet_set.h"
+
+/* The supply as the sheet states it, with the log if there is one. `log_*` in the struct borrow from the arrays here. */
+typedef struct {
+    RfFieldSheet sheet;
+    GArray *log_time_s, *log_voltage_v; /* double; NULL without a log */
+} RfSupply;
+
+RfSupply *rf_measure_supply_new(const RfSettings *settings, GError **error);
+void rf_measure_supply_free(RfSupply *supply);
+G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfSupply, rf_measure_supply_free)
+
+/* Reads results->paths and fills segments, switches, steps, droplets, unit, budget, warnings, measured and verdict.
+ * `threads` 0: one per core. */
+bool rf_measure_paths(RfResults *results, const RfConditions *conditions, const RfSupply *supply, int threads,
+                      GError **error);

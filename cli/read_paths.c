@@ -1,0 +1,178 @@
+#include "cli/read_paths.h"
+
+#include "calib/table.h"
+
+#include <json-glib/json-glib.h>
+#include <math.h>
+
+/* Columns in the order of the struct below. Those from `field` on may be missing. */
+static const char *const names[] = {"droplet", "frame", "time_s", "x_px",   "y_px",   "x_mm",
+                                    "y_mm",    "seen",  "u_px",   "u_x_px", "u_y_px", "u_x_mm",
+                                    "u_y_mm",  "field", "snr"};
+enum {
+    DROPLET,
+    FRAME,
+    TIME_S,
+    X_PX,
+    Y_PX,
+    X_MM,
+    Y_MM,
+    SEEN,
+    U_PX,
+    U_X_PX,
+    U_Y_PX,
+    U_X_MM,
+    U_Y_MM,
+    FIELD,
+    SNR,
+    COLUMNS,
+    REQUIRED = U_X_PX
+};
+
+static bool find_columns(const RfTable *table, int column[COLUMNS], GError **error)
+{
+    for (int i = 0; i < COLUMNS; i++) {
+        size_t required;
+        column[i] = rf_table_find(table, names[i]);
+        if (column[i] < 0 && i < REQUIRED)
+            return rf_table_require(table, names[i], &required, error);
+    }
+    return true;
+}
+
+static bool read_cells(const RfTable *table, size_t row, const int column[COLUMNS], double cell[COLUMNS], GError **error)
+{
+    for (int i = 0; i < COLUMNS; i++) {
+        cell[i] = 0;
+        if (column[i] >= 0 && !rf_table_is_blank(table, row, (size_t)column[i]) &&
+            !rf_table_number(table, row, (size_t)column[i], &cell[i], error))
+            return false;
+    }
+    return true;
+}
+
+static bool row_of(const RfTable *table, size_t row, const int column[COLUMNS], RfPathRow *out, GError **error)
+{
+    double cell[COLUMNS];
+    if (!read_cells(table, row, column, cell, error))
+        return false;
+    if (!(cell[DROPLET] >= 1 && cell[DROPLET] <= 1e9)) {
+        rf_table_cell_error(table, row, (size_t)column[DROPLET], "a droplet's number, from 1", error);
+        return false;
+    }
+    if (fabs(cell[FRAME]) > 1e15) {
+        rf_table_cell_error(table, row, (size_t)column[FRAME], "the index of a frame", error);
+        return false;
+    }
+    *out = (RfPathRow){
+        .droplet = (unsigned)cell[DROPLET],
+        .frame = (int64_t)cell[FRAME],
+        .field = cell[FIELD] > 0,
+        .seen = cell[SEEN] > 0,
+        .time_s = cell[TIME_S],
+        .x_px = cell[X_PX],
+        .y_px = cell[Y_PX],
+        .u_x_px = column[U_X_PX] >= 0 ? cell[U_X_PX] : cell[U_PX],
+        .u_y_px = column[U_Y_PX] >= 0 ? cell[U_Y_PX] : cell[U_PX],
+        .x_mm = cell[X_MM],
+        .y_mm = cell[Y_MM],
+        .u_x_mm = cell[U_X_MM],
+        .u_y_mm = cell[U_Y_MM],
+        .snr = cell[SNR],
+    };
+    return true;
+}
+
+static bool in_order(const RfPathRow *before, const RfPathRow *row)
+{
+    return row->droplet > before->droplet || (row->droplet == before->droplet && row->time_s > before->time_s);
+}
+
+/* Millimetres per pixel from the rows themselves: how far the droplets moved in both. */
+static double mm_per_px(const GArray *rows)
+{
+    double mm2 = 0, px2 = 0;
+    for (guint i = 1; i < rows->len; i++) {
+        const RfPathRow *a = &g_array_index(rows, RfPathRow, i - 1), *b = &g_array_index(rows, RfPathRow, i);
+        if (a->droplet != b->droplet)
+            continue;
+        mm2 += (b->x_mm - a->x_mm) * (b->x_mm - a->x_mm) + (b->y_mm - a->y_mm) * (b->y_mm - a->y_mm);
+        px2 += (b->x_px - a->x_px) * (b->x_px - a->x_px) + (b->y_px - a->y_px) * (b->y_px - a->y_px);
+    }
+    return px2 > 0 ? sqrt(mm2 / px2) : 0;
+}
+
+static void fill_in_sigma(GArray *rows)
+{
+    double scale = mm_per_px(rows);
+    for (guint i = 0; i < rows->len; i++) {
+        RfPathRow *row = &g_array_index(rows, RfPathRow, i);
+        row->u_x_mm = row->u_x_px * scale;
+        row->u_y_mm = row->u_y_px * scale;
+    }
+}
+
+static bool read_rows(const RfTable *table, GArray *rows, GError **error)
+{
+    int column[COLUMNS];
+    if (!find_columns(table, column, error))
+        return false;
+    for (size_t i = 0; i < rf_table_rows(table); i++) {
+        RfPathRow row;
+        if (!row_of(table, i, column, &row, error))
+            return false;
+        if (rows->len > 0 && !in_order(&g_array_index(rows, RfPathRow, rows->len - 1), &row)) {
+            rf_table_cell_error(table, i, (size_t)column[TIME_S],
+                                "rows sorted by droplet, then by rising time", error);
+            return false;
+        }
+        g_array_append_val(rows, row);
+    }
+    if (column[U_X_MM] < 0 || column[U_Y_MM] < 0)
+        fill_in_sigma(rows);
+    return true;
+}
+
+static double member(JsonObject *object, const char *name)
+{
+    return json_object_has_member(object, name) ? json_object_get_double_member_with_default(object, name, 0) : 0;
+}
+
+static bool read_scale(const char *path, RfScaleRow *scale, GError **error)
+{
+    g_autoptr(JsonParser) parser = json_parser_new();
+    if (!json_parser_load_from_file(parser, path, error))
+        return false;
+    JsonNode *root = json_parser_get_root(parser);
+    if (!root || !JSON_NODE_HOLDS_OBJECT(root))
+        return true;
+    JsonObject *object = json_node_get_object(root);
+    *scale = (RfScaleRow){
+        .px_per_mm_x = member(object, "px_per_mm_x"),
+        .px_per_mm_y = member(object, "px_per_mm_y"),
+        .u_px_per_mm_x = member(object, "u_px_per_mm_x"),
+        .u_px_per_mm_y = member(object, "u_px_per_mm_y"),
+        .rotation_deg = member(object, "rotation_deg"),
+        .lines_found = (unsigned)fmax(0, fmin(1e6, member(object, "lines_found"))),
+        .residual_px = member(object, "residual_px"),
+        .source = g_strdup(path),
+    };
+    scale->found = scale->px_per_mm_x > 0 && scale->px_per_mm_y > 0;
+    return true;
+}
+
+bool rf_read_paths(const char *path, RfResults *results, double *scale_relative_u, GError **error)
+{
+    g_autoptr(RfTable) table = rf_table_read(path, error);
+    if (!table || !read_rows(table, results->paths, error))
+        return false;
+    g_autofree char *folder = g_path_get_dirname(path);
+    g_autofree char *scale_path = g_build_filename(folder, "scale.json", NULL);
+    if (g_file_test(scale_path, G_FILE_TEST_EXISTS) && !read_scale(scale_path, &results->scale, error))
+        return false;
+    *scale_relative_u = results->scale.found ? results->scale.u_px_per_mm_y / results->scale.px_per_mm_y : 0;
+    if (!results->scale.found)
+        g_ptr_array_add(results->warnings,
+                        g_strdup("no scale.json lies beside the paths: the scale's uncertainty is missing from u_charge_C"));
+    return true;
+}
