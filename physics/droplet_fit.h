@@ -81,6 +81,10 @@ typedef struct {
 /* Pure; safe from any thread with its own arguments. */
 void rf_droplet_fit(const RfTrail *trail, const RfDropletModel *model, RfDropletFit *fit);
 
+/* Fills radius_slope and charge_slope_coulomb of a done fit, by implicit differentiation of the summit: costs about as
+ * much as the fit, hence apart. */
+void rf_droplet_fit_slopes(const RfTrail *trail, const RfDropletModel *model, RfDropletFit *fit);
+
 /* The interval in which the log-likelihood, maximised over all else, is within 1/2 of its top: 68 % for ln(radius). */
 bool rf_droplet_fit_profile_radius(const RfTrail *trail, const RfDropletModel *model, const RfDropletFit *fit,
                                    double *low_m, double *high_m);

@@ -1,5 +1,12 @@
 #include "physics/field_timeline.h"
 
+#include <math.h>
+
+#include "physics/field_log.h"
+#include "physics/field_runs.h"
+#include "physics/field_states.h"
+#include "physics/switch_instant.h"
+
 RfFieldTimeline *rf_field_timeline_new(void)
 {
     RfFieldTimeline *timeline = g_new0(RfFieldTimeline, 1);
@@ -38,4 +45,97 @@ double rf_field_timeline_impulse_v_s(const RfFieldTimeline *timeline, double tim
         sum += interval->voltage_v * (interval->end_s - interval->start_s);
     }
     return sum;
+}
+
+static double sheet_voltage(const RfFieldSheet *sheet, RfFieldState state)
+{
+    if (state == RF_FIELD_OFF) return 0;
+    return state == RF_FIELD_TOP_PLUS ? sheet->top_plus_v : sheet->top_minus_v;
+}
+
+/* Runs of one label become one interval. */
+static void collect_intervals(RfFieldTimeline *timeline, const RfFieldRuns *runs, const unsigned *label,
+                              const RfFieldSheet *sheet, const double *voltage_v)
+{
+    for (size_t r = 0; r < runs->runs; r++) {
+        if (r > 0 && label[r] == label[r - 1]) {
+            g_array_index(timeline->intervals, RfFieldInterval, timeline->intervals->len - 1).end_s =
+                runs->edge_s[r + 1];
+            continue;
+        }
+        RfFieldInterval interval = {runs->edge_s[r], runs->edge_s[r + 1], sheet->state[label[r]],
+                                    voltage_v[label[r]]};
+        g_array_append_val(timeline->intervals, interval);
+        if (r == 0) continue;
+        RfFieldSwitch s = {
+            .time_s = {runs->edge_s[r], 0.1}, .from = sheet->state[label[r - 1]], .to = interval.state};
+        g_array_append_val(timeline->switches, s);
+    }
+}
+
+/* The run that ends (or begins) at an edge. */
+static size_t run_ending_at(const RfFieldRuns *runs, double edge_s)
+{
+    size_t r = 0;
+    while (r + 1 < runs->runs && runs->edge_s[r + 1] < edge_s - 1e-9) r++;
+    return r;
+}
+
+/* Before there are fits, a droplet's speeds in the runs on either side of a switch tell when it was. */
+static void refine_roughly(RfFieldTimeline *timeline, unsigned number, const RfTrail *trails,
+                           const RfFieldRuns *runs)
+{
+    static const double watched_s = 0.35;
+    const RfFieldInterval *before = &g_array_index(timeline->intervals, RfFieldInterval, number);
+    size_t run = run_ending_at(runs, before->end_s), n = runs->droplets;
+    double change_v = before[1].voltage_v - before[0].voltage_v, forever = HUGE_VAL;
+    if (run + 1 >= runs->runs || change_v == 0) return;
+    g_autofree RfSwitchWitness *witnesses = g_new0(RfSwitchWitness, n);
+    g_autofree double *per_volt = g_new(double, 2 * n);
+    for (size_t j = 0; j < n; j++) {
+        const RfRunSpeed *a = &runs->speed[j * runs->runs + run], *b = a + 1;
+        if (a->time_s < watched_s || b->time_s < watched_s) continue;
+        per_volt[2 * j] = (b->speed_m_s - a->speed_m_s) / change_v;
+        per_volt[2 * j + 1] = sqrt(a->variance_m2_s2 + b->variance_m2_s2) / fabs(change_v);
+        witnesses[j] = (RfSwitchWitness){.trail = &trails[j],
+                                         .usable = true,
+                                         .noise = {.diffusion_m2_s = runs->diffusion_m2_s[j]},
+                                         .fall_m_s = a->speed_m_s - per_volt[2 * j] * before->voltage_v,
+                                         .spells = 1,
+                                         .spell_end_s = &forever,
+                                         .speed_per_volt_m_s_v = &per_volt[2 * j],
+                                         .u_speed_per_volt_m_s_v = &per_volt[2 * j + 1]};
+    }
+    rf_switch_instant_refine(timeline, number, witnesses, n);
+}
+
+RfFieldTimeline *rf_field_timeline_find(const RfTrail *trails, size_t n, const RfFieldSheet *sheet,
+                                        GError **error)
+{
+    g_autoptr(RfFieldTimeline) timeline = rf_field_timeline_new();
+    g_autoptr(GArray) spans = NULL;
+    RfFieldSheet states = *sheet;
+    if (sheet->log_samples > 0) {
+        spans = rf_voltage_log_spans(sheet->log_time_s, sheet->log_voltage_v, sheet->log_samples, error);
+        if (!spans) return NULL;
+        rf_field_log_complete_sheet(spans, &states);
+    }
+    double voltage_v[RF_FIELD_STATES] = {0};
+    for (unsigned s = 0; s < states.states; s++) voltage_v[s] = sheet_voltage(&states, states.state[s]);
+    g_autoptr(RfFieldRuns) runs = rf_field_runs_new(trails, n);
+    g_autofree unsigned *label = g_new0(unsigned, runs->runs);
+    g_autofree RfStateDroplet *droplets = g_new0(RfStateDroplet, n);
+    double margin = rf_field_states_label(runs, &states, voltage_v, label, droplets);
+    timeline->labels_ambiguous = states.states == 3 && margin < 3;
+    collect_intervals(timeline, runs, label, &states, voltage_v);
+    for (unsigned k = 0; k < timeline->switches->len; k++) refine_roughly(timeline, k, trails, runs);
+    if (spans && !rf_field_log_apply(spans, &states, runs, droplets, timeline, error)) return NULL;
+    return g_steal_pointer(&timeline);
+}
+
+void rf_field_timeline_refine(RfFieldTimeline *timeline, const RfSwitchWitness *witnesses, size_t n)
+{
+    for (unsigned k = 0; k < timeline->switches->len; k++)
+        rf_switch_instant_refine(timeline, k, witnesses, n);
+    if (timeline->has_log) rf_field_log_audit(timeline, witnesses, n);
 }

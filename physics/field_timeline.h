@@ -28,7 +28,8 @@ typedef struct {
     RfFieldState from, to;
     unsigned droplets; /* how many tell of it */
     bool has_log_time;
-    double log_time_s; /* on the log's own clock */
+    double log_time_s;   /* on the log's own clock */
+    double u_log_time_s; /* its sampling interval over sqrt(12) */
 } RfFieldSwitch;
 
 typedef enum {
@@ -86,7 +87,8 @@ typedef struct {
     const double *u_speed_per_volt_m_s_v; /* (borrowed) spells */
 } RfSwitchWitness;
 
-/* Moves each switch to the mean of its likelihood over all witnesses, and states its sigma; intervals follow. */
+/* Moves each switch to the mean of its likelihood over all witnesses, and states its sigma; intervals follow. With a
+ * log, its clock and the findings about late switches and misfitting voltages are drawn up anew. */
 void rf_field_timeline_refine(RfFieldTimeline *timeline, const RfSwitchWitness *witnesses, size_t n);
 
 /* Integral of the voltage from the first interval's start to a time, V s; outside the timeline the nearest state

@@ -1,0 +1,120 @@
+#include "physics/droplet_set.h"
+
+#include <math.h>
+
+typedef struct {
+    const RfTrail *trails;
+    const RfDropletSetSettings *settings;
+    RfDropletSet *set;
+    bool is_last; /* the last round: steps stay, slopes for the budget are wanted */
+} Work;
+
+static void one_after_another(void *user, size_t n, void (*work)(void *context, size_t i), void *context)
+{
+    (void)user;
+    for (size_t i = 0; i < n; i++) work(context, i);
+}
+
+static void for_each(const RfDropletSetSettings *settings, size_t n, void (*work)(void *, size_t),
+                     void *context)
+{
+    RfForEach each = settings->for_each ? settings->for_each : one_after_another;
+    each(settings->for_each_user, n, work, context);
+}
+
+static size_t step_times(const GArray *steps, double *time_s)
+{
+    for (unsigned k = 0; k < steps->len; k++) time_s[k] = g_array_index(steps, RfChargeStep, k).time_s.value;
+    return steps->len;
+}
+
+static RfDropletModel model_of(const Work *work)
+{
+    return (RfDropletModel){.medium = work->settings->medium,
+                            .timeline = work->set->timeline,
+                            .drift = work->set->drift,
+                            .fall_memory = work->set->fall_memory,
+                            .across_memory = work->set->across_memory};
+}
+
+/* Fit without steps, steps from it, fit with them. */
+static void measure_one(void *context, size_t i)
+{
+    const Work *work = context;
+    RfDropletResult *result = &work->set->droplets[i];
+    const RfTrail *trail = &work->trails[i];
+    RfDropletModel model = model_of(work);
+    double time_s[RF_DROPLET_SPELLS_MAX];
+    rf_droplet_fit(trail, &model, &result->fit);
+    g_array_unref(result->steps);
+    result->steps = rf_charge_step_find(trail, &model, &result->fit);
+    model.step_s = time_s;
+    model.steps = step_times(result->steps, time_s);
+    if (model.steps > 0) rf_droplet_fit(trail, &model, &result->fit);
+    if (work->is_last && result->fit.state == RF_FIT_DONE) rf_droplet_fit_slopes(trail, &model, &result->fit);
+}
+
+/* Room for what a witness borrows. */
+typedef struct {
+    double end_s[RF_DROPLET_SPELLS_MAX], per_volt[RF_DROPLET_SPELLS_MAX], u_per_volt[RF_DROPLET_SPELLS_MAX];
+} WitnessSpells;
+
+static RfSwitchWitness witness_of(const Work *work, size_t i, WitnessSpells *spells)
+{
+    const RfDropletResult *result = &work->set->droplets[i];
+    const RfDropletFit *fit = &result->fit;
+    bool is_done = fit->state == RF_FIT_DONE;
+    for (size_t k = 0; is_done && k < fit->spells; k++) {
+        spells->end_s[k] =
+            k < result->steps->len ? g_array_index(result->steps, RfChargeStep, k).time_s.value : HUGE_VAL;
+        spells->per_volt[k] = fit->spell[k].speed_per_volt_m_s_v.value;
+        spells->u_per_volt[k] = fit->spell[k].speed_per_volt_m_s_v.sigma;
+    }
+    return (RfSwitchWitness){
+        .trail = &work->trails[i],
+        .usable = is_done,
+        .noise = {fit->diffusion_m2_s.value, fit->fall_extra_variance_m2.value, work->set->fall_memory},
+        .fall_m_s = fit->fall_m_s.value,
+        .spells = is_done ? fit->spells : 0,
+        .spell_end_s = spells->end_s,
+        .speed_per_volt_m_s_v = spells->per_volt,
+        .u_speed_per_volt_m_s_v = spells->u_per_volt};
+}
+
+static void refine_switches(const Work *work)
+{
+    size_t n = work->set->n;
+    g_autofree RfSwitchWitness *witnesses = g_new(RfSwitchWitness, n);
+    g_autofree WitnessSpells *spells = g_new0(WitnessSpells, n);
+    for (size_t i = 0; i < n; i++) witnesses[i] = witness_of(work, i, &spells[i]);
+    rf_field_timeline_refine(work->set->timeline, witnesses, n);
+}
+
+RfDropletSet *rf_droplet_set_measure(const RfTrail *trails, size_t n, const RfDropletSetSettings *settings,
+                                     GError **error)
+{
+    g_autoptr(RfDropletSet) set = g_new0(RfDropletSet, 1);
+    set->n = n;
+    set->droplets = g_new0(RfDropletResult, n);
+    for (size_t i = 0; i < n; i++) set->droplets[i].steps = g_array_new(FALSE, TRUE, sizeof(RfChargeStep));
+    set->timeline = rf_field_timeline_find(trails, n, settings->sheet, error);
+    if (!set->timeline) return NULL;
+    set->drift = rf_common_drift_new();
+    Work work = {trails, settings, set, false};
+    for_each(settings, n, measure_one, &work);
+    refine_switches(&work);
+    work.is_last = true;
+    for_each(settings, n, measure_one, &work);
+    refine_switches(&work);
+    return g_steal_pointer(&set);
+}
+
+void rf_droplet_set_free(RfDropletSet *set)
+{
+    if (!set) return;
+    rf_field_timeline_free(set->timeline);
+    rf_common_drift_free(set->drift);
+    for (size_t i = 0; i < set->n; i++) g_array_unref(set->droplets[i].steps);
+    g_free(set->droplets);
+    g_free(set);
+}

@@ -1,0 +1,214 @@
+#include "physics/field_runs.h"
+
+#include <math.h>
+
+#include "physics/droplet_path.h"
+
+/* Shortest bin; switches closer than two bins can't be told apart here. */
+static const double BIN_S = 0.1;
+/* Log-likelihood that a cut must gain: so much for itself, so much for each droplet's new speed. Chance gains half a
+ * unit per droplet on average; the rest keeps the best of some thousand places below the bar. */
+static const double CUT_COST = 10, SPEED_COST = 1.2;
+
+typedef struct {
+    size_t first, end; /* bins covered whole */
+    double *place_m;   /* at the edges of its bins, end - first + 1 */
+    double rate;       /* variance of a displacement per second, twice an effective D */
+} BinnedTrail;
+
+typedef struct {
+    size_t bins, trails;
+    double start_s, bin_s;
+    BinnedTrail *trail;
+} Binned;
+
+static void recording_span(const RfTrail *trails, size_t n, double *start_s, double *end_s)
+{
+    *start_s = HUGE_VAL;
+    *end_s = -HUGE_VAL;
+    for (size_t j = 0; j < n; j++) {
+        if (trails[j].n == 0) continue;
+        *start_s = fmin(*start_s, trails[j].samples[0].time_s);
+        *end_s = fmax(*end_s, trails[j].samples[trails[j].n - 1].time_s);
+    }
+    if (*start_s > *end_s) *start_s = *end_s = 0;
+}
+
+static double place_at(const RfTrail *trail, size_t *cursor, double time_s)
+{
+    const RfSample *s = trail->samples;
+    while (*cursor + 2 < trail->n && s[*cursor + 1].time_s < time_s) (*cursor)++;
+    const RfSample *a = &s[*cursor], *b = &s[*cursor + 1];
+    double part = (time_s - a->time_s) / (b->time_s - a->time_s);
+    return a->fall_m + part * (b->fall_m - a->fall_m);
+}
+
+static void bin_trail(const RfTrail *trail, const Binned *binned, BinnedTrail *into)
+{
+    *into = (BinnedTrail){0};
+    if (trail->n < 3) return;
+    double from = (trail->samples[0].time_s - binned->start_s) / binned->bin_s;
+    double to = (trail->samples[trail->n - 1].time_s - binned->start_s) / binned->bin_s;
+    into->first = (size_t)ceil(from - 1e-9);
+    size_t end = (size_t)floor(to + 1e-9);
+    into->end = MIN(end, binned->bins);
+    if (into->end <= into->first) {
+        into->end = into->first;
+        return;
+    }
+    into->place_m = g_new(double, into->end - into->first + 1);
+    size_t cursor = 0;
+    for (size_t b = into->first; b <= into->end; b++)
+        into->place_m[b - into->first] =
+            place_at(trail, &cursor, binned->start_s + (double)b * binned->bin_s);
+}
+
+/* D from the scatter across gravity, where no field acts, drawn towards the mean of all where there is little of it. */
+static void estimate_diffusion(const RfTrail *trails, size_t n, double *diffusion, double *noise)
+{
+    static const double own_weight_s = 2; /* a trail of 2 s counts as much as the common value */
+    const RfDropletModel nothing = {0};
+    double sum = 0, weight = 0;
+    for (size_t j = 0; j < n; j++) {
+        diffusion[j] = noise[j] = 0;
+        if (trails[j].n < 3) continue;
+        g_autoptr(RfDropletPath) path = rf_droplet_path_new(&trails[j], &nothing);
+        rf_droplet_path_scatter(path, &diffusion[j], &noise[j]);
+        double span = path->times_s[path->n - 1] - path->times_s[0];
+        sum += span * diffusion[j];
+        weight += span;
+    }
+    double common = weight > 0 ? sum / weight : 0;
+    if (!(common > 0))
+        common = 2e-11; /* a droplet of 0.65 um in air: the order of magnitude is all that's needed */
+    for (size_t j = 0; j < n; j++) {
+        double span =
+            trails[j].n < 3 ? 0 : trails[j].samples[trails[j].n - 1].time_s - trails[j].samples[0].time_s;
+        diffusion[j] = (span * diffusion[j] + own_weight_s * common) / (span + own_weight_s);
+        diffusion[j] = fmax(diffusion[j], common / 5);
+        noise[j] = fmax(noise[j], 0);
+    }
+}
+
+static double typical_step(const RfTrail *trails, size_t n)
+{
+    double span = 0;
+    size_t steps = 0;
+    for (size_t j = 0; j < n; j++) {
+        if (trails[j].n < 2) continue;
+        span += trails[j].samples[trails[j].n - 1].time_s - trails[j].samples[0].time_s;
+        steps += trails[j].n - 1;
+    }
+    return steps > 0 ? span / (double)steps : 1;
+}
+
+static void bin_all(const RfTrail *trails, size_t n, const double *diffusion, const double *noise,
+                    Binned *binned)
+{
+    double end_s;
+    recording_span(trails, n, &binned->start_s, &end_s);
+    double length = end_s - binned->start_s, wanted = fmax(BIN_S, 2 * typical_step(trails, n));
+    binned->bins = MAX((size_t)floor(length / wanted), 1);
+    binned->bin_s = length > 0 ? length / (double)binned->bins : wanted;
+    binned->trails = n;
+    binned->trail = g_new(BinnedTrail, n);
+    for (size_t j = 0; j < n; j++) {
+        bin_trail(&trails[j], binned, &binned->trail[j]);
+        binned->trail[j].rate =
+            2 * diffusion[j] + 2 * noise[j] / 0.5; /* localisation, over a run of half a second */
+    }
+}
+
+/* What a run from bin a to bin b explains: half the squared displacement over its variance, less the cost. */
+static double run_gain(const Binned *binned, size_t a, size_t b)
+{
+    double gain = -CUT_COST;
+    for (size_t j = 0; j < binned->trails; j++) {
+        const BinnedTrail *t = &binned->trail[j];
+        size_t from = MAX(a, t->first), to = MIN(b, t->end);
+        if (from >= to) continue;
+        double moved = t->place_m[to - t->first] - t->place_m[from - t->first];
+        gain += moved * moved / (2 * t->rate * (double)(to - from) * binned->bin_s) - SPEED_COST;
+    }
+    return gain;
+}
+
+/* cut[b]: where the run that ends at bin b begins, in the best partition of what lies before b. */
+static void partition(const Binned *binned, size_t *cut)
+{
+    g_autofree double *best = g_new(double, binned->bins + 1);
+    g_autofree size_t *alive = g_new(size_t, binned->bins + 1);
+    double slack = CUT_COST + SPEED_COST * (double)binned->trails;
+    size_t n_alive = 0;
+    best[0] = 0;
+    for (size_t b = 1; b <= binned->bins; b++) {
+        alive[n_alive++] = b - 1;
+        best[b] = -HUGE_VAL;
+        g_autofree double *with = g_new(double, n_alive);
+        for (size_t i = 0; i < n_alive; i++) {
+            with[i] = best[alive[i]] + run_gain(binned, alive[i], b);
+            if (with[i] <= best[b]) continue;
+            best[b] = with[i];
+            cut[b] = alive[i];
+        }
+        size_t kept = 0; /* a start that lags by more than a new cut could cost never leads again */
+        for (size_t i = 0; i < n_alive; i++)
+            if (with[i] + slack >= best[b]) alive[kept++] = alive[i];
+        n_alive = kept;
+    }
+}
+
+static void fill_speeds(const Binned *binned, const size_t *edges, RfFieldRuns *runs)
+{
+    for (size_t j = 0; j < runs->droplets; j++) {
+        const BinnedTrail *t = &binned->trail[j];
+        for (size_t r = 0; r < runs->runs; r++) {
+            RfRunSpeed *speed = &runs->speed[j * runs->runs + r];
+            size_t from = MAX(edges[r], t->first), to = MIN(edges[r + 1], t->end);
+            *speed = (RfRunSpeed){0};
+            if (from >= to) continue;
+            speed->time_s = (double)(to - from) * binned->bin_s;
+            speed->speed_m_s = (t->place_m[to - t->first] - t->place_m[from - t->first]) / speed->time_s;
+            speed->variance_m2_s2 = t->rate / speed->time_s;
+        }
+    }
+}
+
+static RfFieldRuns *collect(const Binned *binned, const size_t *cut)
+{
+    RfFieldRuns *runs = g_new0(RfFieldRuns, 1);
+    for (size_t b = binned->bins; b > 0; b = cut[b]) runs->runs++;
+    runs->droplets = binned->trails;
+    runs->edge_s = g_new(double, runs->runs + 1);
+    runs->speed = g_new0(RfRunSpeed, runs->droplets * runs->runs);
+    g_autofree size_t *edges = g_new(size_t, runs->runs + 1);
+    size_t r = runs->runs, b = binned->bins;
+    for (edges[r] = b; b > 0; edges[--r] = b) b = cut[b];
+    for (r = 0; r <= runs->runs; r++) runs->edge_s[r] = binned->start_s + (double)edges[r] * binned->bin_s;
+    fill_speeds(binned, edges, runs);
+    return runs;
+}
+
+RfFieldRuns *rf_field_runs_new(const RfTrail *trails, size_t n)
+{
+    Binned binned;
+    g_autofree double *diffusion = g_new(double, n), *noise = g_new(double, n);
+    estimate_diffusion(trails, n, diffusion, noise);
+    bin_all(trails, n, diffusion, noise, &binned);
+    g_autofree size_t *cut = g_new0(size_t, binned.bins + 1);
+    partition(&binned, cut);
+    RfFieldRuns *runs = collect(&binned, cut);
+    runs->diffusion_m2_s = g_steal_pointer(&diffusion);
+    for (size_t j = 0; j < n; j++) g_free(binned.trail[j].place_m);
+    g_free(binned.trail);
+    return runs;
+}
+
+void rf_field_runs_free(RfFieldRuns *runs)
+{
+    if (!runs) return;
+    g_free(runs->edge_s);
+    g_free(runs->speed);
+    g_free(runs->diffusion_m2_s);
+    g_free(runs);
+}

@@ -1,0 +1,26 @@
+/* The recording cut into runs in each of which every droplet keeps one fall speed: by optimal partition over all
+ * droplets together (B. Jackson et al., IEEE Signal Process. Lett. 12 (2005) 105, pruned as in R. Killick,
+ * P. Fearnhead, I. A. Eckley, J. Am. Stat. Assoc. 107 (2012) 1590). Steps of charge are found too and tracking
+ * mistakes as well: field_states.c sorts them out. Times are good to about a tenth of a second. */
+#pragma once
+
+#include <glib.h>
+
+#include "physics/trail.h"
+
+typedef struct {
+    double time_s; /* watched in this run; 0: not at all */
+    double speed_m_s;
+    double variance_m2_s2;
+} RfRunSpeed;
+
+typedef struct {
+    size_t droplets, runs;
+    double *edge_s;         /* runs + 1 */
+    RfRunSpeed *speed;      /* droplets rows of runs */
+    double *diffusion_m2_s; /* droplets; from the across axis, shrunk towards the common value */
+} RfFieldRuns;
+
+RfFieldRuns *rf_field_runs_new(const RfTrail *trails, size_t n);
+void rf_field_runs_free(RfFieldRuns *runs);
+G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfFieldRuns, rf_field_runs_free)

@@ -1,0 +1,154 @@
+#include "physics/field_states.h"
+
+#include <math.h>
+#include <string.h>
+
+enum { BEAM = 48 };
+/* Price of an explanation outside the model (a step of charge, a mistake of the tracker), and of a switch. */
+static const double SURPRISE_COST = 10, SWITCH_COST = 3;
+/* What is known of a droplet beforehand: it falls, at tens of micrometres a second; the field moves it by some
+ * hundred micrometres a second. */
+static const double FALL_PRIOR_M_S = 50e-6, FALL_SPREAD_M_S = 50e-6, FIELD_SPREAD_M_S = 200e-6;
+
+/* Gaussian belief about (v_g, w V0), V0 the largest voltage, so that both are speeds. */
+typedef struct {
+    double mean[2], cov[3]; /* cov: 00, 01, 11 */
+} Belief;
+
+typedef struct {
+    double cost;
+    unsigned used; /* states that have occurred */
+    unsigned last;
+    unsigned *label; /* runs */
+    Belief *belief;  /* droplets */
+} Hypothesis;
+
+static const Belief PRIOR = {{FALL_PRIOR_M_S, 0},
+                             {FALL_SPREAD_M_S * FALL_SPREAD_M_S, 0, FIELD_SPREAD_M_S *FIELD_SPREAD_M_S}};
+
+/* Takes a speed under relative voltage h; returns minus the log of its predicted density, per micrometre/s. */
+static double learn(Belief *b, double h, const RfRunSpeed *seen)
+{
+    double p0 = b->cov[0] + h * b->cov[1], p1 = b->cov[1] + h * b->cov[2];
+    double variance = p0 + h * p1 + seen->variance_m2_s2,
+           miss = seen->speed_m_s - b->mean[0] - h * b->mean[1];
+    double cost = 0.5 * miss * miss / variance + 0.5 * log(variance / 1e-12);
+    double g0 = p0 / variance, g1 = p1 / variance;
+    b->mean[0] += g0 * miss;
+    b->mean[1] += g1 * miss;
+    b->cov[0] -= g0 * p0;
+    b->cov[1] -= g0 * p1;
+    b->cov[2] -= g1 * p1;
+    return cost;
+}
+
+/* The same, or at a price: a new charge where there is a field, a mistake where there is none. */
+static double learn_or_wonder(Belief *b, double h, const RfRunSpeed *seen)
+{
+    Belief as_before = *b, renewed = *b;
+    double cost = learn(&as_before, h, seen);
+    if (h != 0) {
+        renewed.mean[1] = 0;
+        renewed.cov[1] = 0;
+        renewed.cov[2] = PRIOR.cov[2];
+    } else {
+        renewed = PRIOR;
+    }
+    double otherwise = SURPRISE_COST + learn(&renewed, h, seen);
+    if (h == 0) renewed = *b; /* a mistake teaches nothing */
+    *b = cost <= otherwise ? as_before : renewed;
+    return fmin(cost, otherwise);
+}
+
+static void hypothesis_init(Hypothesis *h, size_t runs, size_t droplets)
+{
+    *h = (Hypothesis){.label = g_new0(unsigned, runs), .belief = g_new(Belief, droplets)};
+}
+
+static void hypothesis_clear(Hypothesis *h)
+{
+    g_free(h->label);
+    g_free(h->belief);
+}
+
+static void hypothesis_copy(Hypothesis *to, const Hypothesis *from, size_t runs, size_t droplets)
+{
+    unsigned *label = to->label;
+    Belief *belief = to->belief;
+    memcpy(label, from->label, runs * sizeof *label);
+    memcpy(belief, from->belief, droplets * sizeof *belief);
+    *to = *from;
+    to->label = label;
+    to->belief = belief;
+}
+
+static void extend(Hypothesis *h, const RfFieldRuns *runs, size_t run, unsigned state, const double *relative)
+{
+    if (run > 0 && state != h->last) h->cost += SWITCH_COST;
+    if (state == h->used) h->used++;
+    h->last = h->label[run] = state;
+    for (size_t j = 0; j < runs->droplets; j++) {
+        const RfRunSpeed *seen = &runs->speed[j * runs->runs + run];
+        if (seen->time_s > 0) h->cost += learn_or_wonder(&h->belief[j], relative[state], seen);
+    }
+}
+
+typedef struct {
+    Hypothesis now[BEAM], next[BEAM * RF_FIELD_STATES];
+    size_t n_now, n_next;
+} Beam;
+
+static int compare_costs(const void *a, const void *b)
+{
+    const Hypothesis *x = a, *y = b;
+    return (x->cost > y->cost) - (x->cost < y->cost);
+}
+
+static void advance(Beam *beam, const RfFieldRuns *runs, size_t run, unsigned states, const double *relative)
+{
+    beam->n_next = 0;
+    for (size_t i = 0; i < beam->n_now; i++) {
+        unsigned choices = MIN(beam->now[i].used + 1, states);
+        for (unsigned s = 0; s < choices; s++) {
+            Hypothesis *to = &beam->next[beam->n_next++];
+            hypothesis_copy(to, &beam->now[i], runs->runs, runs->droplets);
+            extend(to, runs, run, s, relative);
+        }
+    }
+    qsort(beam->next, beam->n_next, sizeof *beam->next, compare_costs);
+    beam->n_now = MIN(beam->n_next, BEAM);
+    for (size_t i = 0; i < beam->n_now; i++)
+        hypothesis_copy(&beam->now[i], &beam->next[i], runs->runs, runs->droplets);
+}
+
+static void report(const Hypothesis *best, size_t droplets, double largest_v, RfStateDroplet *droplet)
+{
+    for (size_t j = 0; j < droplets; j++) {
+        const Belief *b = &best->belief[j];
+        droplet[j].fall_m_s = b->mean[0];
+        droplet[j].speed_per_volt_m_s_v = largest_v > 0 ? b->mean[1] / largest_v : 0;
+        droplet[j].u_speed_per_volt_m_s_v = largest_v > 0 ? sqrt(b->cov[2]) / largest_v : 0;
+    }
+}
+
+double rf_field_states_label(const RfFieldRuns *runs, const RfFieldSheet *sheet, const double *voltage_v,
+                             unsigned *label, RfStateDroplet *droplet)
+{
+    double relative[RF_FIELD_STATES], largest = 0;
+    for (unsigned s = 0; s < sheet->states; s++) largest = fmax(largest, fabs(voltage_v[s]));
+    for (unsigned s = 0; s < sheet->states; s++) relative[s] = largest > 0 ? voltage_v[s] / largest : 0;
+    Beam *beam = g_new0(Beam, 1);
+    for (int i = 0; i < BEAM; i++) hypothesis_init(&beam->now[i], runs->runs, runs->droplets);
+    for (int i = 0; i < BEAM * RF_FIELD_STATES; i++)
+        hypothesis_init(&beam->next[i], runs->runs, runs->droplets);
+    for (size_t j = 0; j < runs->droplets; j++) beam->now[0].belief[j] = PRIOR;
+    beam->n_now = 1;
+    for (size_t r = 0; r < runs->runs; r++) advance(beam, runs, r, sheet->states, relative);
+    memcpy(label, beam->now[0].label, runs->runs * sizeof *label);
+    report(&beam->now[0], runs->droplets, largest, droplet);
+    double margin = beam->n_now > 1 ? beam->now[1].cost - beam->now[0].cost : HUGE_VAL;
+    for (int i = 0; i < BEAM; i++) hypothesis_clear(&beam->now[i]);
+    for (int i = 0; i < BEAM * RF_FIELD_STATES; i++) hypothesis_clear(&beam->next[i]);
+    g_free(beam);
+    return margin;
+}
