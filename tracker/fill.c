@@ -86,12 +86,19 @@ static double cost_to(const RfLinkScene *scene, const Vacancy *vacancy, int spot
     return surprise;
 }
 
+/* Near enough, given how well the places are known, to have been seen as one. */
+static bool may_merge(const RfLinkScene *scene, const RfSight *a, const RfSight *b)
+{
+    double variance_px2 =
+        (a->variance_px2[0] + a->variance_px2[1] + b->variance_px2[0] + b->variance_px2[1]) / 2;
+    return hypot(a->at_px[0] - b->at_px[0], a->at_px[1] - b->at_px[1]) <
+           scene->merge_px + 2 * sqrt(variance_px2);
+}
+
 /* Two vacancies of one exposure, one spot between them, or two that could as well be exchanged. */
 static bool is_doubtful(const RfLinkScene *scene, const Vacancy *a, const Vacancy *b)
 {
-    double apart_px = hypot(a->place.at_px[0] - b->place.at_px[0], a->place.at_px[1] - b->place.at_px[1]);
-    if (apart_px > 3 * scene->merge_px) return false;
-    if (a->spot < 0 || b->spot < 0) return apart_px < scene->merge_px;
+    if (a->spot < 0 || b->spot < 0) return may_merge(scene, &a->place, &b->place);
     double now = cost_to(scene, a, a->spot) + cost_to(scene, b, b->spot);
     double exchanged = cost_to(scene, a, b->spot) + cost_to(scene, b, a->spot);
     return exchanged - now < scene->options.decision_log_odds;
@@ -148,6 +155,70 @@ void rf_fill_gaps(RfLinkScene *scene, GPtrArray *chains)
         g_array_index(vacancies, Vacancy, v).spot = spot_of_vacancy[v];
     settle_doubts(scene, vacancies);
     take_in(scene, chains, vacancies);
+}
+
+/* Where a chain is in an exposure, seen or not. */
+typedef struct {
+    unsigned exposure, chain;
+    RfSight place;
+    bool is_seen, is_shared;
+    unsigned hit;
+} Presence;
+
+static GArray *collect_presences(const RfLinkScene *scene, const GPtrArray *chains)
+{
+    GArray *presences = g_array_new(false, false, sizeof(Presence));
+    for (unsigned c = 0; c < chains->len; c++) {
+        const RfChain *chain = g_ptr_array_index(chains, c);
+        unsigned first = rf_chain_first(chain), last = rf_chain_last(chain);
+        g_autofree RfSight *smooth = rf_chain_smooth(scene, chain);
+        for (unsigned e = first, k = 0; e <= last; e++) {
+            bool is_seen = g_array_index(chain->hits, RfHit, k).exposure == e;
+            Presence presence = {e, c, smooth[e - first], is_seen, false, k};
+            k += is_seen;
+            if (scene->is_usable[e]) g_array_append_val(presences, presence);
+        }
+    }
+    return presences;
+}
+
+static int compare_presences(const void *a, const void *b)
+{
+    const Presence *x = a, *y = b;
+    if (x->exposure != y->exposure) return x->exposure < y->exposure ? -1 : 1;
+    return x->chain < y->chain ? -1 : x->chain > y->chain;
+}
+
+static void mark_shared(const RfLinkScene *scene, GArray *presences)
+{
+    for (unsigned i = 0; i < presences->len; i++) {
+        Presence *a = &g_array_index(presences, Presence, i);
+        for (unsigned j = i + 1; j < presences->len; j++) {
+            Presence *b = &g_array_index(presences, Presence, j);
+            if (b->exposure != a->exposure) break;
+            if (a->is_seen != b->is_seen && may_merge(scene, &a->place, &b->place))
+                (a->is_seen ? a : b)->is_shared = true;
+        }
+    }
+}
+
+static bool is_inner(const RfChain *chain, unsigned hit)
+{
+    return hit > 0 && hit + 1 < chain->hits->len;
+}
+
+void rf_fill_release_shared(RfLinkScene *scene, GPtrArray *chains)
+{
+    g_autoptr(GArray) presences = collect_presences(scene, chains);
+    g_array_sort(presences, compare_presences);
+    mark_shared(scene, presences);
+    for (unsigned i = presences->len; i-- > 0;) { /* from the end, so that the indices before stay right */
+        const Presence *presence = &g_array_index(presences, Presence, i);
+        RfChain *chain = g_ptr_array_index(chains, presence->chain);
+        if (!presence->is_shared || !is_inner(chain, presence->hit)) continue;
+        scene->is_claimed[g_array_index(chain->hits, RfHit, presence->hit).spot] = false;
+        g_array_remove_index(chain->hits, presence->hit);
+    }
 }
 
 /* Likeliest unclaimed spot of an exposure for a droplet expected there; -1 if none is likelier than chance. */

@@ -9,5 +9,8 @@
 void rf_fill_gaps(RfLinkScene *scene, GPtrArray *chains);
 void rf_fill_ends(RfLinkScene *scene, GPtrArray *chains);
 
+/* Takes back spots that two droplets may have made together: a chain not seen where another one's spot is all there is. */
+void rf_fill_release_shared(RfLinkScene *scene, GPtrArray *chains);
+
 /* Mean number of unclaimed spots per square pixel and exposure; never 0. */
 double rf_fill_unclaimed_px2(const RfLinkScene *scene);

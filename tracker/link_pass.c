@@ -4,11 +4,12 @@
 
 #include "tracker/assignment.h"
 
-enum { established_hits = 5, least_hits = 3, newborn_misses = 2 };
+enum { established_hits = 5, least_hits = 3, newborn_misses = 2, apart_exposures = 3 };
 
 static const double coast_s = 0.15; /* a chain unseen for longer ends; the second look may go on from there */
 static const double missed_cost = 2; /* -log of the chance that a droplet is not seen in an exposure, about */
-static const double tangle_part_of_gap = 0.8;
+static const double tangle_part_of_gap = 0.8; /* of the longest gap, without any spot about it */
+static const double longest_tangle_s = 2;
 
 typedef struct {
     RfMotion motion;
@@ -20,7 +21,8 @@ typedef struct {
 /* Droplets too near each other to be told apart: they go on unseen, spots about them are nobody's. */
 typedef struct {
     GArray *members; /* of RfMotion */
-    double since_s;
+    double since_s, last_seen_s;
+    int apart; /* exposures in a row in which its spots stood apart */
 } Tangle;
 
 typedef struct {
@@ -117,7 +119,7 @@ static void tangle_up(Pass *pass, Live *a, Live *b, double time_s)
 {
     Tangle *tangle = g_new0(Tangle, 1);
     tangle->members = g_array_new(false, false, sizeof(RfMotion));
-    tangle->since_s = time_s;
+    tangle->since_s = tangle->last_seen_s = time_s;
     g_array_append_val(tangle->members, a->motion);
     g_array_append_val(tangle->members, b->motion);
     a->is_tangled = b->is_tangled = true;
@@ -212,17 +214,24 @@ static bool are_apart(const Pass *pass, const RfExposure *exposure, const GArray
     return true;
 }
 
-/* Keeps the spots about a tangle from becoming newcomers, until there is one for each and they stand apart. */
-static bool tangle_holds(Pass *pass, const Tangle *tangle, const RfExposure *exposure)
+static bool is_tangle_over(const Pass *pass, const Tangle *tangle, double time_s)
+{
+    return tangle->apart >= apart_exposures || time_s - tangle->since_s > longest_tangle_s ||
+           time_s - tangle->last_seen_s > tangle_part_of_gap * pass->scene->options.longest_gap_s;
+}
+
+/* Keeps the spots about a tangle from becoming newcomers, until there is one for each and they stay apart. */
+static bool tangle_holds(Pass *pass, Tangle *tangle, const RfExposure *exposure)
 {
     g_autoptr(GArray) columns = g_array_new(false, false, sizeof(int));
     for (int c = 0; c < (int)exposure->spots; c++)
         if (pass->row_of_column[c] < 0 && !pass->is_consumed[c] &&
             is_about(tangle, sight_at(pass, exposure, c), pass->scene->merge_px))
             g_array_append_val(columns, c);
-    bool is_over =
-        exposure->time_s - tangle->since_s > tangle_part_of_gap * pass->scene->options.longest_gap_s ||
-        (columns->len >= tangle->members->len && are_apart(pass, exposure, columns));
+    if (columns->len > 0) tangle->last_seen_s = exposure->time_s;
+    bool is_apart = columns->len >= tangle->members->len && are_apart(pass, exposure, columns);
+    tangle->apart = is_apart ? tangle->apart + 1 : 0;
+    bool is_over = is_tangle_over(pass, tangle, exposure->time_s);
     for (unsigned i = 0; i < columns->len; i++)
         (is_over ? pass->is_freed : pass->is_consumed)[g_array_index(columns, int, i)] = true;
     return !is_over;

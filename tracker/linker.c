@@ -52,6 +52,7 @@ RfPaths *rf_linker_run(const RfSightings *sightings, const RfFieldCourse *field,
     rf_fill_gaps(scene, chains);
     rf_fill_gaps(scene, chains); /* what the first round found narrows the rest */
     rf_fill_ends(scene, chains);
+    rf_fill_release_shared(scene, chains);
     RfPaths *paths = rf_path_build(scene, chains);
     paths->cuts = undecided;
     return paths;

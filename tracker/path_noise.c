@@ -78,16 +78,18 @@ static Covariances measure_chain(const RfLinkScene *scene, const RfChain *chain,
     return sums;
 }
 
-/* Weighted least squares for covariance = R (2 D dt) - f_axis^2 u^2: normal equations, unknowns R, fx^2, fy^2. */
+/* With c0 and c1 the lag-0 and lag-1 covariances, 2 D dt = c0 + 2 c1 and so c1 (1 - 2 R) = R c0 - f^2 u^2: regressing c1 on
+ * c0, whose errors are nearly independent of c1's (on 2 D dt itself they would not be). Weighted least squares over
+ * droplets; unknowns a = R / (1 - 2 R), and f^2 / (1 - 2 R) per axis. */
 typedef struct {
     double a[unknowns][unknowns], b[unknowns];
 } Normal;
 
 static void add_equation(Normal *normal, const Covariances *c, int axis)
 {
-    double walk_px2 = fmax(0, c->lag_px2[0] + 2 * c->lag_px2[1]);
     double weight = c->n / fmax(1e-12, c->lag_px2[0] * c->lag_px2[0]);
-    double row[unknowns] = {walk_px2, axis == 0 ? -c->variance_px2 : 0, axis == 1 ? -c->variance_px2 : 0};
+    double row[unknowns] = {c->lag_px2[0], axis == 0 ? -c->variance_px2 : 0,
+                            axis == 1 ? -c->variance_px2 : 0};
     for (int i = 0; i < unknowns; i++) {
         normal->b[i] += weight * row[i] * c->lag_px2[1];
         for (int j = 0; j < unknowns; j++) normal->a[i][j] += weight * row[i] * row[j];
@@ -119,30 +121,33 @@ static bool invert(const Normal *normal, int from, double inverse[unknowns][unkn
     return true;
 }
 
-/* Fills scale and blur with R free, or fixed to `blur` if that is >= 0. Returns R. */
-static double solve(const Normal *normal, double blur, RfPathNoise *noise)
+/* Fills scale and blur with a = R / (1 - 2 R) free, or fixed to `ratio` if that is >= 0. Returns a. */
+static double solve(const Normal *normal, double ratio, RfPathErrors *noise)
 {
-    int from = blur >= 0 ? 1 : 0;
-    double inverse[unknowns][unknowns], found[unknowns] = {blur, 1, 1};
-    if (!invert(normal, from, inverse)) return fmax(0, blur);
+    int from = ratio >= 0 ? 1 : 0;
+    double inverse[unknowns][unknowns], found[unknowns] = {ratio, 1, 1};
+    if (!invert(normal, from, inverse)) return fmax(0, ratio);
     for (int i = from; i < unknowns; i++) {
         found[i] = 0;
         for (int j = from; j < unknowns; j++)
-            found[i] += inverse[i][j] * (normal->b[j] - (from ? normal->a[j][0] * blur : 0));
+            found[i] += inverse[i][j] * (normal->b[j] - (from ? normal->a[j][0] * ratio : 0));
     }
+    noise->blur = found[0] / (1 + 2 * found[0]);
     double *scale[2] = {&noise->scale_x, &noise->scale_y},
            *u_scale[2] = {&noise->u_scale_x, &noise->u_scale_y};
     for (int k = 0; k < 2; k++) {
-        double sigma = sqrt(inverse[k + 1][k + 1]);
-        *scale[k] = sigma < 1 || found[k + 1] > 3 * sigma ? sqrt(fmax(0.01, found[k + 1])) : 1;
-        *u_scale[k] = *scale[k] == 1 ? 0 : sigma / (2 * *scale[k]);
+        double square = found[k + 1] * (1 - 2 * noise->blur);
+        double sigma = sqrt(inverse[k + 1][k + 1]) * (1 - 2 * noise->blur);
+        bool is_told = square > 2 * sigma;
+        *scale[k] = is_told ? sqrt(square) : 1;
+        *u_scale[k] = is_told ? sigma / (2 * *scale[k]) : 0;
     }
     return found[0];
 }
 
-RfPathNoise rf_path_noise_measure(const RfLinkScene *scene, const GPtrArray *chains)
+RfPathErrors rf_path_noise_measure(const RfLinkScene *scene, const GPtrArray *chains)
 {
-    RfPathNoise noise = {.scale_x = 1, .scale_y = 1};
+    RfPathErrors noise = {.scale_x = 1, .scale_y = 1};
     Normal normal = {0};
     double total[2] = {0, 0};
     for (unsigned i = 0; i < chains->len; i++)
@@ -163,5 +168,6 @@ RfPathNoise rf_path_noise_measure(const RfLinkScene *scene, const GPtrArray *cha
 
 double rf_path_noise_widening(double scale, double u_scale)
 {
-    return u_scale > 0 && scale - 2 * u_scale > 1 ? scale : 1;
+    double u_square = 2 * scale * u_scale;
+    return u_scale > 0 && scale * scale - 3 * u_square > 1 ? scale : 1;
 }

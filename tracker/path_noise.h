@@ -5,7 +5,7 @@
 
 #include "tracker/chain.h"
 
-RfPathNoise rf_path_noise_measure(const RfLinkScene *scene, const GPtrArray *chains);
+RfPathErrors rf_path_noise_measure(const RfLinkScene *scene, const GPtrArray *chains);
 
-/* What a stated uncertainty is multiplied by: the scale where it is above 1 beyond doubt (two sigma), else 1. */
+/* What a stated uncertainty is multiplied by: the scale where it is above 1 beyond doubt (three sigma of its square), else 1. */
 double rf_path_noise_widening(double scale, double u_scale);

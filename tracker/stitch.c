@@ -6,10 +6,13 @@
 
 /* A chain's two ends, as others see them. */
 typedef struct {
-    RfMotion forward;  /* at the last hit, from the past */
-    RfMotion backward; /* at the first hit, from the future alone */
+    RfMotion forward;    /* at the last hit, from the past */
+    RfMotion backward;   /* at the first hit, from the future alone */
+    unsigned start, end; /* exposures */
     double start_s, end_s;
+    double entry_s, exit_s; /* from the picture's border to the first hit, from the last hit to the border */
     double peak_start, peak_end;
+    bool is_cut_before, is_cut_after;
 } Ends;
 
 typedef struct {
@@ -27,18 +30,47 @@ enum { peak_hits = 10 };
 /* Brightness within one droplet changes with focus, between droplets with size: in the logarithm, one standard deviation. */
 static const double peak_sd_same = 0.35, peak_sd_other = 0.9;
 static const double reappear_s = 0.3; /* typical length of a gap */
-static const double far_prior = 10;   /* in units of what is expected: as good as knowing nothing */
+static const double border_s =
+    0.25; /* a droplet that leaves the view is unseen a little earlier, and seen a little later */
+static const double tangled_s =
+    2.5; /* two droplets in one spot are not out of view: they may stay so for this long */
+static const double far_prior = 10; /* in units of what is expected: as good as knowing nothing */
+
+/* Time for which a droplet, last seen there, is still inside the picture though no longer seen; 0 if it isn't leaving. */
+static double border_time_s(const RfLinkScene *scene, const RfHit *hit, const RfMotion *m, int direction)
+{
+    const RfSpot *spot = rf_link_scene_spot(scene, hit->spot);
+    double state = rf_field_course_state(scene->field, rf_link_scene_exposure(scene, hit->exposure)->time_s);
+    double at_px[2] = {(double)spot->x_px, (double)spot->y_px};
+    double far_px[2] = {scene->sightings->width - 0.5, scene->sightings->height - 0.5};
+    double least_s = 0;
+    for (int k = 0; k < 2; k++) {
+        double v = direction * (m->axis[k].velocity_px_s + state * m->axis[k].response_px_s);
+        double way_px = fmax(0, v > 0 ? far_px[k] - at_px[k] : at_px[k] + 0.5);
+        if (way_px < 2 * scene->merge_px)
+            least_s = fmax(least_s, fmin(border_s, way_px / fmax(fabs(v), 1e-6)));
+    }
+    return least_s;
+}
 
 static Ends look_at_ends(const RfLinkScene *scene, const RfChain *chain)
 {
-    return (Ends){
+    Ends ends = {
         .forward = rf_chain_end_state(scene, chain, false, 1),
         .backward = rf_chain_end_state(scene, chain, true, far_prior),
+        .start = rf_chain_first(chain),
+        .end = rf_chain_last(chain),
         .start_s = rf_chain_start_s(scene, chain),
         .end_s = rf_chain_end_s(scene, chain),
         .peak_start = rf_chain_log_peak(scene, chain, false, peak_hits),
         .peak_end = rf_chain_log_peak(scene, chain, true, peak_hits),
+        .is_cut_before = chain->is_cut_before,
+        .is_cut_after = chain->is_cut_after,
     };
+    const RfHit *hits = (const RfHit *)(const void *)chain->hits->data;
+    ends.exit_s = border_time_s(scene, &hits[chain->hits->len - 1], &ends.forward, 1);
+    ends.entry_s = border_time_s(scene, &hits[0], &ends.backward, -1);
+    return ends;
 }
 
 static bool is_field_on_between(const RfLinkScene *scene, double from_s, double to_s)
@@ -92,15 +124,54 @@ static unsigned first_after(const Stitch *stitch, double time_s)
     return low;
 }
 
+static bool is_spot_near(const RfLinkScene *scene, unsigned e, const double at_px[2], double radius_px)
+{
+    const RfExposure *exposure = rf_link_scene_exposure(scene, e);
+    unsigned end = exposure->first_spot + exposure->spots;
+    for (unsigned k = rf_link_scene_first_from(scene, e, at_px[1] - radius_px); k < end; k++) {
+        const RfSight *sight = &scene->sights[scene->by_height[k]];
+        if (sight->at_px[1] > at_px[1] + radius_px) return false;
+        if (fabs(sight->at_px[0] - at_px[0]) < radius_px) return true;
+    }
+    return false;
+}
+
+/* Longest time between a's end and b's start without any spot near the straight way from one to the other. */
+static double darkest_s(const Stitch *stitch, const Ends *a, const Ends *b)
+{
+    const RfLinkScene *scene = stitch->scene;
+    double radius_px = 2 * scene->merge_px, last_s = a->end_s, darkest = 0;
+    for (unsigned e = a->end; e <= b->start; e++) {
+        double time_s = rf_link_scene_exposure(scene, e)->time_s;
+        double part = (time_s - a->end_s) / (b->start_s - a->end_s), at_px[2];
+        for (int k = 0; k < 2; k++)
+            at_px[k] = (1 - part) * a->forward.axis[k].position_px + part * b->backward.axis[k].position_px;
+        if (!is_spot_near(scene, e, at_px, radius_px)) continue;
+        darkest = fmax(darkest, time_s - last_s);
+        last_s = time_s;
+    }
+    return darkest;
+}
+
+/* Whether the time for which nothing of it was seen lets b be a still. */
+static bool is_in_time(const Stitch *stitch, const Ends *a, const Ends *b)
+{
+    double longest_s = stitch->longest_gap_s, gap_s = b->start_s - a->end_s;
+    double unseen_s = gap_s - stitch->scene->exposure_s / 2 - a->exit_s - b->entry_s;
+    if (unseen_s <= longest_s) return true;
+    return a->is_cut_after && b->is_cut_before && gap_s < tangled_s && darkest_s(stitch, a, b) < longest_s;
+}
+
 static void collect_joins(Stitch *stitch)
 {
+    double most_s = fmax(tangled_s, stitch->longest_gap_s + 2 * border_s);
     for (unsigned i = 0; i < stitch->chains->len; i++) {
         const Ends *a = &stitch->ends[i];
         for (unsigned k = first_after(stitch, a->end_s); k < stitch->chains->len; k++) {
             int j = stitch->by_start[k];
             const Ends *b = &stitch->ends[j];
-            if (b->start_s > a->end_s + stitch->longest_gap_s) break;
-            if (!is_in_reach(stitch, a, b)) continue;
+            if (b->start_s > a->end_s + most_s) break;
+            if (!is_in_time(stitch, a, b) || !is_in_reach(stitch, a, b)) continue;
             RfAssignmentEdge edge = {(int)i, j, -join_log_odds(stitch, a, b)};
             if (edge.cost < 0) g_array_append_val(stitch->edges, edge);
         }
