@@ -25,8 +25,9 @@ void rf_figure_set_free(RfFigureSet *set)
 /* Works with gnuplot 5.2 and later; the PDF only where that terminal was built in. */
 static char *whole_script(const RfFigureScript *what, const char *body)
 {
-    const char *size = strcmp(what->name, "radius") == 0 ? "560,460" : "860,430";
-    const char *page = strcmp(what->name, "radius") == 0 ? "12cm,10cm" : "17cm,8.5cm";
+    const bool is_square = strcmp(what->name, "radius") == 0, is_low = strcmp(what->name, "multiples") == 0;
+    const char *size = is_square ? "560,460" : is_low ? "860,280" : "860,430";
+    const char *page = is_square ? "12cm,10cm" : is_low ? "17cm,5.6cm" : "17cm,8.5cm";
     return g_strdup_printf(
         "# %s. Run in this folder: gnuplot %s.gp\n"
         "reset\nset encoding utf8\nset key off\nset border 3 lw 0.8\nset tics nomirror out scale 0.5\n"

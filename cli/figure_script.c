@@ -32,7 +32,7 @@ static void row(GString *out, const double *values, size_t n)
 static char *harmless(const char *text)
 {
     char *copy = g_strdup(text ? text : "");
-    return g_strcanon(copy, G_CSET_A_2_Z G_CSET_a_2_z G_CSET_DIGITS " .,:()+/-", ' ');
+    return g_strcanon(copy, G_CSET_A_2_Z G_CSET_a_2_z G_CSET_DIGITS " .,:()+/'-", ' ');
 }
 
 static void droplet_look(GString *script, unsigned droplet)
@@ -74,12 +74,37 @@ static void multiples(GString *script, const RfResults *results, double low_C, d
             g_string_append_printf(script, "%s'%d' ", n - first < step ? "" : ", ", n);
             number(script, n * unit_C * 1e19);
         }
-    g_string_append(script, ")\nset grid noytics y2tics lt 1 lc rgb '#808080' lw 0.5\n");
+    g_string_append(script, ")\nset grid noxtics noytics y2tics lt 1 lc rgb '#808080' lw 0.5\n");
     g_string_append(script, "set yrange [");
     number(script, (first - 0.4) * unit_C * 1e19);
     g_string_append_c(script, ':');
     number(script, (last + 0.4) * unit_C * 1e19);
     g_string_append(script, "]\nset link y2\n");
+}
+
+static void rank_axis(GString *script, const GPtrArray *spells)
+{
+    g_string_append_printf(
+        script, "set xrange [0.3:%u.7]\nset xlabel 'droplet, in order of charge'\nset xtics scale 0 (",
+        spells->len);
+    for (guint i = 0; i < spells->len && spells->len <= 40; i++)
+        g_string_append_printf(script, "%s'%u' %u", i ? ", " : "",
+                               ((RfDropletRow *)spells->pdata[i])->droplet, i + 1);
+    g_string_append(script, ")\n");
+}
+
+/* One plot per spell, so that the page can find each droplet's mark. */
+static void spell_plots(GString *script, const GPtrArray *spells, const char *file, const char *columns)
+{
+    g_string_append(script, "plot \\\n");
+    for (guint i = 0; i < spells->len; i++) {
+        const RfDropletRow *spell = spells->pdata[i];
+        g_string_append_printf(script,
+                               "  '%s' index %u using %s with yerrorbars lw 1.6 ps 0.9 lc rgb '#%s' pt %d "
+                               "title 'droplet %u'%s\n",
+                               file, i, columns, spell->accepted ? HUE[0] : HUE[4], spell->accepted ? 7 : 4,
+                               spell->droplet, i + 1 < spells->len ? ", \\" : "");
+    }
 }
 
 static bool charges(const RfResults *results, GString *data, GString *script, GString *alt)
@@ -98,29 +123,50 @@ static bool charges(const RfResults *results, GString *data, GString *script, GS
         g_string_append(data, "\n\n"); /* one block each: one mark each in the picture */
         if (spell->accepted || spells->len < 4) low_C = fmin(low_C, q - u), high_C = fmax(high_C, q + u);
     }
-    g_string_append_printf(script, "set xrange [0.3:%u.7]\nset xlabel 'droplet, in order of charge'\n",
-                           spells->len);
-    g_string_append(script, "set ylabel 'charge, 10^{-19} C'\nset xtics scale 0 (");
-    for (guint i = 0; i < spells->len && spells->len <= 40; i++)
-        g_string_append_printf(script, "%s'%u' %u", i ? ", " : "",
-                               ((RfDropletRow *)spells->pdata[i])->droplet, i + 1);
-    g_string_append(script, ")\n");
+    rank_axis(script, spells);
+    g_string_append(script, "set ylabel 'charge, 10^{-19} C'\n");
     multiples(script, results, low_C, high_C);
-    g_string_append(script, "plot \\\n");
-    for (guint i = 0; i < spells->len; i++) {
-        const RfDropletRow *spell = spells->pdata[i];
-        g_string_append_printf(
-            script,
-            "  'charges.dat' index %u using 1:4:5 with yerrorbars lw 1.6 ps 0.9 lc rgb '#%s' pt %d "
-            "title 'droplet %u'%s\n",
-            i, spell->accepted ? HUE[0] : HUE[4], spell->accepted ? 7 : 4, spell->droplet,
-            i + 1 < spells->len ? ", \\" : "");
-    }
+    spell_plots(script, spells, "charges.dat", "1:4:5");
     g_string_append_printf(
         alt,
         "Charges of %u spells with one standard uncertainty, over lines at whole multiples of the unit. "
         "Filled circles are accepted, open squares set aside.",
         spells->len);
+    return true;
+}
+
+/* ---- how far from whole ---- */
+
+/* Charges span many units, so that their bars vanish in the figure above; here half a unit fills the height. */
+static bool multiples_missed(const RfResults *results, GString *data, GString *script, GString *alt)
+{
+    g_autoptr(GPtrArray) spells = charged_spells(results);
+    if (spells->len == 0) return false;
+    const bool is_found = results->unit.resolved && results->unit.unit_C.value > 0;
+    const double unit_C = is_found ? results->unit.unit_C.value : CODATA_E_C;
+    g_string_append(data,
+                    "# rank droplet spell beyond_nearest_multiple u u_random (all in units) accepted\n");
+    for (guint i = 0; i < spells->len; i++) {
+        const RfDropletRow *spell = spells->pdata[i];
+        const double units = spell->charge_C.value / unit_C;
+        row(data,
+            (double[]){i + 1, spell->droplet, spell->spell, units - round(units),
+                       spell->charge_C.sigma / unit_C, spell->u_random_C / unit_C, spell->accepted},
+            7);
+        g_string_append(data, "\n\n");
+    }
+    rank_axis(script, spells);
+    g_string_append_printf(script,
+                           "set yrange [-0.5:0.5]\nset ytics 0.25\nset grid noxtics\nset xzeroaxis lt 1 lc "
+                           "rgb '#222222' lw 0.8\n"
+                           "set ylabel 'beyond whole, in %s'\n",
+                           is_found ? "units" : "e");
+    spell_plots(script, spells, "multiples.dat", "1:4:5");
+    g_string_append_printf(alt,
+                           "Distance of each of %u charges from the nearest whole multiple of %s, with one "
+                           "standard uncertainty; half a "
+                           "unit either way is the most there can be.",
+                           spells->len, is_found ? "the unit found" : "e");
     return true;
 }
 
@@ -193,6 +239,9 @@ static bool velocities(const RfResults *results, GString *data, GString *script,
 
 /* ---- how well a trial unit explains the charges ---- */
 
+/* Trial units this much less likely than the best (as a logarithm) are beyond discussion. */
+enum { DEEPEST_SHOWN = 40 };
+
 static bool unit(const RfResults *results, GString *data, GString *script, GString *alt)
 {
     const GArray *trial = results->unit.curve_unit_C, *level = results->unit.curve_log_likelihood;
@@ -204,10 +253,18 @@ static bool unit(const RfResults *results, GString *data, GString *script, GStri
     for (guint i = 0; i < n; i++)
         row(data, (double[]){g_array_index(trial, double, i) * 1e19, g_array_index(level, double, i) - best},
             2);
+    double deepest = 0;
+    for (guint i = 0; i < n; i++) deepest = fmin(deepest, g_array_index(level, double, i) - best);
     g_string_append(
         script,
         "set xlabel 'trial unit, 10^{-19} C'\nset ylabel 'log-likelihood below the best'\nset logscale x\n"
-        "set yrange [*:1]\nset xtics 0.1,1.25\nset xtics auto\nset format x '%.3g'\n");
+        "set xtics (0.1, 0.2, 0.3, 0.5, 0.7, 1, 1.5, 2, 3, 5, 7, 10, 15, 20, 30, 50)\nset xrange [");
+    number(script, g_array_index(trial, double, 0) * 1e19);
+    g_string_append_c(script, ':');
+    number(script, g_array_index(trial, double, n - 1) * 1e19);
+    g_string_append(script, "]\nset yrange [");
+    number(script, fmax(deepest - 1, -DEEPEST_SHOWN));
+    g_string_append(script, ":1]\n");
     if (results->unit.resolved) {
         g_string_append(script, "set arrow from ");
         number(script, results->unit.unit_C.value * 1e19);
@@ -256,7 +313,7 @@ static bool radius(const RfResults *results, GString *data, GString *script, GSt
     if (n == 0) return false;
     const double edge_um = 0.06 * (high_um - low_um) + 1e-3;
     g_string_append(script,
-                    "set xlabel 'radius from fall, um'\nset ylabel 'radius from spread, um'\nset xrange [");
+                    "set xlabel 'radius from fall, µm'\nset ylabel 'radius from spread, µm'\nset xrange [");
     number(script, low_um - edge_um);
     g_string_append_c(script, ':');
     number(script, high_um + edge_um);
@@ -331,6 +388,7 @@ static bool budget(const RfResults *results, GString *data, GString *script, GSt
 
 const RfFigureScript rf_figure_scripts[] = {
     {"charges", "Charges against whole multiples", charges},
+    {"multiples", "Distance from the nearest whole multiple", multiples_missed},
     {"velocities", "Velocities in time", velocities},
     {"unit", "How well a unit explains the charges", unit},
     {"radius", "Radius from fall against radius from spread", radius},

@@ -82,7 +82,7 @@ void rf_report_droplets(GString *out, const RfResults *results)
         "class=\"number\">Fall, field off<small>mm/s</small></th>"
         "<th scope=\"col\" class=\"number\">Radius<small>µm</small></th>"
         "<th scope=\"col\" class=\"number\">Charge<small>10<sup>−19</sup> C</small></th>"
-        "<th scope=\"col\" class=\"number\">its own part of u<small>10<sup>−19</sup> C</small></th>"
+        "<th scope=\"col\" class=\"number\">Own part of u<small>10<sup>−19</sup> C</small></th>"
         "<th scope=\"col\" class=\"number\">Multiple</th><th scope=\"col\">Verdict</th>");
     for (guint i = 0; i < rows->len; i++) {
         const RfDropletRow *row = &g_array_index(rows, RfDropletRow, i);

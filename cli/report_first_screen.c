@@ -20,7 +20,7 @@ static void unit_fact(GString *out, const RfUnitResult *unit)
         rf_text_number_append_fixed(out, away, 1);
         g_string_append(out, " standard uncertainties away.");
     } else {
-        rf_report_text(out, unit->reason);
+        rf_report_text_sentence(out, unit->reason);
     }
     g_string_append(out, "</dd></div>\n");
 }

@@ -93,6 +93,18 @@ static void figure_section(GString *out, const RfFigureSet *figures, const char 
     rf_report_text_close(out);
 }
 
+static void charges_section(GString *out, const RfFigureSet *figures)
+{
+    if (!rf_figure_find(figures, "charges")) return;
+    rf_report_text_open(out, "charges", "Charges against whole multiples");
+    rf_report_text_figure(out, figures, "charges", "Filled circles: accepted. Open squares: set aside.");
+    rf_report_text_figure(out, figures, "multiples",
+                          "The same charges, closer: how far each lies from the nearest whole multiple. Bars "
+                          "are one standard uncertainty, "
+                          "the common part included.");
+    rf_report_text_close(out);
+}
+
 static void unit_section(GString *out, const RfResults *results, const RfFigureSet *figures)
 {
     rf_report_text_open(out, "unit",
@@ -105,7 +117,7 @@ static void unit_section(GString *out, const RfResults *results, const RfFigureS
         rf_report_text_percent(out, results->unit.u_random_C / results->unit.unit_C.value);
         g_string_append(out, ". ");
     }
-    rf_report_text(out, results->unit.reason);
+    rf_report_text_sentence(out, results->unit.reason);
     g_string_append(out, "</p>\n");
     rf_report_text_figure(out, figures, "unit",
                           "Every half, third and so on of a unit explains the charges as well as the unit "
@@ -134,9 +146,7 @@ GString *rf_report_html_new(const RfResults *results, const RfFigureSet *figures
     rf_report_first_screen(out, results);
     contents(out, results, figures);
     rf_report_view(out, results);
-    figure_section(out, figures, "charges", "Charges against whole multiples",
-                   "Bars are one standard uncertainty, the common part included. Filled circles: accepted. "
-                   "Open squares: set aside.");
+    charges_section(out, figures);
     figure_section(out, figures, "velocities", "Velocities in time",
                    "One bar per stretch in one field state; broken upright lines are field switches, open "
                    "triangles charge steps.");

@@ -11,6 +11,8 @@
 
 /* Any text from outside goes through here: never run as markup, odd bytes marked. NULL writes nothing. */
 void rf_report_text(GString *out, const char *text);
+/* The same as a sentence: a capital at its start, a full stop at its end. */
+void rf_report_text_sentence(GString *out, const char *text);
 /* One cell, right-aligned where `is_number`. Escapes. */
 void rf_report_text_cell(GString *out, bool is_number, const char *text);
 void rf_report_text_number_cell(GString *out, RfValue value);

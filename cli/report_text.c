@@ -12,6 +12,16 @@ void rf_report_text(GString *out, const char *text)
     g_string_append(out, escaped);
 }
 
+void rf_report_text_sentence(GString *out, const char *text)
+{
+    if (!text || !*text) return;
+    g_autofree char *valid = g_utf8_make_valid(text, -1);
+    g_autofree char *first = g_utf8_strup(valid, g_utf8_next_char(valid) - valid);
+    g_autofree char *whole =
+        g_strconcat(first, g_utf8_next_char(valid), g_str_has_suffix(valid, ".") ? "" : ".", NULL);
+    rf_report_text(out, whole);
+}
+
 void rf_report_text_cell(GString *out, bool is_number, const char *text)
 {
     g_string_append(out, is_number ? "<td class=\"number\">" : "<td>");
@@ -19,17 +29,24 @@ void rf_report_text_cell(GString *out, bool is_number, const char *text)
     g_string_append(out, "</td>");
 }
 
+/* A minus sign as wide as the digits, in place of the hyphen. */
+static void number_cell(GString *out, const char *text)
+{
+    const bool is_negative = *text == '-';
+    g_string_append_printf(out, "<td class=\"number\">%s%s</td>", is_negative ? "−" : "", text + is_negative);
+}
+
 void rf_report_text_number_cell(GString *out, RfValue value)
 {
     g_autofree char *text = rf_text_number_concise(value);
-    rf_report_text_cell(out, true, text);
+    number_cell(out, text);
 }
 
 void rf_report_text_fixed_cell(GString *out, double value, int decimals)
 {
-    g_string_append(out, "<td class=\"number\">");
-    rf_text_number_append_fixed(out, value, decimals);
-    g_string_append(out, "</td>");
+    g_autoptr(GString) text = g_string_new(NULL);
+    rf_text_number_append_fixed(text, value, decimals);
+    number_cell(out, text->str);
 }
 
 void rf_report_text_charge(GString *out, RfValue charge_C)
@@ -41,7 +58,7 @@ void rf_report_text_charge(GString *out, RfValue charge_C)
 void rf_report_text_charge_cell(GString *out, RfValue charge_C)
 {
     g_autofree char *text = rf_text_number_concise_scaled(charge_C, -19);
-    rf_report_text_cell(out, true, text);
+    number_cell(out, text);
 }
 
 void rf_report_text_percent(GString *out, double fraction)

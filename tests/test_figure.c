@@ -53,7 +53,7 @@ static void every_figure_with_its_source(Place *place, const void *unused)
     g_autoptr(RfResults) results = sample_results_new();
     g_autoptr(RfFigureSet) set = draw(place, results, "gnuplot");
     g_assert_cmpstr(set->warning, ==, NULL);
-    const char *const names[] = {"charges", "velocities", "unit", "radius", "budget"};
+    const char *const names[] = {"charges", "multiples", "velocities", "unit", "radius", "budget"};
     for (size_t i = 0; i < G_N_ELEMENTS(names); i++) {
         const RfFigure *figure = rf_figure_find(set, names[i]);
         g_assert_nonnull(figure);

@@ -17,7 +17,7 @@ static RfFigureSet *invented_figures(void)
 
 static GString *page_with(const RfResults *results, const char *svg)
 {
-    const char *const names[] = {"charges", "velocities", "unit", "radius", "budget"};
+    const char *const names[] = {"charges", "multiples", "velocities", "unit", "radius", "budget"};
     RfFigure figures[G_N_ELEMENTS(names)];
     g_autoptr(RfFigureSet) set = invented_figures();
     for (size_t i = 0; i < G_N_ELEMENTS(names); i++) {
@@ -56,7 +56,7 @@ static void unresolved_says_why(void)
     g_autoptr(GString) page = rf_report_html_new(results, NULL);
     assert_has(page, "No droplet could be followed");
     assert_has(page, "not resolved");
-    assert_has(page, "no charges");
+    assert_has(page, "No charges.");
     assert_has(page, "No droplet could be measured");
     assert_lacks(page, "nan");
 }
