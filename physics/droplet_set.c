@@ -90,6 +90,58 @@ static void refine_switches(const Work *work)
     rf_field_timeline_refine(work->set->timeline, witnesses, n);
 }
 
+/* What the fits leave of each path on one axis: what a common drift may explain. */
+static double *residue(const Work *work, size_t i, bool is_fall, double *time_s)
+{
+    const RfTrail *trail = &work->trails[i];
+    WitnessSpells spells;
+    RfSwitchWitness w = witness_of(work, i, &spells);
+    double *place_m = g_new(double, trail->n), moved_m = 0;
+    size_t k = 0;
+    for (size_t s = 0; s < trail->n; s++) {
+        const RfSample *sample = &trail->samples[s];
+        time_s[s] = sample->time_s;
+        while (k + 1 < w.spells && sample->time_s >= w.spell_end_s[k]) k++;
+        if (is_fall && s > 0)
+            moved_m += w.speed_per_volt_m_s_v[k] *
+                       (rf_field_timeline_impulse_v_s(work->set->timeline, sample->time_s) -
+                        rf_field_timeline_impulse_v_s(work->set->timeline, time_s[s - 1]));
+        place_m[s] = is_fall ? sample->fall_m - moved_m : sample->drift_m;
+    }
+    return place_m;
+}
+
+static double fit_drift_axis(const Work *work, bool is_fall, GArray *knots_s, GArray *speeds, double *p)
+{
+    size_t n = work->set->n, used = 0;
+    g_autofree RfDriftPath *paths = g_new0(RfDriftPath, n);
+    for (size_t i = 0; i < n; i++) {
+        const RfDropletFit *fit = &work->set->droplets[i].fit;
+        if (fit->state != RF_FIT_DONE) continue;
+        const RfSample *s = work->trails[i].samples;
+        double *time_s = g_new(double, work->trails[i].n), u = is_fall ? s->u_fall_m : s->u_drift_m;
+        paths[used++] = (RfDriftPath){.n = work->trails[i].n,
+                                      .time_s = time_s,
+                                      .place_m = residue(work, i, is_fall, time_s),
+                                      .diffusion_m2_s = fit->diffusion_m2_s.value,
+                                      .noise_m2 = u * u};
+    }
+    double rms = rf_common_drift_fit(paths, used, knots_s, speeds, p);
+    for (size_t i = 0; i < used; i++) {
+        g_free((void *)paths[i].time_s);
+        g_free((void *)paths[i].place_m);
+    }
+    return rms;
+}
+
+static void fit_common_drift(const Work *work)
+{
+    RfCommonDrift *drift = work->set->drift;
+    drift->across_rms_m_s =
+        fit_drift_axis(work, false, drift->across_time_s, drift->across_m_s, &drift->across_p);
+    drift->fall_rms_m_s = fit_drift_axis(work, true, drift->fall_time_s, drift->fall_m_s, &drift->fall_p);
+}
+
 RfDropletSet *rf_droplet_set_measure(const RfTrail *trails, size_t n, const RfDropletSetSettings *settings,
                                      GError **error)
 {
@@ -103,6 +155,7 @@ RfDropletSet *rf_droplet_set_measure(const RfTrail *trails, size_t n, const RfDr
     Work work = {trails, settings, set, false};
     for_each(settings, n, measure_one, &work);
     refine_switches(&work);
+    fit_common_drift(&work);
     work.is_last = true;
     for_each(settings, n, measure_one, &work);
     refine_switches(&work);

@@ -179,6 +179,7 @@ static RfFieldRuns *collect(const Binned *binned, const size_t *cut)
     RfFieldRuns *runs = g_new0(RfFieldRuns, 1);
     for (size_t b = binned->bins; b > 0; b = cut[b]) runs->runs++;
     runs->droplets = binned->trails;
+    runs->bin_s = binned->bin_s;
     runs->edge_s = g_new(double, runs->runs + 1);
     runs->speed = g_new0(RfRunSpeed, runs->droplets * runs->runs);
     g_autofree size_t *edges = g_new(size_t, runs->runs + 1);

@@ -16,6 +16,7 @@ typedef struct {
 
 typedef struct {
     size_t droplets, runs;
+    double bin_s;           /* edges are whole numbers of bins apart */
     double *edge_s;         /* runs + 1 */
     RfRunSpeed *speed;      /* droplets rows of runs */
     double *diffusion_m2_s; /* droplets; from the across axis, shrunk towards the common value */

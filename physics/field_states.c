@@ -1,6 +1,7 @@
 #include "physics/field_states.h"
 
 #include <math.h>
+#include <stdlib.h>
 #include <string.h>
 
 enum { BEAM = 48 };
@@ -131,6 +132,21 @@ static void report(const Hypothesis *best, size_t droplets, double largest_v, Rf
     }
 }
 
+/* Cost by which the best labels lead over the best that differ for a tenth of the recording; others in the beam are the
+ * same reading but for a bin here or there. */
+static double lead(const Beam *beam, const RfFieldRuns *runs)
+{
+    const Hypothesis *best = &beam->now[0];
+    double whole_s = runs->edge_s[runs->runs] - runs->edge_s[0];
+    for (size_t i = 1; i < beam->n_now; i++) {
+        double different_s = 0;
+        for (size_t r = 0; r < runs->runs; r++)
+            if (beam->now[i].label[r] != best->label[r]) different_s += runs->edge_s[r + 1] - runs->edge_s[r];
+        if (different_s > 0.1 * whole_s) return beam->now[i].cost - best->cost;
+    }
+    return HUGE_VAL;
+}
+
 double rf_field_states_label(const RfFieldRuns *runs, const RfFieldSheet *sheet, const double *voltage_v,
                              unsigned *label, RfStateDroplet *droplet)
 {
@@ -146,7 +162,7 @@ double rf_field_states_label(const RfFieldRuns *runs, const RfFieldSheet *sheet,
     for (size_t r = 0; r < runs->runs; r++) advance(beam, runs, r, sheet->states, relative);
     memcpy(label, beam->now[0].label, runs->runs * sizeof *label);
     report(&beam->now[0], runs->droplets, largest, droplet);
-    double margin = beam->n_now > 1 ? beam->now[1].cost - beam->now[0].cost : HUGE_VAL;
+    double margin = lead(beam, runs);
     for (int i = 0; i < BEAM; i++) hypothesis_clear(&beam->now[i]);
     for (int i = 0; i < BEAM * RF_FIELD_STATES; i++) hypothesis_clear(&beam->next[i]);
     g_free(beam);

@@ -73,6 +73,17 @@ static void collect_intervals(RfFieldTimeline *timeline, const RfFieldRuns *runs
     }
 }
 
+/* A switch from one polarity to the other within a bin looks like a bin without field: labels of runs of a single bin
+ * between two different states are given up in favour of their longer neighbours. */
+static void heal_labels(const RfFieldRuns *runs, unsigned *label)
+{
+    for (size_t r = 1; r + 1 < runs->runs; r++) {
+        bool is_short = runs->edge_s[r + 1] - runs->edge_s[r] < 1.5 * runs->bin_s;
+        bool is_alone = label[r] != label[r - 1] && label[r] != label[r + 1] && label[r - 1] != label[r + 1];
+        if (is_short && is_alone) label[r] = label[r - 1];
+    }
+}
+
 /* The run that ends (or begins) at an edge. */
 static size_t run_ending_at(const RfFieldRuns *runs, double edge_s)
 {
@@ -81,19 +92,35 @@ static size_t run_ending_at(const RfFieldRuns *runs, double edge_s)
     return r;
 }
 
+/* The runs nearest to a switch that are long enough to show a speed, on either side and in the same interval. */
+static bool runs_beside(const RfFieldTimeline *timeline, unsigned number, const RfFieldRuns *runs,
+                        size_t *before, size_t *after)
+{
+    static const double watched_s = 0.35;
+    const RfFieldInterval *v = &g_array_index(timeline->intervals, RfFieldInterval, number);
+    size_t at = run_ending_at(runs, v->end_s), a = at, b = at + 1;
+    while (a > 0 && runs->edge_s[a + 1] - runs->edge_s[a] < watched_s && runs->edge_s[a] > v[0].start_s) a--;
+    while (b + 1 < runs->runs && runs->edge_s[b + 1] - runs->edge_s[b] < watched_s &&
+           runs->edge_s[b + 1] < v[1].end_s)
+        b++;
+    *before = a;
+    *after = b;
+    return b < runs->runs;
+}
+
 /* Before there are fits, a droplet's speeds in the runs on either side of a switch tell when it was. */
 static void refine_roughly(RfFieldTimeline *timeline, unsigned number, const RfTrail *trails,
                            const RfFieldRuns *runs)
 {
     static const double watched_s = 0.35;
     const RfFieldInterval *before = &g_array_index(timeline->intervals, RfFieldInterval, number);
-    size_t run = run_ending_at(runs, before->end_s), n = runs->droplets;
+    size_t run_a, run_b, n = runs->droplets;
     double change_v = before[1].voltage_v - before[0].voltage_v, forever = HUGE_VAL;
-    if (run + 1 >= runs->runs || change_v == 0) return;
+    if (change_v == 0 || !runs_beside(timeline, number, runs, &run_a, &run_b)) return;
     g_autofree RfSwitchWitness *witnesses = g_new0(RfSwitchWitness, n);
     g_autofree double *per_volt = g_new(double, 2 * n);
     for (size_t j = 0; j < n; j++) {
-        const RfRunSpeed *a = &runs->speed[j * runs->runs + run], *b = a + 1;
+        const RfRunSpeed *a = &runs->speed[j * runs->runs + run_a], *b = &runs->speed[j * runs->runs + run_b];
         if (a->time_s < watched_s || b->time_s < watched_s) continue;
         per_volt[2 * j] = (b->speed_m_s - a->speed_m_s) / change_v;
         per_volt[2 * j + 1] = sqrt(a->variance_m2_s2 + b->variance_m2_s2) / fabs(change_v);
@@ -126,6 +153,7 @@ RfFieldTimeline *rf_field_timeline_find(const RfTrail *trails, size_t n, const R
     g_autofree unsigned *label = g_new0(unsigned, runs->runs);
     g_autofree RfStateDroplet *droplets = g_new0(RfStateDroplet, n);
     double margin = rf_field_states_label(runs, &states, voltage_v, label, droplets);
+    heal_labels(runs, label);
     timeline->labels_ambiguous = states.states == 3 && margin < 3;
     collect_intervals(timeline, runs, label, &states, voltage_v);
     for (unsigned k = 0; k < timeline->switches->len; k++) refine_roughly(timeline, k, trails, runs);

@@ -9,8 +9,17 @@ static const double MARGIN_S = 0.7;
 typedef struct {
     double first_s, step_s;
     size_t n;
+    double exposure_s;      /* a position is the mean over this long about its time */
     double *log_likelihood; /* n, summed over witnesses */
 } InstantGrid;
+
+/* Mean over the exposure of the time since a switch, nothing before it. */
+static double blurred_ramp(double since_s, double exposure_s)
+{
+    double half = exposure_s / 2;
+    if (since_s >= half) return since_s;
+    return since_s <= -half ? 0 : (since_s + half) * (since_s + half) / (2 * exposure_s);
+}
 
 static double speed_per_volt_at(const RfSwitchWitness *w, double time_s, double *u)
 {
@@ -44,6 +53,19 @@ static bool cut_slice(const RfTrail *trail, double from_s, double middle_s, doub
     return before >= 2 && after >= 2;
 }
 
+/* A droplet that is wrong (swapped, colliding) about this switch must not outvote the rest: its likelihood is mixed with
+ * a flat one that it would be wrong once in a thousand times. */
+static void add_bounded(const double *columns, size_t n, InstantGrid *grid)
+{
+    g_autofree double *own = g_new0(double, grid->n);
+    double top = -HUGE_VAL;
+    for (size_t i = 0; i < n; i++)
+        for (size_t g = 0; g < grid->n; g++)
+            own[g] -= 0.5 * columns[i * grid->n + g] * columns[i * grid->n + g];
+    for (size_t g = 0; g < grid->n; g++) top = fmax(top, own[g]);
+    for (size_t g = 0; g < grid->n; g++) grid->log_likelihood[g] += top + log(exp(own[g] - top) + 1e-3);
+}
+
 /* One column per instant of the grid: the path less what the droplet would do if the switch were then. */
 static bool add_witness(const RfFieldTimeline *timeline, unsigned number, const RfSwitchWitness *w,
                         InstantGrid *grid, double from_s, double to_s)
@@ -65,18 +87,23 @@ static bool add_witness(const RfFieldTimeline *timeline, unsigned number, const 
         for (size_t g = 0; g < grid->n; g++) {
             double since = t - grid->first_s - grid->step_s * (double)g;
             columns[i * grid->n + g] =
-                s[i].fall_m - s[0].fall_m - steady * t - (since > 0 ? change * since : 0);
+                s[i].fall_m - s[0].fall_m - steady * t - change * blurred_ramp(since, grid->exposure_s);
         }
     }
     double log_det;
     if (!rf_path_likelihood_whiten(&w->noise, n, times_s, u_m, grid->n, columns, &log_det)) return false;
-    for (size_t i = 0; i < n; i++)
-        for (size_t g = 0; g < grid->n; g++)
-            grid->log_likelihood[g] -= 0.5 * columns[i * grid->n + g] * columns[i * grid->n + g];
+    add_bounded(columns, n, grid);
     return fabs(speed) > 3 * u_speed;
 }
 
-static RfValue grid_mean(const InstantGrid *grid)
+/* Mean and spread of the likelihood, and the logarithm of its integral. */
+typedef struct {
+    RfValue time_s;
+    double log_evidence;
+    unsigned droplets;
+} Instant;
+
+static Instant grid_mean(const InstantGrid *grid)
 {
     double top = -HUGE_VAL, weight = 0, first = 0, second = 0;
     for (size_t g = 0; g < grid->n; g++) top = fmax(top, grid->log_likelihood[g]);
@@ -87,50 +114,114 @@ static RfValue grid_mean(const InstantGrid *grid)
         second += w * t * t;
     }
     double mean = first / weight, variance = second / weight - mean * mean;
-    return (RfValue){grid->first_s + mean, sqrt(fmax(variance, grid->step_s * grid->step_s / 12))};
+    double sigma = sqrt(fmax(variance, grid->step_s * grid->step_s / 12));
+    return (Instant){{grid->first_s + mean, sigma}, top + log(weight * grid->step_s), 0};
 }
 
 /* Likelihood of a switch over a window about its present place. */
-static RfValue scan(const RfFieldTimeline *timeline, unsigned number, const RfSwitchWitness *witnesses,
-                    size_t n, double half_window_s, size_t points, unsigned *droplets)
+static Instant scan(const RfFieldTimeline *timeline, unsigned number, const RfSwitchWitness *witnesses,
+                    size_t n, double half_window_s, double exposure_s)
 {
+    enum { POINTS = 129 };
     const RfFieldInterval *before = &g_array_index(timeline->intervals, RfFieldInterval, number);
     double now_s = before->end_s, middle_before = 0.5 * (before->start_s + now_s);
-    double middle_after = 0.5 * (now_s + before[1].end_s);
+    double middle_after = 0.5 * (now_s + before[1].end_s), log_likelihood[POINTS] = {0};
     double from_s = fmax(now_s - half_window_s, middle_before),
            to_s = fmin(now_s + half_window_s, middle_after);
-    InstantGrid grid = {.first_s = from_s, .n = points, .step_s = (to_s - from_s) / (double)(points - 1)};
-    grid.log_likelihood = g_new0(double, points);
-    *droplets = 0;
+    InstantGrid grid = {from_s, (to_s - from_s) / (POINTS - 1), POINTS, exposure_s, log_likelihood};
+    unsigned droplets = 0;
     for (size_t j = 0; j < n; j++)
         if (add_witness(timeline, number, &witnesses[j], &grid, fmax(from_s - MARGIN_S, before->start_s),
                         fmin(to_s + MARGIN_S, before[1].end_s)))
-            (*droplets)++;
-    RfValue found = grid_mean(&grid);
-    g_free(grid.log_likelihood);
+            droplets++;
+    Instant found = grid_mean(&grid);
+    found.droplets = droplets;
     return found;
 }
 
-static RfValue find_instant(RfFieldTimeline *timeline, unsigned number, const RfSwitchWitness *witnesses,
-                            size_t n, unsigned *droplets)
+static void move_switch(RfFieldTimeline *timeline, unsigned number, double time_s)
 {
     RfFieldInterval *before = &g_array_index(timeline->intervals, RfFieldInterval, number);
-    RfValue found = {before->end_s, 0};
+    before->end_s = before[1].start_s = time_s;
+}
+
+/* Narrows the window about a switch until it holds the likelihood closely; returns its half width. A flat likelihood,
+ * when nobody tells, keeps the window's middle and width. */
+static double home_in(RfFieldTimeline *timeline, unsigned number, const RfSwitchWitness *witnesses, size_t n,
+                      double exposure_s, Instant *found)
+{
     double half_window_s = 0.4;
     for (int pass = 0; pass < 3; pass++) {
-        found = scan(timeline, number, witnesses, n, half_window_s, 129, droplets);
-        if (*droplets == 0) return found; /* a flat likelihood: the window's middle and width */
-        before->end_s = before[1].start_s = found.value;
-        double wanted = fmax(6 * found.sigma, 0.01);
+        *found = scan(timeline, number, witnesses, n, half_window_s, exposure_s);
+        if (found->droplets == 0) return half_window_s;
+        move_switch(timeline, number, found->time_s.value);
+        double wanted = fmax(6 * found->time_s.sigma, 0.01);
         if (pass > 0 && wanted < 2 * half_window_s && wanted > half_window_s / 4) break;
         half_window_s = fmin(wanted, 1);
     }
-    return found;
+    return half_window_s;
+}
+
+static void set_switch(RfFieldTimeline *timeline, unsigned number, RfValue time_s, unsigned droplets)
+{
+    RfFieldSwitch *s = &g_array_index(timeline->switches, RfFieldSwitch, number);
+    s->time_s = time_s;
+    s->droplets = droplets;
+    if (droplets > 0) move_switch(timeline, number, time_s.value);
+}
+
+/* Frame interval, from the longest trail. */
+static double frame_interval(const RfSwitchWitness *witnesses, size_t n)
+{
+    const RfTrail *longest = NULL;
+    for (size_t j = 0; j < n; j++)
+        if (witnesses[j].usable && (!longest || witnesses[j].trail->n > longest->n))
+            longest = witnesses[j].trail;
+    if (!longest || longest->n < 2) return 0;
+    return (longest->samples[longest->n - 1].time_s - longest->samples[0].time_s) / (double)(longest->n - 1);
 }
 
 void rf_switch_instant_refine(RfFieldTimeline *timeline, unsigned number, const RfSwitchWitness *witnesses,
                               size_t n)
 {
-    RfFieldSwitch *s = &g_array_index(timeline->switches, RfFieldSwitch, number);
-    s->time_s = find_instant(timeline, number, witnesses, n, &s->droplets);
+    Instant found;
+    home_in(timeline, number, witnesses, n, 0.5 * frame_interval(witnesses, n), &found);
+    set_switch(timeline, number, found.time_s, found.droplets);
+}
+
+enum { EXPOSURES = 6 };
+
+/* Mean over the exposures, each by its weight; their disagreement counts into sigma. */
+static RfValue mix(const Instant *instants, const double *weight)
+{
+    double sum = 0, first = 0, second = 0, zero = instants[0].time_s.value;
+    for (int e = 0; e < EXPOSURES; e++) {
+        double t = instants[e].time_s.value - zero, u = instants[e].time_s.sigma;
+        sum += weight[e];
+        first += weight[e] * t;
+        second += weight[e] * (t * t + u * u);
+    }
+    double mean = first / sum;
+    return (RfValue){zero + mean, sqrt(fmax(second / sum - mean * mean, 0))};
+}
+
+void rf_switch_instant_refine_all(RfFieldTimeline *timeline, const RfSwitchWitness *witnesses, size_t n)
+{
+    unsigned switches = timeline->switches->len;
+    double frame_s = frame_interval(witnesses, n), evidence[EXPOSURES] = {0}, weight[EXPOSURES];
+    g_autofree Instant *instants = g_new0(Instant, switches * EXPOSURES + 1);
+    for (unsigned k = 0; k < switches; k++) {
+        Instant found;
+        double half_window_s = home_in(timeline, k, witnesses, n, 0.5 * frame_s, &found);
+        for (int e = 0; e < EXPOSURES; e++) {
+            Instant *one = &instants[k * EXPOSURES + (unsigned)e];
+            *one = scan(timeline, k, witnesses, n, half_window_s, frame_s * e / (EXPOSURES - 1));
+            evidence[e] += one->droplets > 0 ? one->log_evidence : 0;
+        }
+    }
+    double top = evidence[0];
+    for (int e = 1; e < EXPOSURES; e++) top = fmax(top, evidence[e]);
+    for (int e = 0; e < EXPOSURES; e++) weight[e] = exp(evidence[e] - top);
+    for (unsigned k = 0; k < switches; k++)
+        set_switch(timeline, k, mix(&instants[k * EXPOSURES], weight), instants[k * EXPOSURES].droplets);
 }
