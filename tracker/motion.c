@@ -22,11 +22,14 @@ void rf_motion_predict(RfMotion *m, const RfMotionModel *model, double dt_s, dou
     m->unseen_field_s += field_s;
 }
 
+/* A reversal takes a velocity from one tail of its distribution to the other, and charges make those tails long. */
+static const double reversal_factor = 2.5;
+
 /* Variances that a change adds: to the velocity where the field is unknown, to the response where it is known. */
 static void change_variances(const RfMotionModel *model, int axis, double *velocity_px2_s2,
                              double *response_px2_s2)
 {
-    double v = model->velocity_sd_px_s[axis], r = model->response_sd_px_s[axis];
+    double v = reversal_factor * model->velocity_sd_px_s[axis], r = model->response_sd_px_s[axis];
     *velocity_px2_s2 = r > 0 ? 0 : v * v;
     *response_px2_s2 = r * r;
 }

@@ -31,7 +31,7 @@ enum { peak_hits = 10 };
 static const double peak_sd_same = 0.35, peak_sd_other = 0.9;
 static const double reappear_s = 0.3; /* typical length of a gap */
 static const double border_s =
-    0.25; /* a droplet that leaves the view is unseen a little earlier, and seen a little later */
+    0.15; /* between last sight and border a droplet is unseen for so long at most */
 static const double tangled_s =
     2.5; /* two droplets in one spot are not out of view: they may stay so for this long */
 static const double far_prior = 10; /* in units of what is expected: as good as knowing nothing */
