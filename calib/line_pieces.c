@@ -4,7 +4,7 @@
 #include <stdlib.h>
 
 /* Long enough to average noise, short against a lens's bending of a line. */
-static const int piece_px = 24;
+enum { piece_px = 24 };
 
 /* In a picture without any noise what remains is how far a line is from a Gaussian. */
 static const double least_sigma_px = 1e-4;
@@ -17,6 +17,7 @@ typedef struct {
     double along_px, expected_px;
     double mean[WINDOW];
     double offset_px; /* mean of expected place less whole pixel */
+    double kept;      /* part of the columns that count, 0..1 */
 } Window;
 
 typedef struct {
@@ -35,21 +36,60 @@ static int half_window(const RfLineComb *comb)
     return CLAMP((int)(0.42 * comb->period_px), 2, MOST_HALF_WINDOW);
 }
 
+static int by_value(const void *a, const void *b)
+{
+    double x = *(const double *)a, y = *(const double *)b;
+    return (x > y) - (x < y);
+}
+
+/* Where the column's window begins in the plane; -1 if it reaches outside. */
+static int column_start(const RfLinePlane *plane, const RfLineComb *comb, const Window *w, int a)
+{
+    int start = (int)lround(expected_px(comb, w->index, a)) - w->half_window;
+    return start >= 0 && start + 2 * w->half_window < plane->across ? start : -1;
+}
+
+/* A line of the other family, or a speck, covers whole columns and takes the line's contrast away there: weighed unevenly, the columns would
+ * pull a slanted line aside. They show at the window's ends. */
+static bool choose_columns(const RfLinePlane *plane, const RfLineComb *comb, const Window *w, int from,
+                           bool is_kept[])
+{
+    double ends[piece_px], sorted[piece_px];
+    for (int i = 0; i < piece_px; i++) {
+        int start = column_start(plane, comb, w, from + i), last = 2 * w->half_window;
+        if (start < 0) return false;
+        const float *row = plane->v + (size_t)(from + i) * (size_t)plane->across + start;
+        sorted[i] = ends[i] =
+            0.25 * ((double)row[0] + (double)row[1] + (double)row[last - 1] + (double)row[last]);
+    }
+    qsort(sorted, piece_px, sizeof *sorted, by_value);
+    double middle = sorted[piece_px / 2];
+    for (int i = 0; i < piece_px; i++) sorted[i] = fabs(ends[i] - middle);
+    qsort(sorted, piece_px, sizeof *sorted, by_value);
+    double limit = 3.5 * 1.4826 * sorted[piece_px / 2];
+    for (int i = 0; i < piece_px; i++) is_kept[i] = fabs(ends[i] - middle) <= limit;
+    return true;
+}
+
 /* Whole-pixel shifts smear a slanted line evenly to both sides; what they leave out on average is added back. */
 static bool cut_window(const RfLinePlane *plane, const RfLineComb *comb, int index, int from, Window *w)
 {
     double sign = comb->is_dark ? -1.0 : 1.0;
-    *w = (Window){.index = index, .half_window = half_window(comb), .along_px = from + 0.5 * (piece_px - 1)};
-    w->expected_px = expected_px(comb, index, w->along_px);
-    for (int a = from; a < from + piece_px; a++) {
-        double at_px = expected_px(comb, index, a);
-        int middle = (int)lround(at_px);
-        if (middle - w->half_window < 0 || middle + w->half_window >= plane->across) return false;
-        const float *row = plane->v + (size_t)a * (size_t)plane->across;
-        for (int j = 0; j <= 2 * w->half_window; j++)
-            w->mean[j] += sign * (double)row[middle - w->half_window + j] / piece_px;
-        w->offset_px += (at_px - middle) / piece_px;
+    bool is_kept[piece_px];
+    int kept = 0;
+    *w = (Window){.index = index, .half_window = half_window(comb)};
+    if (!choose_columns(plane, comb, w, from, is_kept)) return false;
+    for (int i = 0; i < piece_px; i++) kept += is_kept[i];
+    for (int i = 0; i < piece_px; i++) {
+        if (!is_kept[i]) continue;
+        int start = column_start(plane, comb, w, from + i);
+        const float *row = plane->v + (size_t)(from + i) * (size_t)plane->across + start;
+        for (int j = 0; j <= 2 * w->half_window; j++) w->mean[j] += sign * (double)row[j] / kept;
+        w->along_px += (double)(from + i) / kept;
+        w->offset_px += (expected_px(comb, index, from + i) - (start + w->half_window)) / kept;
     }
+    w->expected_px = expected_px(comb, index, w->along_px);
+    w->kept = (double)kept / piece_px;
     return true;
 }
 
@@ -123,13 +163,7 @@ static bool fit_groove(const Window *w, double sigma_px, Groove *g)
     return g->depth > 0.0;
 }
 
-static int by_value(const void *a, const void *b)
-{
-    double x = *(const double *)a, y = *(const double *)b;
-    return (x > y) - (x < y);
-}
-
-/* Typical variance of what the groove leaves over: the width that leaves least is the line's. */
+/* Typical variance, for all columns kept, of what the groove leaves over: the width that leaves least is the line's. */
 static double noise_variance(const GArray *windows, double sigma_px)
 {
     g_autofree double *found = g_new(double, windows->len + 1);
@@ -137,7 +171,8 @@ static double noise_variance(const GArray *windows, double sigma_px)
     for (unsigned i = 0; i < windows->len; i++) {
         Groove g;
         const Window *w = &g_array_index(windows, Window, i);
-        if (fit_groove(w, sigma_px, &g) && g.degrees > 0) found[n++] = MAX(g.squares, 0.0) / g.degrees;
+        if (fit_groove(w, sigma_px, &g) && g.degrees > 0)
+            found[n++] = w->kept * MAX(g.squares, 0.0) / g.degrees;
     }
     qsort(found, n, sizeof *found, by_value);
     return n ? found[n / 2] : HUGE_VAL;
@@ -182,6 +217,7 @@ static void close_line(GArray *pieces, unsigned begin, unsigned possible)
 static bool locate(const Window *w, double sigma_px, double variance, RfLinePiece *piece)
 {
     Groove g;
+    variance /= w->kept;
     if (!fit_groove(w, sigma_px, &g) || g.depth < 4.0 * sqrt(variance * g.var_depth)) return false;
     double place_px = w->expected_px - w->offset_px + g.at_px;
     *piece = (RfLinePiece){w->index, w->along_px, place_px, MAX(least_sigma_px, sqrt(variance * g.var_at))};
