@@ -61,19 +61,22 @@ static GPtrArray *charged_spells(const RfResults *results)
     return spells;
 }
 
+/* Far beyond any droplet; keeps a wild charge from filling the axis. */
+static const double MOST_UNITS = 1e6;
+
 static void multiples(GString *script, const RfResults *results, double low_C, double high_C)
 {
     const bool is_found = results->unit.resolved && results->unit.unit_C.value > 0;
     const double unit_C = is_found ? results->unit.unit_C.value : CODATA_E_C;
-    const int first = (int)floor(low_C / unit_C), last = (int)ceil(high_C / unit_C);
-    const int step = 1 + (last - first) / 24;
+    const int first = (int)floor(CLAMP(low_C / unit_C, -MOST_UNITS, MOST_UNITS));
+    const int last = (int)ceil(CLAMP(high_C / unit_C, -MOST_UNITS, MOST_UNITS));
+    const int step = 1 + (last - first) / 24, start = first - first % step;
     g_string_append_printf(script, "set y2label 'multiple of %s'\nset y2tics (",
                            is_found ? "the unit found" : "CODATA e");
-    for (int n = first; n <= last; n++)
-        if (n % step == 0) {
-            g_string_append_printf(script, "%s'%d' ", n - first < step ? "" : ", ", n);
-            number(script, n * unit_C * 1e19);
-        }
+    for (int n = start; n <= last; n += step) {
+        g_string_append_printf(script, "%s'%d' ", n == start ? "" : ", ", n);
+        number(script, n * unit_C * 1e19);
+    }
     g_string_append(script, ")\nset grid noxtics noytics y2tics lt 1 lc rgb '#808080' lw 0.5\n");
     g_string_append(script, "set yrange [");
     number(script, (first - 0.4) * unit_C * 1e19);

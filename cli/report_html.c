@@ -133,7 +133,8 @@ static void foot(GString *out, const char *script)
         "</main>\n<footer>Written by risefall " RF_VERSION
         ". The tables behind this page are the CSV and JSON files "
         "beside it; the figures, with their data and scripts, are in <code>figures/</code>.</footer>\n"
-        "<p id=\"chosen\" role=\"status\"></p>\n<script>%s</script>\n</body>\n</html>\n",
+        "<div id=\"chosen\" class=\"is-empty\"><span role=\"status\"></span><button type=\"button\">Show "
+        "all</button></div>\n<script>%s</script>\n</body>\n</html>\n",
         script);
 }
 

@@ -2,7 +2,8 @@
 (function () {
   'use strict';
   var chosen = null;
-  var status = document.getElementById('chosen');
+  var bar = document.getElementById('chosen');
+  var status = bar.querySelector('[role=status]');
 
   function choose(number) {
     chosen = number;
@@ -14,7 +15,8 @@
       if (link.textContent === chosen) link.setAttribute('aria-current', 'true');
       else link.removeAttribute('aria-current');
     });
-    status.textContent = chosen === null ? '' : 'Droplet ' + chosen + ' is marked in every figure and table. Escape: show all.';
+    status.textContent = chosen === null ? '' : 'Droplet ' + chosen + ' is marked in every figure and table.';
+    bar.classList.toggle('is-empty', chosen === null);
   }
 
   document.addEventListener('click', function (event) {
@@ -26,6 +28,7 @@
   document.addEventListener('keydown', function (event) {
     if (event.key === 'Escape') choose(null);
   });
+  bar.querySelector('button').addEventListener('click', function () { choose(null); });
   var asked = /^#droplet-(\d+)$/.exec(window.location.hash);
   if (asked) choose(asked[1]);
 })();

@@ -76,6 +76,9 @@ static void paths(GString *out, const RfResults *results, double text_px)
 
 static void background(GString *out, const RfResults *results, double width)
 {
+    g_string_append_printf(out,
+                           "<rect x=\"-0.5\" y=\"-0.5\" width=\"%.2f\" height=\"%d\" fill=\"#0d1112\"/>\n",
+                           width, results->height);
     if (!results->view_png) return;
     size_t length;
     const guchar *bytes = g_bytes_get_data(results->view_png, &length);

@@ -2,6 +2,7 @@
 
 #include <json-glib/json-glib.h>
 #include <math.h>
+#include <string.h>
 
 #include "cli/tally.h"
 #include "cli/version.h"
@@ -45,12 +46,31 @@ static void words(JsonBuilder *json, const char *key, const char *text)
     json_builder_add_string_value(json, valid);
 }
 
+/* The generator writes 17 digits, 0.20999999999999999 for 0.21: the shortest text that reads back as the same number
+ * serves people and machines alike. Strings are matched too, so that nothing inside them changes. */
+static gboolean shorten(const GMatchInfo *match, GString *out, void *unused)
+{
+    (void)unused;
+    g_autofree char *token = g_match_info_fetch(match, 0);
+    char text[G_ASCII_DTOSTR_BUF_SIZE];
+    const double value = g_ascii_strtod(token, NULL);
+    g_ascii_formatd(text, sizeof text, "%.15g", value);
+    const bool is_same =
+        *token != '"' && g_ascii_strtod(text, NULL) >= value && g_ascii_strtod(text, NULL) <= value;
+    g_string_append(out, is_same ? text : token);
+    if (is_same && !strpbrk(text, ".e")) g_string_append(out, ".0"); /* stays a number with a fraction */
+    return FALSE;
+}
+
 static char *finish(JsonBuilder *json)
 {
     json_builder_end_object(json);
     g_autoptr(JsonNode) root = json_builder_get_root(json);
     g_autofree char *text = json_to_string(root, TRUE);
-    return g_strconcat(text, "\n", NULL);
+    g_autoptr(GRegex) numbers = g_regex_new(
+        "\"(?:[^\"\\\\]|\\\\.)*+\"|-?\\d+\\.\\d+(?:[eE][-+]?\\d+)?|-?\\d+[eE][-+]?\\d+", 0, 0, NULL);
+    g_autofree char *short_text = g_regex_replace_eval(numbers, text, -1, 0, 0, shorten, NULL, NULL);
+    return g_strconcat(short_text, "\n", NULL);
 }
 
 char *rf_write_json_scale(const RfResults *results)

@@ -78,6 +78,21 @@ static void odd_bytes_stay_valid(void)
     parse(parser, text);
 }
 
+/* What people read is what was meant, and what machines read is the same number to the last bit. */
+static void numbers_are_short_and_exact(void)
+{
+    g_autoptr(RfResults) results = sample_results_new();
+    results->scale.residual_px = 0.1 + 0.2;
+    g_autofree char *text = rf_write_json_scale(results);
+    g_assert_nonnull(strstr(text, "\"u_px_per_mm_x\" : 0.21,"));
+    g_autoptr(JsonParser) parser = json_parser_new();
+    g_assert_cmpfloat(json_object_get_double_member(parse(parser, text), "residual_px"), ==, 0.1 + 0.2);
+    g_free(results->sheet_path);
+    results->sheet_path = g_strdup("0.20999999999999999 \\\" 0.20999999999999999");
+    g_autofree char *summary = rf_write_json_summary(results);
+    g_assert_nonnull(strstr(summary, "\"0.20999999999999999 \\\\\\\" 0.20999999999999999\""));
+}
+
 static void same_results_same_bytes(void)
 {
     g_autoptr(RfResults) one = sample_results_new(), other = sample_results_new();
@@ -120,6 +135,7 @@ int main(int argc, char **argv)
                     summary_unresolved_is_null_with_reason);
     g_test_add_func("/write_json/summary/odd-bytes-stay-valid", odd_bytes_stay_valid);
     g_test_add_func("/write_json/summary/same-results-same-bytes", same_results_same_bytes);
+    g_test_add_func("/write_json/numbers/short-and-exact", numbers_are_short_and_exact);
     g_test_add_func("/write_json/digest/published", digest_published);
     g_test_add_func("/write_json/digest/refuses", digest_refuses);
     return g_test_run();
