@@ -7,7 +7,7 @@
 #include <stdlib.h>
 #include <string.h>
 
-enum { TRIES = 4000, LETTERS = 25 /* Z is nobody */, MOST_DIVISIONS = 3 };
+enum { TRIES = 4000, CHOICES = 400, FOLLOWED = 8, LETTERS = 25 /* Z is nobody */, MOST_DIVISIONS = 3 };
 
 static const double longest_s = 12, shortest_s = 0.8, away_from_switch_s = 0.3;
 static const double plain = 5; /* spreads: a planted mistake is at least so large */
@@ -39,7 +39,9 @@ typedef struct {
     const RfScene *scene;
     const RfView *view;
     gsl_rng *random;
-    GArray *letters; /* unsigned: droplets in order of first use */
+    GArray *followed; /* const RfTrueDroplet *: the few that stay longest; a person follows no more */
+    GArray *starts;   /* double: of the acts written so far; nothing is timed twice */
+    GArray *letters;  /* unsigned: droplets in order of first use */
     GString *timings, *truth;
     int entry;
 } Notebook;
@@ -103,10 +105,18 @@ static bool has_switch_between(const Notebook *book, const Act *act, bool *is_un
     return has_switch;
 }
 
+static bool is_taken(const Notebook *book, double start_s)
+{
+    for (unsigned i = 0; i < book->starts->len; i++)
+        if (fabs(g_array_index(book->starts, double, i) - start_s) < 1e-6) return true;
+    return false;
+}
+
 static bool try_act(Notebook *book, Act *act)
 {
-    const GArray *droplets = book->record->droplets;
-    act->droplet = &g_array_index(droplets, RfTrueDroplet, pick_int(book, (int)droplets->len));
+    if (book->followed->len == 0) return false;
+    int choice = pick_int(book, (int)book->followed->len);
+    act->droplet = g_array_index(book->followed, const RfTrueDroplet *, choice);
     const GArray *seen = rf_simulate_record_life(book->record, act->droplet)->seen;
     if (act->droplet->frames < 40) return false;
     unsigned i =
@@ -123,7 +133,8 @@ static bool try_act(Notebook *book, Act *act)
     double took_s = act->end_s - act->start_s;
     bool is_unclear;
     act->has_switch = has_switch_between(book, act, &is_unclear);
-    return took_s >= shortest_s && took_s <= longest_s && !is_unclear && !has_change_between(book, act);
+    return took_s >= shortest_s && took_s <= longest_s && !is_unclear && !has_change_between(book, act) &&
+           !is_taken(book, act->start_s);
 }
 
 static bool find_act(Notebook *book, bool has_switch, Act *act)
@@ -158,6 +169,7 @@ static void write_entry(Notebook *book, const Act *act, Finding finding, Noted n
 {
     double start_s = act->start_s + 0.05 + gsl_ran_gaussian(book->random, 0.1);
     book->entry++;
+    g_array_append_val(book->starts, act->start_s);
     g_string_append_printf(book->timings, "%d,%c,%s,%d,%s,%.0f,%.2f\n", book->entry, noted.label,
                            act->is_fall ? "fall" : "rise", noted.divisions, noted.time_text,
                            noted_voltage(book, act->start_s), MAX(start_s, 0));
@@ -237,7 +249,7 @@ static void note_plainly(Notebook *book, Finding finding)
 static void note_miscount(Notebook *book)
 {
     Act act;
-    for (int i = 0; i < TRIES && find_act(book, false, &act); i++) {
+    for (int i = 0; i < CHOICES && find_act(book, false, &act); i++) {
         double one_s = (act.end_s - act.start_s) / act.divisions;
         if (one_s < plain * book->scene->hand_spread_s) continue;
         int wrong = act.divisions > 1 && pick_int(book, 2) ? act.divisions - 1 : act.divisions + 1;
@@ -251,7 +263,7 @@ static void note_miscount(Notebook *book)
 static void note_slip(Notebook *book)
 {
     Act act;
-    for (int i = 0; i < TRIES && find_act(book, false, &act); i++) {
+    for (int i = 0; i < CHOICES && find_act(book, false, &act); i++) {
         g_autofree char *text = two_places(stopwatch(book, &act));
         if (!make_slip(book, text, act.end_s - act.start_s)) continue;
         write_entry(book, &act, DIGIT_SLIP,
@@ -263,7 +275,7 @@ static void note_slip(Notebook *book)
 static void note_disagreement(Notebook *book)
 {
     Act act;
-    for (int i = 0; i < TRIES && find_act(book, false, &act); i++) {
+    for (int i = 0; i < CHOICES && find_act(book, false, &act); i++) {
         double off_s =
             MAX(book->scene->hand_spread_s, 0.05) * pick(book, 6, 9) * (pick_int(book, 2) ? 1 : -1);
         double noted_s = act.end_s - act.start_s + off_s;
@@ -278,11 +290,10 @@ static void note_disagreement(Notebook *book)
 /* A droplet in view at the same time, which would have taken plainly longer or shorter. */
 static const RfTrueDroplet *find_rival(Notebook *book, const Act *act)
 {
-    const GArray *droplets = book->record->droplets;
     double span_m = act->divisions * book->world->spacing_m, true_s = act->end_s - act->start_s;
-    for (unsigned d = 0; d < droplets->len; d++) {
-        const RfTrueDroplet *other = &g_array_index(droplets, RfTrueDroplet, d);
-        if (other->number == act->droplet->number || other->frames < 40 ||
+    for (unsigned d = 0; d < book->followed->len; d++) {
+        const RfTrueDroplet *other = g_array_index(book->followed, const RfTrueDroplet *, d);
+        if (other->number == act->droplet->number ||
             !rf_simulate_record_at(book->record, other, act->start_s) ||
             !rf_simulate_record_at(book->record, other, act->end_s))
             continue;
@@ -297,7 +308,7 @@ static const RfTrueDroplet *find_rival(Notebook *book, const Act *act)
 static void note_other_droplet(Notebook *book)
 {
     Act act;
-    for (int i = 0; i < TRIES && find_act(book, false, &act); i++) {
+    for (int i = 0; i < CHOICES && find_act(book, false, &act); i++) {
         const RfTrueDroplet *rival = find_rival(book, &act);
         if (!rival) continue;
         char label = letter_of(book, rival->number);
@@ -363,11 +374,32 @@ static GArray *plan_entries(const RfScene *scene, gsl_rng *random)
     return plan;
 }
 
+static int longest_first(const void *a, const void *b)
+{
+    const RfTrueDroplet *left = *(const RfTrueDroplet *const *)a, *right = *(const RfTrueDroplet *const *)b;
+    if (left->frames != right->frames) return left->frames > right->frames ? -1 : 1;
+    return left->number < right->number ? -1 : 1;
+}
+
+static GArray *choose_followed(const RfRecord *record)
+{
+    GArray *followed = g_array_new(FALSE, FALSE, sizeof(const RfTrueDroplet *));
+    for (unsigned d = 0; d < record->droplets->len; d++) {
+        const RfTrueDroplet *droplet = &g_array_index(record->droplets, RfTrueDroplet, d);
+        if (droplet->last - droplet->first > 40) g_array_append_val(followed, droplet);
+    }
+    g_array_sort(followed, longest_first);
+    g_array_set_size(followed, MIN(followed->len, FOLLOWED));
+    return followed;
+}
+
 RfHandRecord rf_simulate_hand_write(const RfRecord *record, const RfWorld *world, const RfScene *scene,
                                     const RfView *view)
 {
     Notebook book = {.record = record, .world = world, .scene = scene, .view = view};
     book.random = rf_simulate_world_stream(scene, RF_STREAM_HAND);
+    book.followed = choose_followed(record);
+    book.starts = g_array_new(FALSE, FALSE, sizeof(double));
     book.letters = g_array_new(FALSE, FALSE, sizeof(unsigned));
     book.timings = g_string_new("entry,label,motion,divisions,time_s,voltage_V,start_s\n");
     book.truth = g_string_new("entry,droplet,true_time_s,finding,true_divisions,note\n");
@@ -375,6 +407,8 @@ RfHandRecord rf_simulate_hand_write(const RfRecord *record, const RfWorld *world
     for (unsigned i = 0; i < plan->len && record->droplets->len > 0; i++)
         note(&book, g_array_index(plan, Finding, i));
     gsl_rng_free(book.random);
+    g_array_unref(book.followed);
+    g_array_unref(book.starts);
     g_array_unref(book.letters);
     return (RfHandRecord){g_string_free(book.timings, FALSE), g_string_free(book.truth, FALSE)};
 }

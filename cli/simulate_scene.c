@@ -422,6 +422,14 @@ static bool check_together(const RfScene *scene, GError **error)
         return fail(error, RF_SIMULATE_SCENE_ERROR_VALUE,
                     "[picture] width: %d x %d is odd; encoders need an even number of pixels each way",
                     scene->width, scene->height);
+    double display = scene->width * scene->pixel_aspect / scene->height;
+    bool is_mpeg2_shape = fabs(scene->pixel_aspect - 1) < 1e-9 || fabs(display - 4. / 3) < 1e-3 ||
+                          fabs(display - 16. / 9) < 1e-3;
+    if (scene->codec == RF_SCENE_CODEC_MPEG2 && !is_mpeg2_shape)
+        return fail(
+            error, RF_SIMULATE_SCENE_ERROR_VALUE,
+            "[picture] pixel_aspect: mpeg2 can say so only of pictures shown as 4:3 or 16:9; this is %.3f:1",
+            display);
     if (scene->is_interlaced && scene->codec != RF_SCENE_CODEC_MPEG2 && scene->codec != RF_SCENE_CODEC_H264)
         return fail(error, RF_SIMULATE_SCENE_ERROR_VALUE,
                     "[video] codec: interlaced footage needs mpeg2 or h264");
