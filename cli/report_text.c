@@ -116,7 +116,7 @@ void rf_report_text_figure(GString *out, const RfFigureSet *figures, const char 
     const char *shape = g_str_equal(name, "radius") ? " narrow" : "";
     g_string_append_printf(
         out,
-        "<figure><div class=\"scroll%s\" role=\"region\" tabindex=\"0\" aria-label=\"%s\">%s</div>"
+        "<figure><div class=\"scroll%s\" role=\"region\" tabindex=\"0\" aria-label=\"%s, figure\">%s</div>"
         "<figcaption class=\"caption\">%s</figcaption></figure>\n",
         shape, figure->title, picture, caption);
 }
