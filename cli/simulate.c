@@ -71,7 +71,7 @@ static RfVideoWriterOptions writer_options(const RfScene *scene)
         .pixel_aspect = scene->pixel_aspect,
         .frame_rate_hz = scene->frame_rate_hz,
         .quality = scene->quality,
-        .preset = "faster",
+        .preset = "veryfast",
     };
 }
 
