@@ -1,0 +1,318 @@
+#include "physics/droplet_fit.h"
+
+#include <gsl/gsl_errno.h>
+#include <math.h>
+
+#include "physics/constants.h"
+#include "physics/drag.h"
+#include "tests/support/droplet_walk.h"
+
+static const double E = RF_ELEMENTARY_CHARGE_COULOMB;
+static const double SWITCHES_S[] = {5.013, 10.007, 15.021, 20.0, 25.009, 30.017, 35.003};
+
+static Walk usual_walk(const RfFieldTimeline *timeline)
+{
+    return (Walk){.medium = &WALK_MEDIUM,
+                  .timeline = timeline,
+                  .radius_m = 0.5e-6,
+                  .charge_coulomb = 3 * E,
+                  .end_s = 40,
+                  .frame_s = 1.0 / 30,
+                  .exposure = 0.5,
+                  .noise_m = 0.3e-6,
+                  .across_m_s = 2e-6};
+}
+
+static RfFieldTimeline *usual_timeline(void)
+{
+    return walk_timeline_new(SWITCHES_S, G_N_ELEMENTS(SWITCHES_S), RF_FIELD_TOP_PLUS, 500, 40);
+}
+
+static gsl_rng *seeded(unsigned long seed)
+{
+    gsl_rng *random = gsl_rng_alloc(gsl_rng_mt19937);
+    gsl_rng_set(random, seed);
+    return random;
+}
+
+static void assert_within(RfValue found, double truth, double sigmas)
+{
+    g_assert_cmpfloat(found.sigma, >, 0);
+    g_assert_cmpfloat(fabs(found.value - truth), <, sigmas * found.sigma);
+}
+
+static void test_never_a_field(void)
+{
+    gsl_rng *random = seeded(1);
+    Walk walk = usual_walk(NULL);
+    RfTrail trail = walk_trail_new(&walk, 1, random);
+    RfDropletModel model = {.medium = &WALK_MEDIUM};
+    RfDropletFit fit;
+    rf_droplet_fit(&trail, &model, &fit);
+    g_assert_cmpint(fit.state, ==, RF_FIT_DONE);
+    g_assert_cmpuint(fit.spells, ==, 1);
+    g_assert_false(fit.spell[0].has_charge);
+    assert_within(fit.radius_m, walk.radius_m, 4);
+    walk_trail_clear(&trail);
+    gsl_rng_free(random);
+}
+
+static void test_neutral_droplet(void)
+{
+    gsl_rng *random = seeded(2);
+    g_autoptr(RfFieldTimeline) timeline = usual_timeline();
+    Walk walk = usual_walk(timeline);
+    walk.charge_coulomb = 0;
+    RfTrail trail = walk_trail_new(&walk, 1, random);
+    RfDropletModel model = {.medium = &WALK_MEDIUM, .timeline = timeline};
+    RfDropletFit fit;
+    rf_droplet_fit(&trail, &model, &fit);
+    g_assert_cmpint(fit.state, ==, RF_FIT_DONE);
+    g_assert_true(fit.spell[0].has_charge);
+    assert_within(fit.spell[0].charge_coulomb, 0, 4);
+    g_assert_cmpfloat(fit.spell[0].charge_coulomb.sigma, <, 0.15 * E);
+    walk_trail_clear(&trail);
+    gsl_rng_free(random);
+}
+
+static void test_watched_under_field_only(void)
+{
+    gsl_rng *random = seeded(3);
+    g_autoptr(RfFieldTimeline) timeline = rf_field_timeline_new();
+    RfFieldInterval both[] = {{0, 20, RF_FIELD_TOP_PLUS, 400}, {20, 40, RF_FIELD_TOP_MINUS, -400}};
+    g_array_append_vals(timeline->intervals, both, 2);
+    Walk walk = usual_walk(timeline);
+    RfTrail trail = walk_trail_new(&walk, 1, random);
+    RfDropletModel model = {.medium = &WALK_MEDIUM, .timeline = timeline};
+    RfDropletFit fit;
+    rf_droplet_fit(&trail, &model, &fit);
+    g_assert_cmpint(fit.state, ==, RF_FIT_DONE);
+    assert_within(fit.spell[0].charge_coulomb, 3 * E, 4);
+    assert_within(fit.radius_m, walk.radius_m, 4);
+    g_assert_cmpfloat(fit.spell[0].charge_coulomb.sigma, <, 0.15 * E);
+    walk_trail_clear(&trail);
+    gsl_rng_free(random);
+}
+
+/* Cramer-Rao bounds for q = 3 e, 20 s off, 20 s on, 500 V over 6 mm, 0.5 um of noise of unknown size, 30 frames/s,
+ * computed beforehand from the covariance of the displacements: radius 0.3 um: 0.37 e from speeds alone, 0.13 e with the
+ * spread; 0.5 um: 0.083 and 0.070 e; 1 um: 0.029 e both. Tolerance: half a last digit, widened by 5 % of the air that
+ * they were computed for. */
+static void test_attainable_known_bounds(void)
+{
+    static const struct {
+        double radius_m, speeds_e, joint_e, half_digit;
+    } cases[] = {{0.3e-6, 0.37, 0.13, 0.005}, {0.5e-6, 0.083, 0.070, 0.0005}, {1e-6, 0.029, 0.029, 0.0005}};
+    for (size_t i = 0; i < G_N_ELEMENTS(cases); i++) {
+        RfObservationPlan plan = {cases[i].radius_m, 3 * E, 20, 20, 500, 30, 0.5e-6};
+        RfAttainable best;
+        rf_droplet_fit_attainable(&plan, &WALK_MEDIUM, &best);
+        double speeds = best.u_charge_speeds_coulomb / E, joint = best.u_charge_joint_coulomb / E;
+        g_test_message("%.1f um: %.4f e from speeds, %.4f e jointly", cases[i].radius_m * 1e6, speeds, joint);
+        g_assert_cmpfloat_with_epsilon(speeds, cases[i].speeds_e,
+                                       cases[i].half_digit + 0.05 * cases[i].speeds_e);
+        g_assert_cmpfloat_with_epsilon(joint, cases[i].joint_e,
+                                       cases[i].half_digit + 0.05 * cases[i].joint_e);
+    }
+}
+
+typedef struct {
+    int n, within_1, within_2;
+    double squares, over_bound, sigma_over_bound;
+} Coverage;
+
+static void count(Coverage *c, RfValue found, double truth, double bound)
+{
+    double miss = fabs(found.value - truth);
+    c->n++;
+    c->within_1 += miss < found.sigma;
+    c->within_2 += miss < 2 * found.sigma;
+    c->over_bound += miss * miss / (bound * bound);
+    c->sigma_over_bound += found.sigma / bound;
+}
+
+static Coverage watch_many(int n, unsigned long seed)
+{
+    gsl_rng *random = seeded(seed);
+    g_autoptr(RfFieldTimeline) timeline = usual_timeline();
+    RfDropletModel model = {.medium = &WALK_MEDIUM, .timeline = timeline};
+    Coverage coverage = {0};
+    for (int i = 0; i < n; i++) {
+        Walk walk = usual_walk(timeline);
+        walk.radius_m = (0.3 + 0.5 * gsl_rng_uniform(random)) * 1e-6;
+        walk.charge_coulomb = E * (double)((long)gsl_rng_uniform_int(random, 9) - 4);
+        walk.end_s = 20;
+        walk.missing = 0.05;
+        RfTrail trail = walk_trail_new(&walk, 1, random);
+        RfDropletFit fit;
+        rf_droplet_fit(&trail, &model, &fit);
+        g_assert_cmpint(fit.state, ==, RF_FIT_DONE);
+        RfObservationPlan plan = {walk.radius_m, walk.charge_coulomb, 10.01, 9.99, 500, 28.5, walk.noise_m};
+        RfAttainable best;
+        rf_droplet_fit_attainable(&plan, &WALK_MEDIUM, &best);
+        count(&coverage, fit.spell[0].charge_coulomb, walk.charge_coulomb, best.u_charge_joint_coulomb);
+        walk_trail_clear(&trail);
+    }
+    gsl_rng_free(random);
+    return coverage;
+}
+
+/* 200 droplets: 68.3 % within one sigma has a standard error of 3.3 %, 95.4 % within two of 1.5 %; the ratio of the
+ * errors to the bound one of 5 %. Limits at three of these. */
+static void test_coverage(void)
+{
+    Coverage c = watch_many(200, 11);
+    double one = (double)c.within_1 / c.n, two = (double)c.within_2 / c.n, ratio = sqrt(c.over_bound / c.n);
+    g_test_message("within 1 sigma %.3f, 2 sigma %.3f; rms over bound %.3f, sigma over bound %.3f", one, two,
+                   ratio, c.sigma_over_bound / c.n);
+    g_assert_cmpfloat_with_epsilon(one, 0.683, 0.099);
+    g_assert_cmpfloat_with_epsilon(two, 0.954, 0.045);
+    g_assert_cmpfloat(ratio, <, 1.15);
+    g_assert_cmpfloat_with_epsilon(c.sigma_over_bound / c.n, 1, 0.05);
+}
+
+static void test_profile_agrees_with_sigma(void)
+{
+    gsl_rng *random = seeded(4);
+    g_autoptr(RfFieldTimeline) timeline = usual_timeline();
+    Walk walk = usual_walk(timeline);
+    RfTrail trail = walk_trail_new(&walk, 1, random);
+    RfDropletModel model = {.medium = &WALK_MEDIUM, .timeline = timeline};
+    RfDropletFit fit;
+    double low_m, high_m;
+    rf_droplet_fit(&trail, &model, &fit);
+    g_assert_true(rf_droplet_fit_profile_radius(&trail, &model, &fit, &low_m, &high_m));
+    g_assert_cmpfloat(low_m, <, fit.radius_m.value);
+    g_assert_cmpfloat(high_m, >, fit.radius_m.value);
+    g_assert_cmpfloat_with_epsilon(0.5 * (high_m - low_m), fit.radius_m.sigma, 0.05 * fit.radius_m.sigma);
+    walk_trail_clear(&trail);
+    gsl_rng_free(random);
+}
+
+/* The implicit derivative against fits with the input really changed. */
+static void assert_slope(const RfTrail *trail, const RfDropletModel *model, const RfDropletFit *fit,
+                         RfInput input, double *number_in_medium, RfMedium *medium)
+{
+    double change = 0.02, usual = *number_in_medium;
+    RfDropletModel changed = *model;
+    RfDropletFit up, down;
+    changed.medium = medium;
+    *number_in_medium = usual * (1 + change);
+    rf_droplet_fit(trail, &changed, &up);
+    *number_in_medium = usual * (1 - change);
+    rf_droplet_fit(trail, &changed, &down);
+    *number_in_medium = usual;
+    double radius = log(up.radius_m.value / down.radius_m.value) / (2 * change);
+    double charge = (up.spell[0].charge_coulomb.value - down.spell[0].charge_coulomb.value) / (2 * change);
+    g_test_message("%s: radius %.4f, refitted %.4f; charge %.4f e, refitted %.4f e",
+                   rf_droplet_fit_input_to_string(input), fit->radius_slope[input], radius,
+                   fit->spell[0].charge_slope_coulomb[input] / E, charge / E);
+    g_assert_cmpfloat_with_epsilon(fit->radius_slope[input], radius, 0.01);
+    g_assert_cmpfloat_with_epsilon(fit->spell[0].charge_slope_coulomb[input] / E, charge / E, 0.03);
+}
+
+static void test_slopes_as_refitted(void)
+{
+    gsl_rng *random = seeded(6);
+    g_autoptr(RfFieldTimeline) timeline = usual_timeline();
+    Walk walk = usual_walk(timeline);
+    RfTrail trail = walk_trail_new(&walk, 1, random);
+    RfDropletModel model = {.medium = &WALK_MEDIUM, .timeline = timeline};
+    RfDropletFit fit;
+    RfMedium medium = WALK_MEDIUM;
+    rf_droplet_fit(&trail, &model, &fit);
+    rf_droplet_fit_slopes(&trail, &model, &fit);
+    assert_slope(&trail, &model, &fit, RF_INPUT_VISCOSITY, &medium.viscosity_pa_s, &medium);
+    assert_slope(&trail, &model, &fit, RF_INPUT_OIL_DENSITY, &medium.oil_density_kg_m3, &medium);
+    assert_slope(&trail, &model, &fit, RF_INPUT_PLATE_GAP, &medium.plate_gap_m, &medium);
+    assert_slope(&trail, &model, &fit, RF_INPUT_TEMPERATURE, &medium.temperature_kelvin, &medium);
+    assert_slope(&trail, &model, &fit, RF_INPUT_MEAN_FREE_PATH, &medium.mean_free_path_m, &medium);
+    assert_slope(&trail, &model, &fit, RF_INPUT_GRAVITY, &medium.gravity_m_s2, &medium);
+    walk_trail_clear(&trail);
+    gsl_rng_free(random);
+}
+
+/* A stretched picture: refit with every length 2 % longer. */
+static void test_scale_slope_as_refitted(void)
+{
+    gsl_rng *random = seeded(8);
+    g_autoptr(RfFieldTimeline) timeline = usual_timeline();
+    Walk walk = usual_walk(timeline);
+    RfTrail trail = walk_trail_new(&walk, 1, random);
+    RfDropletModel model = {.medium = &WALK_MEDIUM, .timeline = timeline};
+    RfDropletFit fit, longer, shorter;
+    rf_droplet_fit(&trail, &model, &fit);
+    rf_droplet_fit_slopes(&trail, &model, &fit);
+    g_autofree RfSample *samples = g_memdup2(trail.samples, trail.n * sizeof *samples);
+    RfTrail stretched = {1, trail.n, samples};
+    for (int side = 0; side < 2; side++) {
+        double factor = side == 0 ? 0.98 : 1.02;
+        for (size_t i = 0; i < trail.n; i++) {
+            const RfSample *s = &trail.samples[i];
+            samples[i] = (RfSample){s->time_s, s->fall_m * factor, s->drift_m * factor, s->u_fall_m * factor,
+                                    s->u_drift_m * factor};
+        }
+        rf_droplet_fit(&stretched, &model, side == 0 ? &shorter : &longer);
+    }
+    double radius = log(longer.radius_m.value / shorter.radius_m.value) / 0.04;
+    double charge = (longer.spell[0].charge_coulomb.value - shorter.spell[0].charge_coulomb.value) / 0.04;
+    g_assert_cmpfloat_with_epsilon(fit.radius_slope[RF_INPUT_SCALE], radius, 0.01);
+    g_assert_cmpfloat_with_epsilon(fit.spell[0].charge_slope_coulomb[RF_INPUT_SCALE] / E, charge / E, 0.03);
+    walk_trail_clear(&trail);
+    gsl_rng_free(random);
+}
+
+/* Diffusion of a warmer world: the two radii must be found to disagree, and not otherwise. */
+static void test_radii_disagree(void)
+{
+    gsl_rng *random = seeded(9);
+    g_autoptr(RfFieldTimeline) timeline = usual_timeline();
+    Walk walk = usual_walk(timeline);
+    RfMedium warm = WALK_MEDIUM;
+    RfDropletModel model = {.medium = &WALK_MEDIUM, .timeline = timeline};
+    RfDropletFit fit;
+    RfTrail honest = walk_trail_new(&walk, 1, random);
+    rf_droplet_fit(&honest, &model, &fit);
+    g_assert_cmpfloat(fit.radius_agreement_p, >, 0.01);
+    g_assert_cmpfloat(fit.radius_fall_m.sigma, >, 0);
+    g_assert_cmpfloat(fit.radius_spread_m.sigma, >, 0);
+    warm.temperature_kelvin *= 1.6;
+    walk.medium = &warm;
+    RfTrail restless = walk_trail_new(&walk, 2, random);
+    rf_droplet_fit(&restless, &model, &fit);
+    g_assert_cmpfloat(fit.radius_agreement_p, <, 1e-3);
+    walk_trail_clear(&honest);
+    walk_trail_clear(&restless);
+    gsl_rng_free(random);
+}
+
+static void test_too_short(void)
+{
+    gsl_rng *random = seeded(10);
+    Walk walk = usual_walk(NULL);
+    walk.end_s = 0.2;
+    RfTrail trail = walk_trail_new(&walk, 1, random);
+    RfDropletModel model = {.medium = &WALK_MEDIUM};
+    RfDropletFit fit;
+    rf_droplet_fit(&trail, &model, &fit);
+    g_assert_cmpint(fit.state, ==, RF_FIT_TOO_SHORT);
+    walk_trail_clear(&trail);
+    gsl_rng_free(random);
+}
+
+int main(int argc, char **argv)
+{
+    gsl_set_error_handler_off();
+    g_test_init(&argc, &argv, NULL);
+    g_test_add_func("/droplet-fit/fit/never-a-field", test_never_a_field);
+    g_test_add_func("/droplet-fit/fit/neutral-droplet", test_neutral_droplet);
+    g_test_add_func("/droplet-fit/fit/watched-under-field-only", test_watched_under_field_only);
+    g_test_add_func("/droplet-fit/attainable/known-bounds", test_attainable_known_bounds);
+    g_test_add_func("/droplet-fit/fit/coverage", test_coverage);
+    g_test_add_func("/droplet-fit/profile/agrees-with-sigma", test_profile_agrees_with_sigma);
+    g_test_add_func("/droplet-fit/slopes/as-refitted", test_slopes_as_refitted);
+    g_test_add_func("/droplet-fit/slopes/scale-as-refitted", test_scale_slope_as_refitted);
+    g_test_add_func("/droplet-fit/fit/radii-disagree", test_radii_disagree);
+    g_test_add_func("/droplet-fit/fit/too-short", test_too_short);
+    return g_test_run();
+}
