@@ -20,6 +20,7 @@ typedef struct {
     bool *is_usable; /* registration found its place; all true for a camera at rest */
     RfLamp *lamps;
     float *variance; /* per pixel, grey levels squared */
+    float reach;     /* values further from a pixel's median than this aren't noise; grey levels */
 } Learning;
 
 double rf_pixel_noise_var(const RfPixelNoise *noise, double level)
@@ -56,23 +57,18 @@ static float kth_smallest(float *v, unsigned n, unsigned k)
 }
 
 /* Level and variance of one pixel from its values in n frames. The median alone is a whole number in 8-bit footage: the
- * mean of what lies near it is finer. */
-static void robust_level(float *v, unsigned n, float *level, float *variance)
+ * mean of what lies within `reach` of it is finer. */
+static void robust_level(float *v, unsigned n, float reach, float *level, float *variance)
 {
-    float middle = kth_smallest(v, n, n / 2);
-    float low = kth_smallest(v, n, n / 6),
-          high = kth_smallest(v, n, n - 1 - n / 6); /* +-0.97 sd of a normal */
-    float reach = 1.5f * MAX(high - low, 2.0f);
-    double sum = 0, square = 0;
-    unsigned kept = 0;
+    float middle = kth_smallest(v, n, n / 2), sum = 0, square = 0, kept = 0;
     for (unsigned i = 0; i < n; i++) {
-        double off = (double)(v[i] - middle);
-        if (fabs(off) > (double)reach) continue;
-        sum += off, square += off * off, kept++;
+        float off = v[i] - middle;
+        bool is_near = fabsf(off) <= reach;
+        sum += is_near ? off : 0, square += is_near ? off * off : 0, kept += is_near ? 1.0f : 0.0f;
     }
-    double mean = sum / kept;
-    *level = middle + (float)mean;
-    *variance = kept > 1 ? (float)((square - kept * mean * mean) / (kept - 1)) : 0;
+    float mean = sum / kept;
+    *level = middle + mean;
+    *variance = kept > 1 ? (square - kept * mean * mean) / (kept - 1) : 0;
 }
 
 /* Row y of the reference picture as frame i shows it; false where the frame doesn't reach that far. */
@@ -147,7 +143,7 @@ static void learn_levels(Learning *learning, RfBackground *background)
                 if (learning->is_usable[i] && seen[i * (size_t)width + (size_t)x])
                     values[kept++] = rows[i * (size_t)width + (size_t)x];
             if (kept >= 3)
-                robust_level(values, kept, &level[x], &variance[x]);
+                robust_level(values, kept, learning->reach, &level[x], &variance[x]);
             else
                 level[x] = x ? level[x - 1] : y ? level[x - width] : 0, variance[x] = x ? variance[x - 1] : 0;
         }
@@ -251,15 +247,17 @@ static void stay_put(Learning *learning)
     memset(learning->is_usable, true, learning->n * sizeof *learning->is_usable);
 }
 
-/* Noise of neighbouring pixels' differences in one picture: good enough to tell structure from noise. */
+/* Noise from the differences of neighbouring pixels in one picture: good enough to tell structure from noise. A mean
+ * absolute difference of normal noise is 1.128 sd. */
 static double rough_noise_sd(const float *image, size_t pixels)
 {
     enum { TAKEN = 20000 };
-    g_autofree float *differences = g_new(float, TAKEN);
-    unsigned n = 0;
-    for (size_t i = 1; i < pixels && n < TAKEN; i += MAX(pixels / TAKEN, 1))
-        differences[n++] = fabsf(image[i] - image[i - 1]);
-    return n ? MAX(0.5, 1.05 * (double)kth_smallest(differences, n, n / 2)) : 1;
+    double sum = 0, kept = 0;
+    for (size_t i = 1; i < pixels; i += MAX(pixels / TAKEN, 1)) {
+        double off = fabs((double)(image[i] - image[i - 1]));
+        if (off < 12) sum += off, kept++;
+    }
+    return kept > 0 ? MAX(0.5, sum / kept / 1.128) : 1;
 }
 
 static void settle_movement(Learning *learning, RfBackground *background)
@@ -269,7 +267,9 @@ static void settle_movement(Learning *learning, RfBackground *background)
     const RfFrame *frame = rf_picture_sample_frame(learning->sample, learning->n / 2);
     for (int y = 0; y < frame->height; y++)
         rf_luma_copy_row(frame, y, middle + (size_t)y * (size_t)frame->width);
-    bool is_found = register_frames(learning, background, middle, rough_noise_sd(middle, pixels));
+    double noise_sd = rough_noise_sd(middle, pixels);
+    learning->reach = (float)MAX(2.0, 4.5 * noise_sd);
+    bool is_found = register_frames(learning, background, middle, noise_sd);
     background->movement_rms_px = is_found ? movement(learning, background) : 0;
     background->is_moving = background->movement_rms_px > MOVEMENT_PX;
     if (!background->is_moving) stay_put(learning);
@@ -387,7 +387,7 @@ RfBackground *rf_background_learn(const RfPictureSample *sample, GError **error)
     g_autofree bool *is_usable = g_new0(bool, n);
     g_autofree RfLamp *lamps = g_new0(RfLamp, n);
     g_autofree float *variance = g_new0(float, pixels);
-    Learning learning = {sample, n, poses, is_usable, lamps, variance};
+    Learning learning = {sample, n, poses, is_usable, lamps, variance, 0};
     learn(&learning, background);
     return background;
 }

@@ -99,7 +99,7 @@ static void weigh(const Problem *problem, const State *state, float *weights)
         profiles[i] = rf_spot_shape_profile(problem->localiser->shape, state->spots[i].width_px);
     for (unsigned p = 0; p < problem->n_pixels; p++) {
         double model = model_at(problem, state, profiles, &problem->pixels[p], g);
-        weights[p] = (float)(1 / ((double)problem->pixels[p].var +
+        weights[p] = (float)(1 / (problem->localiser->var_factor * (double)problem->pixels[p].var +
                                   problem->localiser->photon_var_per_level * fmax(model, 0)));
     }
 }
@@ -229,7 +229,7 @@ RfLocaliseOutcome rf_localise(const RfLocaliser *localiser, const RfPatchPixel *
     RfLocaliseOutcome outcome = {0};
     if (n_pixels < n * PER_SPOT + 4) return outcome;
     Problem problem = {localiser, pixels, n_pixels, n,
-                       OFFSET_PRIOR * OFFSET_PRIOR * mean_var(pixels, n_pixels)};
+                       OFFSET_PRIOR * OFFSET_PRIOR * localiser->var_factor * mean_var(pixels, n_pixels)};
     State state = {0};
     float weights[RF_LOCALISE_MOST_PIXELS];
     memcpy(state.spots, spots, n * sizeof *spots);

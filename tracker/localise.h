@@ -23,6 +23,7 @@ typedef struct {
 typedef struct {
     const RfSpotShape *shape;
     double pixel_aspect;         /* width of a stored pixel over its height */
+    double var_factor;           /* > 0: the pixels' variance is this many times `var` */
     double photon_var_per_level; /* >= 0: what the spot's own light adds to the variance, per grey level */
     double
         expected_width_px; /* > 0; loose prior (a factor of two either way) that only matters for faint spots */

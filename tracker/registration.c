@@ -7,14 +7,14 @@
 #include <string.h>
 
 enum {
-    LEVELS = 3,        /* pictures reduced by 8, 4 and 1 */
+    LEVELS = 3,        /* pictures reduced by 8, 4 and 2 */
     POINTS = 3000,     /* steep pixels used per level, at most */
     LEAST_POINTS = 60, /* fewer: nothing to hold on to */
     UNKNOWNS = 5,      /* shift x, shift y, angle, gain, offset */
     STEPS = 12,        /* Gauss-Newton steps per level, at most */
     REACH_CELLS = 10,  /* coarse search: this many pixels of the smallest picture either way */
 };
-static const int REDUCTION[LEVELS] = {8, 4, 1};
+static const int REDUCTION[LEVELS] = {8, 4, 2}; /* not 1: single steep pixels are mostly noise */
 
 /* One steep pixel of a reduced reference picture; places from the picture's middle, in full-size stored pixels. */
 typedef struct {
@@ -37,6 +37,7 @@ struct RfRegistration {
 };
 
 struct RfRegistrationScratch {
+    float *full;
     float *picture[LEVELS];
 };
 
@@ -95,38 +96,56 @@ static int by_steepness(const void *a, const void *b)
     return p->y != q->y ? p->y - q->y : p->x - q->x;
 }
 
-/* The steepest pixels, taken evenly from all over the picture: the picture in 12 x 8 tiles, so many from each. */
+typedef struct {
+    int left, right, top, bottom; /* right and bottom exclusive */
+} Tile;
+
+static void find_steep(const Level *level, const float *image, Tile tile, float least, GArray *steep)
+{
+    int w = level->width;
+    g_array_set_size(steep, 0);
+    for (int y = tile.top; y < tile.bottom; y++)
+        for (int x = tile.left; x < tile.right; x++) {
+            const float *p = image + (size_t)y * (size_t)w + x;
+            Steep s = {hypotf(p[1] - p[-1], p[w] - p[-w]), x, y};
+            if (s.steepness > least) g_array_append_val(steep, s);
+        }
+    g_array_sort(steep, by_steepness);
+}
+
+static SteepPixel steep_pixel(const Level *level, const float *image, int reduction,
+                              const RfRegistration *all, Steep s)
+{
+    int w = level->width;
+    const float *p = image + (size_t)s.y * (size_t)w + s.x;
+    float half = 0.5f * (float)(reduction - 1);
+    return (SteepPixel){
+        .x_px = (float)(s.x * reduction) + half - 0.5f * (float)(all->width - 1),
+        .y_px = (float)(s.y * reduction) + half - 0.5f * (float)(all->height - 1),
+        .level = p[0],
+        .slope_x = 0.5f * (p[1] - p[-1]) / (float)reduction,
+        .slope_y = 0.5f * (p[w] - p[-w]) / (float)reduction,
+    };
+}
+
+/* Steep pixels evenly from all over the picture: tiles, so many from each. Not the very steepest, which are hot pixels
+ * and droplets, but some of the steeper half: most of these lie on lines. */
 static void choose_points(Level *level, const float *image, int reduction, const RfRegistration *all)
 {
-    enum { ACROSS = 12, DOWN = 8 };
-    unsigned per_tile = POINTS / (ACROSS * DOWN);
+    enum { ACROSS = 12, DOWN = 8, PER_TILE = POINTS / (ACROSS * DOWN) };
     g_autoptr(GArray) steep = g_array_new(false, false, sizeof(Steep));
     level->points = g_new(SteepPixel, POINTS);
     int w = level->width, h = level->height;
     float least = (float)(4 * all->noise_sd) / (float)reduction;
-    for (int tile = 0; tile < ACROSS * DOWN; tile++) {
-        int x0 = MAX(3, w * (tile % ACROSS) / ACROSS), x1 = MIN(w - 3, w * (tile % ACROSS + 1) / ACROSS);
-        int y0 = MAX(3, h * (tile / ACROSS) / DOWN), y1 = MIN(h - 3, h * (tile / ACROSS + 1) / DOWN);
-        g_array_set_size(steep, 0);
-        for (int y = y0; y < y1; y++)
-            for (int x = x0; x < x1; x++) {
-                const float *p = image + (size_t)y * (size_t)w + x;
-                Steep s = {hypotf(p[1] - p[-1], p[w] - p[-w]), x, y};
-                if (s.steepness > least) g_array_append_val(steep, s);
-            }
-        g_array_sort(steep, by_steepness);
-        for (unsigned i = 0; i < MIN(per_tile, steep->len); i++) {
-            Steep s = g_array_index(steep, Steep, i);
-            const float *p = image + (size_t)s.y * (size_t)w + s.x;
-            float half = 0.5f * (float)(reduction - 1);
-            level->points[level->n++] = (SteepPixel){
-                .x_px = (float)(s.x * reduction) + half - 0.5f * (float)(all->width - 1),
-                .y_px = (float)(s.y * reduction) + half - 0.5f * (float)(all->height - 1),
-                .level = p[0],
-                .slope_x = 0.5f * (p[1] - p[-1]) / (float)reduction,
-                .slope_y = 0.5f * (p[w] - p[-w]) / (float)reduction,
-            };
-        }
+    for (int i = 0; i < ACROSS * DOWN; i++) {
+        int column = i % ACROSS, row = i / ACROSS;
+        Tile tile = {MAX(3, w * column / ACROSS), MIN(w - 3, w * (column + 1) / ACROSS),
+                     MAX(3, h * row / DOWN), MIN(h - 3, h * (row + 1) / DOWN)};
+        find_steep(level, image, tile, least, steep);
+        unsigned half = (steep->len + 1) / 2, n = MIN(half, PER_TILE);
+        for (unsigned k = 0; k < n; k++)
+            level->points[level->n++] =
+                steep_pixel(level, image, reduction, all, g_array_index(steep, Steep, (size_t)k * half / n));
     }
 }
 
@@ -145,7 +164,7 @@ RfRegistration *rf_registration_new(const float *image, int width, int height, d
         if (level->width < 16 || level->height < 16) continue;
         g_autofree float *small = g_new(float, (size_t)level->width *(size_t)level->height);
         reduce(image, width, REDUCTION[i], level->width, level->height, small);
-        if (REDUCTION[i] > 1) soften(small, level->width, level->height);
+        soften(small, level->width, level->height);
         choose_points(level, small, REDUCTION[i], registration);
     }
     return registration;
@@ -161,6 +180,7 @@ void rf_registration_free(RfRegistration *registration)
 RfRegistrationScratch *rf_registration_scratch_new(const RfRegistration *registration)
 {
     RfRegistrationScratch *scratch = g_new0(RfRegistrationScratch, 1);
+    scratch->full = g_new(float, (size_t)registration->width *(size_t)registration->height);
     for (int i = 0; i < LEVELS; i++)
         scratch->picture[i] =
             g_new0(float, (size_t)registration->levels[i].width *(size_t)registration->levels[i].height + 1);
@@ -171,16 +191,17 @@ void rf_registration_scratch_free(RfRegistrationScratch *scratch)
 {
     if (!scratch) return;
     for (int i = 0; i < LEVELS; i++) g_free(scratch->picture[i]);
+    g_free(scratch->full);
     g_free(scratch);
 }
 
 static void fill_pictures(const RfRegistration *registration, RfRegistrationScratch *scratch,
                           const RfFrame *frame)
 {
-    float *full = scratch->picture[LEVELS - 1];
+    float *full = scratch->full;
     for (int y = 0; y < frame->height; y++)
         rf_luma_copy_row(frame, y, full + (size_t)y * (size_t)frame->width);
-    for (int i = 0; i < LEVELS - 1; i++) {
+    for (int i = 0; i < LEVELS; i++) {
         const Level *level = &registration->levels[i];
         if (!level->n) continue;
         reduce(full, frame->width, REDUCTION[i], level->width, level->height, scratch->picture[i]);

@@ -36,7 +36,7 @@ bool rf_spot_detector_filter(RfSpotDetector *detector);
 /* (borrowed until the next filter call) the picture filtered at one size; sides halve from size to size */
 const float *rf_spot_detector_filtered(const RfSpotDetector *detector, int size, int *width, int *height);
 
-/* Local maxima of the filtered pictures, strongest first, at most `most`; returns how many. Of a spot that several
+/* Local maxima of the filtered pictures, clearest first, at most `most`; returns how many. Of a spot that several
  * filters see, the best one is kept. */
 int rf_spot_detector_search(RfSpotDetector *detector, const RfSpotDetectorSettings *settings,
                             RfCandidate *candidates, int most);

@@ -74,26 +74,28 @@ void collect(const cv::Mat &m, int size, const RfSpotDetectorSettings &settings,
     }
 }
 
-bool is_stronger(const RfCandidate &a, const RfCandidate &b)
+/* Two sharp spots side by side add up in a wide filter, so a wider one must win clearly. */
+float standing(const RfCandidate &c)
 {
-    if (a.strength != b.strength) return a.strength > b.strength;
+    static const float handicap[RF_SPOT_DETECTOR_SIZES] = {1.f, 1 / 1.15f, 1 / (1.15f * 1.15f)};
+    return c.strength * handicap[c.size];
+}
+
+bool stands_higher(const RfCandidate &a, const RfCandidate &b)
+{
+    if (standing(a) != standing(b)) return standing(a) > standing(b);
     if (a.y != b.y) return a.y < b.y;
     return a.x != b.x ? a.x < b.x : a.size < b.size;
 }
 
-/* Does the wide filter merely see what smaller ones see too? Two sharp spots side by side add up in it, so a wider
- * filter must win clearly. */
-bool is_explained(const RfCandidate &c, const std::vector<RfCandidate> &all)
+/* Is it another filter's view of a spot that is already taken? */
+bool is_known(const RfCandidate &c, const RfCandidate *taken, int n)
 {
-    for (const RfCandidate &other : all) {
-        if (other.size == c.size) continue;
-        float reach = 1.6f * static_cast<float>(1 << std::max(c.size, other.size));
-        float dx = other.x - c.x, dy = other.y - c.y;
-        if (dx * dx + dy * dy > reach * reach) continue;
-        bool c_is_wide = c.size > other.size;
-        const RfCandidate &wide = c_is_wide ? c : other, &narrow = c_is_wide ? other : c;
-        bool wide_wins = wide.strength > 1.15f * narrow.strength;
-        if (c_is_wide != wide_wins) return true;
+    for (int i = 0; i < n; i++) {
+        if (taken[i].size == c.size) continue;
+        float reach = 1.6f * static_cast<float>(1 << std::max(c.size, taken[i].size));
+        float dx = taken[i].x - c.x, dy = taken[i].y - c.y;
+        if (dx * dx + dy * dy < reach * reach) return true;
     }
     return false;
 }
@@ -158,12 +160,12 @@ int rf_spot_detector_search(RfSpotDetector *detector, const RfSpotDetectorSettin
         detector->found.clear();
         for (int i = 0; i < RF_SPOT_DETECTOR_SIZES; i++)
             collect(detector->filtered[i], i, *settings, detector->found);
-        std::sort(detector->found.begin(), detector->found.end(), is_stronger);
+        std::sort(detector->found.begin(), detector->found.end(), stands_higher);
         if (detector->found.size() > 4 * static_cast<size_t>(most))
             detector->found.resize(4 * static_cast<size_t>(most));
         int n = 0;
         for (const RfCandidate &c : detector->found)
-            if (n < most && !is_explained(c, detector->found)) candidates[n++] = c;
+            if (n < most && !is_known(c, candidates, n)) candidates[n++] = c;
         return n;
     } catch (...) {
         return 0;

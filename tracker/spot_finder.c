@@ -4,6 +4,7 @@
 #include "tracker/exposure_view.h"
 #include "tracker/luma.h"
 #include "tracker/registration.h"
+#include "tracker/spot_calibration.h"
 #include "tracker/spot_detector.h"
 #include "tracker/spot_fitter.h"
 #include "tracker/spot_statistics.h"
@@ -122,14 +123,14 @@ static void take_fingerprint(const RfExposureView *view, RfFingerprint *print)
 }
 
 static bool search(const RfSpotFinder *finder, RfSpotScratch *scratch, const RfExposureView *view,
-                   GArray *spots, GArray *quality)
+                   GArray *spots)
 {
     rf_contrast_fill(finder->contrast, view, finder->fitting.sign,
                      rf_spot_detector_picture(scratch->detector));
     if (!rf_spot_detector_filter(scratch->detector)) return false;
     int n = rf_spot_detector_search(scratch->detector, &finder->detecting, scratch->candidates,
                                     RF_FITTER_MOST_CANDIDATES);
-    rf_spot_fitter_run(scratch->fitter, &finder->fitting, view, scratch->candidates, n, spots, quality);
+    rf_spot_fitter_run(scratch->fitter, &finder->fitting, view, scratch->candidates, n, spots);
     return true;
 }
 
@@ -157,7 +158,7 @@ bool rf_spot_finder_look(const RfSpotFinder *finder, RfSpotScratch *scratch, con
     for (unsigned field = 0; field < look->exposures; field++) {
         RfExposureView view = view_exposure(finder, frame, &pose, field);
         unsigned first = look->spots->len;
-        if (is_posed && !search(finder, scratch, &view, look->spots, NULL)) {
+        if (is_posed && !search(finder, scratch, &view, look->spots)) {
             g_set_error(error, G_FILE_ERROR, G_FILE_ERROR_FAILED,
                         "frame %" G_GINT64_FORMAT " couldn't be filtered", frame->index);
             return false;
@@ -288,14 +289,19 @@ static void settle_polarity(const Lesson *lesson, const RfSpotStatistics *statis
 }
 
 typedef struct {
-    GArray *spots, *quality;
+    GArray *spots;
+    RfSpotCalibration *calibration;
     unsigned exposures;
 } Harvest;
 
 static void harvest_spots(const Lesson *lesson, const RfExposureView *view, void *data)
 {
     Harvest *harvest = data;
-    search(lesson->finder, lesson->scratch, view, harvest->spots, harvest->quality);
+    unsigned first = harvest->spots->len;
+    search(lesson->finder, lesson->scratch, view, harvest->spots);
+    if (harvest->spots->len > first)
+        rf_spot_calibration_add(harvest->calibration, view, &g_array_index(harvest->spots, RfSpot, first),
+                                harvest->spots->len - first);
     harvest->exposures++;
 }
 
@@ -307,18 +313,35 @@ static void use_shape(RfSpotFinder *finder, double focus_width_px, double expect
     finder->fitting.localiser.expected_width_px = expected_width_px;
 }
 
-/* Twice: fits of the sampled exposures tell the droplets' widths, and these make the fits better. */
+static void heed(RfSpotFinder *finder, const RfSpotLesson *lesson)
+{
+    RfBackground *b = finder->background;
+    finder->fitting.localiser.var_factor = lesson->var_factor;
+    finder->fitting.localiser.photon_var_per_level = lesson->photon_var_per_level;
+    finder->fitting.u_factor = lesson->u_factor;
+    for (size_t i = 0; i < (size_t)b->width * (size_t)b->height; i++)
+        if (b->flags[i] & RF_PIXEL_LINE)
+            b->transmission[i] =
+                (float)rf_spot_calibration_shade(lesson->line_depth, (double)b->transmission[i]);
+}
+
+/* Twice: fits of the sampled exposures tell the droplets' widths, and these make the fits better, which then tell what
+ * noise and lines do to a spot. */
 static void learn_spots(const Lesson *lesson)
 {
     RfSpotFinder *finder = lesson->finder;
     for (int round = 0; round < 2; round++) {
         g_autoptr(GArray) spots = g_array_new(false, false, sizeof(RfSpot));
-        g_autoptr(GArray) quality = g_array_new(false, false, sizeof(RfFitQuality));
-        Harvest harvest = {spots, quality, 0};
+        g_autoptr(RfSpotCalibration) calibration = rf_spot_calibration_new();
+        Harvest harvest = {spots, calibration, 0};
         for_each_exposure(lesson, harvest_spots, &harvest);
         RfSpotWidths widths = rf_spot_statistics_widths(spots, finder->background->pixel_aspect);
         if (widths.n) use_shape(finder, widths.sharpest_px, widths.typical_px);
         rf_spot_statistics_describe(spots, harvest.exposures, &finder->findings);
+        if (round == 1) {
+            RfSpotLesson learned = rf_spot_calibration_learn(calibration, &finder->fitting.localiser);
+            heed(finder, &learned);
+        }
     }
 }
 
@@ -333,6 +356,7 @@ static RfSpotFinder *finder_on(RfBackground *background)
                                                    background->pixel_aspect,
                                                    sqrt(rf_pixel_noise_var(&background->noise, middle)));
     finder->fitting = (RfFitterSettings){.sign = 1, .narrowest_px = 0.6, .u_factor = 1, .shape_error = 0.05};
+    finder->fitting.localiser.var_factor = 1;
     finder->fitting.localiser.pixel_aspect = background->pixel_aspect;
     finder->fitting.localiser.photon_var_per_level = background->noise.photon_var_per_level;
     use_shape(finder, 1.5, 2.0);

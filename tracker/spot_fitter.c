@@ -208,7 +208,8 @@ static Leftover leftover_at(const RfSpotFitter *fitter, const RfFitterSettings *
         if (r2 > 9 * profile->width_px * profile->width_px) continue;
         double value = (double)(pixel->shade * rf_spot_profile_at(profile, r2).value);
         double model = (double)pixel->excess - (double)fitter->residuals[p];
-        double var = (double)pixel->var + settings->localiser.photon_var_per_level * fmax(model, 0) +
+        double var = settings->localiser.var_factor * (double)pixel->var +
+                     settings->localiser.photon_var_per_level * fmax(model, 0) +
                      settings->shape_error * settings->shape_error * model * model;
         product += value * (double)fitter->residuals[p] / var;
         square += value * value / var;
@@ -228,7 +229,8 @@ static bool find_hidden(RfSpotFitter *fitter, const RfFitterSettings *settings, 
     RfSpotProfile profile = rf_spot_shape_profile(settings->localiser.shape, width);
     for (unsigned p = 0; p < n_pixels; p++) {
         double residual = settings->sign * (double)fitter->residuals[p];
-        if (residual < 1.5 * sqrt((double)fitter->pixels[p].var) || residual < 0.06 * brightest)
+        if (residual < 1.5 * sqrt(settings->localiser.var_factor * (double)fitter->pixels[p].var) ||
+            residual < 0.06 * brightest)
             continue; /* nothing that could be a spot's middle */
         Leftover left = leftover_at(fitter, settings, n_pixels, p, &profile);
         if (settings->sign * left.significance < best || fabs(left.peak) < 0.1 * brightest) continue;
@@ -295,7 +297,8 @@ static RfSpot spot_of(const RfFitterSettings *settings, const RfExposureView *vi
         .u_y_px = (float)sqrt(k2 * fit->var_y_px2),
         .cov_xy_px2 = (float)(k2 * fit->cov_xy_px2),
         .peak = (float)fit->peak,
-        .snr = (float)(fabs(fit->peak) / sqrt(rf_pixel_noise_var(&b->noise, level))),
+        .snr = (float)(fabs(fit->peak) /
+                       sqrt(settings->localiser.var_factor * rf_pixel_noise_var(&b->noise, level))),
         .width_px = (float)(fit->width_px / b->pixel_aspect),
         .flags = flags,
     };
@@ -319,7 +322,7 @@ static bool is_known(const RfSpot *spots, unsigned n, const RfSpot *spot)
 }
 
 void rf_spot_fitter_run(RfSpotFitter *fitter, const RfFitterSettings *settings, const RfExposureView *view,
-                        const RfCandidate *candidates, int n, GArray *spots, GArray *quality)
+                        const RfCandidate *candidates, int n, GArray *spots)
 {
     unsigned first_spot = spots->len;
     n = MIN(n, RF_FITTER_MOST_CANDIDATES);
@@ -336,9 +339,6 @@ void rf_spot_fitter_run(RfSpotFitter *fitter, const RfFitterSettings *settings, 
             const RfSpot *before = &g_array_index(spots, RfSpot, first_spot);
             if (is_known(before, spots->len - first_spot, &spot)) continue;
             g_array_append_val(spots, spot);
-            RfFitQuality q = {(double)spot.peak, (double)spot.snr, (double)spot.width_px,
-                              reduced_chi_square(&outcome, &window, group.n)};
-            if (quality && group.n == 1) g_array_append_val(quality, q);
         }
     }
     if (spots->len > first_spot)

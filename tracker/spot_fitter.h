@@ -23,14 +23,6 @@ RfSpotFitter *rf_spot_fitter_new(void);
 void rf_spot_fitter_free(RfSpotFitter *fitter);
 G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfSpotFitter, rf_spot_fitter_free)
 
-/* What the fits left, for learning how noisy spots are. */
-typedef struct {
-    double peak, snr;
-    double width_px;
-    double reduced_chi_square; /* over the inner pixels of spots fitted alone */
-} RfFitQuality;
-
-/* Appends RfSpot to `spots`, sorted by y_px then x_px. `quality` (of RfFitQuality, spots fitted alone, in no order) may
- * be NULL. */
+/* Appends RfSpot to `spots`, sorted by y_px then x_px. */
 void rf_spot_fitter_run(RfSpotFitter *fitter, const RfFitterSettings *settings, const RfExposureView *view,
-                        const RfCandidate *candidates, int n, GArray *spots, GArray *quality);
+                        const RfCandidate *candidates, int n, GArray *spots);
