@@ -17,3 +17,12 @@ typedef struct {
 /* In the order of the report. */
 extern const RfFigureScript rf_figure_scripts[];
 extern const size_t rf_figure_scripts_n;
+
+/* One file each: figure_<name>.c. */
+bool rf_figure_charges_write(const RfResults *results, GString *data, GString *script, GString *alt);
+bool rf_figure_multiples_write(const RfResults *results, GString *data, GString *script,
+                               GString *alt); /* figure_charges.c */
+bool rf_figure_velocities_write(const RfResults *results, GString *data, GString *script, GString *alt);
+bool rf_figure_unit_write(const RfResults *results, GString *data, GString *script, GString *alt);
+bool rf_figure_radius_write(const RfResults *results, GString *data, GString *script, GString *alt);
+bool rf_figure_budget_write(const RfResults *results, GString *data, GString *script, GString *alt);

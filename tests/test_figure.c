@@ -108,6 +108,7 @@ static void names_are_never_commands(Place *place, const void *unused)
     g_free(line->input);
     line->input = g_strdup_printf("x\" 1)\nsystem(\"touch %s\")\nset ytics (\"`touch %s`", proof, proof);
     g_autoptr(RfFigureSet) set = draw(place, results, "gnuplot");
+    g_assert_nonnull(rf_figure_find(set, "budget"));
     g_assert_false(g_file_test(proof, G_FILE_TEST_EXISTS));
 }
 
