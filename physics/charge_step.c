@@ -188,6 +188,20 @@ static Place best_place(const GArray *places)
     return best;
 }
 
+/* Every instant being as likely beforehand, an off state of some seconds outweighs the few frames beside it that explain
+ * the path as well: the best off place, if its share of the chance is the larger one. */
+static Place likeliest_place(const GArray *places, double on_width_s)
+{
+    Place best = best_place(places), off = {0};
+    double on_sum = 0;
+    for (unsigned i = 0; i < places->len; i++) {
+        const Place *p = &g_array_index(places, Place, i);
+        if (p->across_off && p->gain > off.gain) off = *p;
+        if (!p->across_off) on_sum += on_width_s * exp(p->gain - best.gain);
+    }
+    return off.gain > 0 && off.width_s * exp(off.gain - best.gain) > on_sum ? off : best;
+}
+
 /* A jump of the position alone (a swap, a mistaken spot) would do as well or better? */
 static bool is_rather_a_jump(const Scan *scan, const Place *place)
 {
@@ -229,7 +243,7 @@ static Place search_spell(const Scan *scan)
     add_on_places(scan, -HUGE_VAL, HUGE_VAL, stride, places);
     add_off_places(scan, places);
     weigh_places(scan, (Place *)(void *)places->data, places->len);
-    return best_place(places);
+    return likeliest_place(places, scan->path->typical_step_s * (double)stride);
 }
 
 /* Every frame around a coarse place; the instant with its sigma, and the gain there. */

@@ -117,7 +117,7 @@ static void judge_unpaired(const GArray *spans, const GArray *pairs, const RfLog
     static const double plainly_visible = 30;
     double first_s = runs->edge_s[0], last_s = runs->edge_s[runs->runs];
     for (unsigned k = 1; k < spans->len; k++) {
-        double time_s = rf_voltage_log_to_recording_s(clock, span_at(spans, k)->start_s);
+        double time_s = rf_log_clock_to_recording_s(clock, span_at(spans, k)->start_s);
         if (is_paired(pairs, k) || time_s < first_s + 0.2 || time_s > last_s - 0.2) continue;
         double change_v = span_at(spans, k)->voltage_v - span_at(spans, k - 1)->voltage_v;
         bool is_denied = power_to_see(runs, droplets, time_s, change_v) > plainly_visible;
@@ -145,7 +145,7 @@ static void name_intervals(const GArray *spans, const RfLogClock *clock, RfField
     for (unsigned k = 0; k < intervals->len; k++) {
         RfFieldInterval *v = &g_array_index(intervals, RfFieldInterval, k);
         const RfLogSpan *span =
-            span_at_time(spans, rf_voltage_log_from_recording_s(clock, 0.5 * (v->start_s + v->end_s)));
+            span_at_time(spans, rf_log_clock_from_recording_s(clock, 0.5 * (v->start_s + v->end_s)));
         bool from_log =
             (k == 0 || g_array_index(timeline->switches, RfFieldSwitch, k - 1).has_log_time) &&
             (k + 1 == intervals->len || g_array_index(timeline->switches, RfFieldSwitch, k).has_log_time);
@@ -181,7 +181,7 @@ bool rf_field_log_apply(const GArray *spans, const RfFieldSheet *sheet, const Rf
     RfLogClock clock = {0};
     timeline->has_log = true;
     if (spans->len > 1) {
-        if (!rf_voltage_log_match(spans, timeline->switches, sheet->log_clock_reach_s, pairs)) {
+        if (!rf_log_clock_match(spans, timeline->switches, sheet->log_clock_reach_s, pairs)) {
             g_set_error(
                 error, RF_PHYSICS_ERROR, RF_PHYSICS_ERROR_SHAPE,
                 "voltage log: %u switches, of which none fits the %u switches seen in the motion; need a log "
@@ -189,7 +189,7 @@ bool rf_field_log_apply(const GArray *spans, const RfFieldSheet *sheet, const Rf
                 spans->len - 1, timeline->switches->len);
             return false;
         }
-        rf_voltage_log_fit_clock(pairs, &clock);
+        rf_log_clock_fit(pairs, &clock);
     }
     timeline->log_offset_s = clock.offset_s;
     timeline->log_drift = clock.drift;
@@ -211,12 +211,12 @@ static void audit_clock(RfFieldTimeline *timeline)
     drop_findings(timeline, RF_LOG_LATE);
     if (pairs->len == 0) return;
     RfLogClock clock;
-    rf_voltage_log_fit_clock(pairs, &clock);
+    rf_log_clock_fit(pairs, &clock);
     timeline->log_offset_s = clock.offset_s;
     timeline->log_drift = clock.drift;
     for (unsigned i = 0; i < pairs->len; i++) {
         const RfLogPair *p = &g_array_index(pairs, RfLogPair, i);
-        double late = p->log_s.value - rf_voltage_log_from_recording_s(&clock, p->recording_s.value);
+        double late = p->log_s.value - rf_log_clock_from_recording_s(&clock, p->recording_s.value);
         double u = hypot(hypot(p->log_s.sigma, p->recording_s.sigma), clock.offset_s.sigma);
         if (fabs(late) > 4 * u) add_finding(timeline, RF_LOG_LATE, p->recording_s.value, (RfValue){late, u});
     }

@@ -4,7 +4,7 @@
 
 #include "physics/field_runs.h"
 #include "physics/field_states.h"
-#include "physics/voltage_log.h"
+#include "physics/log_clock.h"
 
 /* States and voltages that the sheet leaves open, from the log: states in their order of occurrence, median voltages.
  * Voltages of the log replace those of the sheet. */

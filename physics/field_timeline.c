@@ -143,7 +143,7 @@ RfFieldTimeline *rf_field_timeline_find(const RfTrail *trails, size_t n, const R
     g_autoptr(GArray) spans = NULL;
     RfFieldSheet states = *sheet;
     if (sheet->log_samples > 0) {
-        spans = rf_voltage_log_spans(sheet->log_time_s, sheet->log_voltage_v, sheet->log_samples, error);
+        spans = rf_log_clock_spans(sheet->log_time_s, sheet->log_voltage_v, sheet->log_samples, error);
         if (!spans) return NULL;
         rf_field_log_complete_sheet(spans, &states);
     }

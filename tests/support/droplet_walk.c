@@ -64,7 +64,7 @@ RfTrail walk_trail_new(const Walk *w, unsigned droplet, gsl_rng *random)
         for (int s = 0; s < SUBSTEPS; s++) {
             double from_s = middle_s + ((double)s / SUBSTEPS - 0.5) * w->frame_s;
             advance(w, &place, from_s, from_s + w->frame_s / SUBSTEPS, drag, fall, diffusion, random);
-            bool is_open = open > 0 ? abs(2 * s - SUBSTEPS + 1) < open : s == SUBSTEPS / 2 - 1;
+            bool is_open = open > 1 ? abs(2 * s - SUBSTEPS + 1) < open : s == SUBSTEPS / 2 - 1;
             if (!is_open) continue;
             sum.fall_m += place.fall_m;
             sum.across_m += place.across_m;

@@ -16,7 +16,7 @@ typedef struct {
 
 /* A sample counts as on above half of the largest |voltage| in the log. Samples in time order.
  *   returns new array of RfLogSpan, or NULL with error */
-GArray *rf_voltage_log_spans(const double *time_s, const double *voltage_v, size_t n, GError **error);
+GArray *rf_log_clock_spans(const double *time_s, const double *voltage_v, size_t n, GError **error);
 
 /* One switch of the recording beside one of the log. */
 typedef struct {
@@ -32,9 +32,9 @@ typedef struct {
 
 /* Pairs switches by time pattern and states; false where nothing fits. reach_s: largest |offset|, 0: any.
  *   pairs    of RfLogPair, emptied first */
-bool rf_voltage_log_match(const GArray *spans, const GArray *switches, double reach_s, GArray *pairs);
+bool rf_log_clock_match(const GArray *spans, const GArray *switches, double reach_s, GArray *pairs);
 
 /* Clock from pairs (at least one); a pair that is off counts no more than one off by 4 sigma would. */
-void rf_voltage_log_fit_clock(const GArray *pairs, RfLogClock *clock);
-double rf_voltage_log_to_recording_s(const RfLogClock *clock, double log_s);
-double rf_voltage_log_from_recording_s(const RfLogClock *clock, double recording_s);
+void rf_log_clock_fit(const GArray *pairs, RfLogClock *clock);
+double rf_log_clock_to_recording_s(const RfLogClock *clock, double log_s);
+double rf_log_clock_from_recording_s(const RfLogClock *clock, double recording_s);

@@ -1,4 +1,4 @@
-#include "physics/voltage_log.h"
+#include "physics/log_clock.h"
 
 #include <math.h>
 #include <stdlib.h>
@@ -41,7 +41,7 @@ static bool check_log(const double *time_s, const double *voltage_v, size_t n, G
     return false;
 }
 
-GArray *rf_voltage_log_spans(const double *time_s, const double *voltage_v, size_t n, GError **error)
+GArray *rf_log_clock_spans(const double *time_s, const double *voltage_v, size_t n, GError **error)
 {
     if (!check_log(time_s, voltage_v, n, error)) return NULL;
     GArray *spans = g_array_new(FALSE, TRUE, sizeof(RfLogSpan));
@@ -98,7 +98,7 @@ static double pair_up(const GArray *spans, const GArray *switches, double offset
 
 static double misfit(const RfLogClock *clock, const RfLogPair *pair)
 {
-    return pair->log_s.value - rf_voltage_log_from_recording_s(clock, pair->recording_s.value);
+    return pair->log_s.value - rf_log_clock_from_recording_s(clock, pair->recording_s.value);
 }
 
 static void fit_line(const GArray *pairs, bool with_drift, RfLogClock *clock)
@@ -144,7 +144,7 @@ static double median_difference(const GArray *pairs)
     return d[pairs->len / 2];
 }
 
-void rf_voltage_log_fit_clock(const GArray *pairs, RfLogClock *clock)
+void rf_log_clock_fit(const GArray *pairs, RfLogClock *clock)
 {
     enum { ROUNDS = 20 };
     const RfLogPair *first = &g_array_index(pairs, RfLogPair, 0), *last = first + pairs->len - 1;
@@ -176,25 +176,25 @@ static double best_offset(const GArray *spans, const GArray *switches, double re
     return best;
 }
 
-bool rf_voltage_log_match(const GArray *spans, const GArray *switches, double reach_s, GArray *pairs)
+bool rf_log_clock_match(const GArray *spans, const GArray *switches, double reach_s, GArray *pairs)
 {
     double score, offset = best_offset(spans, switches, reach_s, &score);
     g_array_set_size(pairs, 0);
     if (!(score > 0)) return false;
     pair_up(spans, switches, offset, pairs);
     RfLogClock clock;
-    rf_voltage_log_fit_clock(pairs, &clock);
+    rf_log_clock_fit(pairs, &clock);
     pair_up(spans, switches, clock.offset_s.value, pairs);
     return pairs->len > 0;
 }
 
-double rf_voltage_log_to_recording_s(const RfLogClock *clock, double log_s)
+double rf_log_clock_to_recording_s(const RfLogClock *clock, double log_s)
 {
     double apart = log_s - clock->offset_s.value - clock->pivot_s;
     return clock->pivot_s + apart / (1 + clock->drift.value);
 }
 
-double rf_voltage_log_from_recording_s(const RfLogClock *clock, double recording_s)
+double rf_log_clock_from_recording_s(const RfLogClock *clock, double recording_s)
 {
     return recording_s + clock->offset_s.value + clock->drift.value * (recording_s - clock->pivot_s);
 }

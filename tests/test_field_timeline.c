@@ -1,0 +1,281 @@
+#include "physics/field_timeline.h"
+
+#include <gsl/gsl_errno.h>
+#include <gsl/gsl_randist.h>
+#include <math.h>
+
+#include "physics/constants.h"
+#include "tests/support/droplet_walk.h"
+
+static const double E = RF_ELEMENTARY_CHARGE_COULOMB;
+enum { DROPLETS = 8 };
+
+typedef struct {
+    gsl_rng *random;
+    RfFieldTimeline *truth;
+    RfTrail trails[DROPLETS];
+} Cell;
+
+static const double SWITCHES_S[] = {4.217, 7.903, 12.318, 15.051, 20.777, 23.4, 27.111};
+
+/* Eight droplets of both signs, one of them neutral, half of them in view for a part of the time only. */
+static void cell_fill(Cell *cell, double end_s)
+{
+    for (unsigned i = 0; i < DROPLETS; i++) {
+        Walk walk = {.medium = &WALK_MEDIUM,
+                     .timeline = cell->truth,
+                     .radius_m = (0.4 + 0.05 * i) * 1e-6,
+                     .charge_coulomb = E * ((int)(i % 5) - 2),
+                     .start_s = i % 2 ? 0 : 0.8 * i,
+                     .end_s = i % 2 ? end_s : end_s - 1.1 * i,
+                     .frame_s = 1.0 / 30,
+                     .exposure = 0.5,
+                     .noise_m = 0.1e-6};
+        cell->trails[i] = walk_trail_new(&walk, i + 1, cell->random);
+    }
+}
+
+static Cell cell_new(const double *switch_s, size_t n, double end_s, unsigned long seed)
+{
+    Cell cell = {.random = gsl_rng_alloc(gsl_rng_mt19937)};
+    gsl_rng_set(cell.random, seed);
+    cell.truth = walk_timeline_new(switch_s, n, RF_FIELD_TOP_PLUS, 400, end_s);
+    cell_fill(&cell, end_s);
+    return cell;
+}
+
+static void cell_clear(Cell *cell)
+{
+    for (int i = 0; i < DROPLETS; i++) walk_trail_clear(&cell->trails[i]);
+    rf_field_timeline_free(cell->truth);
+    gsl_rng_free(cell->random);
+}
+
+static const RfFieldSheet TWO_STATES = {
+    .states = 2, .state = {RF_FIELD_OFF, RF_FIELD_TOP_PLUS}, .top_plus_v = 400};
+
+static const RfFieldSwitch *switch_of(const RfFieldTimeline *timeline, unsigned k)
+{
+    return &g_array_index(timeline->switches, RfFieldSwitch, k);
+}
+
+static void test_no_switch_none_found(void)
+{
+    Cell cell = cell_new(NULL, 0, 30, 1);
+    g_autoptr(GError) error = NULL;
+    g_autoptr(RfFieldTimeline) found = rf_field_timeline_find(cell.trails, DROPLETS, &TWO_STATES, &error);
+    g_assert_no_error(error);
+    g_assert_cmpuint(found->switches->len, ==, 0);
+    g_assert_cmpuint(found->intervals->len, ==, 1);
+    g_assert_cmpint(g_array_index(found->intervals, RfFieldInterval, 0).state, ==, RF_FIELD_OFF);
+    cell_clear(&cell);
+}
+
+static void assert_switches(const RfFieldTimeline *found, const RfFieldTimeline *truth)
+{
+    g_assert_cmpuint(found->switches->len, ==, truth->switches->len);
+    g_assert_cmpuint(found->intervals->len, ==, found->switches->len + 1);
+    for (unsigned k = 0; k < truth->switches->len; k++) {
+        const RfFieldSwitch *is = switch_of(found, k), *was = switch_of(truth, k);
+        g_assert_cmpint(is->from, ==, was->from);
+        g_assert_cmpint(is->to, ==, was->to);
+        g_assert_cmpfloat_with_epsilon(is->time_s.value, was->time_s.value, 0.1);
+        g_assert_cmpfloat(is->time_s.sigma, >, 0);
+        g_assert_cmpuint(is->droplets, >, 0);
+    }
+}
+
+static void test_two_states(void)
+{
+    Cell cell = cell_new(SWITCHES_S, G_N_ELEMENTS(SWITCHES_S), 32, 2);
+    g_autoptr(RfFieldTimeline) found = rf_field_timeline_find(cell.trails, DROPLETS, &TWO_STATES, NULL);
+    assert_switches(found, cell.truth);
+    cell_clear(&cell);
+}
+
+/* Over several cells: errors over stated sigmas spread like 1 (84 switches: standard error 0.08). */
+static void test_pulls(void)
+{
+    double squares = 0;
+    int n = 0;
+    for (unsigned long seed = 0; seed < 12; seed++) {
+        Cell cell = cell_new(SWITCHES_S, G_N_ELEMENTS(SWITCHES_S), 32, 100 + seed);
+        g_autoptr(RfFieldTimeline) found = rf_field_timeline_find(cell.trails, DROPLETS, &TWO_STATES, NULL);
+        g_assert_cmpuint(found->switches->len, ==, G_N_ELEMENTS(SWITCHES_S));
+        for (unsigned k = 0; k < found->switches->len; k++, n++) {
+            RfValue t = switch_of(found, k)->time_s;
+            squares += pow((t.value - SWITCHES_S[k]) / t.sigma, 2);
+        }
+        cell_clear(&cell);
+    }
+    g_test_message("pull of %d switches: %.3f", n, sqrt(squares / n));
+    g_assert_cmpfloat_with_epsilon(sqrt(squares / n), 1, 0.3);
+}
+
+/* off, top+, off, top-, straight to top+, off: the third state is told from the first two, and a switch from one
+ * polarity to the other is one switch. */
+static void test_three_states(void)
+{
+    static const RfFieldState states[] = {RF_FIELD_OFF,       RF_FIELD_TOP_PLUS, RF_FIELD_OFF,
+                                          RF_FIELD_TOP_MINUS, RF_FIELD_TOP_PLUS, RF_FIELD_OFF};
+    static const double times_s[] = {3.33, 6.01, 9.456, 11.912, 14.3};
+    static const RfFieldSheet sheet = {.states = 3,
+                                       .state = {RF_FIELD_OFF, RF_FIELD_TOP_PLUS, RF_FIELD_TOP_MINUS},
+                                       .top_plus_v = 400,
+                                       .top_minus_v = -400};
+    Cell cell = {.random = gsl_rng_alloc(gsl_rng_mt19937), .truth = rf_field_timeline_new()};
+    for (unsigned k = 0; k < G_N_ELEMENTS(states); k++) {
+        double voltage = states[k] == RF_FIELD_OFF ? 0 : states[k] == RF_FIELD_TOP_PLUS ? 400 : -400;
+        RfFieldInterval v = {k == 0 ? 0 : times_s[k - 1], k == 5 ? 18 : times_s[k], states[k], voltage};
+        g_array_append_val(cell.truth->intervals, v);
+        RfFieldSwitch s = {.time_s = {v.end_s, 0}, .from = states[k], .to = states[MIN(k + 1, 5)]};
+        if (k < 5) g_array_append_val(cell.truth->switches, s);
+    }
+    cell_fill(&cell, 18);
+    g_autoptr(RfFieldTimeline) found = rf_field_timeline_find(cell.trails, DROPLETS, &sheet, NULL);
+    assert_switches(found, cell.truth);
+    g_assert_false(found->labels_ambiguous);
+    cell_clear(&cell);
+}
+
+/* A change of charge of one droplet among others is no switch. */
+static void test_step_is_no_switch(void)
+{
+    Cell cell = cell_new(SWITCHES_S, 2, 20, 3);
+    Walk walk = {.medium = &WALK_MEDIUM,
+                 .timeline = cell.truth,
+                 .radius_m = 0.5e-6,
+                 .charge_coulomb = -4 * E,
+                 .end_s = 20,
+                 .frame_s = 1.0 / 30,
+                 .noise_m = 0.1e-6,
+                 .step_s = 6.0,
+                 .charge_after_coulomb = -1 * E};
+    walk_trail_clear(&cell.trails[1]);
+    cell.trails[1] = walk_trail_new(&walk, 2, cell.random);
+    g_autoptr(RfFieldTimeline) found = rf_field_timeline_find(cell.trails, DROPLETS, &TWO_STATES, NULL);
+    g_assert_cmpuint(found->switches->len, ==, 2);
+    cell_clear(&cell);
+}
+
+typedef struct {
+    double *time_s, *voltage_v;
+    size_t n;
+} Log;
+
+/* Ten samples a second on a clock that is ahead by offset_s. */
+static Log log_new(const RfFieldTimeline *truth, double offset_s, double from_s, double to_s, gsl_rng *random)
+{
+    Log log = {g_new(double, 2000), g_new(double, 2000), 0};
+    for (double t = from_s; t < to_s; t += 0.1) {
+        double at = t + 0.02 * (gsl_rng_uniform(random) - 0.5);
+        log.time_s[log.n] = at + offset_s;
+        log.voltage_v[log.n++] = rf_field_timeline_at(truth, at)->voltage_v + gsl_ran_gaussian(random, 0.3);
+    }
+    return log;
+}
+
+static void log_clear(Log *log)
+{
+    g_free(log->time_s);
+    g_free(log->voltage_v);
+}
+
+static RfFieldTimeline *find_with_log(const Cell *cell, const Log *log, GError **error)
+{
+    RfFieldSheet sheet = TWO_STATES;
+    sheet.log_time_s = log->time_s;
+    sheet.log_voltage_v = log->voltage_v;
+    sheet.log_samples = log->n;
+    return rf_field_timeline_find(cell->trails, DROPLETS, &sheet, error);
+}
+
+static void test_log_offset(void)
+{
+    Cell cell = cell_new(SWITCHES_S, G_N_ELEMENTS(SWITCHES_S), 32, 4);
+    Log log = log_new(cell.truth, 7.384, -5, 36, cell.random);
+    g_autoptr(GError) error = NULL;
+    g_autoptr(RfFieldTimeline) found = find_with_log(&cell, &log, &error);
+    g_assert_no_error(error);
+    assert_switches(found, cell.truth);
+    g_assert_true(found->has_log);
+    g_assert_cmpfloat(found->log_offset_s.sigma, <, 0.03);
+    g_assert_cmpfloat(fabs(found->log_offset_s.value - 7.384), <, 3.5 * found->log_offset_s.sigma);
+    g_assert_cmpuint(found->findings->len, ==, 0);
+    for (unsigned k = 0; k < found->switches->len; k++) {
+        g_assert_true(switch_of(found, k)->has_log_time);
+        g_assert_cmpfloat_with_epsilon(switch_of(found, k)->log_time_s, SWITCHES_S[k] + 7.384, 0.07);
+    }
+    g_assert_cmpfloat_with_epsilon(g_array_index(found->intervals, RfFieldInterval, 1).voltage_v, 400, 0.5);
+    log_clear(&log);
+    cell_clear(&cell);
+}
+
+static unsigned count_findings(const RfFieldTimeline *timeline, RfLogFindingKind kind, double time_s)
+{
+    unsigned n = 0;
+    for (unsigned i = 0; i < timeline->findings->len; i++) {
+        const RfLogFinding *f = &g_array_index(timeline->findings, RfLogFinding, i);
+        n += f->kind == kind && fabs(f->time_s - time_s) < 0.3;
+    }
+    return n;
+}
+
+/* The log lacks one on-interval and invents another. */
+static void test_log_audited(void)
+{
+    static const double logged_s[] = {4.217, 7.903, 17.0, 18.5, 20.777, 23.4, 27.111};
+    Cell cell = cell_new(SWITCHES_S, G_N_ELEMENTS(SWITCHES_S), 32, 5);
+    g_autoptr(RfFieldTimeline) wrong =
+        walk_timeline_new(logged_s, G_N_ELEMENTS(logged_s), RF_FIELD_TOP_PLUS, 400, 32);
+    Log log = log_new(wrong, -3.1, 0, 32, cell.random);
+    g_autoptr(RfFieldTimeline) found = find_with_log(&cell, &log, NULL);
+    g_assert_nonnull(found);
+    g_assert_cmpuint(count_findings(found, RF_LOG_MISSING, 12.318), ==, 1);
+    g_assert_cmpuint(count_findings(found, RF_LOG_MISSING, 15.051), ==, 1);
+    g_assert_cmpuint(count_findings(found, RF_LOG_EXTRA, 17.0), ==, 1);
+    g_assert_cmpuint(count_findings(found, RF_LOG_EXTRA, 18.5), ==, 1);
+    assert_switches(found, cell.truth);
+    log_clear(&log);
+    cell_clear(&cell);
+}
+
+static void test_log_of_another_recording_refused(void)
+{
+    Cell cell = cell_new(NULL, 0, 20, 6);
+    g_autoptr(RfFieldTimeline) other = walk_timeline_new(SWITCHES_S, 4, RF_FIELD_TOP_PLUS, 400, 32);
+    Log log = log_new(other, 0, 0, 32, cell.random);
+    g_autoptr(GError) error = NULL;
+    g_assert_null(find_with_log(&cell, &log, &error));
+    g_assert_nonnull(error);
+    log_clear(&log);
+    cell_clear(&cell);
+}
+
+static void test_impulse(void)
+{
+    static const double switches_s[] = {2, 5};
+    g_autoptr(RfFieldTimeline) t = walk_timeline_new(switches_s, 2, RF_FIELD_TOP_PLUS, 100, 8);
+    g_assert_cmpfloat_with_epsilon(rf_field_timeline_impulse_v_s(t, 1), 0, 1e-12);
+    g_assert_cmpfloat_with_epsilon(rf_field_timeline_impulse_v_s(t, 3.5), 150, 1e-9);
+    g_assert_cmpfloat_with_epsilon(rf_field_timeline_impulse_v_s(t, 20), 300, 1e-9);
+    g_assert_cmpint(rf_field_timeline_at(t, 4.9)->state, ==, RF_FIELD_TOP_PLUS);
+    g_assert_cmpint(rf_field_timeline_at(t, 9)->state, ==, RF_FIELD_OFF);
+}
+
+int main(int argc, char **argv)
+{
+    gsl_set_error_handler_off();
+    g_test_init(&argc, &argv, NULL);
+    g_test_add_func("/field-timeline/impulse/piecewise-linear", test_impulse);
+    g_test_add_func("/field-timeline/find/no-switch-none-found", test_no_switch_none_found);
+    g_test_add_func("/field-timeline/find/two-states", test_two_states);
+    g_test_add_func("/field-timeline/find/pulls", test_pulls);
+    g_test_add_func("/field-timeline/find/three-states", test_three_states);
+    g_test_add_func("/field-timeline/find/step-is-no-switch", test_step_is_no_switch);
+    g_test_add_func("/field-timeline/log/offset", test_log_offset);
+    g_test_add_func("/field-timeline/log/audited", test_log_audited);
+    g_test_add_func("/field-timeline/log/of-another-recording-refused",
+                    test_log_of_another_recording_refused);
+    return g_test_run();
+}
