@@ -2,6 +2,8 @@
 
 #include <string.h>
 
+#define LONGEST_WORDS 200
+
 GQuark rf_video_error_quark(void)
 {
     return g_quark_from_static_string("rf-video-error");
@@ -10,8 +12,20 @@ GQuark rf_video_error_quark(void)
 /* libav's log callback gets no pointer of ours, so its last line waits in storage of the thread that called it. */
 static char *last_words(void)
 {
-    static _Thread_local char line[200];
+    static _Thread_local char line[LONGEST_WORDS];
     return line;
+}
+
+/* "[concat @ 0x55d0c0ffee00] Format not on whitelist 'matroska,...'" becomes "concat: Format not on whitelist": the same
+ * words in every run, and no lists. */
+static void remember(char *line)
+{
+    char *at = *line == '[' ? strstr(line, " @ 0x") : NULL, *end = at != NULL ? strchr(at, ']') : NULL;
+    char *list = strstr(line, "whitelist '");
+    if (list != NULL) list[strlen("whitelist")] = '\0';
+    if (end != NULL) *at = '\0';
+    g_snprintf(last_words(), LONGEST_WORDS, "%s%s%s", end != NULL ? line + 1 : line, end != NULL ? ":" : "",
+               end != NULL ? end + 1 : "");
 }
 
 /* Decoders of ours carry a counter in `opaque` (copied to libav's own threads): some of them report damage nowhere
@@ -20,10 +34,10 @@ static void listen(void *context, int level, const char *format, va_list argumen
 {
     if (level > AV_LOG_ERROR) return;
     int with_prefix = 1;
-    char line[200];
+    char line[LONGEST_WORDS];
     av_log_format_line2(context, level, format, arguments, line, sizeof line, &with_prefix);
     g_strstrip(line);
-    if (*line != '\0') memcpy(last_words(), line, sizeof line);
+    if (*line != '\0') remember(line);
     const AVClass *class = context != NULL ? *(AVClass **)context : NULL;
     if (class == NULL || class != avcodec_get_class()) return;
     int *complaints = ((AVCodecContext *)context)->opaque;
@@ -40,7 +54,7 @@ void rf_libav_listen(void)
     *last_words() = '\0';
 }
 
-/* "clip.mkv: TEXT: Invalid data found when processing input ([mov] moov atom not found)" */
+/* "clip.mkv: TEXT: Invalid data found when processing input (mov: moov atom not found)" */
 bool rf_libav_fail(GError **error, RfVideoError code, const char *path, int status, const char *text)
 {
     GString *message = g_string_new(NULL);

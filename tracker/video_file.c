@@ -216,6 +216,7 @@ char *rf_video_file_summary(const RfVideoFile *file)
 
 double rf_video_file_time_s(const RfVideoFile *file, int64_t index)
 {
+    if (!file->info.is_indexed) return (double)index / MAX(file->info.frame_rate_hz, 1e-9);
     int p = (int)file->parts->len - 1;
     while (p > 0 && rf_video_file_part(file, p)->first_frame > index) p--;
     const RfVideoPart *part = rf_video_file_part(file, p);

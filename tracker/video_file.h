@@ -78,7 +78,7 @@ const RfVideoInfo *rf_video_file_info(const RfVideoFile *file);
 /* (returns new) "640 x 480, h264, 8 bit, 30 frames/s, 60.0 s, 1800 frames" */
 char *rf_video_file_summary(const RfVideoFile *file);
 
-/* Time of a frame by its index, before decoding it; only if info->is_indexed. */
+/* Time of a frame by its index, before decoding it; an estimate unless info->is_indexed. index < info->frames. */
 double rf_video_file_time_s(const RfVideoFile *file, int64_t index);
 
 /* Stretches: runs of frames that decode alone to the very same luma, together everything in [start_s,
@@ -164,7 +164,7 @@ typedef struct {
     int b_frames;       /* H.264, MPEG2 */
     bool is_open_gop;   /* H.264, MPEG2: leading B frames may refer to the group before */
     double quality;     /* H.264: crf > 0 to 51; MJPEG, MPEG2: 1 (best)..31; 0: 18 and 3 */
-    bool is_lossless;   /* H.264: crf 0 */
+    bool is_lossless;   /* H.264: quantiser 0, whatever `quality` says */
     const char *preset; /* H.264: "ultrafast" .. "veryslow"; NULL: "medium" */
     int slices;         /* FFV1: 4, 6, 9, 12, ...; 0: 4 */
 } RfVideoWriterOptions;

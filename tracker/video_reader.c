@@ -74,18 +74,21 @@ static bool begin(RfVideoReader *reader, const RfVideoStretch *stretch, int thre
     const RfVideoPart *part = rf_video_file_part(reader->file, stretch->part);
     const RfFrameEntry *entry =
         stretch->entry < 0 ? NULL : &g_array_index(part->index->entries, RfFrameEntry, stretch->entry);
-    bool is_same_decoder =
-        reader->decoder != NULL && reader->part == stretch->part && reader->threads == threads;
     if (!reach_packet(reader, stretch->part, entry, error)) return false;
-    if (is_same_decoder) avcodec_flush_buffers(reader->decoder);
-    if (!is_same_decoder) avcodec_free_context(&reader->decoder);
-    if (!is_same_decoder) reader->decoder = rf_video_part_decoder(part, threads, &reader->complaints, error);
+    /* A new decoder, not a flushed one: FFV1's keeps the last picture through a flush, and patches broken slices with
+     * it, so that a damaged frame would depend on what this reader decoded before. */
+    avcodec_free_context(&reader->decoder);
+    reader->decoder = rf_video_part_decoder(part, threads, &reader->complaints, error);
+    reader->complaints_seen = reader->complaints_at_start = g_atomic_int_get(&reader->complaints);
     reader->threads = threads;
     reader->next = entry == NULL ? 0 : part->first_frame + entry->frame;
     reader->skip_to = stretch->first;
     reader->end = stretch->end;
     reader->stop_packet = stop_packet(part, stretch->end);
     if (entry == NULL) reader->timer = rf_frame_timer_new(&part->clock, 0);
+    reader->from = *stretch;
+    reader->from_next = reader->next;
+    reader->from_timer = reader->timer;
     return reader->decoder != NULL;
 }
 
@@ -100,8 +103,8 @@ static bool begin_next_part(RfVideoReader *reader, GError **error)
     RfFrameTimer timer = rf_frame_timer_new(&part->clock, reader->timer.last_s + done->last_duration_s);
     timer.missing = reader->timer.missing, timer.backwards = reader->timer.backwards;
     if (!begin(reader, &rest, reader->threads, error)) return false;
-    reader->timer = timer;
-    reader->next = next;
+    reader->timer = reader->from_timer = timer;
+    reader->next = reader->from_next = next;
     return true;
 }
 
@@ -183,6 +186,30 @@ static bool is_damaged(RfVideoReader *reader)
            reader->frame->decode_error_flags != 0;
 }
 
+/* Threads patch a broken picture with as much of itself and its neighbours as happens to be ready; only FFV1's slices
+ * have nothing to do with each other. */
+static bool is_luck_involved(const RfVideoReader *reader)
+{
+    if (reader->decoder->active_thread_type == 0 || reader->decoder->codec_id == AV_CODEC_ID_FFV1)
+        return false;
+    return g_atomic_int_get(&reader->complaints) != reader->complaints_at_start ||
+           (reader->frame->flags & AV_FRAME_FLAG_CORRUPT) || reader->frame->decode_error_flags != 0;
+}
+
+/* Once more from where the decoder was started, on one thread, up to the frame that comes next. */
+static bool restart_alone(RfVideoReader *reader, GError **error)
+{
+    RfVideoStretch from = reader->from;
+    RfFrameTimer timer = reader->from_timer;
+    int64_t next = reader->from_next;
+    from.first = MAX(from.first, reader->next);
+    if (!begin(reader, &from, 1, error)) return false;
+    reader->next = reader->from_next = next;
+    reader->timer = reader->from_timer = timer;
+    if (!reader->file->info.is_indexed) reader->faults.lost = 0; /* counted again on the way */
+    return true;
+}
+
 static bool check_frame(const RfVideoReader *reader, double time_s, GError **error)
 {
     const RfVideoInfo *info = &reader->file->info;
@@ -236,6 +263,8 @@ RfVideoStep rf_video_file_next(RfVideoReader *reader, RfFrame *lent, GError **er
         } else if (status == AVERROR_EOF) {
             if (!has_next_part(reader)) break;
             if (!begin_next_part(reader, error)) return RF_VIDEO_FAILED;
+        } else if (is_luck_involved(reader)) {
+            if (!restart_alone(reader, error)) return RF_VIDEO_FAILED;
         } else if (status < 0) {
             if (!is_indexed) reader->faults.lost++;
         } else {

@@ -87,7 +87,10 @@ struct RfVideoReader {
     int64_t next, end; /* index of the frame to come, and of the first one not to deliver */
     int64_t skip_to;   /* frames before this index are decoded and dropped */
     RfFrameTimer timer;
-    int complaints, complaints_seen;
+    RfVideoStretch from; /* where the decoder was started, and what was known then */
+    int64_t from_next;
+    RfFrameTimer from_timer;
+    int complaints, complaints_seen, complaints_at_start;
     RfLumaScratch scratch;
     RfVideoFaults faults;
 };

@@ -55,11 +55,11 @@ static void set_rate_control(AVCodecContext *encoder, const RfVideoWriterOptions
 {
     double quality = options->quality;
     if (options->codec == RF_VIDEO_CODEC_H264) {
-        av_opt_set_double(encoder->priv_data, "crf",
-                          quality > 0            ? quality
-                          : options->is_lossless ? 0
-                                                 : 18,
-                          0);
+        /* crf 0 isn't lossless beyond 8 bit; a quantiser of 0 is, in every depth. */
+        if (options->is_lossless)
+            av_opt_set_int(encoder->priv_data, "qp", 0, 0);
+        else
+            av_opt_set_double(encoder->priv_data, "crf", quality > 0 ? quality : 18, 0);
         av_opt_set(encoder->priv_data, "preset", options->preset != NULL ? options->preset : "medium", 0);
         if (options->is_open_gop) av_opt_set(encoder->priv_data, "x264-params", "open-gop=1", 0);
     } else if (options->codec != RF_VIDEO_CODEC_FFV1) {
@@ -129,8 +129,8 @@ static AVFrame *blank_frame(const AVCodecContext *encoder, int depth)
     frame->sample_aspect_ratio = encoder->sample_aspect_ratio;
     if (av_frame_get_buffer(frame, 0) < 0) av_frame_free(&frame);
     for (int plane = 1; frame != NULL && plane < 3 && frame->data[plane] != NULL; plane++) {
-        size_t samples =
-            (size_t)frame->linesize[plane] / (depth > 8 ? 2 : 1) * ((size_t)frame->height + 1) / 2;
+        size_t rows = ((size_t)frame->height + 1) / 2;
+        size_t samples = rows * (size_t)frame->linesize[plane] / (depth > 8 ? 2 : 1);
         for (size_t i = 0; i < samples && depth == 8; i++) frame->data[plane][i] = 128;
         for (size_t i = 0; i < samples && depth > 8; i++) {
             ((uint16_t *)(void *)frame->data[plane])[i] = (uint16_t)(1 << (depth - 1));
