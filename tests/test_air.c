@@ -144,7 +144,7 @@ static void density_cipm2007(void)
 
 static void density_moist_air_is_lighter(void)
 {
-    double before = INFINITY;
+    double before = G_MAXDOUBLE;
     for (double humidity = 0.0; humidity <= 1.0; humidity += 0.1) {
         const double rho = rf_air_density_kg_m3(296.15, 101325.0, humidity);
         g_assert_cmpfloat(rho, <, before);

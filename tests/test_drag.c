@@ -103,7 +103,7 @@ static void laws_bring_their_mean_free_path(void)
 /* The spread of the laws at 0.5 um diameter that the stated uncertainty speaks of. */
 static void slip_uncertainty_spans_the_laws(void)
 {
-    double low = INFINITY, high = 0.0;
+    double low = G_MAXDOUBLE, high = 0.0;
     for (int law = RF_SLIP_KIM_2005; law <= RF_SLIP_MILLIKAN_1923; law++) {
         const RfMedium medium = room_air((RfSlipLaw)law);
         const double excess = rf_drag_slip_factor(&medium, 0.25e-6) - 1.0;
