@@ -38,12 +38,6 @@ static char *why_set_aside(const RfDropletFit *fit, const RfSpellFit *spell, dou
     return g_strdup("");
 }
 
-/* Random and common parts in one sigma: value is in any unit, slope is its d/d ln(input) in the same. */
-static RfValue with_common(RfValue value, const RfConditions *conditions, const double slope[RF_INPUTS])
-{
-    return (RfValue){value.value, hypot(value.sigma, rf_conditions_common_u(conditions, slope))};
-}
-
 static RfValue scaled(RfValue value, double factor)
 {
     return (RfValue){value.value * factor, value.sigma * factor};
@@ -57,35 +51,64 @@ static void name_whole_multiple(RfDropletRow *row)
     row->units = row->has_units ? multiple.n : 0;
 }
 
-static RfDropletRow fitted_row(unsigned droplet, const RfDropletFit *fit, size_t s, const RfConditions *conditions)
+/* How much of the radius' information comes from the spread of the path. */
+static RfChargeEstimate estimate_of(const RfDropletFit *fit, const RfSpellFit *spell)
+{
+    double share = fit->radius_spread_m.sigma > 0 ? fit->radius_m.sigma / fit->radius_spread_m.sigma : 0;
+    return (RfChargeEstimate){fit->radius_m, spell->charge_coulomb, fmin(1, share * share)};
+}
+
+/* Random and common parts in one sigma, first order. */
+static bool charge_with_common(const RfChargeInputs *inputs, const RfChargeEstimate *estimate, RfValue *charge,
+                               GError **error)
+{
+    const RfBudgetOptions first_order = {.coverage = 0.95};
+    g_autoptr(RfBudget) budget = rf_charge_budget_new(inputs, estimate, &first_order, NULL, error);
+    if (budget)
+        *charge = (RfValue){estimate->charge_coulomb.value, budget->sigma};
+    return budget != NULL;
+}
+
+static bool radius_with_common(const RfChargeInputs *inputs, const RfChargeEstimate *estimate, RfValue *radius,
+                               GError **error)
+{
+    const RfBudgetOptions first_order = {.coverage = 0.95};
+    g_autoptr(RfBudget) budget = rf_charge_budget_radius_new(inputs, estimate, &first_order, NULL, error);
+    if (budget)
+        *radius = (RfValue){estimate->radius_m.value, budget->sigma};
+    return budget != NULL;
+}
+
+static bool fitted_row(unsigned droplet, const RfDropletFit *fit, size_t s, const RfChargeInputs *inputs,
+                       RfDropletRow *row, GError **error)
 {
     const RfSpellFit *spell = &fit->spell[s];
-    double fall_slope[RF_INPUTS] = {[RF_INPUT_SCALE] = fit->fall_m_s.value};
-    double radius_slope_m[RF_INPUTS];
-    for (int i = 0; i < RF_INPUTS; i++)
-        radius_slope_m[i] = fit->radius_slope[i] * fit->radius_m.value;
-    RfDropletRow row = {
+    const RfChargeEstimate estimate = estimate_of(fit, spell);
+    RfValue radius_m, charge_coulomb = {0};
+    if (!radius_with_common(inputs, &estimate, &radius_m, error) ||
+        (spell->has_charge && !charge_with_common(inputs, &estimate, &charge_coulomb, error)))
+        return false;
+    *row = (RfDropletRow){
         .droplet = droplet,
         .spell = (unsigned)s + 1,
         .start_s = spell->start_s,
         .end_s = spell->end_s,
         .frames = (unsigned)spell->samples,
-        .fall_mm_s = scaled(with_common(fit->fall_m_s, conditions, fall_slope), 1e3),
-        .radius_um = scaled(with_common(fit->radius_m, conditions, radius_slope_m), 1e6),
+        .fall_mm_s = {fit->fall_m_s.value * 1e3,
+                      hypot(fit->fall_m_s.sigma, fit->fall_m_s.value * inputs->scale_relative_u) * 1e3},
+        .radius_um = scaled(radius_m, 1e6),
         .radius_fall_um = scaled(fit->radius_fall_m, 1e6),
         .radius_spread_um = scaled(fit->radius_spread_m, 1e6),
         .radius_agreement_p = fit->radius_agreement_p,
         .has_charge = spell->has_charge,
+        .charge_C = charge_coulomb,
+        .u_random_C = spell->has_charge ? spell->charge_coulomb.sigma : 0,
+        .reason = why_set_aside(fit, spell, charge_coulomb.sigma),
     };
-    if (spell->has_charge) {
-        row.charge_C = with_common(spell->charge_coulomb, conditions, spell->charge_slope_coulomb);
-        row.u_random_C = spell->charge_coulomb.sigma;
-    }
-    row.reason = why_set_aside(fit, spell, row.charge_C.sigma);
-    row.accepted = *row.reason == '\0';
-    if (row.has_charge)
-        name_whole_multiple(&row);
-    return row;
+    row->accepted = *row->reason == '\0';
+    if (row->has_charge)
+        name_whole_multiple(row);
+    return true;
 }
 
 /* What the paths say of a droplet as a whole, also of one that could not be fitted. */
@@ -150,87 +173,99 @@ static void add_steps(RfResults *results, unsigned droplet, const GArray *steps)
     }
 }
 
-void rf_assess_droplets(RfResults *results, const RfTrail *trails, const RfDropletSet *set,
-                        const RfConditions *conditions)
+static bool add_fitted(RfResults *results, unsigned droplet, const RfDropletFit *fit, double median_snr,
+                       const RfChargeInputs *inputs, GError **error)
+{
+    for (size_t s = 0; s < fit->spells; s++) {
+        RfDropletRow row;
+        if (!fitted_row(droplet, fit, s, inputs, &row, error)) {
+            g_prefix_error(error, "droplet %u, spell %zu: ", droplet, s + 1);
+            return false;
+        }
+        row.median_snr = median_snr;
+        g_array_append_val(results->droplets, row);
+    }
+    return true;
+}
+
+bool rf_assess_droplets(RfResults *results, const RfTrail *trails, const RfDropletSet *set,
+                        const RfChargeInputs *inputs, GError **error)
 {
     for (size_t i = 0; i < set->n; i++) {
         const RfDropletResult *result = &set->droplets[i];
-        unsigned droplet = trails[i].droplet;
-        Seen seen = seen_of(results->paths, droplet);
-        if (result->fit.state != RF_FIT_DONE) {
-            add_unfitted(results, droplet, &result->fit, &seen);
-            continue;
-        }
-        for (size_t s = 0; s < result->fit.spells; s++) {
-            RfDropletRow row = fitted_row(droplet, &result->fit, s, conditions);
-            row.median_snr = seen.median_snr;
-            g_array_append_val(results->droplets, row);
-        }
-        add_steps(results, droplet, result->steps);
+        Seen seen = seen_of(results->paths, trails[i].droplet);
+        if (result->fit.state != RF_FIT_DONE)
+            add_unfitted(results, trails[i].droplet, &result->fit, &seen);
+        else if (!add_fitted(results, trails[i].droplet, &result->fit, seen.median_snr, inputs, error))
+            return false;
+        add_steps(results, trails[i].droplet, result->steps);
     }
+    return true;
 }
 
 /* ---- budget ---- */
 
-static double median_of(GArray *values)
+typedef struct {
+    double relative_u;
+    const RfDropletFit *fit;
+    const RfSpellFit *spell;
+} Candidate;
+
+static int compare_candidates(const void *a, const void *b)
 {
-    if (values->len == 0)
-        return 0;
-    qsort(values->data, values->len, sizeof(double), compare_doubles);
-    return g_array_index(values, double, values->len / 2);
+    return compare_doubles(&((const Candidate *)a)->relative_u, &((const Candidate *)b)->relative_u);
 }
 
-static bool is_for_budget(const RfDropletRow *row)
+/* Accepted spells with a charge that stands out from zero, in order of their relative uncertainty. */
+static GArray *candidates_of(const RfResults *results, const RfTrail *trails, const RfDropletSet *set)
 {
-    return row->accepted && fabs(row->charge_C.value) > 2 * row->charge_C.sigma;
-}
-
-static void add_budget_row(RfResults *results, const char *name, const char *stated, double relative_u,
-                           GArray *charge_relative_u, bool is_common)
-{
-    RfBudgetRow row = {
-        .input = g_strdup(name),
-        .stated = g_strdup(stated),
-        .relative_u = relative_u,
-        .charge_relative_u = median_of(charge_relative_u),
-        .charge_relative_u_mc = -1,
-        .is_common = is_common,
-    };
-    g_array_append_val(results->budget, row);
-}
-
-/* u(q)/|q| from one input (NULL: the droplet's own, random part) of every accepted charge. */
-static GArray *relative_effects(const RfResults *results, const RfTrail *trails, const RfDropletSet *set,
-                                const RfCommonInput *input)
-{
-    GArray *effects = g_array_new(FALSE, FALSE, sizeof(double));
+    GArray *candidates = g_array_new(FALSE, FALSE, sizeof(Candidate));
     size_t i = 0;
     for (guint r = 0; r < results->droplets->len; r++) {
         const RfDropletRow *row = &g_array_index(results->droplets, RfDropletRow, r);
         while (trails[i].droplet != row->droplet)
             i++;
-        if (!is_for_budget(row))
+        if (!row->accepted || fabs(row->charge_C.value) < 2 * row->charge_C.sigma)
             continue;
-        const RfSpellFit *spell = &set->droplets[i].fit.spell[row->spell - 1];
-        double u = input ? fabs(rf_conditions_effect(input, spell->charge_slope_coulomb)) : row->u_random_C;
-        double relative = u / fabs(row->charge_C.value);
-        g_array_append_val(effects, relative);
+        const RfDropletFit *fit = &set->droplets[i].fit;
+        Candidate candidate = {row->charge_C.sigma / fabs(row->charge_C.value), fit, &fit->spell[row->spell - 1]};
+        g_array_append_val(candidates, candidate);
     }
-    return effects;
+    g_array_sort(candidates, compare_candidates);
+    return candidates;
 }
 
-void rf_assess_budget(RfResults *results, const RfTrail *trails, const RfDropletSet *set,
-                      const RfConditions *conditions)
+static void add_budget_row(RfResults *results, const RfChargeInputs *inputs, int line, const RfBudgetInput *input,
+                           const RfBudgetPart *part, double charge_coulomb)
 {
-    for (guint i = 0; i < conditions->inputs->len; i++) {
-        const RfCommonInput *input = g_ptr_array_index(conditions->inputs, i);
-        g_autoptr(GArray) effects = relative_effects(results, trails, set, input);
-        if (effects->len > 0)
-            add_budget_row(results, input->name, input->stated, input->relative_u, effects, true);
-    }
-    g_autoptr(GArray) random = relative_effects(results, trails, set, NULL);
-    if (random->len > 0)
-        add_budget_row(results, "each droplet's own motion and localisation", "from its path", 0, random, false);
+    RfBudgetRow row = {
+        .input = g_strdup(rf_charge_line_to_string((RfChargeLine)line)),
+        .stated = rf_conditions_stated(inputs, (RfChargeLine)line),
+        .relative_u = input->value != 0 ? input->sigma / fabs(input->value) : 0,
+        .charge_relative_u = fabs(part->contribution) / charge_coulomb,
+        .charge_relative_u_mc = part->mc_sigma < 0 ? -1 : part->mc_sigma / charge_coulomb,
+        .is_common = line != RF_CHARGE_LINE_PATH,
+    };
+    g_array_append_val(results->budget, row);
+}
+
+bool rf_assess_budget(RfResults *results, const RfTrail *trails, const RfDropletSet *set, const RfChargeInputs *inputs,
+                      GError **error)
+{
+    g_autoptr(GArray) candidates = candidates_of(results, trails, set);
+    if (candidates->len == 0)
+        return true;
+    const Candidate *typical = &g_array_index(candidates, Candidate, candidates->len / 2);
+    const RfChargeEstimate estimate = estimate_of(typical->fit, typical->spell);
+    RfBudgetInput lines[RF_CHARGE_LINES];
+    g_autoptr(RfBudget) budget = rf_charge_budget_new(inputs, &estimate, &RF_BUDGET_DEFAULTS, lines, error);
+    if (!budget)
+        return false;
+    for (int line = 0; line < RF_CHARGE_LINES; line++)
+        if (lines[line].sigma > 0)
+            add_budget_row(results, inputs, line, &lines[line], &budget->parts[line],
+                           fabs(estimate.charge_coulomb.value));
+    return true;
 }
 
 /* ---- unit ---- */

@@ -7,12 +7,14 @@
 #include "physics/droplet_set.h"
 
 /* Fills results->droplets and results->steps: one row per spell. `set` is in the order of `trails`. */
-void rf_assess_droplets(RfResults *results, const RfTrail *trails, const RfDropletSet *set,
-                        const RfConditions *conditions);
+bool rf_assess_droplets(RfResults *results, const RfTrail *trails, const RfDropletSet *set,
+                        const RfChargeInputs *inputs, GError **error);
 
-/* Fills results->budget and results->unit from the accepted rows. */
-void rf_assess_budget(RfResults *results, const RfTrail *trails, const RfDropletSet *set,
-                      const RfConditions *conditions);
+/* Fills results->budget for a typical accepted spell: the one whose charge has the median relative uncertainty. */
+bool rf_assess_budget(RfResults *results, const RfTrail *trails, const RfDropletSet *set, const RfChargeInputs *inputs,
+                      GError **error);
+
+/* Fills results->unit from the accepted rows and the budget's common part. */
 void rf_assess_unit(RfResults *results);
 
 /* Fills results->measured and results->verdict. */

@@ -217,14 +217,15 @@ static void warn_of_timeline(RfResults *results, const RfFieldTimeline *timeline
         warn_of_log(results, &g_array_index(timeline->findings, RfLogFinding, i));
 }
 
-bool rf_measure_paths(RfResults *results, const RfConditions *conditions, const RfSupply *supply, int threads,
+bool rf_measure_paths(RfResults *results, const RfChargeInputs *inputs, const RfSupply *supply, int threads,
                       GError **error)
 {
     g_autoptr(RfTrailSet) trails = rf_trails_new(results->paths);
     if (trails->n > 0) {
         int workers = threads > 0 ? threads : (int)g_get_num_processors();
+        const RfMedium medium = rf_charge_budget_medium(inputs);
         RfDropletSetSettings how = {
-            .medium = &conditions->medium,
+            .medium = &medium,
             .sheet = &supply->sheet,
             .for_each = for_each,
             .for_each_user = &workers,
@@ -234,8 +235,12 @@ bool rf_measure_paths(RfResults *results, const RfConditions *conditions, const 
             return false;
         add_switches(results, set->timeline);
         add_segments(results, trails, set);
-        rf_assess_droplets(results, trails->trails, set, conditions);
-        rf_assess_budget(results, trails->trails, set, conditions);
+        /* Vertical drift of the air can't be told from falling; as much of it as shows by changing is carried. */
+        RfChargeInputs shared = *inputs;
+        shared.air_drift_u_m_s = set->drift->fall_rms_m_s;
+        if (!rf_assess_droplets(results, trails->trails, set, &shared, error) ||
+            !rf_assess_budget(results, trails->trails, set, &shared, error))
+            return false;
         warn_of_timeline(results, set->timeline);
     }
     rf_assess_unit(results);

@@ -22,5 +22,5 @@ G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfSupply, rf_measure_supply_free)
 
 /* Reads results->paths and fills segments, switches, steps, droplets, unit, budget, warnings, measured and verdict.
  * `threads` 0: one per core. */
-bool rf_measure_paths(RfResults *results, const RfConditions *conditions, const RfSupply *supply, int threads,
+bool rf_measure_paths(RfResults *results, const RfChargeInputs *inputs, const RfSupply *supply, int threads,
                       GError **error);

@@ -118,8 +118,8 @@ static bool set_out(Road *road, const RfSettings *settings, GError **error)
 
 static bool measure(Road *road, const RfSettings *settings, const RfWatchHooks *hooks, GError **error)
 {
-    g_autoptr(RfConditions) conditions = rf_conditions_new(settings, road->scale_relative_u);
-    return rf_measure_paths(road->results, conditions, road->supply, hooks->threads, error);
+    const RfChargeInputs inputs = rf_conditions_of(settings, road->scale_relative_u);
+    return rf_measure_paths(road->results, &inputs, road->supply, hooks->threads, error);
 }
 
 static RfResults *arrive(Road *road, bool is_well)
