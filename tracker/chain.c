@@ -115,7 +115,7 @@ void rf_chain_learn_spread(const RfLinkScene *scene, RfChain *chain)
     double a = high - golden * (high - low), b = low + golden * (high - low);
     double at_a = rf_chain_log_likelihood(scene, chain, exp(a)),
            at_b = rf_chain_log_likelihood(scene, chain, exp(b));
-    while (high - low > 0.1) {
+    while (high - low > 0.15) {
         if (at_a > at_b) {
             high = b;
             b = a;

@@ -89,10 +89,13 @@ static double cost_to(const RfLinkScene *scene, const Vacancy *vacancy, int spot
 /* Near enough, given how well the places are known, to have been seen as one. */
 static bool may_merge(const RfLinkScene *scene, const RfSight *a, const RfSight *b)
 {
+    double dx = a->at_px[0] - b->at_px[0], dy = a->at_px[1] - b->at_px[1], d2 = dx * dx + dy * dy;
     double variance_px2 =
         (a->variance_px2[0] + a->variance_px2[1] + b->variance_px2[0] + b->variance_px2[1]) / 2;
-    return hypot(a->at_px[0] - b->at_px[0], a->at_px[1] - b->at_px[1]) <
-           scene->merge_px + 2 * sqrt(variance_px2);
+    if (d2 >
+        2 * scene->merge_px * scene->merge_px + 8 * variance_px2) /* nearly all pairs: not worth a root */
+        return false;
+    return sqrt(d2) < scene->merge_px + 2 * sqrt(variance_px2);
 }
 
 /* Two vacancies of one exposure, one spot between them, or two that could as well be exchanged. */
@@ -189,16 +192,21 @@ static int compare_presences(const void *a, const void *b)
     return x->chain < y->chain ? -1 : x->chain > y->chain;
 }
 
+/* Presences of one exposure: those seen, beside any that is not. */
+static void mark_shared_in(const RfLinkScene *scene, Presence *presences, unsigned n)
+{
+    for (unsigned i = 0; i < n; i++)
+        for (unsigned j = 0; !presences[i].is_seen && j < n; j++)
+            if (presences[j].is_seen && may_merge(scene, &presences[i].place, &presences[j].place))
+                presences[j].is_shared = true;
+}
+
 static void mark_shared(const RfLinkScene *scene, GArray *presences)
 {
-    for (unsigned i = 0; i < presences->len; i++) {
-        Presence *a = &g_array_index(presences, Presence, i);
-        for (unsigned j = i + 1; j < presences->len; j++) {
-            Presence *b = &g_array_index(presences, Presence, j);
-            if (b->exposure != a->exposure) break;
-            if (a->is_seen != b->is_seen && may_merge(scene, &a->place, &b->place))
-                (a->is_seen ? a : b)->is_shared = true;
-        }
+    Presence *all = (Presence *)(void *)presences->data;
+    for (unsigned i = 0, j; i < presences->len; i = j) {
+        for (j = i + 1; j < presences->len && all[j].exposure == all[i].exposure;) j++;
+        mark_shared_in(scene, &all[i], j - i);
     }
 }
 

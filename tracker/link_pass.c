@@ -112,7 +112,11 @@ static bool are_near(const RfMotion *a, const RfMotion *b, double merge_px)
 {
     double dx = a->axis[0].position_px - b->axis[0].position_px,
            dy = a->axis[1].position_px - b->axis[1].position_px;
-    return hypot(dx, dy) < merge_px + 2 * hypot(spread_px(a), spread_px(b));
+    double variance_px2 = (a->axis[0].pp + a->axis[1].pp + b->axis[0].pp + b->axis[1].pp) / 2;
+    double d2 = dx * dx + dy * dy;
+    if (d2 > 2 * merge_px * merge_px + 8 * variance_px2) /* nearly all pairs: not worth a root */
+        return false;
+    return sqrt(d2) < merge_px + 2 * sqrt(variance_px2);
 }
 
 static void tangle_up(Pass *pass, Live *a, Live *b, double time_s)

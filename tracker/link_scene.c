@@ -4,6 +4,8 @@
 
 /* What is believed of droplets where there are too few spots to ask: slow oil droplets at some hundred pixels per
  * millimetre. Only the first step of a path hangs on it. */
+enum { triples_most = 20000 };
+
 static const double fallback_spread_px2_s = 8, fallback_speed_px_s = 60;
 
 static void place_spot(RfLinkScene *scene, const RfExposure *exposure, int i)
@@ -192,7 +194,7 @@ static void learn_model(RfLinkScene *scene)
     double radius_px = 0.35 * sqrt(scene->area_px2 / fmax(1, spots));
     g_autoptr(GArray) triples = g_array_new(false, false, sizeof(Triple));
     unsigned stride = MAX(1, n / 400);
-    for (unsigned e = 1; e + 1 < n; e += stride)
+    for (unsigned e = 1; e + 1 < n && triples->len < triples_most; e += stride)
         if (scene->is_usable[e - 1] && scene->is_usable[e] && scene->is_usable[e + 1])
             collect_triples(scene, e, radius_px, triples);
     scene->model.noise.spread_px2_s = fallback_spread_px2_s;

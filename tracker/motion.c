@@ -41,21 +41,27 @@ static double loosened_variance(const RfMotion *m, const RfMotionModel *model, i
     return m->axis[axis].pp + (v * m->unseen_s * m->unseen_s + r * m->unseen_field_s * m->unseen_field_s) / 3;
 }
 
+/* -log of the normal density; as_changed: with the variances that a change adds. */
+static double surprise_of(const RfMotion *m, const RfMotionModel *model, const RfSight *sight,
+                          bool as_changed, double *d2)
+{
+    double determinant = 1;
+    *d2 = 0;
+    for (int i = 0; i < 2; i++) {
+        double residual_px = sight->at_px[i] - m->axis[i].position_px;
+        double s = (as_changed ? loosened_variance(m, model, i) : m->axis[i].pp) + sight->variance_px2[i];
+        *d2 += residual_px * residual_px / s;
+        determinant *= s;
+    }
+    return log_two_pi + (*d2 + log(determinant)) / 2;
+}
+
 double rf_motion_surprise(const RfMotion *m, const RfMotionModel *model, const RfSight *sight,
                           bool *is_changed)
 {
-    double plain = 0, changed = 0, plain_det = 1, changed_det = 1;
-    for (int i = 0; i < 2; i++) {
-        double residual_px = sight->at_px[i] - m->axis[i].position_px;
-        double s = m->axis[i].pp + sight->variance_px2[i];
-        double loose = loosened_variance(m, model, i) + sight->variance_px2[i];
-        plain += residual_px * residual_px / s;
-        changed += residual_px * residual_px / loose;
-        plain_det *= s;
-        changed_det *= loose;
-    }
-    plain = log_two_pi + (plain + log(plain_det)) / 2;
-    changed = log_two_pi + (changed + log(changed_det)) / 2 + model->change_cost;
+    double d2, plain = surprise_of(m, model, sight, false, &d2), changed = HUGE_VAL;
+    if (d2 / 2 > model->change_cost) /* below, a wider density can't make up for its cost */
+        changed = surprise_of(m, model, sight, true, &d2) + model->change_cost;
     if (is_changed) *is_changed = changed < plain;
     return fmin(plain, changed);
 }

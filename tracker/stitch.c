@@ -248,14 +248,13 @@ static void join(RfChain *a, const RfChain *b)
 }
 
 /* Follows the chosen joins from every chain that nothing precedes. */
-static void apply_joins(const RfLinkScene *scene, GPtrArray *chains, const int *next, const int *previous)
+static void apply_joins(GPtrArray *chains, const int *next, const int *previous)
 {
     g_autoptr(GPtrArray) kept = g_ptr_array_new();
     for (unsigned i = 0; i < chains->len; i++) {
         if (previous[i] >= 0) continue;
         RfChain *chain = g_ptr_array_index(chains, i);
         for (int j = next[i]; j >= 0; j = next[j]) join(chain, g_ptr_array_index(chains, j));
-        if (next[i] >= 0) rf_chain_learn_spread(scene, chain);
         g_ptr_array_add(kept, chain);
     }
     for (unsigned i = 0; i < chains->len; i++)
@@ -289,7 +288,7 @@ static unsigned stitch_once(const RfLinkScene *scene, GPtrArray *chains, double 
         undecided++;
     }
     stitch_free(stitch);
-    apply_joins(scene, chains, next, previous);
+    apply_joins(chains, next, previous);
     return undecided;
 }
 
@@ -298,7 +297,6 @@ unsigned rf_stitch_chains(const RfLinkScene *scene, GPtrArray *chains)
     /* short gaps first: what they join knows more about itself when the long ones are judged */
     const double part_of_gap[] = {0.1, 0.4, 1, 1};
     unsigned undecided = 0;
-    for (unsigned i = 0; i < chains->len; i++) rf_chain_learn_spread(scene, g_ptr_array_index(chains, i));
     for (size_t i = 0; i < G_N_ELEMENTS(part_of_gap); i++)
         undecided = stitch_once(scene, chains, part_of_gap[i] * scene->options.longest_gap_s);
     return undecided;
