@@ -3,7 +3,7 @@
 #include <math.h>
 #include <string.h>
 
-enum { PER_SPOT = 4, MOST = RF_LOCALISE_MOST_SPOTS * PER_SPOT + 1, STEPS = 30 };
+enum { PER_SPOT = 4, MOST = RF_LOCALISE_MOST_SPOTS * PER_SPOT + 1, STEPS = 30, ROUNDS = 4, HASTY_STEPS = 9 };
 enum { X, Y, PEAK, WIDTH }; /* of one spot's unknowns; the common offset comes last of all */
 
 static const double WIDTH_PRIOR = 0.7;  /* sd of ln width around the expected one */
@@ -67,9 +67,23 @@ static void add_priors(const Problem *problem, const State *state, Normal *norma
     normal->cost += state->offset * state->offset / problem->offset_var;
 }
 
-/* Weights come from `weighing`, the state of the step before, so that the cost of two trials can be compared. */
-static void gather(const Problem *problem, const State *state, const float *weights, bool with_matrix,
-                   Normal *normal)
+typedef struct {
+    float weights[RF_LOCALISE_MOST_PIXELS]; /* 1 / variance */
+    float models[RF_LOCALISE_MOST_PIXELS];  /* of the state gathered last */
+} PixelTable;
+
+static inline void accumulate(Normal *normal, const double *g, double weight, double residual, unsigned m)
+{
+    for (unsigned i = 0; i < m; i++) {
+        double wg = weight * g[i];
+        if (wg == 0) continue; /* a spot too far away to matter */
+        for (unsigned j = 0; j <= i; j++) normal->matrix[i][j] += wg * g[j];
+        normal->right[i] += wg * residual;
+    }
+}
+
+/* Normal equations at a state, and the model's value at every pixel. */
+static void gather(const Problem *problem, const State *state, PixelTable *table, Normal *normal)
 {
     unsigned m = unknowns(problem);
     RfSpotProfile profiles[RF_LOCALISE_MOST_SPOTS];
@@ -77,30 +91,26 @@ static void gather(const Problem *problem, const State *state, const float *weig
         profiles[i] = rf_spot_shape_profile(problem->localiser->shape, state->spots[i].width_px);
     memset(normal, 0, sizeof *normal);
     for (unsigned p = 0; p < problem->n_pixels; p++) {
-        double g[MOST], weight = (double)weights[p];
-        double residual = (double)problem->pixels[p].excess - state->offset -
-                          model_at(problem, state, profiles, &problem->pixels[p], g);
+        double g[MOST], weight = (double)table->weights[p];
+        double model = model_at(problem, state, profiles, &problem->pixels[p], g);
+        double residual = (double)problem->pixels[p].excess - state->offset - model;
+        table->models[p] = (float)model;
         normal->chi_square += weight * residual * residual;
-        for (unsigned i = 0; with_matrix && i < m; i++) {
-            double wg = weight * g[i];
-            for (unsigned j = 0; j <= i; j++) normal->matrix[i][j] += wg * g[j];
-            normal->right[i] += wg * residual;
-        }
+        if (m == PER_SPOT + 1)
+            accumulate(normal, g, weight, residual, PER_SPOT + 1); /* the usual case, its loops unrolled */
+        else
+            accumulate(normal, g, weight, residual, m);
     }
     normal->cost = normal->chi_square;
     add_priors(problem, state, normal);
 }
 
-static void weigh(const Problem *problem, const State *state, float *weights)
+static void weigh(const Problem *problem, PixelTable *table)
 {
-    RfSpotProfile profiles[RF_LOCALISE_MOST_SPOTS];
-    double g[MOST];
-    for (unsigned i = 0; i < problem->n; i++)
-        profiles[i] = rf_spot_shape_profile(problem->localiser->shape, state->spots[i].width_px);
+    double factor = problem->localiser->var_factor, photon = problem->localiser->photon_var_per_level;
     for (unsigned p = 0; p < problem->n_pixels; p++) {
-        double model = model_at(problem, state, profiles, &problem->pixels[p], g);
-        weights[p] = (float)(1 / (problem->localiser->var_factor * (double)problem->pixels[p].var +
-                                  problem->localiser->photon_var_per_level * fmax(model, 0)));
+        double light = fmax((double)table->models[p], 0);
+        table->weights[p] = (float)(1 / (factor * (double)problem->pixels[p].var + photon * light));
     }
 }
 
@@ -150,42 +160,76 @@ static State moved(const Problem *problem, const State *state, const double *d)
     return next;
 }
 
+/* A hundredth of a standard uncertainty; of the width, on which a place hardly depends, a twentieth. */
 static bool is_small(const Problem *problem, const double *d, const Normal *normal)
 {
-    for (unsigned i = 0; i < unknowns(problem); i++)
-        if (d[i] * d[i] * normal->matrix[i][i] > 1e-6) /* a thousandth of a standard uncertainty */
-            return false;
+    for (unsigned i = 0; i < unknowns(problem); i++) {
+        bool is_width = i % PER_SPOT == WIDTH && i < problem->n * PER_SPOT;
+        if (d[i] * d[i] * normal->matrix[i][i] > (is_width ? 2.5e-3 : 1e-4)) return false;
+    }
     return true;
 }
 
-/* Levenberg-Marquardt; weights follow the model after each accepted step (iteratively reweighted). */
-static bool descend(const Problem *problem, State *state, float *weights)
+/* Levenberg-Marquardt with the weights as they are. How many steps it took; -1 where it didn't settle. `normal` and the
+ * table's models are those of the final state. */
+static int descend(const Problem *problem, State *state, PixelTable *table, Normal *normal)
 {
     double damping = 1e-4;
-    Normal normal, trial;
-    weigh(problem, state, weights);
-    gather(problem, state, weights, true, &normal);
     for (int step = 0; step < STEPS; step++) {
-        Normal factor = normal;
+        Normal factor = *normal, trial;
         double d[MOST];
-        memcpy(d, normal.right, sizeof d);
+        memcpy(d, normal->right, sizeof d);
         if (!factorise(factor.matrix, unknowns(problem), damping)) {
             damping = MAX(10 * damping, 1e-3);
             continue;
         }
         substitute(factor.matrix, unknowns(problem), d);
+        bool is_last = is_small(problem, d, normal);
         State next = moved(problem, state, d);
-        gather(problem, &next, weights, false, &trial);
-        if (trial.cost > normal.cost * (1 + 1e-9)) {
-            if (is_small(problem, d, &normal)) return true;
+        gather(problem, &next, table, &trial);
+        if (trial.cost <= normal->cost * (1 + 1e-9)) {
+            *state = next;
+            *normal = trial;
+            damping = MAX(damping / 6, 1e-7);
+        } else {
             damping *= 8;
-            continue;
         }
-        *state = next;
-        damping = MAX(damping / 6, 1e-7);
-        if (is_small(problem, d, &normal)) return true;
-        weigh(problem, state, weights);
-        gather(problem, state, weights, true, &normal);
+        if (is_last) return step;
+    }
+    return -1;
+}
+
+/* Weights follow the model, and the model the weights (iteratively reweighted least squares), until they agree. */
+static bool alternate(const Problem *problem, State *state, PixelTable *table, Normal *normal)
+{
+    for (unsigned p = 0; p < problem->n_pixels; p++) table->weights[p] = 1;
+    gather(problem, state, table, normal); /* for the models only */
+    for (int round = 0; round < ROUNDS; round++) {
+        weigh(problem, table);
+        gather(problem, state, table, normal);
+        int steps = descend(problem, state, table, normal);
+        if (steps < 0) return false;
+        if (steps == 0 && round > 0) break;
+    }
+    return true;
+}
+
+/* Plain Gauss-Newton, the weights a step behind: four or five steps do for nearly every spot. */
+static bool hurry(const Problem *problem, State *state, PixelTable *table, Normal *normal)
+{
+    for (unsigned p = 0; p < problem->n_pixels; p++) table->weights[p] = 1 / problem->pixels[p].var;
+    gather(problem, state, table, normal);
+    for (int step = 0; step < HASTY_STEPS; step++) {
+        Normal factor = *normal;
+        double d[MOST];
+        memcpy(d, normal->right, sizeof d);
+        if (!factorise(factor.matrix, unknowns(problem), 1e-6)) return false;
+        substitute(factor.matrix, unknowns(problem), d);
+        bool is_last = step > 0 && is_small(problem, d, normal);
+        *state = moved(problem, state, d);
+        weigh(problem, table);
+        gather(problem, state, table, normal);
+        if (is_last) return true;
     }
     return false;
 }
@@ -231,12 +275,15 @@ RfLocaliseOutcome rf_localise(const RfLocaliser *localiser, const RfPatchPixel *
     Problem problem = {localiser, pixels, n_pixels, n,
                        OFFSET_PRIOR * OFFSET_PRIOR * localiser->var_factor * mean_var(pixels, n_pixels)};
     State state = {0};
-    float weights[RF_LOCALISE_MOST_PIXELS];
-    memcpy(state.spots, spots, n * sizeof *spots);
-    bool is_converged = descend(&problem, &state, weights);
+    PixelTable table;
     Normal normal;
-    weigh(&problem, &state, weights);
-    gather(&problem, &state, weights, true, &normal);
+    memcpy(state.spots, spots, n * sizeof *spots);
+    State start = state;
+    bool is_converged = hurry(&problem, &state, &table, &normal);
+    if (!is_converged) {
+        state = start;
+        is_converged = alternate(&problem, &state, &table, &normal);
+    }
     outcome.is_converged = is_converged && fill_covariance(&problem, &state, &normal);
     outcome.chi_square = normal.chi_square;
     outcome.offset = state.offset;

@@ -99,6 +99,13 @@ static RfWindow collect(RfSpotFitter *fitter, const RfExposureView *view, const 
     return rf_spot_window_collect(view, discs, n, fitter->pixels);
 }
 
+static double widest(const RfSpotFit *fits, unsigned n)
+{
+    double width = 0;
+    for (unsigned i = 0; i < n; i++) width = fmax(width, fits[i].width_px);
+    return width;
+}
+
 /* Fits twice: the second window suits the width that the first one found. */
 static RfLocaliseOutcome fit_group(RfSpotFitter *fitter, const RfFitterSettings *settings,
                                    const RfExposureView *view, Group *group, RfWindow *window)
@@ -107,10 +114,10 @@ static RfLocaliseOutcome fit_group(RfSpotFitter *fitter, const RfFitterSettings 
     RfLocaliseOutcome outcome = {0};
     for (unsigned i = 0; i < group->n; i++) fits[i] = group->members[i].fit;
     for (int round = 0; round < 2; round++) {
-        double before = fits[0].width_px;
+        double before = widest(fits, group->n);
         *window = collect(fitter, view, fits, group->n);
         outcome = rf_localise(&settings->localiser, fitter->pixels, window->n, fits, group->n);
-        if (group->n == 1 && round == 0 && fabs(fits[0].width_px - before) < 0.1 * before) break;
+        if (fabs(widest(fits, group->n) - before) < 0.15 * before) break;
     }
     for (unsigned i = 0; i < group->n; i++) group->members[i].fit = fits[i];
     return outcome;

@@ -4,13 +4,14 @@
 #include <math.h>
 
 enum {
-    ROWS = 44,     /* widths of 1, 1.1, ... times the focus width */
-    PER_UNIT = 16, /* table steps per focus width along the radius */
-    ENTRIES = 16 * PER_UNIT,
+    ROWS = 44, /* relative widths w with w^2 = 1 + ROW_STEP * row^2 */
+    PER_UNIT = RF_SPOT_SHAPE_PER_UNIT,
+    ENTRIES = RF_SPOT_SHAPE_ENTRIES,
     SLICES = 48, /* of the disc's radius, for Simpson's rule */
     NUMBERS = 2, /* value, slope */
 };
-static const double WIDTH_STEP = 0.1; /* of the focus width, from row to row */
+/* Between rows the table is linear in w^2, in which a barely blurred spot is linear too: no kink where discs begin. */
+static const double ROW_STEP = 0.014;
 
 struct RfSpotShape {
     double focus_width_px;
@@ -47,7 +48,7 @@ RfSpotShape *rf_spot_shape_new(double focus_width_px)
     RfSpotShape *shape = g_new0(RfSpotShape, 1);
     shape->focus_width_px = focus_width_px;
     for (int row = 0; row < ROWS; row++) {
-        double width = 1 + row * WIDTH_STEP, disc = 2 * sqrt(width * width - 1);
+        double disc = 2 * row * sqrt(ROW_STEP);
         for (int i = 0; i <= ENTRIES; i++) {
             double value, slope_over_u;
             smoothed_disc((double)i / PER_UNIT, disc, &value, &slope_over_u);
@@ -70,44 +71,22 @@ double rf_spot_shape_focus_width_px(const RfSpotShape *shape)
 
 double rf_spot_shape_widest_px(const RfSpotShape *shape)
 {
-    return shape->focus_width_px * (1 + (ROWS - 1) * WIDTH_STEP);
+    return shape->focus_width_px * sqrt(1 + ROW_STEP * (ROWS - 1) * (ROWS - 1));
 }
 
 RfSpotProfile rf_spot_shape_profile(const RfSpotShape *shape, double width_px)
 {
-    double relative = width_px / shape->focus_width_px;
-    double at = CLAMP((relative - 1) / WIDTH_STEP, 0.0, ROWS - 1.0);
-    int row = MIN((int)at, ROWS - 2);
+    double relative = width_px / shape->focus_width_px, blur = MAX(0.0, relative * relative - 1);
+    int row = MIN((int)sqrt(blur / ROW_STEP), ROWS - 2);
+    double interval = ROW_STEP * (2 * row + 1);
     bool is_sharp = relative <= 1;
     return (RfSpotProfile){
         .row = shape->table[row][0],
         .wider_row = shape->table[row + 1][0],
-        .part = (float)(at - row),
+        .part = (float)MIN(1.0, (blur - ROW_STEP * row * row) / interval),
         .per_scale = (float)(1 / (is_sharp ? width_px : shape->focus_width_px)),
         .width_px = (float)width_px,
-        .step_px = (float)(WIDTH_STEP * shape->focus_width_px),
+        .step_px = (float)(interval * shape->focus_width_px / (2 * relative)),
         .is_sharp = is_sharp,
     };
-}
-
-RfSpotValue rf_spot_profile_at(const RfSpotProfile *profile, float r2_px2)
-{
-    float u = sqrtf(r2_px2) * profile->per_scale, at = u * PER_UNIT;
-    if (at >= ENTRIES) return (RfSpotValue){0};
-    int i = (int)at;
-    float t = at - (float)i;
-    const float *a = profile->row + NUMBERS * i, *b = profile->wider_row + NUMBERS * i;
-    float value = a[0] + t * (a[2] - a[0]), slope = a[1] + t * (a[3] - a[1]);
-    RfSpotValue out;
-    if (profile->is_sharp) {
-        out.value = value;
-        out.per_width = -u * u * slope * profile->per_scale;
-    } else {
-        float wider = b[0] + t * (b[2] - b[0]), wider_slope = b[1] + t * (b[3] - b[1]);
-        out.value = value + profile->part * (wider - value);
-        out.per_width = (wider - value) / profile->step_px;
-        slope += profile->part * (wider_slope - slope);
-    }
-    out.per_r2 = slope * profile->per_scale * profile->per_scale;
-    return out;
 }

@@ -5,6 +5,7 @@
 #pragma once
 
 #include <glib.h>
+#include <math.h>
 #include <stdbool.h>
 
 typedef struct RfSpotShape RfSpotShape;
@@ -37,4 +38,29 @@ typedef struct {
     float value, per_r2, per_width;
 } RfSpotValue;
 
-RfSpotValue rf_spot_profile_at(const RfSpotProfile *profile, float r2_px2);
+enum {
+    RF_SPOT_SHAPE_PER_UNIT = 16,                         /* table steps per focus width along the radius */
+    RF_SPOT_SHAPE_ENTRIES = 16 * RF_SPOT_SHAPE_PER_UNIT, /* each a value and a slope */
+};
+
+static inline RfSpotValue rf_spot_profile_at(const RfSpotProfile *profile, float r2_px2)
+{
+    float u = sqrtf(r2_px2) * profile->per_scale, at = u * RF_SPOT_SHAPE_PER_UNIT;
+    RfSpotValue out = {0, 0, 0};
+    if (at >= RF_SPOT_SHAPE_ENTRIES) return out;
+    int i = (int)at;
+    float t = at - (float)i;
+    const float *a = profile->row + 2 * i, *b = profile->wider_row + 2 * i;
+    float value = a[0] + t * (a[2] - a[0]), slope = a[1] + t * (a[3] - a[1]);
+    if (profile->is_sharp) {
+        out.value = value;
+        out.per_width = -u * u * slope * profile->per_scale;
+    } else {
+        float wider = b[0] + t * (b[2] - b[0]), wider_slope = b[1] + t * (b[3] - b[1]);
+        out.value = value + profile->part * (wider - value);
+        out.per_width = (wider - value) / profile->step_px;
+        slope += profile->part * (wider_slope - slope);
+    }
+    out.per_r2 = slope * profile->per_scale * profile->per_scale;
+    return out;
+}
