@@ -13,7 +13,7 @@ const RfChargeUnitOptions RF_CHARGE_UNIT_DEFAULTS = {
     .high_coulomb = 0.0,
     .relative_floor = 0.002,
     .relative_common = 0.0,
-    .trials = 999,
+    .trials = 199,
     .seed = 1909, /* any would do; the year of the first oil drops */
     .wants_curve = false,
 };

@@ -41,7 +41,7 @@ typedef struct {
     bool wants_curve;
 } RfChargeUnitOptions;
 
-/* 2e-20 C up to the largest charge, floor 0.002, common 0, 999 trials, a fixed seed, no curve. */
+/* 2e-20 C up to the largest charge, floor 0.002, common 0, 199 trials, a fixed seed, no curve. */
 extern const RfChargeUnitOptions RF_CHARGE_UNIT_DEFAULTS;
 
 typedef struct {
