@@ -2,6 +2,8 @@
 
 #include <math.h>
 
+#include "physics/noise_memory.h"
+
 typedef struct {
     const RfTrail *trails;
     const RfDropletSetSettings *settings;
@@ -142,6 +144,16 @@ static void fit_common_drift(const Work *work)
     drift->fall_rms_m_s = fit_drift_axis(work, true, drift->fall_time_s, drift->fall_m_s, &drift->fall_p);
 }
 
+static void estimate_memory(const Work *work)
+{
+    size_t n = work->set->n;
+    RfDropletModel model = model_of(work);
+    g_autofree RfDropletFit *fits = g_new(RfDropletFit, n);
+    for (size_t i = 0; i < n; i++) fits[i] = work->set->droplets[i].fit;
+    rf_noise_memory_estimate(work->trails, fits, n, &model, &work->set->fall_memory,
+                             &work->set->across_memory);
+}
+
 RfDropletSet *rf_droplet_set_measure(const RfTrail *trails, size_t n, const RfDropletSetSettings *settings,
                                      GError **error)
 {
@@ -156,6 +168,7 @@ RfDropletSet *rf_droplet_set_measure(const RfTrail *trails, size_t n, const RfDr
     for_each(settings, n, measure_one, &work);
     refine_switches(&work);
     fit_common_drift(&work);
+    estimate_memory(&work);
     work.is_last = true;
     for_each(settings, n, measure_one, &work);
     refine_switches(&work);
