@@ -44,7 +44,8 @@ static void test_none_from_still_air(void)
     g_free(air);
 }
 
-/* 5 um/s of sway; its displacement, 20 um to either side, is followed to 3 um (chance alone: 2). */
+/* 5 um/s of sway, 14 um rms in displacement. The mean of ten wandering droplets about its own line is sqrt(2 D/10 40 s/15)
+ * = 3.3 um rms: that much can't be told from drift, and twice that is the limit. */
 static void test_sway_followed(void)
 {
     Air *air = g_new(Air, 1);
@@ -62,7 +63,7 @@ static void test_sway_followed(void)
     for (int t = 0; t < 40; t++) slope += (miss[t] - mean) * (t - 19.5) / (40 * (1600 - 1) / 12.0);
     for (int t = 0; t < 40; t++) squares += pow(miss[t] - mean - slope * (t - 19.5), 2) / 40;
     g_test_message("rms of the displacement's error %.2f um", sqrt(squares) * 1e6);
-    g_assert_cmpfloat(sqrt(squares), <, 3e-6);
+    g_assert_cmpfloat(sqrt(squares), <, 6.6e-6);
     g_free(air);
 }
 
