@@ -18,8 +18,9 @@ char *rf_simulate_truth_paths(const RfRecord *record)
             const RfSeenAt *at = &g_array_index(seen, RfSeenAt, i);
             double bound_px = isfinite(at->bound_px) ? MIN(at->bound_px, 99) : 99;
             g_string_append_printf(out, "%u,%" G_GINT64_FORMAT ",%.6f,%.4f,%.4f,%d,%.2f,%d,%d,%.4f\n",
-                                   droplet->number, at->frame, at->time_s, at->px.x, at->px.y, at->is_visible,
-                                   at->snr, at->field, at->is_repeated, bound_px);
+                                   droplet->number, at->frame, at->time_s, at->px.x, at->px.y,
+                                   at->is_visible && !at->is_repeated, at->snr, at->field, at->is_repeated,
+                                   bound_px);
         }
     }
     return g_string_free(out, FALSE);

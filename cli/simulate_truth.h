@@ -1,7 +1,7 @@
 /* The truth beside a synthetic recording, as text: one function per file. Not for writing: the caller puts them into
  * the result folder. All return new strings; numbers of droplets, spells and switches count from 1.
  *   paths     every droplet in every exposure between its first and last sight; `visible` says whether it counts,
- *             `duplicate` that the picture was a repeat, bound_px what the best estimator could do
+ *             `duplicate` that the picture was a repeat and so counts for nothing, bound_px what the best estimator could do
  *   droplets  one row per spell; bounds from simulate_bounds.h, empty where nothing can be known */
 #pragma once
 
