@@ -187,10 +187,14 @@ static int descend(const Problem *problem, State *state, PixelTable *table, Norm
         bool is_last = is_small(problem, d, normal);
         State next = moved(problem, state, d);
         gather(problem, &next, table, &trial);
+        /* where widths of the table meet, slopes jump a little: such steps may go to and fro for nothing */
+        is_last |= fabs(trial.cost - normal->cost) < 3e-4;
         if (trial.cost <= normal->cost * (1 + 1e-9)) {
             *state = next;
             *normal = trial;
             damping = MAX(damping / 6, 1e-7);
+        } else if (damping > 1e3) {
+            return step; /* nothing better in any direction: a minimum to the accuracy of the table */
         } else {
             damping *= 8;
         }
