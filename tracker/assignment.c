@@ -9,7 +9,7 @@
 typedef struct {
     int rows, columns; /* columns without the dummies */
     int width;         /* columns + rows + 1: index 0 is the search's own start */
-    double *cost;      /* [row * columns + column], INFINITY where forbidden */
+    double *cost;      /* [row * columns + column], HUGE_VAL where forbidden */
     double leftover_cost;
     double *row_potential, *column_potential, *shortest;
     int *row_of_column, *way_back;
@@ -24,7 +24,7 @@ static Table *table_new(int rows, int columns, double leftover_cost)
     t->width = columns + rows + 1;
     t->leftover_cost = leftover_cost;
     t->cost = g_new(double, (size_t)rows *(size_t)columns);
-    for (size_t i = 0; i < (size_t)rows * (size_t)columns; i++) t->cost[i] = INFINITY;
+    for (size_t i = 0; i < (size_t)rows * (size_t)columns; i++) t->cost[i] = HUGE_VAL;
     t->row_potential = g_new0(double, rows + 1);
     t->column_potential = g_new0(double, t->width);
     t->shortest = g_new(double, t->width);
@@ -57,7 +57,7 @@ static double table_cost(const Table *t, int row, int column)
 static int scan_row(Table *t, int from_column, double *step)
 {
     int row = t->row_of_column[from_column], nearest = 0;
-    *step = INFINITY;
+    *step = HUGE_VAL;
     for (int j = 1; j < t->width; j++) {
         if (t->is_done[j]) continue;
         double reduced = table_cost(t, row, j) - t->row_potential[row] - t->column_potential[j];
@@ -90,7 +90,7 @@ static void augment(Table *t, int row)
 {
     t->row_of_column[0] = row;
     for (int j = 0; j < t->width; j++) {
-        t->shortest[j] = INFINITY;
+        t->shortest[j] = HUGE_VAL;
         t->is_done[j] = false;
     }
     int column = 0;
@@ -204,7 +204,7 @@ static double sum_of_costs(const Work *w, size_t n_edges)
     double sum = 0;
     for (int row = 0; row < w->n_rows; row++) sum += w->column_of_row[row] < 0 ? w->leftover_cost : 0;
     g_autofree double *taken = g_new(double, w->n_rows + 1);
-    for (int row = 0; row < w->n_rows; row++) taken[row] = INFINITY;
+    for (int row = 0; row < w->n_rows; row++) taken[row] = HUGE_VAL;
     for (size_t e = 0; e < n_edges; e++)
         if (w->column_of_row[w->edges[e].row] == w->edges[e].column)
             taken[w->edges[e].row] = fmin(taken[w->edges[e].row], w->edges[e].cost);

@@ -1,6 +1,10 @@
 #include "tracker/chain.h"
 
+#include <limits.h>
 #include <math.h>
+
+/* The wandering of velocity and response makes an end forget what lies further back. */
+enum { remembered_hits = 400 };
 
 RfChain *rf_chain_new(const RfLinkScene *scene)
 {
@@ -73,15 +77,15 @@ static double meet(RfMotion *motion, const RfMotionModel *model, const RfSight *
     return surprise;
 }
 
-/* All hits in one direction; returns the sum of the surprises after the first hit. */
+/* The last hits_most hits in one direction; returns the sum of the surprises after the first of them. */
 static double run_filter(const RfLinkScene *scene, const RfChain *chain, const RfMotionModel *model,
-                         bool is_backward, double prior_factor, RfMotion *motion)
+                         bool is_backward, double prior_factor, unsigned hits_most, RfMotion *motion)
 {
-    unsigned n = chain->hits->len;
+    unsigned n = chain->hits->len, skipped = n > hits_most ? n - hits_most : 0;
     double sum = 0;
-    const RfHit *last = hit(chain, is_backward ? n - 1 : 0);
+    const RfHit *last = hit(chain, is_backward ? n - 1 - skipped : skipped);
     rf_motion_start(motion, model, &scene->sights[last->spot], prior_factor);
-    for (unsigned i = 1; i < n; i++) {
+    for (unsigned i = skipped + 1; i < n; i++) {
         const RfHit *h = hit(chain, is_backward ? n - 1 - i : i);
         rf_chain_carry(scene, model, motion, hit_time_s(scene, last), hit_time_s(scene, h));
         sum += meet(motion, model, &scene->sights[h->spot]);
@@ -95,7 +99,7 @@ RfMotion rf_chain_end_state(const RfLinkScene *scene, const RfChain *chain, bool
 {
     RfMotionModel model = own_model(scene, chain->spread_px2_s);
     RfMotion motion;
-    run_filter(scene, chain, &model, is_backward, prior_factor, &motion);
+    run_filter(scene, chain, &model, is_backward, prior_factor, remembered_hits, &motion);
     return motion;
 }
 
@@ -103,7 +107,7 @@ double rf_chain_log_likelihood(const RfLinkScene *scene, const RfChain *chain, d
 {
     RfMotionModel model = own_model(scene, spread_px2_s);
     RfMotion motion;
-    return -run_filter(scene, chain, &model, false, 1, &motion);
+    return -run_filter(scene, chain, &model, false, 1, UINT_MAX, &motion);
 }
 
 void rf_chain_learn_spread(const RfLinkScene *scene, RfChain *chain)
