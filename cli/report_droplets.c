@@ -33,9 +33,11 @@ static void multiple_cell(GString *out, const RfDropletRow *row)
                                ABS(row->units));
     else
         g_string_append(out, "–");
-    if (row->has_charge) {
-        g_string_append(out, " <small class=\"soft\">p ");
-        rf_text_number_append_fixed(out, row->units_probability, row->units_probability > 0.99 ? 4 : 2);
+    if (row->has_charge && row->units_probability > 0.999) {
+        g_string_append(out, " <small class=\"soft\">p &gt; 0.999</small>");
+    } else if (row->has_charge) {
+        g_string_append(out, " <small class=\"soft\">p = ");
+        rf_text_number_append_fixed(out, row->units_probability, row->units_probability > 0.99 ? 3 : 2);
         g_string_append(out, "</small>");
     }
     g_string_append(out, "</td>");

@@ -54,7 +54,7 @@ static void limit_fact(GString *out, const RfResults *results)
     g_string_append(out, "</dd><dd class=\"note\">Adds ");
     rf_report_text_percent(out, limit->charge_relative_u);
     g_string_append(out, " to a typical charge");
-    if (limit->stated && *limit->stated) {
+    if (limit->is_common && limit->stated && *limit->stated) {
         g_string_append(out, "; used: ");
         rf_report_text(out, limit->stated);
     }

@@ -2,21 +2,32 @@
 #include "cli/text_number.h"
 #include "cli/version.h"
 
-static void budget_row(GString *out, const RfBudgetRow *row)
+static void percent_cell(GString *out, bool is_there, double fraction)
+{
+    g_string_append(out, "<td class=\"number\">");
+    if (is_there)
+        rf_report_text_percent(out, fraction);
+    else
+        g_string_append(out, "–");
+    g_string_append(out, "</td>");
+}
+
+static bool has_monte_carlo(const GArray *rows)
+{
+    for (guint i = 0; i < rows->len; i++)
+        if (g_array_index(rows, RfBudgetRow, i).charge_relative_u_mc >= 0) return true;
+    return false;
+}
+
+static void budget_row(GString *out, const RfBudgetRow *row, bool with_mc)
 {
     g_string_append(out, "<tr><th scope=\"row\">");
     rf_report_text(out, row->input);
     g_string_append(out, "</th>");
     rf_report_text_cell(out, false, row->stated);
-    const double parts[] = {row->relative_u, row->charge_relative_u, row->charge_relative_u_mc};
-    for (size_t i = 0; i < G_N_ELEMENTS(parts); i++) {
-        g_string_append(out, "<td class=\"number\">");
-        if (parts[i] >= 0)
-            rf_report_text_percent(out, parts[i]);
-        else
-            g_string_append(out, "–");
-        g_string_append(out, "</td>");
-    }
+    percent_cell(out, row->relative_u > 0, row->relative_u);
+    percent_cell(out, true, row->charge_relative_u);
+    if (with_mc) percent_cell(out, row->charge_relative_u_mc >= 0, row->charge_relative_u_mc);
     rf_report_text_cell(out, false, row->is_common ? "all droplets" : "each droplet");
     g_string_append(out, "</tr>\n");
 }
@@ -28,16 +39,19 @@ void rf_report_budget(GString *out, const RfResults *results, const RfFigureSet 
     g_string_append(out, "<p>For a typical accepted droplet. Parts shared by all droplets don’t average out "
                          "over them; a droplet’s own "
                          "part does.</p>\n");
+    const bool with_mc = has_monte_carlo(results->budget);
     rf_report_text_figure(out, figures, "budget",
-                          "Bars: analytic propagation (JCGM 100). Diamonds: Monte Carlo (JCGM 101).");
-    rf_report_text_table(out, "Table of the uncertainty budget",
-                         "<th scope=\"col\">Input</th><th scope=\"col\">Value used</th><th scope=\"col\" "
-                         "class=\"number\">u of the input</th>"
-                         "<th scope=\"col\" class=\"number\">u in the charge</th><th scope=\"col\" "
-                         "class=\"number\">by Monte Carlo</th>"
-                         "<th scope=\"col\">Shared by</th>");
+                          with_mc ? "Bars: analytic propagation (JCGM 100). Diamonds: Monte Carlo (JCGM 101)."
+                                  : "Bars: analytic propagation (JCGM 100).");
+    g_autofree char *head =
+        g_strconcat("<th scope=\"col\">Input</th><th scope=\"col\">Value used</th>"
+                    "<th scope=\"col\" class=\"number\">u of the input</th>"
+                    "<th scope=\"col\" class=\"number\">u in the charge</th>",
+                    with_mc ? "<th scope=\"col\" class=\"number\">by Monte Carlo</th>" : "",
+                    "<th scope=\"col\">Shared by</th>", NULL);
+    rf_report_text_table(out, "Table of the uncertainty budget", head);
     for (guint i = 0; i < results->budget->len; i++)
-        budget_row(out, &g_array_index(results->budget, RfBudgetRow, i));
+        budget_row(out, &g_array_index(results->budget, RfBudgetRow, i), with_mc);
     rf_report_text_table_end(out);
     rf_report_text_close(out);
 }
@@ -54,6 +68,13 @@ static void fact(GString *out, const char *name, const char *format, ...)
     g_string_append(out, "</tr>\n");
 }
 
+static char *fixed_text(double value, int decimals)
+{
+    GString *text = g_string_new(NULL);
+    rf_text_number_append_fixed(text, value, decimals);
+    return g_string_free(text, FALSE);
+}
+
 static void recording(GString *out, const RfResults *results)
 {
     const RfScaleRow *scale = &results->scale;
@@ -61,14 +82,18 @@ static void recording(GString *out, const RfResults *results)
     rf_report_text_table(out, "Recording and scale",
                          "<th scope=\"col\">What</th><th scope=\"col\">Found</th>");
     if (results->recording_summary) fact(out, "Recording", "%s", results->recording_summary);
-    fact(out, "Used", "%" G_GINT64_FORMAT " frames, %.2f s", results->frames, results->duration_s);
-    fact(out, "Gravity in the picture", "%.2f° from the picture’s upright", results->gravity_axis_deg);
+    g_autofree char *duration = fixed_text(results->duration_s, 2),
+                    *axis = fixed_text(results->gravity_axis_deg, 2);
+    fact(out, "Used", "%" G_GINT64_FORMAT " frames, %s s", results->frames, duration);
+    fact(out, "Gravity in the picture", "%s° from the picture’s upright", axis);
     if (scale->found) {
         g_autofree char *x = rf_text_number_concise((RfValue){scale->px_per_mm_x, scale->u_px_per_mm_x});
         g_autofree char *y = rf_text_number_concise((RfValue){scale->px_per_mm_y, scale->u_px_per_mm_y});
-        fact(out, "Scale", "%s px/mm across, %s px/mm upright, turned by %.3f°", x, y, scale->rotation_deg);
-        fact(out, "Reticle", "%u lines in %s, residual %.3f px rms", scale->lines_found,
-             scale->source ? scale->source : "the reticle", scale->residual_px);
+        g_autofree char *turn = fixed_text(scale->rotation_deg, 3),
+                        *residual = fixed_text(scale->residual_px, 3);
+        fact(out, "Scale", "%s px/mm across, %s px/mm upright, turned by %s°", x, y, turn);
+        fact(out, "Reticle", "%u lines in %s, residual %s px rms", scale->lines_found,
+             scale->source ? scale->source : "the reticle", residual);
     } else {
         fact(out, "Scale", "not found");
     }

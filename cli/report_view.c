@@ -39,55 +39,89 @@ static bool is_accepted(const RfResults *results, unsigned droplet)
     return false;
 }
 
-static void path(GString *out, const RfResults *results, const RfPathRow *rows, guint n, double text_px)
+static void attribute(GString *out, const char *name, double value)
 {
-    const unsigned droplet = rows->droplet, hue = (droplet - 1) % RF_FIGURE_HUES + 1;
-    double apart = 1;
-    while (thin(rows, n, results->pixel_aspect, apart, NULL) > MOST_POINTS) apart *= 1.5;
-    g_autoptr(GString) points = g_string_new(NULL);
-    thin(rows, n, results->pixel_aspect, apart, points);
+    g_string_append_printf(out, " %s=\"", name);
+    rf_text_number_append_fixed(out, value, 1);
+    g_string_append_c(out, '"');
+}
+
+static void open_mark(GString *out, const RfResults *results, unsigned droplet)
+{
     const bool is_good = is_accepted(results, droplet);
     g_string_append_printf(out, "<g class=\"mark%s\" data-droplet=\"%u\"><title>droplet %u, %s</title>",
                            is_good ? "" : " aside", droplet, droplet, is_good ? "accepted" : "set aside");
-    g_string_append_printf(
-        out, "<polyline class=\"hit\" points=\"%s\"/><polyline class=\"line hue-%u\" points=\"%s\"/>",
-        points->str, hue, points->str);
-    g_string_append_printf(out, "<circle class=\"ink-%u\" r=\"%.1f\" cx=\"", hue, text_px / 4);
-    rf_text_number_append_fixed(out, rows->x_px * results->pixel_aspect, 1);
-    g_string_append(out, "\" cy=\"");
-    rf_text_number_append_fixed(out, rows->y_px, 1);
-    g_string_append_printf(out, "\"/><text class=\"ink-%u\" x=\"", hue);
-    rf_text_number_append_fixed(out, rows->x_px * results->pixel_aspect + text_px * 0.5, 1);
-    g_string_append(out, "\" y=\"");
-    rf_text_number_append_fixed(out, rows->y_px - text_px * 0.3, 1);
-    g_string_append_printf(out, "\">%u</text></g>\n", droplet);
 }
 
+/* The line, and the same line again, wide and unseen, so that a finger can hit it. */
+static void line(GString *out, const RfResults *results, const RfPathRow *rows, guint n)
+{
+    double apart = 1;
+    while (thin(rows, n, results->pixel_aspect, apart, NULL) > MOST_POINTS) apart *= 1.5;
+    open_mark(out, results, rows->droplet);
+    g_string_append_printf(out, "<polyline id=\"path-%u\" class=\"line hue-%u\" points=\"", rows->droplet,
+                           (rows->droplet - 1) % RF_FIGURE_HUES + 1);
+    thin(rows, n, results->pixel_aspect, apart, out);
+    g_string_append_printf(out, "\"/><use class=\"hit\" href=\"#path-%u\"/></g>\n", rows->droplet);
+}
+
+/* Where the path begins: a dot, and the number beside it, never outside the picture. */
+static void label(GString *out, const RfResults *results, const RfPathRow *first, double text_px)
+{
+    const unsigned hue = (first->droplet - 1) % RF_FIGURE_HUES + 1;
+    const double x = first->x_px * results->pixel_aspect,
+                 right = results->width * results->pixel_aspect - 1.5 * text_px;
+    if (!isfinite(x) || !isfinite(first->y_px)) return;
+    open_mark(out, results, first->droplet);
+    g_string_append_printf(out, "<circle class=\"ink-%u\"", hue);
+    attribute(out, "r", text_px / 4);
+    attribute(out, "cx", x);
+    attribute(out, "cy", first->y_px);
+    g_string_append_printf(out, "/><text class=\"ink-%u\"", hue);
+    attribute(out, "x", CLAMP(x + text_px * 0.5, 0, fmax(right, 0)));
+    attribute(out, "y", CLAMP(first->y_px - text_px * 0.3, text_px, results->height));
+    g_string_append_printf(out, ">%u</text></g>\n", first->droplet);
+}
+
+static guint path_end(const GArray *all, guint first)
+{
+    const unsigned droplet = g_array_index(all, RfPathRow, first).droplet;
+    guint end = first;
+    while (end < all->len && g_array_index(all, RfPathRow, end).droplet == droplet) end++;
+    return end;
+}
+
+/* Lines first, so that no line hides a number. */
 static void paths(GString *out, const RfResults *results, double text_px)
 {
     const GArray *all = results->paths;
-    for (guint first = 0, next; first < all->len; first = next) {
-        const RfPathRow *rows = &g_array_index(all, RfPathRow, first);
-        for (next = first; next < all->len && g_array_index(all, RfPathRow, next).droplet == rows->droplet;)
-            next++;
-        path(out, results, rows, next - first, text_px);
+    for (guint first = 0, end; first < all->len; first = end) {
+        end = path_end(all, first);
+        line(out, results, &g_array_index(all, RfPathRow, first), end - first);
     }
+    for (guint first = 0; first < all->len; first = path_end(all, first))
+        label(out, results, &g_array_index(all, RfPathRow, first), text_px);
+}
+
+static void place(GString *out, double width, double height)
+{
+    g_string_append(out, " x=\"-0.5\" y=\"-0.5\"");
+    attribute(out, "width", width);
+    attribute(out, "height", height);
 }
 
 static void background(GString *out, const RfResults *results, double width)
 {
-    g_string_append_printf(out,
-                           "<rect x=\"-0.5\" y=\"-0.5\" width=\"%.2f\" height=\"%d\" fill=\"#0d1112\"/>\n",
-                           width, results->height);
+    g_string_append(out, "<rect fill=\"#0d1112\"");
+    place(out, width, results->height);
+    g_string_append(out, "/>\n");
     if (!results->view_png) return;
     size_t length;
     const guchar *bytes = g_bytes_get_data(results->view_png, &length);
     g_autofree char *text = g_base64_encode(bytes, length);
-    g_string_append_printf(
-        out,
-        "<image x=\"-0.5\" y=\"-0.5\" width=\"%.2f\" height=\"%d\" preserveAspectRatio=\"none\" "
-        "href=\"data:image/png;base64,%s\"/>\n",
-        width, results->height, text);
+    g_string_append(out, "<image preserveAspectRatio=\"none\"");
+    place(out, width, results->height);
+    g_string_append_printf(out, " href=\"data:image/png;base64,%s\"/>\n", text);
 }
 
 void rf_report_view(GString *out, const RfResults *results)
@@ -95,12 +129,13 @@ void rf_report_view(GString *out, const RfResults *results)
     if (results->width <= 0 || results->height <= 0) return;
     const double width = results->width * results->pixel_aspect, text_px = results->height / 32.0;
     rf_report_text_open(out, "view", "The view, and the paths in it");
-    g_string_append_printf(
-        out,
-        "<figure><svg class=\"view\" role=\"img\" aria-label=\"The recording’s fixed background with the "
-        "path of "
-        "every droplet drawn over it\" viewBox=\"-0.5 -0.5 %.2f %d\" font-size=\"%.1f\">\n",
-        width, results->height, text_px);
+    g_string_append(out, "<figure><svg class=\"view\" role=\"img\" aria-label=\"The recording’s fixed "
+                         "background with the path of every "
+                         "droplet drawn over it\" viewBox=\"-0.5 -0.5 ");
+    rf_text_number_append_fixed(out, width, 2);
+    g_string_append_printf(out, " %d\"", results->height);
+    attribute(out, "font-size", text_px);
+    g_string_append(out, ">\n");
     background(out, results, width);
     paths(out, results, text_px);
     g_string_append(out, "</svg><figcaption class=\"caption\">A dot and the droplet’s number stand where its "
