@@ -172,7 +172,7 @@ static void write_entry(Notebook *book, const Act *act, Finding finding, Noted n
     g_array_append_val(book->starts, act->start_s);
     g_string_append_printf(book->timings, "%d,%c,%s,%d,%s,%.0f,%.2f\n", book->entry, noted.label,
                            act->is_fall ? "fall" : "rise", noted.divisions, noted.time_text,
-                           noted_voltage(book, act->start_s), MAX(start_s, 0));
+                           noted_voltage(book, act->start_s), MAX(start_s, 0) + book->scene->hand_clock_s);
     g_string_append_printf(book->truth, "%d,%u,%.4f,%s,%d,%s\n", book->entry, act->droplet->number,
                            act->end_s - act->start_s, finding_names[finding], act->divisions, noted.note);
 }
@@ -326,7 +326,7 @@ static void note_unmatched(Notebook *book)
     int divisions = 1 + pick_int(book, MOST_DIVISIONS);
     book->entry++;
     g_string_append_printf(book->timings, "%d,Z,fall,%d,%.2f,0,%.2f\n", book->entry, divisions, took_s,
-                           book->record->last_s + pick(book, 10, 40));
+                           book->record->last_s + pick(book, 10, 40) + book->scene->hand_clock_s);
     g_string_append_printf(book->truth, "%d,,%.4f,%s,%d,\n", book->entry, took_s, finding_names[UNMATCHED],
                            divisions);
 }

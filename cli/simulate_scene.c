@@ -95,6 +95,7 @@ static const Key keys[] = {
     {"log", "noise", KEY_NUMBER, AT(log_noise_v), "V", 0, 1000, "0.2 V", NULL},
     {"hand", "entries", KEY_COUNT, AT(entries), NULL, 0, 1e6, "0", NULL},
     {"hand", "bias", KEY_NUMBER, AT(hand_bias_s), "s", -5, 5, "0.02 s", NULL},
+    {"hand", "clock_offset", KEY_NUMBER, AT(hand_clock_s), "s", -1e6, 1e6, "0 s", NULL},
     {"hand", "spread", KEY_NUMBER, AT(hand_spread_s), "s", 0, 5, "0.10 s", NULL},
     {"hand", "line_miscount", KEY_COUNT, AT(line_miscounts), NULL, 0, 1e5, "0", NULL},
     {"hand", "digit_slip", KEY_COUNT, AT(digit_slips), NULL, 0, 1e5, "0", NULL},

@@ -105,7 +105,8 @@ typedef struct {
     double log_offset_s, log_noise_v;
     /* [hand] */
     int entries, line_miscounts, digit_slips, other_droplets, disagreements, switched_inside, unmatched;
-    double hand_bias_s, hand_spread_s;
+    double hand_bias_s, hand_spread_s,
+        hand_clock_s; /* clock: what the person's shows less the recording's time */
     /* [video] */
     RfSceneCodec codec;
     int quality; /* crf or quantiser; ignored by ffv1 */

@@ -194,6 +194,10 @@ char *rf_simulate_truth_scale(const RfRecord *record, const RfWorld *world, cons
         g_string_append_printf(out, "%.12g", scene->log_offset_s);
     else
         g_string_append(out, "null");
+    if (scene->entries > 0)
+        g_string_append_printf(
+            out, ",\n \"hand_bias_s\": %.12g,\n \"hand_spread_s\": %.12g,\n \"hand_clock_s\": %.12g",
+            scene->hand_bias_s, scene->hand_spread_s, scene->hand_clock_s);
     g_string_append_printf(out,
                            ",\n \"sign_known\": %s,\n \"frames\": %" G_GINT64_FORMAT
                            ",\n \"duration_s\": %.12g,\n \"unit_charge_C\": 1.602176634e-19\n}\n",
