@@ -8,7 +8,10 @@
 #include "calib/line_fit.h"
 #include "calib/line_pieces.h"
 
-G_DEFINE_QUARK(rf - length - scale - error - quark, rf_length_scale_error)
+GQuark rf_length_scale_error_quark(void)
+{
+    return g_quark_from_static_string("rf-length-scale-error-quark");
+}
 
 static const int least_size_px = 32;
 static const double steepest = 0.27; /* tan 15 degrees, in square pixels */
@@ -137,7 +140,6 @@ static bool find_family(const RfPicture *picture, bool is_horizontal, double pix
                         GError **error)
 {
     RfLinePlane plane = turn_plane(picture, is_horizontal);
-    g_autofree float *pixels = plane.v;
     *family = (Family){.is_horizontal = is_horizontal};
     unsigned peaks = rf_line_family_find(
         &plane, is_horizontal ? steepest * pixel_aspect : steepest / pixel_aspect, &family->comb);
@@ -148,7 +150,9 @@ static bool find_family(const RfPicture *picture, bool is_horizontal, double pix
         family->pieces = rf_line_pieces_locate(&plane, &family->comb, &family->width_px);
         count_lines(family);
     }
-    return check_lines(&plane, family, error);
+    bool is_good = check_lines(&plane, family, error);
+    g_free(plane.v);
+    return is_good;
 }
 
 /* From the turned plane's stored pixels to square pixels about the picture's centre. */

@@ -246,20 +246,24 @@ static Comb best_comb(const GArray *peaks)
     return best;
 }
 
+/* Leaves the levelled profile along the best slope. */
+static double find_slope(const RfLinePlane *flat, double steepest, Profile *profile)
+{
+    double step = 3.0 / (block_px * flat->along); /* the ends are off by 0.75 px at most */
+    double slope = best_slope(flat, profile, -steepest, steepest, step);
+    slope = best_slope(flat, profile, slope - step, slope + step, step / 5.0);
+    sum_along(flat, slope, profile);
+    level_profile(profile);
+    return slope;
+}
+
 unsigned rf_line_family_find(const RfLinePlane *plane, double steepest, RfLineComb *out)
 {
     RfLinePlane flat = flatten(plane);
-    g_autofree float *pixels = flat.v;
-    clip(&flat);
     Profile profile = {plane->across, g_new0(double, (size_t)plane->across),
                        g_new0(int, (size_t)plane->across)};
-    g_autofree double *mean = profile.mean;
-    g_autofree int *count = profile.count;
-    double step = 3.0 / plane->along; /* the ends are off by 0.75 px at most */
-    double slope = best_slope(&flat, &profile, -steepest, steepest, step);
-    slope = best_slope(&flat, &profile, slope - step, slope + step, step / 5.0);
-    sum_along(&flat, slope, &profile);
-    level_profile(&profile);
+    clip(&flat);
+    double slope = find_slope(&flat, steepest, &profile);
     double sign = line_sign(&flat, &profile);
     g_autoptr(GArray) peaks = find_peaks(&flat, &profile, sign);
     Comb comb = best_comb(peaks);
@@ -267,9 +271,9 @@ unsigned rf_line_family_find(const RfLinePlane *plane, double steepest, RfLineCo
                         .period_px = comb.period_px,
                         .slope = slope,
                         .middle_px = 0.5 * (flat.along * block_px - 1),
-                        .lowest = comb.lowest,
-                        .highest = comb.highest,
-                        .is_dark = sign < 0.0,
-                        .peaks = peaks->len};
+                        .is_dark = sign < 0.0};
+    g_free(flat.v);
+    g_free(profile.mean);
+    g_free(profile.count);
     return peaks->len < 2 || comb.score == G_MININT ? MIN(peaks->len, 1) : peaks->len;
 }

@@ -16,9 +16,7 @@ typedef struct {
 /* Where the lines are expected once the family is known: across = first + index * period + slope * (along - middle). */
 typedef struct {
     double first_px, period_px, slope, middle_px;
-    int lowest, highest; /* indices that were seen as peaks */
     bool is_dark;
-    unsigned peaks;
 } RfLineComb;
 
 /* Angle, period and phase from sums along the lines; slopes up to `steepest`. Returns the number of lines seen: with fewer than 2

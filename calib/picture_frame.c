@@ -89,7 +89,7 @@ static bool step_towards(const RfPictureFrame *f, RfMetre goal, RfPixel *guess, 
 bool rf_picture_frame_to_picture(const RfPictureFrame *f, RfMetre at, RfPixel *out)
 {
     RfPixel guess = {0.5 * (f->width - 1), 0.5 * (f->height - 1)};
-    double step_px = INFINITY;
+    double step_px = HUGE_VAL;
     for (int i = 0; i < 50 && step_px > 1e-9; i++)
         if (!step_towards(f, at, &guess, &step_px)) return false;
     if (step_px > 1e-6 || hypot(guess.x, guess.y) > 3.0 * hypot(f->width, f->height)) return false;

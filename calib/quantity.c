@@ -5,7 +5,10 @@
 #include <string.h>
 #include <udunits2.h>
 
-G_DEFINE_QUARK(rf - quantity - error - quark, rf_quantity_error)
+GQuark rf_quantity_error_quark(void)
+{
+    return g_quark_from_static_string("rf-quantity-error-quark");
+}
 
 /* The unit system reads a few hundred definitions from disk: once per process, never freed, used under the lock alone. */
 static GMutex unit_lock;

@@ -6,7 +6,10 @@
 
 #include "calib/quantity.h"
 
-G_DEFINE_QUARK(rf - table - error - quark, rf_table_error)
+GQuark rf_table_error_quark(void)
+{
+    return g_quark_from_static_string("rf-table-error-quark");
+}
 
 static const size_t most_bytes = (size_t)1 << 30;
 

@@ -5,7 +5,10 @@
 #include <math.h>
 #include <stdlib.h>
 
-G_DEFINE_QUARK(rf - thermistor - error - quark, rf_thermistor_error)
+GQuark rf_thermistor_error_quark(void)
+{
+    return g_quark_from_static_string("rf-thermistor-error-quark");
+}
 
 typedef struct {
     double log_ohm, per_kelvin;

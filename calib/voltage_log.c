@@ -3,7 +3,10 @@
 #include <math.h>
 #include <stdlib.h>
 
-G_DEFINE_QUARK(rf - voltage - log - error - quark, rf_voltage_log_error)
+GQuark rf_voltage_log_error_quark(void)
+{
+    return g_quark_from_static_string("rf-voltage-log-error-quark");
+}
 
 static const unsigned least_samples_in_a_spell = 3;
 

@@ -9,7 +9,10 @@
 #include "cli/settings_rules.h"
 #include "cli/sheet_text.h"
 
-G_DEFINE_QUARK(rf - settings - error - quark, rf_settings_error)
+GQuark rf_settings_error_quark(void)
+{
+    return g_quark_from_static_string("rf-settings-error-quark");
+}
 
 static void used_clear(void *data)
 {
@@ -156,7 +159,7 @@ static bool read_states(const Place *place, RfSettings *settings, GError **error
                     place->value, words[i]);
         settings->states[settings->n_states++] = (RfFieldState)state;
     }
-    return true;
+    return settings->n_states > 0 || refuse_value(error, "nothing there; states such as off,top+ are needed");
 }
 
 static bool read_viscosity(const Place *place, RfSettings *settings, GError **error)

@@ -119,11 +119,13 @@ static bool read_values(RfSheetText *sheet, const char *text, GError **error)
     }
     for (unsigned i = 0; i < sheet->entries->len; i++) {
         RfSheetEntry *entry = sheet->entries->pdata[i];
-        entry->value = g_key_file_get_string(sheet->key_file, entry->group, entry->key, &why);
-        if (!entry->value) {
+        bool is_note = strcmp(entry->group, "notes") == 0; /* word for word: a backslash is a backslash */
+        entry->value = is_note ? g_key_file_get_value(sheet->key_file, entry->group, entry->key, &why)
+                               : g_key_file_get_string(sheet->key_file, entry->group, entry->key, &why);
+        if (!entry->value || why) { /* an invalid escape gives both */
             g_set_error(error, RF_SETTINGS_ERROR, RF_SETTINGS_ERROR_FILE,
                         "%s: line %u: [%s] %s: can't be read: %s", sheet->path, entry->line, entry->group,
-                        entry->key, why->message);
+                        entry->key, why ? why->message : "nothing there");
             return false;
         }
         g_strstrip(entry->value);

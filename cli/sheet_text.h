@@ -8,7 +8,7 @@
 
 typedef struct {
     char *group, *key;
-    char *value; /* with GKeyFile's escapes resolved, trimmed */
+    char *value; /* with GKeyFile's escapes resolved (but in [notes]), trimmed */
     unsigned line;
 } RfSheetEntry;
 

@@ -59,8 +59,7 @@ static void every_way_of_writing_reads_the_same(void)
         "\xef\xbb\xbftime_s;voltage_V;label\r\n1,5;300,25;a b\r\n2,5;-7;\r\n",
         "# made by hand\n\n label \tVoltage (V)\tTime [s]\n\na b\t300,25\t1,5\n\t-7\t2,5\n\n",
         "\"time_s\",\"voltage_V\",\"label\"\r\n\"1,5\",\"300,25\",\"a b\"\r\n\r\n\"2,5\",\"-7\",\"\"",
-        "label,time_s,voltage_V,,\n  # a remark\n a b , 1.5 , 300.25 ,,\n,,,,\n,2.5,\xe2\x88\x92"
-        "7,,\n",
+        "label,time_s,voltage_V,,\n  # a remark\n a b , 1.5 , 300.25 ,,\n,,,,\n,2.5,\342\210\2227,,\n",
     };
     for (size_t i = 0; i < G_N_ELEMENTS(ways); i++) {
         g_autoptr(RfTable) table = parse(ways[i]);
