@@ -58,11 +58,11 @@ typedef struct {
     double lag_px2[2][4]; /* [axis][lag]: pooled covariance of increments 0..3 exposures apart; white errors
                              give 0 beyond lag 1 */
     unsigned increments;  /* how many went in, per axis */
-} RfPathNoise;
+} RfPathErrors;
 
 typedef struct {
     GPtrArray *paths; /* of RfPath (owned) */
-    RfPathNoise noise;
+    RfPathErrors noise;
     unsigned cuts; /* joins left undone because they could not be decided */
     unsigned set_aside_short,
         set_aside_still; /* chains dropped: too little evidence; did not move like a droplet */

@@ -50,7 +50,7 @@ static RfPathPoint make_point(const RfLinkScene *scene, unsigned e, const RfSigh
     return point;
 }
 
-static void mark_seen(RfPathPoint *point, const RfSpot *spot, int index, const RfPathNoise *noise)
+static void mark_seen(RfPathPoint *point, const RfSpot *spot, int index, const RfPathErrors *noise)
 {
     point->is_seen = true;
     point->spot = index;
@@ -106,7 +106,7 @@ static void explain_ends(const RfLinkScene *scene, const RfChain *chain, RfPath 
 }
 
 static RfPath *make_path(const RfLinkScene *scene, const RfChain *chain, const RfSight *smooth,
-                         const RfPathNoise *noise)
+                         const RfPathErrors *noise)
 {
     RfPath *path = g_new0(RfPath, 1);
     unsigned first = rf_chain_first(chain), last = rf_chain_last(chain), k = 0;
@@ -126,7 +126,7 @@ static RfPath *make_path(const RfLinkScene *scene, const RfChain *chain, const R
     return path;
 }
 
-static void widen_sights(RfLinkScene *scene, const RfPathNoise *noise)
+static void widen_sights(RfLinkScene *scene, const RfPathErrors *noise)
 {
     double x = rf_path_noise_widening(noise->scale_x, noise->u_scale_x);
     double y = rf_path_noise_widening(noise->scale_y, noise->u_scale_y);
