@@ -7,6 +7,9 @@
 /* A path of two hours has a quarter of a million points; what a page can show is this many per droplet. */
 enum { MOST_POINTS = 1500 };
 
+/* From here on the numbers are set smaller, to leave the picture visible. */
+enum { MANY = 40 };
+
 static void coordinate(GString *out, double x, double y)
 {
     rf_text_number_append_fixed(out, x, 1);
@@ -91,6 +94,13 @@ static guint path_end(const GArray *all, guint first)
     return end;
 }
 
+static unsigned count_paths(const GArray *all)
+{
+    unsigned n = 0;
+    for (guint first = 0; first < all->len; first = path_end(all, first)) n++;
+    return n;
+}
+
 /* Lines first, so that no line hides a number. */
 static void paths(GString *out, const RfResults *results, double text_px)
 {
@@ -127,7 +137,8 @@ static void background(GString *out, const RfResults *results, double width)
 void rf_report_view(GString *out, const RfResults *results)
 {
     if (results->width <= 0 || results->height <= 0) return;
-    const double width = results->width * results->pixel_aspect, text_px = results->height / 32.0;
+    const double width = results->width * results->pixel_aspect,
+                 text_px = results->height / (count_paths(results->paths) > MANY ? 56.0 : 32.0);
     rf_report_text_open(out, "view", "The view, and the paths in it");
     g_string_append(out, "<figure><svg class=\"view\" role=\"img\" aria-label=\"The recording’s fixed "
                          "background with the path of every "
