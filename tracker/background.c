@@ -351,6 +351,19 @@ void rf_background_free(RfBackground *background)
     g_free(background);
 }
 
+/* The median is a better reference than one noisy frame: against it, what looked like movement may turn out as noise. */
+static void check_movement(Learning *learning, RfBackground *background)
+{
+    double noise_sd = sqrt(rf_pixel_noise_var(&background->noise, (double)background->level[0]));
+    bool is_found = register_frames(learning, background, background->level, noise_sd);
+    background->movement_rms_px = is_found ? movement(learning, background) : 0;
+    background->is_moving = background->movement_rms_px > MOVEMENT_PX;
+    if (background->is_moving) return;
+    stay_put(learning);
+    learn_levels(learning, background);
+    fit_noise(learning, background);
+}
+
 static void learn(Learning *learning, RfBackground *background)
 {
     settle_movement(learning, background);
@@ -360,10 +373,7 @@ static void learn(Learning *learning, RfBackground *background)
     }
     learn_levels(learning, background);
     fit_noise(learning, background);
-    if (background->is_moving && /* the median is a better reference than one frame */
-        !register_frames(learning, background, background->level,
-                         sqrt(rf_pixel_noise_var(&background->noise, (double)background->level[0]))))
-        stay_put(learning);
+    if (background->is_moving) check_movement(learning, background);
     measure_lamps(learning, background);
     if (background->is_moving || flicker(learning) > FLICKER) {
         learn_levels(learning, background);

@@ -238,7 +238,7 @@ static void search_coarsely(const RfRegistration *registration, const RfRegistra
         for (int dx = -REACH_CELLS; dx <= REACH_CELLS; dx++) {
             double score = correlation_at(level, scratch->picture[0], registration->width,
                                           registration->height, dx, dy) -
-                           0.015 * hypot(dx, dy);
+                           0.04 * hypot(dx, dy);
             if (score > best) {
                 best = score;
                 pose->shift_x_px = dx * REDUCTION[0];
