@@ -10,6 +10,7 @@ static const double coast_s = 0.15; /* a chain unseen for longer ends; the secon
 static const double missed_cost = 2; /* -log of the chance that a droplet is not seen in an exposure, about */
 static const double tangle_part_of_gap = 0.8; /* of the longest gap, without any spot about it */
 static const double longest_tangle_s = 2;
+static const double lost_in_merge_px = 2;
 
 typedef struct {
     RfMotion motion;
@@ -218,9 +219,20 @@ static bool are_apart(const Pass *pass, const RfExposure *exposure, const GArray
     return true;
 }
 
+/* A droplet that may be anywhere holds nothing together. */
+static bool is_lost(const Pass *pass, const Tangle *tangle)
+{
+    for (unsigned k = 0; k < tangle->members->len; k++)
+        if (spread_px(&g_array_index(tangle->members, RfMotion, k)) >
+            lost_in_merge_px * pass->scene->merge_px)
+            return true;
+    return false;
+}
+
 static bool is_tangle_over(const Pass *pass, const Tangle *tangle, double time_s)
 {
-    return tangle->apart >= apart_exposures || time_s - tangle->since_s > longest_tangle_s ||
+    return tangle->apart >= apart_exposures || is_lost(pass, tangle) ||
+           time_s - tangle->since_s > longest_tangle_s ||
            time_s - tangle->last_seen_s > tangle_part_of_gap * pass->scene->options.longest_gap_s;
 }
 
