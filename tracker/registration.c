@@ -7,14 +7,14 @@
 #include <string.h>
 
 enum {
-    LEVELS = 3,        /* pictures reduced by 8, 4 and 2 */
+    LEVELS = 3,        /* pictures reduced by 8, 4 and 1 */
     POINTS = 3000,     /* steep pixels used per level, at most */
     LEAST_POINTS = 60, /* fewer: nothing to hold on to */
     UNKNOWNS = 5,      /* shift x, shift y, angle, gain, offset */
     STEPS = 12,        /* Gauss-Newton steps per level, at most */
     REACH_CELLS = 10,  /* coarse search: this many pixels of the smallest picture either way */
 };
-static const int REDUCTION[LEVELS] = {8, 4, 2}; /* not 1: single steep pixels are mostly noise */
+static const int REDUCTION[LEVELS] = {8, 4, 1};
 
 /* One steep pixel of a reduced reference picture; places from the picture's middle, in full-size stored pixels. */
 typedef struct {
@@ -84,6 +84,36 @@ static void soften(float *image, int width, int height)
     }
 }
 
+/* Value at (x, y) after a Gaussian blur of 1 px: no interpolation can tell a shift to a hundredth of a pixel from thin
+ * lines that the pixels undersample, but of the blurred picture it is exact to 1e-4. */
+static bool sample_blurred(const float *image, int width, int height, float x, float y, float *value)
+{
+    enum { REACH = 3, TAPS = 2 * REACH + 1 };
+    int column = (int)lrintf(x), row = (int)lrintf(y);
+    if (column < REACH || row < REACH || column >= width - REACH || row >= height - REACH) return false;
+    float across[TAPS], down[TAPS], total_across = 0, total_down = 0, sum = 0;
+    for (int i = 0; i < TAPS; i++) {
+        float dx = (float)(column + i - REACH) - x, dy = (float)(row + i - REACH) - y;
+        total_across += across[i] = expf(-0.5f * dx * dx);
+        total_down += down[i] = expf(-0.5f * dy * dy);
+    }
+    for (int j = 0; j < TAPS; j++) {
+        const float *tap = image + (size_t)(row + j - REACH) * (size_t)width + column - REACH;
+        float line = 0;
+        for (int i = 0; i < TAPS; i++) line += across[i] * tap[i];
+        sum += down[j] * line;
+    }
+    *value = sum / (total_across * total_down);
+    return true;
+}
+
+/* The reduced pictures are smooth enough as they are. */
+static bool sample(const Level *level, int reduction, const float *picture, float x, float y, float *value)
+{
+    return reduction == 1 ? sample_blurred(picture, level->width, level->height, x, y, value)
+                          : rf_interpolate_cubic(picture, level->width, level->height, x, y, value);
+}
+
 typedef struct {
     float steepness;
     int x, y;
@@ -128,8 +158,8 @@ static SteepPixel steep_pixel(const Level *level, const float *image, int reduct
     };
 }
 
-/* Steep pixels evenly from all over the picture: tiles, so many from each. Not the very steepest, which are hot pixels
- * and droplets, but some of the steeper half: most of these lie on lines. */
+/* Steep pixels evenly from all over the picture: tiles, so many from each. Of all that are steep, not the steepest: these
+ * are hot pixels and droplets, and of a line always the same flank, which would turn an interpolation's blur into a shift. */
 static void choose_points(Level *level, const float *image, int reduction, const RfRegistration *all)
 {
     enum { ACROSS = 12, DOWN = 8, PER_TILE = POINTS / (ACROSS * DOWN) };
@@ -142,10 +172,28 @@ static void choose_points(Level *level, const float *image, int reduction, const
         Tile tile = {MAX(3, w * column / ACROSS), MIN(w - 3, w * (column + 1) / ACROSS),
                      MAX(3, h * row / DOWN), MIN(h - 3, h * (row + 1) / DOWN)};
         find_steep(level, image, tile, least, steep);
-        unsigned half = (steep->len + 1) / 2, n = MIN(half, PER_TILE);
+        unsigned n = MIN(steep->len, PER_TILE);
         for (unsigned k = 0; k < n; k++)
-            level->points[level->n++] =
-                steep_pixel(level, image, reduction, all, g_array_index(steep, Steep, (size_t)k * half / n));
+            level->points[level->n++] = steep_pixel(level, image, reduction, all,
+                                                    g_array_index(steep, Steep, (size_t)k * steep->len / n));
+    }
+}
+
+/* The finest level's values and slopes, by the very blur that frames are sampled with. */
+static void blur_points(Level *level, const float *image, const RfRegistration *all)
+{
+    for (unsigned i = 0; i < level->n; i++) {
+        SteepPixel *p = &level->points[i];
+        float x = p->x_px + 0.5f * (float)(all->width - 1), y = p->y_px + 0.5f * (float)(all->height - 1);
+        float left = p->level, right = p->level, above = p->level, below = p->level;
+        int w = all->width, h = all->height;
+        sample_blurred(image, w, h, x, y, &p->level);
+        if (sample_blurred(image, w, h, x - 0.5f, y, &left) &&
+            sample_blurred(image, w, h, x + 0.5f, y, &right))
+            p->slope_x = right - left;
+        if (sample_blurred(image, w, h, x, y - 0.5f, &above) &&
+            sample_blurred(image, w, h, x, y + 0.5f, &below))
+            p->slope_y = below - above;
     }
 }
 
@@ -166,6 +214,7 @@ RfRegistration *rf_registration_new(const float *image, int width, int height, d
         reduce(image, width, REDUCTION[i], level->width, level->height, small);
         soften(small, level->width, level->height);
         choose_points(level, small, REDUCTION[i], registration);
+        if (REDUCTION[i] == 1) blur_points(level, image, registration);
     }
     return registration;
 }
@@ -201,7 +250,7 @@ static void fill_pictures(const RfRegistration *registration, RfRegistrationScra
     float *full = scratch->full;
     for (int y = 0; y < frame->height; y++)
         rf_luma_copy_row(frame, y, full + (size_t)y * (size_t)frame->width);
-    for (int i = 0; i < LEVELS; i++) {
+    for (int i = 0; i < LEVELS - 1; i++) {
         const Level *level = &registration->levels[i];
         if (!level->n) continue;
         reduce(full, frame->width, REDUCTION[i], level->width, level->height, scratch->picture[i]);
@@ -318,8 +367,8 @@ static void gather(const RfRegistration *registration, const Level *level, int r
         double x = (c * right - s * down) / aspect + guess->pose.shift_x_px + 0.5 * (registration->width - 1);
         double y = s * right + c * down + guess->pose.shift_y_px + 0.5 * (registration->height - 1);
         float seen;
-        if (!rf_interpolate_cubic(picture, level->width, level->height, ((float)x - half) / (float)reduction,
-                                  ((float)y - half) / (float)reduction, &seen))
+        if (!sample(level, reduction, picture, ((float)x - half) / (float)reduction,
+                    ((float)y - half) / (float)reduction, &seen))
             continue;
         double residual = (double)seen - guess->gain * (double)p->level - guess->offset;
         double slope_x = (double)p->slope_x * guess->gain, slope_y = (double)p->slope_y * guess->gain;
@@ -347,7 +396,7 @@ static bool refine(const RfRegistration *registration, const RfRegistrationScrat
                    Guess *guess, double *u_px)
 {
     const Level *level = &registration->levels[which];
-    const float *picture = scratch->picture[which];
+    const float *picture = REDUCTION[which] == 1 ? scratch->full : scratch->picture[which];
     double floor = registration->noise_sd / REDUCTION[which];
     guess->scale = MAX(floor, residual_scale(registration, level, REDUCTION[which], picture, guess));
     for (int step = 0; step < STEPS; step++) {
