@@ -161,7 +161,9 @@ RfDropletSet *rf_droplet_set_measure(const RfTrail *trails, size_t n, const RfDr
     set->n = n;
     set->droplets = g_new0(RfDropletResult, n);
     for (size_t i = 0; i < n; i++) set->droplets[i].steps = g_array_new(FALSE, TRUE, sizeof(RfChargeStep));
-    set->timeline = rf_field_timeline_find(trails, n, settings->sheet, error);
+    RfFieldSheet sheet = *settings->sheet;
+    if (!sheet.medium) sheet.medium = settings->medium;
+    set->timeline = rf_field_timeline_find(trails, n, &sheet, error);
     if (!set->timeline) return NULL;
     set->drift = rf_common_drift_new();
     Work work = {trails, settings, set, false};

@@ -6,9 +6,9 @@
 
 /* Shortest bin; switches closer than two bins can't be told apart here. */
 static const double BIN_S = 0.1;
-/* Log-likelihood that a cut must gain: so much for itself, so much for each droplet's new speed. Chance gains half a
- * unit per droplet on average; the rest keeps the best of some thousand places below the bar. */
-static const double CUT_COST = 10, SPEED_COST = 1.2;
+/* Log-likelihood that a cut must gain: so much for itself, so much for each droplet's new speed (chance gains half a unit
+ * per droplet on average). Rather low: a cut too many joins two runs of one label, a cut missed is a switch missed. */
+static const double CUT_COST = 6.5, SPEED_COST = 1.2;
 
 typedef struct {
     size_t first, end; /* bins covered whole */
@@ -64,16 +64,17 @@ static void bin_trail(const RfTrail *trail, const Binned *binned, BinnedTrail *i
 }
 
 /* D from the scatter across gravity, where no field acts, drawn towards the mean of all where there is little of it. */
-static void estimate_diffusion(const RfTrail *trails, size_t n, double *diffusion, double *noise)
+static void estimate_diffusion(const RfTrail *trails, size_t n, double *own, double *diffusion, double *noise)
 {
     static const double own_weight_s = 2; /* a trail of 2 s counts as much as the common value */
     const RfDropletModel nothing = {0};
     double sum = 0, weight = 0;
     for (size_t j = 0; j < n; j++) {
-        diffusion[j] = noise[j] = 0;
+        own[j] = diffusion[j] = noise[j] = 0;
         if (trails[j].n < 3) continue;
         g_autoptr(RfDropletPath) path = rf_droplet_path_new(&trails[j], &nothing);
         rf_droplet_path_scatter(path, &diffusion[j], &noise[j]);
+        own[j] = diffusion[j];
         double span = path->times_s[path->n - 1] - path->times_s[0];
         sum += span * diffusion[j];
         weight += span;
@@ -193,13 +194,16 @@ static RfFieldRuns *collect(const Binned *binned, const size_t *cut)
 RfFieldRuns *rf_field_runs_new(const RfTrail *trails, size_t n)
 {
     Binned binned;
-    g_autofree double *diffusion = g_new(double, n), *noise = g_new(double, n);
-    estimate_diffusion(trails, n, diffusion, noise);
+    g_autofree double *diffusion = g_new(double, n), *noise = g_new(double, n), *own = g_new(double, n);
+    estimate_diffusion(trails, n, own, diffusion, noise);
     bin_all(trails, n, diffusion, noise, &binned);
     g_autofree size_t *cut = g_new0(size_t, binned.bins + 1);
     partition(&binned, cut);
     RfFieldRuns *runs = collect(&binned, cut);
     runs->diffusion_m2_s = g_steal_pointer(&diffusion);
+    runs->own_diffusion_m2_s = g_steal_pointer(&own);
+    runs->samples = g_new(size_t, n + 1);
+    for (size_t j = 0; j < n; j++) runs->samples[j] = trails[j].n;
     for (size_t j = 0; j < n; j++) g_free(binned.trail[j].place_m);
     g_free(binned.trail);
     return runs;
@@ -211,5 +215,7 @@ void rf_field_runs_free(RfFieldRuns *runs)
     g_free(runs->edge_s);
     g_free(runs->speed);
     g_free(runs->diffusion_m2_s);
+    g_free(runs->own_diffusion_m2_s);
+    g_free(runs->samples);
     g_free(runs);
 }

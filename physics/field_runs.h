@@ -16,10 +16,12 @@ typedef struct {
 
 typedef struct {
     size_t droplets, runs;
-    double bin_s;           /* edges are whole numbers of bins apart */
-    double *edge_s;         /* runs + 1 */
-    RfRunSpeed *speed;      /* droplets rows of runs */
-    double *diffusion_m2_s; /* droplets; from the across axis, shrunk towards the common value */
+    double bin_s;               /* edges are whole numbers of bins apart */
+    double *edge_s;             /* runs + 1 */
+    RfRunSpeed *speed;          /* droplets rows of runs */
+    double *diffusion_m2_s;     /* droplets; from the across axis, shrunk towards the common value */
+    double *own_diffusion_m2_s; /* droplets; not shrunk, may be negative */
+    size_t *samples;            /* droplets */
 } RfFieldRuns;
 
 RfFieldRuns *rf_field_runs_new(const RfTrail *trails, size_t n);

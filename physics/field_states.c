@@ -4,6 +4,8 @@
 #include <stdlib.h>
 #include <string.h>
 
+#include "physics/drag.h"
+
 enum { BEAM = 48 };
 /* Price of an explanation outside the model (a step of charge, a mistake of the tracker), and of a switch. */
 static const double SURPRISE_COST = 10, SWITCH_COST = 3;
@@ -94,6 +96,32 @@ static void extend(Hypothesis *h, const RfFieldRuns *runs, size_t run, unsigned 
     }
 }
 
+/* The fall that belongs to a droplet's wander, as far as that is known (sd of D about sqrt(6/n) of it, twice that in
+ * the fall), weighed against the usual prior. */
+static Belief first_belief(const RfFieldRuns *runs, size_t droplet, const RfMedium *medium)
+{
+    static const double smallest_m = 0.1e-6, largest_m = 5e-6, model_error = 0.1;
+    double diffusion = runs->own_diffusion_m2_s[droplet], samples = (double)runs->samples[droplet];
+    Belief belief = PRIOR;
+    if (!medium || samples < 30 || !(diffusion > rf_drag_diffusion_m2_s(medium, largest_m)) ||
+        diffusion > rf_drag_diffusion_m2_s(medium, smallest_m))
+        return belief;
+    double low = smallest_m, high = largest_m;
+    while (high / low > 1.001) {
+        double middle = sqrt(low * high);
+        if (rf_drag_diffusion_m2_s(medium, middle) > diffusion)
+            low = middle;
+        else
+            high = middle;
+    }
+    double fall = rf_drag_settling_speed_m_s(medium, low),
+           spread = fall * (model_error + 2.4 * sqrt(6 / samples));
+    double weight = 1 / (spread * spread), prior = 1 / PRIOR.cov[0];
+    belief.mean[0] = (weight * fall + prior * FALL_PRIOR_M_S) / (weight + prior);
+    belief.cov[0] = 1 / (weight + prior);
+    return belief;
+}
+
 typedef struct {
     Hypothesis now[BEAM], next[BEAM * RF_FIELD_STATES];
     size_t n_now, n_next;
@@ -157,7 +185,7 @@ double rf_field_states_label(const RfFieldRuns *runs, const RfFieldSheet *sheet,
     for (int i = 0; i < BEAM; i++) hypothesis_init(&beam->now[i], runs->runs, runs->droplets);
     for (int i = 0; i < BEAM * RF_FIELD_STATES; i++)
         hypothesis_init(&beam->next[i], runs->runs, runs->droplets);
-    for (size_t j = 0; j < runs->droplets; j++) beam->now[0].belief[j] = PRIOR;
+    for (size_t j = 0; j < runs->droplets; j++) beam->now[0].belief[j] = first_belief(runs, j, sheet->medium);
     beam->n_now = 1;
     for (size_t r = 0; r < runs->runs; r++) advance(beam, runs, r, sheet->states, relative);
     memcpy(label, beam->now[0].label, runs->runs * sizeof *label);

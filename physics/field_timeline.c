@@ -6,6 +6,7 @@
 #include "physics/field_runs.h"
 #include "physics/field_states.h"
 #include "physics/switch_instant.h"
+#include "physics/trail_join.h"
 
 RfFieldTimeline *rf_field_timeline_new(void)
 {
@@ -136,10 +137,13 @@ static void refine_roughly(RfFieldTimeline *timeline, unsigned number, const RfT
     rf_switch_instant_refine(timeline, number, witnesses, n);
 }
 
-RfFieldTimeline *rf_field_timeline_find(const RfTrail *trails, size_t n, const RfFieldSheet *sheet,
-                                        GError **error)
+RfFieldTimeline *rf_field_timeline_find(const RfTrail *fragments, size_t n_fragments,
+                                        const RfFieldSheet *sheet, GError **error)
 {
     g_autoptr(RfFieldTimeline) timeline = rf_field_timeline_new();
+    g_autoptr(RfJoinedTrails) joined = rf_trail_join(fragments, n_fragments);
+    const RfTrail *trails = joined->trails;
+    size_t n = joined->n;
     g_autoptr(GArray) spans = NULL;
     RfFieldSheet states = *sheet;
     if (sheet->log_samples > 0) {

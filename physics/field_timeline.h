@@ -12,6 +12,7 @@
 #include <stdbool.h>
 
 #include "calib/units.h"
+#include "physics/medium.h"
 #include "physics/path_likelihood.h"
 #include "physics/trail.h"
 
@@ -68,6 +69,8 @@ typedef struct {
     const double *log_time_s, *log_voltage_v; /* (borrowed) or NULL */
     size_t log_samples;
     double log_clock_reach_s; /* largest offset searched; 0: any overlap */
+    const RfMedium
+        *medium; /* (borrowed) or NULL; with it, a droplet's wander tells how fast it falls without field */
 } RfFieldSheet;
 
 /* Trails may be whole paths or fragments. Needs at least one sample in all; no switch found is a result, not an error.

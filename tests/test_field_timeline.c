@@ -158,6 +158,31 @@ static void test_step_is_no_switch(void)
     cell_clear(&cell);
 }
 
+/* A tracker that loses every droplet at every switch, and once a second besides. */
+static void test_fragments(void)
+{
+    Cell cell = cell_new(SWITCHES_S, G_N_ELEMENTS(SWITCHES_S), 32, 7);
+    RfTrail fragments[DROPLETS * 64];
+    size_t n = 0;
+    for (unsigned i = 0; i < DROPLETS; i++) {
+        size_t first = 0;
+        const RfTrail *whole = &cell.trails[i];
+        for (size_t s = 1; s <= whole->n; s++) {
+            bool is_cut = s == whole->n || (s + 7 * i) % 30 == 0;
+            for (size_t k = 0; !is_cut && k < G_N_ELEMENTS(SWITCHES_S); k++)
+                is_cut =
+                    whole->samples[s - 1].time_s < SWITCHES_S[k] && whole->samples[s].time_s >= SWITCHES_S[k];
+            if (!is_cut) continue;
+            fragments[n] = (RfTrail){(unsigned)n + 1, s - first, whole->samples + first};
+            n++;
+            first = s;
+        }
+    }
+    g_autoptr(RfFieldTimeline) found = rf_field_timeline_find(fragments, n, &TWO_STATES, NULL);
+    assert_switches(found, cell.truth);
+    cell_clear(&cell);
+}
+
 typedef struct {
     double *time_s, *voltage_v;
     size_t n;
@@ -273,6 +298,7 @@ int main(int argc, char **argv)
     g_test_add_func("/field-timeline/find/pulls", test_pulls);
     g_test_add_func("/field-timeline/find/three-states", test_three_states);
     g_test_add_func("/field-timeline/find/step-is-no-switch", test_step_is_no_switch);
+    g_test_add_func("/field-timeline/find/fragments", test_fragments);
     g_test_add_func("/field-timeline/log/offset", test_log_offset);
     g_test_add_func("/field-timeline/log/audited", test_log_audited);
     g_test_add_func("/field-timeline/log/of-another-recording-refused",
