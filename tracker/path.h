@@ -43,7 +43,8 @@ typedef struct {
     unsigned seen;          /* points with is_seen */
     double diffusion_px2_s; /* D along one axis, in square pixels (width of a stored pixel = pixel_aspect);
                                likeliest value */
-    double evidence;        /* log of likelihood (droplet) over likelihood (chance chain of false spots) */
+    double
+        evidence; /* log of likelihood (droplet) over likelihood (false spots), less the log of the chances to start */
     double median_snr;
 } RfPath;
 

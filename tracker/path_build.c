@@ -5,6 +5,8 @@
 #include "tracker/fill.h"
 #include "tracker/path_noise.h"
 
+enum { suspect_hits = 30 };
+
 static const double missed_log_odds = 1.2; /* -log of the chance that a droplet is missed, generously */
 
 static const RfHit *hit(const RfChain *chain, unsigned i)
@@ -58,6 +60,17 @@ static void mark_seen(RfPathPoint *point, const RfSpot *spot, int index, const R
     point->y_px = (double)spot->y_px;
     point->u_x_px = (double)spot->u_x_px * rf_path_noise_widening(noise->scale_x, noise->u_scale_x);
     point->u_y_px = (double)spot->u_y_px * rf_path_noise_widening(noise->scale_y, noise->u_scale_y);
+}
+
+/* Density of spots that may be nobody's: short chains are not beyond suspicion themselves. */
+static double chance_px2(const RfLinkScene *scene, const GPtrArray *chains)
+{
+    double suspects = 0, exposures = fmax(1, scene->sightings->exposures->len);
+    for (unsigned i = 0; i < chains->len; i++) {
+        unsigned hits = ((const RfChain *)g_ptr_array_index(chains, i))->hits->len;
+        suspects += hits < suspect_hits ? hits : 0;
+    }
+    return rf_fill_unclaimed_px2(scene) + suspects / (exposures * scene->area_px2);
 }
 
 static int compare_floats(const void *a, const void *b)
@@ -138,7 +151,8 @@ static void widen_sights(RfLinkScene *scene, const RfPathErrors *noise)
 
 static void judge(RfLinkScene *scene, const RfChain *chain, double unclaimed_px2, RfPaths *paths)
 {
-    double evidence = weigh(scene, chain, unclaimed_px2);
+    /* any spot may begin a chance chain: their number is taken off as so many tries */
+    double evidence = weigh(scene, chain, unclaimed_px2) - log(fmax(1, scene->sightings->spots->len));
     if (chain->hits->len < scene->options.least_seen || evidence < scene->options.least_evidence) {
         paths->set_aside_short++;
         return;
@@ -168,7 +182,7 @@ RfPaths *rf_path_build(RfLinkScene *scene, GPtrArray *chains)
     paths->noise = rf_path_noise_measure(scene, chains);
     widen_sights(scene, &paths->noise);
     g_ptr_array_sort(chains, compare_chains);
-    double unclaimed_px2 = rf_fill_unclaimed_px2(scene);
+    double unclaimed_px2 = chance_px2(scene, chains);
     for (unsigned i = 0; i < chains->len; i++) {
         rf_chain_learn_spread(scene, g_ptr_array_index(chains, i));
         judge(scene, g_ptr_array_index(chains, i), unclaimed_px2, paths);
