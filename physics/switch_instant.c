@@ -70,12 +70,12 @@ static void add_bounded(const double *columns, size_t n, InstantGrid *grid)
 static bool add_witness(const RfFieldTimeline *timeline, unsigned number, const RfSwitchWitness *w,
                         InstantGrid *grid, double from_s, double to_s)
 {
+    if (!w->usable) return false;
     double middle_s = grid->first_s + 0.5 * grid->step_s * (double)(grid->n - 1), u_speed;
     double speed = speed_per_volt_at(w, middle_s, &u_speed);
     size_t first, n;
     const RfFieldInterval *before = &g_array_index(timeline->intervals, RfFieldInterval, number);
-    if (!w->usable || is_step_near(w, from_s, to_s) ||
-        !cut_slice(w->trail, from_s, middle_s, to_s, &first, &n))
+    if (is_step_near(w, from_s, to_s) || !cut_slice(w->trail, from_s, middle_s, to_s, &first, &n))
         return false;
     double change = speed * (before[1].voltage_v - before[0].voltage_v);
     g_autofree double *columns = g_new(double, n * grid->n), *times_s = g_new(double, n),
