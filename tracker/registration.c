@@ -12,6 +12,7 @@ enum {
     LEAST_POINTS = 60, /* fewer: nothing to hold on to */
     UNKNOWNS = 5,      /* shift x, shift y, angle, gain, offset */
     STEPS = 12,        /* Gauss-Newton steps per level, at most */
+    COARSE_STEP = 5,   /* every fifth steep pixel will do for the coarse search */
     REACH_CELLS = 10,  /* coarse search: this many pixels of the smallest picture either way */
 };
 static const int REDUCTION[LEVELS] = {8, 4, 1};
@@ -264,7 +265,7 @@ static double correlation_at(const Level *level, const float *picture, int full_
 {
     double n = 0, s_a = 0, s_b = 0, s_aa = 0, s_bb = 0, s_ab = 0;
     float half = 0.5f * (float)(REDUCTION[0] - 1);
-    for (unsigned i = 0; i < level->n; i++) {
+    for (unsigned i = 0; i < level->n; i += COARSE_STEP) {
         const SteepPixel *p = &level->points[i];
         int x = (int)lrintf((p->x_px + 0.5f * (float)(full_width - 1) - half) / (float)REDUCTION[0]) + dx;
         int y = (int)lrintf((p->y_px + 0.5f * (float)(full_height - 1) - half) / (float)REDUCTION[0]) + dy;
@@ -272,7 +273,7 @@ static double correlation_at(const Level *level, const float *picture, int full_
         double a = (double)p->level, b = (double)picture[(size_t)y * (size_t)level->width + (size_t)x];
         n += 1, s_a += a, s_b += b, s_aa += a * a, s_bb += b * b, s_ab += a * b;
     }
-    if (n < 0.5 * level->n || n < 8) return -1;
+    if (n * COARSE_STEP < 0.5 * level->n || n < 8) return -1;
     double var_a = s_aa - s_a * s_a / n, var_b = s_bb - s_b * s_b / n;
     return var_a > 0 && var_b > 0 ? (s_ab - s_a * s_b / n) / sqrt(var_a * var_b) : -1;
 }
