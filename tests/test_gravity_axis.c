@@ -199,7 +199,7 @@ static void too_little_to_tell(void)
     g_assert_cmpfloat(none.tilt_p, ==, 1.0);
     size_t n = move_droplets(&usual, legs);
     g_assert_false(rf_gravity_axis_refine(legs, 2, 0.0).is_found);
-    for (size_t i = 0; i < n; i++) legs[i].vx = NAN;
+    for (size_t i = 0; i < n; i++) legs[i].vx = (double)NAN;
     g_assert_false(rf_gravity_axis_refine(legs, n, 0.0).is_found);
     g_assert_false(rf_gravity_axis_find(legs, n).is_found);
     for (size_t i = 0; i < n; i++) legs[i].vx = legs[i].vy = 0.0;
