@@ -14,6 +14,9 @@
 static const double useless_sigma_coulomb = 0.25 * RF_ELEMENTARY_CHARGE_COULOMB;
 static const double useless_relative_sigma = 0.1;
 
+/* A charge further than this from its nearest whole multiple is no multiple at all. */
+static const double misfit_sigmas = 4;
+
 /* Two radii of one droplet that differ by more than chance allows once in a thousand droplets. */
 static const double disagreement_p = 1e-3;
 
@@ -47,7 +50,8 @@ static void name_whole_multiple(RfDropletRow *row)
 {
     RfWholeMultiple multiple = rf_whole_multiples_nearest(row->charge_C);
     row->units_probability = multiple.probability;
-    row->has_units = row->accepted && multiple.probability >= 0.95;
+    /* The nearest multiple may be the only candidate and still not fit. */
+    row->has_units = multiple.probability >= 0.95 && fabs(multiple.deviation) < misfit_sigmas;
     row->units = row->has_units ? multiple.n : 0;
 }
 
