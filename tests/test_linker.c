@@ -237,6 +237,36 @@ static void test_gap_over_reversal(void)
     g_assert_cmpuint(paths->paths->len, ==, 3);
 }
 
+/* What is known of the field was read from motion and may be wrong: a switch missed, one invented, one late, all unheard
+ * of. Identities hold all the same. */
+static void test_wrong_course_ends_no_path(void)
+{
+    static const RfFieldChange missed[] = {{0, 0}, {4.013, -1}, {7.52, 0}},
+                               invented[] = {{0, 0},    {2.2, -1},   {3.1, 0},  {4.013, -1},
+                                             {7.52, 0}, {12.34, -1}, {16.02, 0}},
+                               late[] = {{0, 0}, {4.313, -1}, {7.32, 0}, {12.54, -1}, {16.32, 0}},
+                               constant[] = {{0, 0}}, inverted[] = {{0, -1}, {4.013, 0}, {7.52, -1}};
+    const RfFieldCourse told[] = {{missed, G_N_ELEMENTS(missed)},
+                                  {invented, G_N_ELEMENTS(invented)},
+                                  {late, G_N_ELEMENTS(late)},
+                                  {constant, G_N_ELEMENTS(constant)},
+                                  {inverted, G_N_ELEMENTS(inverted)}};
+    RfPlay play = quiet_play();
+    for (size_t i = 0; i < G_N_ELEMENTS(told); i++) {
+        GError *error = NULL;
+        g_autoptr(GPtrArray) truth = NULL;
+        g_autoptr(RfSightings) sightings = rf_spot_play_run(&play, &truth);
+        g_autoptr(RfPaths) paths = rf_linker_run(sightings, &told[i], NULL, &error);
+        g_assert_no_error(error);
+        g_autoptr(GPtrArray) tracks = points_of(sightings, paths);
+        RfTrackScore score = rf_track_score(truth, tracks, play.frames, 5);
+        g_test_message("course %zu: jsc %.4f, %u paths", i, score.jsc, paths->paths->len);
+        g_assert_cmpuint(paths->paths->len, ==, 3);
+        g_assert_cmpint(score.identity_switches, ==, 0);
+        g_assert_cmpfloat(score.jsc, >, 0.99);
+    }
+}
+
 static void test_long_absence_is_new_droplet(void)
 {
     RfActor away = quiet[0];
@@ -459,6 +489,7 @@ int main(int argc, char **argv)
     g_test_add_func("/linker/run/crossing", test_crossing);
     g_test_add_func("/linker/run/merged-is-bridged", test_merged_is_bridged);
     g_test_add_func("/linker/run/gap-over-reversal", test_gap_over_reversal);
+    g_test_add_func("/linker/run/wrong-course-ends-no-path", test_wrong_course_ends_no_path);
     g_test_add_func("/linker/run/long-absence-is-new-droplet", test_long_absence_is_new_droplet);
     g_test_add_func("/linker/run/edges", test_edges);
     g_test_add_func("/linker/run/undecidable-is-cut", test_undecidable_is_cut);

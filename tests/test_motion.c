@@ -52,15 +52,29 @@ static void test_change_is_noticed(void)
     g_assert_true(m.unseen_s == 0);
 }
 
-/* With the field known and off, nothing but diffusion is believed. */
-static void test_no_change_without_field(void)
+/* What may change is the response while the field is known to be on, else the velocity: the course may lack a switch. */
+static void test_what_changes(void)
 {
-    RfMotion m = follow(&knowing, 60, 30, 1);
-    rf_motion_predict(&m, &knowing, 1.0 / 30, 0);
-    bool is_changed = true;
-    RfSight turned = sight_at(100, m.axis[1].position_px - 5);
-    rf_motion_surprise(&m, &knowing, &turned, &is_changed);
-    g_assert_false(is_changed);
+    for (int is_on = 0; is_on < 2; is_on++) {
+        RfMotion m = follow(&knowing, 60, 30, 1);
+        for (int i = 60; i < 120; i++) { /* a field that doesn't move it: the response is known as well */
+            RfSight sight = sight_at(100, i);
+            rf_motion_predict(&m, &knowing, 1.0 / 30, 1.0 / 30);
+            rf_motion_update(&m, &sight);
+        }
+        double velocity_px_s = m.axis[1].velocity_px_s, response_px_s = m.axis[1].response_px_s;
+        rf_motion_predict(&m, &knowing, 1.0 / 30, is_on / 30.0);
+        bool is_changed = false;
+        RfSight turned = sight_at(100, m.axis[1].position_px - 5);
+        rf_motion_surprise(&m, &knowing, &turned, &is_changed);
+        g_assert_true(is_changed);
+        rf_motion_loosen(&m, &knowing);
+        rf_motion_update(&m, &turned);
+        double faster_px_s = m.axis[1].velocity_px_s - velocity_px_s,
+               stronger_px_s = m.axis[1].response_px_s - response_px_s;
+        g_assert_cmpfloat(is_on ? stronger_px_s : faster_px_s, <, -40);
+        g_assert_cmpfloat(fabs(is_on ? faster_px_s : stronger_px_s), <, 10);
+    }
 }
 
 static void test_reach(void)
@@ -109,7 +123,7 @@ int main(int argc, char **argv)
     g_test_init(&argc, &argv, NULL);
     g_test_add_func("/motion/surprise/normal-density", test_density);
     g_test_add_func("/motion/surprise/change-is-noticed", test_change_is_noticed);
-    g_test_add_func("/motion/surprise/no-change-without-field", test_no_change_without_field);
+    g_test_add_func("/motion/surprise/field-decides-what-changes", test_what_changes);
     g_test_add_func("/motion/reach/covers-the-gate", test_reach);
     g_test_add_func("/motion/likeness/speed", test_likeness);
     g_test_add_func("/motion/likeness/change", test_likeness_may_change);

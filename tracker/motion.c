@@ -25,19 +25,21 @@ void rf_motion_predict(RfMotion *m, const RfMotionModel *model, double dt_s, dou
 /* A reversal takes a velocity from one tail of its distribution to the other, and charges make those tails long. */
 static const double reversal_factor = 2.5;
 
-/* Variances that a change adds: to the velocity where the field is unknown, to the response where it is known. */
-static void change_variances(const RfMotionModel *model, int axis, double *velocity_px2_s2,
+/* Variances that a change adds: to the response where the field is known to be on, else to the velocity. What is known of
+ * the field was read from motion too: a switch that went unnoticed must not end every path. */
+static void change_variances(const RfMotion *m, const RfMotionModel *model, int axis, double *velocity_px2_s2,
                              double *response_px2_s2)
 {
     double v = reversal_factor * model->velocity_sd_px_s[axis], r = model->response_sd_px_s[axis];
-    *velocity_px2_s2 = r > 0 ? 0 : v * v;
-    *response_px2_s2 = r * r;
+    bool is_field_on = r > 0 && fabs(m->unseen_field_s) > fabs(m->unseen_s) / 2;
+    *velocity_px2_s2 = is_field_on ? 0 : v * v;
+    *response_px2_s2 = is_field_on ? r * r : 0;
 }
 
 static double loosened_variance(const RfMotion *m, const RfMotionModel *model, int axis)
 {
     double v, r;
-    change_variances(model, axis, &v, &r);
+    change_variances(m, model, axis, &v, &r);
     return m->axis[axis].pp + (v * m->unseen_s * m->unseen_s + r * m->unseen_field_s * m->unseen_field_s) / 3;
 }
 
@@ -84,7 +86,7 @@ void rf_motion_loosen(RfMotion *m, const RfMotionModel *model)
 {
     for (int i = 0; i < 2; i++) {
         double v, r;
-        change_variances(model, i, &v, &r);
+        change_variances(m, model, i, &v, &r);
         rf_kalman_loosen(&m->axis[i], v, r, m->unseen_s, m->unseen_field_s);
     }
 }

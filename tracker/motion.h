@@ -19,8 +19,7 @@ typedef struct {
     double
         velocity_sd_px_s[2]; /* of droplets at large, per axis: what is expected of one never seen before */
     double response_sd_px_s[2]; /* 0 where the field is unknown */
-    double
-        change_cost; /* > 0: -log of the chance that velocity (field unknown) or response (field known and on)
+    double change_cost; /* > 0: -log of the chance that response (field known and on) or velocity (otherwise)
                                    changes between two exposures */
 } RfMotionModel;
 
