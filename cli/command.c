@@ -98,7 +98,9 @@ static void print_overview(FILE *to, const RfCommand *const *commands)
           to);
     for (; *commands; commands++)
         fprintf(to, "  %-10s %s\n", (*commands)->verb, (*commands)->purpose);
-    fputs("\n'risefall COMMAND --help' tells more, with an example.  'risefall --version' names the version.\n", to);
+    fputs("\n'risefall COMMAND --help' tells more, with an example.\n"
+          "'risefall --version' names the version.\n",
+          to);
 }
 
 static const RfCommand *find_command(const char *verb, const RfCommand *const *commands)
@@ -116,8 +118,8 @@ static GOptionContext *new_context(const RfCommand *command)
         {"threads", 0, 0, G_OPTION_ARG_INT, &common.threads, "worker threads (default: one per core)", "N"},
         {0},
     };
-    g_autofree char *usage = g_strdup_printf("%s - %s", command->arguments, command->purpose);
-    GOptionContext *context = g_option_context_new(usage);
+    GOptionContext *context = g_option_context_new(command->arguments);
+    g_option_context_set_summary(context, command->purpose); /* a line of its own: 80 columns must do */
     g_autofree char *example = g_strdup_printf("Example:\n%s", command->example);
     g_option_context_set_description(context, example);
     if (command->entries)

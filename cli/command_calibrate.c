@@ -12,9 +12,9 @@
 static char *spacing, *lines, *picture_path;
 
 static const GOptionEntry entries[] = {
-    {"spacing", 's', 0, G_OPTION_ARG_STRING, &spacing, "distance of neighbouring lines, with its uncertainty (needed with an IMAGE)", "Q"},
-    {"lines", 'l', 0, G_OPTION_ARG_STRING, &lines, "grid, horizontal or vertical (default: grid; a sheet says it itself)", "KIND"},
-    {"picture", 'p', 0, G_OPTION_ARG_FILENAME, &picture_path, "write a PNG with the lines found drawn over the picture", "FILE"},
+    {"spacing", 's', 0, G_OPTION_ARG_STRING, &spacing, "between neighbouring lines (needed with an IMAGE)", "Q"},
+    {"lines", 'l', 0, G_OPTION_ARG_STRING, &lines, "grid, horizontal or vertical (default: grid)", "KIND"},
+    {"picture", 'p', 0, G_OPTION_ARG_FILENAME, &picture_path, "PNG of the picture with the lines found", "FILE"},
     {0},
 };
 
@@ -162,7 +162,7 @@ const RfCommand rf_command_calibrate = {
     .arguments = "SHEET|IMAGE",
     .purpose = "scale from the reticle, with a picture of the lines found",
     .example = "  risefall calibrate reticle.png --spacing '0.1000(2) mm' --picture lines.png\n"
-               "prints pixels per millimetre and leaves lines.png to check by eye that every line is a line",
+               "prints pixels per millimetre; lines.png shows whether every line is a line",
     .entries = entries,
     .run = run,
 };

@@ -22,7 +22,7 @@ const RfCommand rf_command_run = {
     .arguments = "SHEET --out DIR",
     .purpose = "the whole job: paths, scale, switches, charges, unit, report",
     .example = "  risefall run morning.ini --out morning\n"
-               "leaves morning/report.html to look at, and morning/droplets.csv, paths.csv, summary.json ...",
+               "leaves morning/report.html to look at, beside it droplets.csv, summary.json ...",
     .entries = entries,
     .run = run,
 };

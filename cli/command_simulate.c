@@ -6,7 +6,7 @@
 static char *out;
 
 static const GOptionEntry entries[] = {
-    {"out", 'o', 0, G_OPTION_ARG_FILENAME, &out, "folder for the footage and its truth; an earlier one is replaced", "DIR"},
+    {"out", 'o', 0, G_OPTION_ARG_FILENAME, &out, "folder for footage and truth; an earlier one is replaced", "DIR"},
     {0},
 };
 
@@ -39,7 +39,7 @@ const RfCommand rf_command_simulate = {
     .arguments = "SCENE --out DIR",
     .purpose = "synthetic footage of charged droplets, with its truth beside it",
     .example = "  risefall simulate sample-synthetic/bench-morning.scene --out morning\n"
-               "leaves morning/sheet.ini ready for 'risefall run', and morning/truth_*.csv to compare with",
+               "leaves morning/sheet.ini for 'risefall run', morning/truth_*.csv to compare with",
     .entries = entries,
     .run = run,
 };
