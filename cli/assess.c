@@ -55,11 +55,9 @@ static void name_whole_multiple(RfDropletRow *row)
     row->units = row->has_units ? multiple.n : 0;
 }
 
-/* How much of the radius' information comes from the spread of the path. */
 static RfChargeEstimate estimate_of(const RfDropletFit *fit, const RfSpellFit *spell)
 {
-    double share = fit->radius_spread_m.sigma > 0 ? fit->radius_m.sigma / fit->radius_spread_m.sigma : 0;
-    return (RfChargeEstimate){fit->radius_m, spell->charge_coulomb, fmin(1, share * share)};
+    return (RfChargeEstimate){fit->radius_m, spell->charge_coulomb, fit->spread_share, spell->fall_leak_per_v};
 }
 
 /* Random and common parts in one sigma, first order. */

@@ -29,7 +29,7 @@ const char *rf_charge_line_to_string(RfChargeLine line)
 typedef struct {
     const RfChargeInputs *inputs;
     double settling_m_s, slope_m_s_V, diffusion_m2_s;
-    double spread_share, radius_sigma_m, charge_sigma_coulomb;
+    double spread_share, radius_sigma_m, charge_sigma_coulomb, fall_leak_per_v;
 } Context;
 
 /* x: one value per line. Scale, voltage and viscosity are factors about 1; slip is a factor of Cc - 1; path is in standard
@@ -86,14 +86,24 @@ static bool radius_model(const double *x, const void *user, double *radius_m)
     return true;
 }
 
+/* Speed per volt: what the fall at this radius lacks of the fall that was seen is put down to the field. */
+static double slope_at(const Context *context, const RfMedium *medium, const double *x, double radius_m)
+{
+    const double scale = x[RF_CHARGE_LINE_SCALE];
+    const double fall_m_s = rf_drag_settling_speed_m_s(medium, radius_m) + x[RF_CHARGE_LINE_AIR_DRIFT];
+    const double surplus_m_s = fall_m_s - scale * context->settling_m_s;
+    return (context->slope_m_s_V * scale + context->fall_leak_per_v * surplus_m_s) /
+           x[RF_CHARGE_LINE_VOLTAGE];
+}
+
 static bool charge_model(const double *x, const void *user, double *charge_coulomb)
 {
     const Context *context = user;
     const RfMedium medium = medium_at(context->inputs, x);
     double radius_m = 0.0;
     if (!is_possible(&medium, x) || !radius_at(context, &medium, x, &radius_m)) return false;
-    const double slope_m_s_V = context->slope_m_s_V * x[RF_CHARGE_LINE_SCALE] / x[RF_CHARGE_LINE_VOLTAGE];
-    *charge_coulomb = rf_drag_coefficient_kg_s(&medium, radius_m) * medium.plate_gap_m * slope_m_s_V +
+    *charge_coulomb = rf_drag_coefficient_kg_s(&medium, radius_m) * medium.plate_gap_m *
+                          slope_at(context, &medium, x, radius_m) +
                       x[RF_CHARGE_LINE_PATH] * context->charge_sigma_coulomb;
     return true;
 }
@@ -175,7 +185,8 @@ static RfBudget *budget_of(RfBudgetModel model, const RfChargeInputs *inputs,
                              rf_drag_diffusion_m2_s(&medium, radius_m),
                              estimate->spread_share,
                              estimate->radius_m.sigma,
-                             estimate->charge_coulomb.sigma};
+                             estimate->charge_coulomb.sigma,
+                             estimate->fall_leak_per_v};
     RfBudgetInput lines[RF_CHARGE_LINES];
     fill_lines(inputs, lines);
     if (inputs_out != NULL) memcpy(inputs_out, lines, sizeof lines);

@@ -3,9 +3,10 @@
  * could have done to it.
  *
  * What the paths fix are velocities (and a diffusion coefficient) in units of the stated scale; so
- *   charge = k(a) d (v - v_g)/V,   a = (1 - w) a_fall + w a_spread,
- * a_fall from v_g and the weight, a_spread from D, w the share of the radius' information that the spread has. With the
- * scale off by a factor s, velocities go as s and D as s^2. */
+ *   charge = k(a) d (u + c (v_g(a) - v_off)),   a = (1 - w) a_fall + w a_spread,
+ * u the speed per volt, a_fall from the speed without field v_off and the weight, a_spread from D, w the share of the
+ * radius' information that the spread has; c, about -1/V, because the joint fit ties the fall to the radius and lays what
+ * is left of the speed under field on the charge. With the scale off by a factor s, speeds go as s and D as s^2. */
 #pragma once
 
 #include <glib.h>
@@ -40,7 +41,8 @@ RfMedium rf_charge_budget_medium(const RfChargeInputs *inputs);
 typedef struct {
     RfValue radius_m;       /* > 0; sigma random */
     RfValue charge_coulomb; /* sigma random */
-    double spread_share;    /* w, 0..1: (sigma of the joint radius/sigma of the radius from spread alone)^2 */
+    double spread_share;    /* w, 0..1: the spread's share of the radius' information */
+    double fall_leak_per_v; /* c: what the speed per volt gains per speed that the fall is assumed to gain */
 } RfChargeEstimate;
 
 /* Lines of the budget, in the order of RfBudget.parts. */

@@ -89,6 +89,31 @@ static void fill_spells(RfSearch *search, const RfSearchPoint *best, RfDropletFi
     }
 }
 
+/* How the fit shares out what it sees, from a fit with the fall speed free at the summit: the spread's share of the
+ * information on ln(radius), and what each spell's speed per volt gains per fall speed assumed. */
+static void fill_shares(const RfSearch *search, const RfSearchPoint *best, RfDropletFit *fit)
+{
+    const RfDropletPath *path = search->path;
+    RfSearch loose = *search;
+    RfAxisFit fall;
+    double a = exp(best->at[RF_LOG_RADIUS]);
+    loose.is_loose = true;
+    rf_search_fall_axis(&loose, best->at[RF_LOG_RADIUS], best->at[RF_FALL_NOISE], &fall);
+    bool sees_fall = fall.p == path->charged + 1;
+    double variance = sees_fall ? fall.covariance[fall.p * fall.p - 1] : 0;
+    double slope_m_s = rf_drag_settling_slope_per_s(search->medium, a) * a;
+    double information = sees_fall ? slope_m_s * slope_m_s / variance : 0;
+    fit->spread_share = CLAMP(1 - information * best->covariance[RF_LOG_RADIUS][RF_LOG_RADIUS], 0, 1);
+    for (size_t k = 0; k < path->spells; k++) {
+        if (path->column[k] < 0) continue;
+        size_t j = (size_t)path->column[k];
+        double impulse_v_s = path->impulse_v_s[(path->n - 1) * path->charged + j];
+        fit->spell[k].fall_leak_per_v = sees_fall ? fall.covariance[j * fall.p + fall.p - 1] / variance
+                                        : impulse_v_s != 0 ? -path->on_s[k] / impulse_v_s
+                                                           : 0;
+    }
+}
+
 /* Radius from the fall alone and from the spread alone, from a fit whose fall speed is free. */
 static void fill_two_radii(const RfSearch *search, const RfSearchPoint *loose, RfDropletFit *fit)
 {
@@ -150,6 +175,7 @@ void rf_droplet_fit(const RfTrail *trail, const RfDropletModel *model, RfDroplet
     fill_radius(&search, &best, fit);
     fill_noise(&search, &best, fit);
     fill_spells(&search, &best, fit);
+    fill_shares(&search, &best, fit);
 }
 
 const char *rf_droplet_fit_state_to_string(RfFitState state)
@@ -157,21 +183,4 @@ const char *rf_droplet_fit_state_to_string(RfFitState state)
     static const char *const names[] = {
         [RF_FIT_DONE] = "done", [RF_FIT_TOO_SHORT] = "too short", [RF_FIT_NO_MAXIMUM] = "no maximum"};
     return names[state];
-}
-
-const char *rf_droplet_fit_input_to_string(RfInput input)
-{
-    static const char *const names[RF_INPUTS] = {
-        [RF_INPUT_SCALE] = "scale",
-        [RF_INPUT_PLATE_GAP] = "plate gap",
-        [RF_INPUT_VOLTAGE] = "voltage",
-        [RF_INPUT_OIL_DENSITY] = "oil density",
-        [RF_INPUT_AIR_DENSITY] = "air density",
-        [RF_INPUT_VISCOSITY] = "viscosity",
-        [RF_INPUT_MEAN_FREE_PATH] = "mean free path",
-        [RF_INPUT_SLIP] = "slip law",
-        [RF_INPUT_TEMPERATURE] = "temperature",
-        [RF_INPUT_GRAVITY] = "gravity",
-    };
-    return names[input];
 }

@@ -20,23 +20,6 @@
 
 enum { RF_DROPLET_SPELLS_MAX = 32, RF_DROPLET_SAMPLES_MIN = 12 };
 
-/* Inputs shared by all droplets, for the budget. */
-typedef enum {
-    RF_INPUT_SCALE, /* metres per metre, both axes */
-    RF_INPUT_PLATE_GAP,
-    RF_INPUT_VOLTAGE,
-    RF_INPUT_OIL_DENSITY,
-    RF_INPUT_AIR_DENSITY,
-    RF_INPUT_VISCOSITY,
-    RF_INPUT_MEAN_FREE_PATH,
-    RF_INPUT_SLIP,        /* Cc - 1 as a whole */
-    RF_INPUT_TEMPERATURE, /* through k_B T only; its way through viscosity is the caller's */
-    RF_INPUT_GRAVITY,
-    RF_INPUTS
-} RfInput;
-
-const char *rf_droplet_fit_input_to_string(RfInput input);
-
 typedef struct {
     const RfMedium *medium;          /* (borrowed) */
     const RfFieldTimeline *timeline; /* (borrowed) or NULL: no field ever */
@@ -57,21 +40,21 @@ const char *rf_droplet_fit_state_to_string(RfFitState state);
 typedef struct {
     double start_s, end_s; /* first and last sample in it, cut by steps */
     size_t samples;
-    double on_s;                            /* watched with a field on */
-    bool has_charge;                        /* some field in it */
-    RfValue charge_coulomb;                 /* signed; sigma: random part */
-    double covariance_with_next_coulomb2;   /* of this charge with the next spell's */
-    RfValue speed_per_volt_m_s_v;           /* sigma with the radius held */
-    double charge_slope_coulomb[RF_INPUTS]; /* d charge/d ln(input) with the data fixed */
+    double on_s;                          /* watched with a field on */
+    bool has_charge;                      /* some field in it */
+    RfValue charge_coulomb;               /* signed; sigma: random part */
+    double covariance_with_next_coulomb2; /* of this charge with the next spell's */
+    RfValue speed_per_volt_m_s_v;         /* sigma with the radius held */
+    double fall_leak_per_v;               /* what speed_per_volt gains per fall speed assumed, 1/V */
 } RfSpellFit;
 
 typedef struct {
     RfFitState state; /* the rest holds only when done */
     RfValue radius_m, fall_m_s, across_m_s, diffusion_m2_s;
     RfValue fall_extra_variance_m2, across_extra_variance_m2;
-    double radius_slope[RF_INPUTS]; /* d ln(radius)/d ln(input) */
     RfValue radius_fall_m;     /* from the speed alone; sigma 0: not seen (too uncertain, or not falling) */
     RfValue radius_spread_m;   /* from the diffusion alone; sigma 0: not seen */
+    double spread_share;       /* of the radius' information, 0..1; the fall has the rest */
     double radius_agreement_p; /* chance of a difference at least this large; 1 where either is not seen */
     double log_likelihood;
     size_t spells;
@@ -80,10 +63,6 @@ typedef struct {
 
 /* Pure; safe from any thread with its own arguments. */
 void rf_droplet_fit(const RfTrail *trail, const RfDropletModel *model, RfDropletFit *fit);
-
-/* Fills radius_slope and charge_slope_coulomb of a done fit, by implicit differentiation of the summit: costs about as
- * much as the fit, hence apart. */
-void rf_droplet_fit_slopes(const RfTrail *trail, const RfDropletModel *model, RfDropletFit *fit);
 
 /* The interval in which the log-likelihood, maximised over all else, is within 1/2 of its top: 68 % for ln(radius). */
 bool rf_droplet_fit_profile_radius(const RfTrail *trail, const RfDropletModel *model, const RfDropletFit *fit,

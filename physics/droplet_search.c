@@ -28,7 +28,6 @@ void rf_search_init(RfSearch *search, const RfDropletPath *path, const RfDroplet
         .across_memory = model->across_memory,
         .noise_unit_m2 = spread + path->mean_u2_m2,
         .step = {0.004, 0.01, 0.01},
-        .stretch = 1,
     };
     double extra = fmax(noise - path->mean_u2_m2, -0.25 * spread) / search->noise_unit_m2;
     *start = (RfSearchPoint){.at = {log(radius), extra, extra}};
@@ -36,9 +35,7 @@ void rf_search_init(RfSearch *search, const RfDropletPath *path, const RfDroplet
 
 static RfPathNoise noise_at(const RfSearch *search, double log_radius, double noise, RfNoiseMemory memory)
 {
-    /* Stretched lengths: the noise parameter is the one of the unstretched data. */
-    double area = search->stretch * search->stretch;
-    return (RfPathNoise){rf_drag_diffusion_m2_s(search->medium, exp(log_radius)) / area,
+    return (RfPathNoise){rf_drag_diffusion_m2_s(search->medium, exp(log_radius)),
                          noise * search->noise_unit_m2, memory};
 }
 
@@ -49,7 +46,7 @@ static bool is_radius_possible(double log_radius)
 
 /* Whitens the scratch columns and solves; data in column 0. */
 static double finish_axis(const RfPathNoise *noise, const RfDropletPath *path, const double *u_m, size_t m,
-                          double stretch, RfAxisFit *fit)
+                          RfAxisFit *fit)
 {
     double log_det, rest, log_det_information;
     fit->p = m - 1;
@@ -59,8 +56,6 @@ static double finish_axis(const RfPathNoise *noise, const RfDropletPath *path, c
         return IMPOSSIBLE;
     double free_samples = (double)(path->n - 1) - (double)fit->p;
     fit->log_likelihood = -0.5 * (log_det + rest + log_det_information + free_samples * log(2 * M_PI));
-    for (size_t j = 0; j < fit->p; j++) fit->coefficient[j] *= stretch;
-    for (size_t j = 0; j < fit->p * fit->p; j++) fit->covariance[j] *= stretch * stretch;
     return fit->log_likelihood;
 }
 
@@ -71,7 +66,6 @@ static double fall_axis(const RfSearch *search, double log_radius, double noise,
     const RfDropletPath *path = search->path;
     size_t charged = path->charged, m = 1 + charged + (has_free_speed ? 1 : 0);
     double settling = search->is_loose ? 0 : rf_drag_settling_speed_m_s(search->medium, exp(log_radius));
-    settling /= search->stretch;
     for (size_t i = 0; i < path->n; i++) {
         double *row = path->scratch + i * m, t = path->times_s[i] - path->times_s[0];
         row[0] = path->fall_m[i] - settling * t;
@@ -79,7 +73,7 @@ static double fall_axis(const RfSearch *search, double log_radius, double noise,
         if (has_free_speed) row[1 + charged] = t;
     }
     RfPathNoise at = noise_at(search, log_radius, noise, search->fall_memory);
-    return finish_axis(&at, path, path->u_fall_m, m, search->stretch, fit);
+    return finish_axis(&at, path, path->u_fall_m, m, fit);
 }
 
 double rf_search_fall_axis(const RfSearch *search, double log_radius, double noise, RfAxisFit *fit)
@@ -106,7 +100,7 @@ double rf_search_across_axis(const RfSearch *search, double log_radius, double n
         path->scratch[2 * i + 1] = path->times_s[i] - path->times_s[0];
     }
     RfPathNoise at = noise_at(search, log_radius, noise, search->across_memory);
-    return finish_axis(&at, path, path->u_across_m, 2, search->stretch, into);
+    return finish_axis(&at, path, path->u_across_m, 2, into);
 }
 
 typedef double (*AxisFunction)(const RfSearch *search, double log_radius, double noise, RfAxisFit *fit);

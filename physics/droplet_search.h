@@ -29,7 +29,6 @@ typedef struct {
     RfNoiseMemory fall_memory, across_memory;
     double noise_unit_m2;
     double step[RF_SEARCH_PARAMETERS]; /* of central differences */
-    double stretch;                    /* lengths times this, for the budget; 1 */
     bool is_loose;                     /* fall speed free instead of tied to the radius */
 } RfSearch;
 

@@ -8,7 +8,6 @@ typedef struct {
     const RfTrail *trails;
     const RfDropletSetSettings *settings;
     RfDropletSet *set;
-    bool is_last; /* the last round: steps stay, slopes for the budget are wanted */
 } Work;
 
 static void one_after_another(void *user, size_t n, void (*work)(void *context, size_t i), void *context)
@@ -53,7 +52,6 @@ static void measure_one(void *context, size_t i)
     model.step_s = time_s;
     model.steps = step_times(result->steps, time_s);
     if (model.steps > 0) rf_droplet_fit(trail, &model, &result->fit);
-    if (work->is_last && result->fit.state == RF_FIT_DONE) rf_droplet_fit_slopes(trail, &model, &result->fit);
 }
 
 /* Room for what a witness borrows. */
@@ -166,12 +164,11 @@ RfDropletSet *rf_droplet_set_measure(const RfTrail *trails, size_t n, const RfDr
     set->timeline = rf_field_timeline_find(trails, n, &sheet, error);
     if (!set->timeline) return NULL;
     set->drift = rf_common_drift_new();
-    Work work = {trails, settings, set, false};
+    Work work = {trails, settings, set};
     for_each(settings, n, measure_one, &work);
     refine_switches(&work);
     fit_common_drift(&work);
     estimate_memory(&work);
-    work.is_last = true;
     for_each(settings, n, measure_one, &work);
     refine_switches(&work);
     return g_steal_pointer(&set);
