@@ -1,6 +1,6 @@
 #include "cli/measure.h"
 
-#include "calib/table.h"
+#include "calib/voltage_log.h"
 #include "cli/assess.h"
 #include "cli/trails.h"
 
@@ -8,33 +8,30 @@
 
 /* ---- the supply ---- */
 
+static RfFieldState state_of_sign(int sign)
+{
+    return sign == 0 ? RF_FIELD_OFF : sign > 0 ? RF_FIELD_TOP_PLUS : RF_FIELD_TOP_MINUS;
+}
+
 static bool read_log(const char *path, RfSupply *supply, GError **error)
 {
-    g_autoptr(RfTable) table = rf_table_read(path, error);
-    if (!table)
+    g_autoptr(RfVoltageLog) log = rf_voltage_log_read(path, error);
+    if (!log)
         return false;
-    double time_scale, voltage_scale;
-    int time = rf_table_find_quantity(table, "time", "s", &time_scale);
-    int voltage = rf_table_find_quantity(table, "voltage", "V", &voltage_scale);
-    size_t required;
-    if ((time < 0 && !rf_table_require(table, "time_s", &required, error)) ||
-        (voltage < 0 && !rf_table_require(table, "voltage_V", &required, error)))
-        return false;
-    supply->log_time_s = g_array_new(FALSE, FALSE, sizeof(double));
-    supply->log_voltage_v = g_array_new(FALSE, FALSE, sizeof(double));
-    for (size_t row = 0; row < rf_table_rows(table); row++) {
-        double time_s, voltage_v;
-        if (!rf_table_number(table, row, (size_t)time, &time_s, error) ||
-            !rf_table_number(table, row, (size_t)voltage, &voltage_v, error))
-            return false;
-        time_s *= time_scale;
-        voltage_v *= voltage_scale;
-        g_array_append_val(supply->log_time_s, time_s);
-        g_array_append_val(supply->log_voltage_v, voltage_v);
+    supply->log = g_array_new(FALSE, TRUE, sizeof(RfLogSpan));
+    for (guint i = 0; i < log->spells->len; i++) {
+        const RfLogSpell *spell = &g_array_index(log->spells, RfLogSpell, i);
+        RfLogSpan span = {spell->start_s, spell->end_s, 0, state_of_sign(spell->sign), spell->voltage_V.value};
+        if (i > 0) {
+            const RfLogSwitch *before = &g_array_index(log->switches, RfLogSwitch, i - 1);
+            span.start_s = before->time_s.value;
+            span.u_start_s = before->time_s.sigma;
+            g_array_index(supply->log, RfLogSpan, i - 1).end_s = span.start_s;
+        }
+        g_array_append_val(supply->log, span);
     }
-    supply->sheet.log_time_s = (const double *)(const void *)supply->log_time_s->data;
-    supply->sheet.log_voltage_v = (const double *)(const void *)supply->log_voltage_v->data;
-    supply->sheet.log_samples = supply->log_time_s->len;
+    supply->sheet.log = (const RfLogSpan *)(const void *)supply->log->data;
+    supply->sheet.log_spans = supply->log->len;
     return true;
 }
 
@@ -58,10 +55,8 @@ void rf_measure_supply_free(RfSupply *supply)
 {
     if (!supply)
         return;
-    if (supply->log_time_s)
-        g_array_unref(supply->log_time_s);
-    if (supply->log_voltage_v)
-        g_array_unref(supply->log_voltage_v);
+    if (supply->log)
+        g_array_unref(supply->log);
     g_free(supply);
 }
 

@@ -10,10 +10,10 @@
 #include "cli/settings.h"
 #include "physics/droplet_set.h"
 
-/* The supply as the sheet states it, with the log if there is one. `log_*` in the struct borrow from the arrays here. */
+/* The supply as the sheet states it, with the log if there is one. Its log borrows from the array. */
 typedef struct {
     RfFieldSheet sheet;
-    GArray *log_time_s, *log_voltage_v; /* double; NULL without a log */
+    GArray *log; /* RfLogSpan; NULL without a log */
 } RfSupply;
 
 RfSupply *rf_measure_supply_new(const RfSettings *settings, GError **error);

@@ -146,9 +146,9 @@ RfFieldTimeline *rf_field_timeline_find(const RfTrail *fragments, size_t n_fragm
     size_t n = joined->n;
     g_autoptr(GArray) spans = NULL;
     RfFieldSheet states = *sheet;
-    if (sheet->log_samples > 0) {
-        spans = rf_log_clock_spans(sheet->log_time_s, sheet->log_voltage_v, sheet->log_samples, error);
-        if (!spans) return NULL;
+    if (sheet->log_spans > 0) {
+        spans = g_array_new(FALSE, TRUE, sizeof(RfLogSpan));
+        g_array_append_vals(spans, sheet->log, (unsigned)sheet->log_spans);
         rf_field_log_complete_sheet(spans, &states);
     }
     double voltage_v[RF_FIELD_STATES] = {0};

@@ -62,12 +62,20 @@ RfFieldTimeline *rf_field_timeline_new(void);
 void rf_field_timeline_free(RfFieldTimeline *timeline);
 G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfFieldTimeline, rf_field_timeline_free)
 
+/* A stretch of the voltage log at one level. */
 typedef struct {
-    unsigned states;                          /* 1..3; how many of the next are used */
-    RfFieldState state[RF_FIELD_STATES];      /* in the order in which they first occur */
-    double top_plus_v, top_minus_v;           /* > 0 and < 0, of the supply; unused states may be 0 */
-    const double *log_time_s, *log_voltage_v; /* (borrowed) or NULL */
-    size_t log_samples;
+    double start_s, end_s; /* log clock; a span starts where the one before it ends */
+    double u_start_s;      /* of its start, of a rectangular distribution; 0 for the first */
+    RfFieldState state;
+    double voltage_v; /* signed */
+} RfLogSpan;
+
+typedef struct {
+    unsigned states;                     /* 1..3; how many of the next are used */
+    RfFieldState state[RF_FIELD_STATES]; /* in the order in which they first occur */
+    double top_plus_v, top_minus_v;      /* > 0 and < 0, of the supply; unused states may be 0 */
+    const RfLogSpan *log;                /* (borrowed) in time order, or NULL */
+    size_t log_spans;
     double log_clock_reach_s; /* largest offset searched; 0: any overlap */
     const RfMedium
         *medium; /* (borrowed) or NULL; with it, a droplet's wander tells how fast it falls without field */

@@ -1,66 +1,12 @@
 #include "physics/log_clock.h"
 
+#include <gsl/gsl_cdf.h>
+#include <gsl/gsl_randist.h>
 #include <math.h>
 #include <stdlib.h>
 
-#include "physics/physics_error.h"
-
 /* Switches closer than this on a common clock may be the same one (a late relay, an interval between samples). */
 static const double SAME_S = 0.5;
-
-static RfFieldState state_of(double voltage_v, double threshold_v)
-{
-    if (voltage_v > threshold_v) return RF_FIELD_TOP_PLUS;
-    return voltage_v < -threshold_v ? RF_FIELD_TOP_MINUS : RF_FIELD_OFF;
-}
-
-static double span_voltage(const double *voltage_v, size_t first, size_t end)
-{
-    double sum = 0;
-    if (end - first > 4) {
-        first++;
-        end--;
-    }
-    for (size_t i = first; i < end; i++) sum += voltage_v[i];
-    return sum / (double)(end - first);
-}
-
-static bool check_log(const double *time_s, const double *voltage_v, size_t n, GError **error)
-{
-    for (size_t i = 0; i < n; i++) {
-        bool ascends = i == 0 || time_s[i] > time_s[i - 1];
-        if (isfinite(time_s[i]) && isfinite(voltage_v[i]) && ascends) continue;
-        g_set_error(error, RF_PHYSICS_ERROR, RF_PHYSICS_ERROR_RANGE,
-                    "voltage log: sample %zu at %g s, %g V; need finite numbers and ascending times", i + 1,
-                    time_s[i], voltage_v[i]);
-        return false;
-    }
-    if (n >= 2) return true;
-    g_set_error(error, RF_PHYSICS_ERROR, RF_PHYSICS_ERROR_TOO_FEW,
-                "voltage log: %zu samples; need at least 2", n);
-    return false;
-}
-
-GArray *rf_log_clock_spans(const double *time_s, const double *voltage_v, size_t n, GError **error)
-{
-    if (!check_log(time_s, voltage_v, n, error)) return NULL;
-    GArray *spans = g_array_new(FALSE, TRUE, sizeof(RfLogSpan));
-    double largest = 0, start_s = time_s[0], u_start_s = 0;
-    for (size_t i = 0; i < n; i++) largest = fmax(largest, fabs(voltage_v[i]));
-    double threshold = fmax(0.5 * largest, 1); /* a log without any field is noise about zero */
-    size_t first = 0;
-    for (size_t i = 1; i <= n; i++) {
-        RfFieldState state = state_of(voltage_v[first], threshold);
-        if (i < n && state_of(voltage_v[i], threshold) == state) continue;
-        double end_s = i < n ? 0.5 * (time_s[i - 1] + time_s[i]) : time_s[n - 1];
-        RfLogSpan span = {start_s, end_s, u_start_s, state, span_voltage(voltage_v, first, i)};
-        g_array_append_val(spans, span);
-        u_start_s = i < n ? (time_s[i] - time_s[i - 1]) / sqrt(12) : 0;
-        start_s = end_s;
-        first = i;
-    }
-    return spans;
-}
 
 static const RfLogSpan *span_at(const GArray *spans, unsigned k)
 {
@@ -101,29 +47,72 @@ static double misfit(const RfLogClock *clock, const RfLogPair *pair)
     return pair->log_s.value - rf_log_clock_from_recording_s(clock, pair->recording_s.value);
 }
 
-static void fit_line(const GArray *pairs, bool with_drift, RfLogClock *clock)
+/* Chance of the pair's difference under a clock: a rectangle smeared by the recording's Gaussian, or an outlier anywhere
+ * within the second in which pairs are sought. */
+static double log_chance(const RfLogClock *clock, const RfLogPair *pair)
 {
-    double w0 = 0, w1 = 0, w2 = 0, d0 = 0, d1 = 0;
-    for (unsigned i = 0; i < pairs->len; i++) {
-        const RfLogPair *p = &g_array_index(pairs, RfLogPair, i);
-        double t = p->recording_s.value - clock->pivot_s, difference = p->log_s.value - p->recording_s.value;
-        double variance =
-            p->log_s.sigma * p->log_s.sigma + p->recording_s.sigma * p->recording_s.sigma + 1e-12;
-        double weight = 1 / variance, far = fabs(misfit(clock, p)) * sqrt(weight) / 4;
-        if (far > 1) weight /= far * far;
-        w0 += weight;
-        w1 += weight * t;
-        w2 += weight * t * t;
-        d0 += weight * difference;
-        d1 += weight * difference * t;
+    static const double outlier_share = 1e-3;
+    double half_s = sqrt(3) * pair->log_s.sigma, sigma_s = fmax(pair->recording_s.sigma, 1e-5);
+    double miss_s = misfit(clock, pair), within;
+    if (half_s > 1e-3 * sigma_s)
+        within = (gsl_cdf_ugaussian_P((miss_s + half_s) / sigma_s) -
+                  gsl_cdf_ugaussian_P((miss_s - half_s) / sigma_s)) /
+                 (2 * half_s);
+    else
+        within = gsl_ran_ugaussian_pdf(miss_s / sigma_s) / sigma_s;
+    return log((1 - outlier_share) * within + outlier_share / (2 * SAME_S));
+}
+
+enum { GRID = 81 };
+
+/* Where a parameter of the clock is sought. */
+typedef struct {
+    double middle, half; /* half 0: held */
+} Range;
+
+static double range_at(const Range *range, int i)
+{
+    return range->middle + range->half * (2.0 * i / (GRID - 1) - 1);
+}
+
+static double log_likelihood(const GArray *pairs, const RfLogClock *clock)
+{
+    double sum = 0;
+    for (unsigned i = 0; i < pairs->len; i++) sum += log_chance(clock, &g_array_index(pairs, RfLogPair, i));
+    return sum;
+}
+
+/* Mean and spread of both parameters over the ranges. */
+static void weigh_clocks(const GArray *pairs, const Range *offset, const Range *drift, RfLogClock *clock)
+{
+    int drifts = drift->half > 0 ? GRID : 1;
+    g_autofree double *value = g_new(double, GRID *drifts);
+    double top = -HUGE_VAL, sum[5] = {0};
+    RfLogClock at = *clock;
+    for (int i = 0; i < GRID * drifts; i++) {
+        at.offset_s.value = range_at(offset, i % GRID);
+        at.drift.value = drifts > 1 ? range_at(drift, i / GRID) : drift->middle;
+        value[i] = log_likelihood(pairs, &at);
+        top = fmax(top, value[i]);
     }
-    double det = w0 * w2 - w1 * w1;
-    if (with_drift && det > 1e-9 * w0 * w2) {
-        clock->offset_s = (RfValue){(d0 * w2 - d1 * w1) / det, sqrt(w2 / det)};
-        clock->drift = (RfValue){(d1 * w0 - d0 * w1) / det, sqrt(w0 / det)};
-    } else {
-        clock->offset_s = (RfValue){d0 / w0, 1 / sqrt(w0)};
-        clock->drift = (RfValue){0, 0};
+    for (int i = 0; i < GRID * drifts; i++) {
+        double w = exp(value[i] - top), o = range_at(offset, i % GRID) - offset->middle;
+        double d = drifts > 1 ? range_at(drift, i / GRID) - drift->middle : 0;
+        const double terms[5] = {w, w * o, w * o * o, w * d, w * d * d};
+        for (int k = 0; k < 5; k++) sum[k] += terms[k];
+    }
+    double o = sum[1] / sum[0], d = sum[3] / sum[0];
+    clock->offset_s = (RfValue){offset->middle + o, sqrt(fmax(sum[2] / sum[0] - o * o, 0))};
+    clock->drift = (RfValue){drift->middle + d, sqrt(fmax(sum[4] / sum[0] - d * d, 0))};
+}
+
+/* Ranges close in on the likelihood until they hold six of its sigmas on either side. */
+static void home_in(const GArray *pairs, Range offset, Range drift, RfLogClock *clock)
+{
+    for (int pass = 0; pass < 3; pass++) {
+        weigh_clocks(pairs, &offset, &drift, clock);
+        offset = (Range){clock->offset_s.value, fmax(6 * clock->offset_s.sigma, offset.half / 15)};
+        drift = (Range){clock->drift.value, fmax(6 * clock->drift.sigma, drift.half / 15)};
     }
 }
 
@@ -144,18 +133,28 @@ static double median_difference(const GArray *pairs)
     return d[pairs->len / 2];
 }
 
+static double largest_u_s(const GArray *pairs)
+{
+    double largest = 1e-3;
+    for (unsigned i = 0; i < pairs->len; i++) {
+        const RfLogPair *p = &g_array_index(pairs, RfLogPair, i);
+        largest = fmax(largest, hypot(p->log_s.sigma, p->recording_s.sigma));
+    }
+    return largest;
+}
+
 void rf_log_clock_fit(const GArray *pairs, RfLogClock *clock)
 {
-    enum { ROUNDS = 20 };
     const RfLogPair *first = &g_array_index(pairs, RfLogPair, 0), *last = first + pairs->len - 1;
-    *clock = (RfLogClock){.pivot_s = 0.5 * (first->recording_s.value + last->recording_s.value)};
-    clock->offset_s.value = median_difference(pairs);
-    RfLogClock steady = *clock;
-    for (int round = 0; round < ROUNDS; round++) fit_line(pairs, false, &steady);
-    *clock = steady;
-    if (pairs->len < 4) return;
-    for (int round = 0; round < ROUNDS; round++) fit_line(pairs, true, clock);
-    if (fabs(clock->drift.value) <= 4 * clock->drift.sigma) *clock = steady;
+    double span_s = last->recording_s.value - first->recording_s.value, reach_s = 6 * largest_u_s(pairs);
+    *clock = (RfLogClock){.pivot_s = first->recording_s.value + 0.5 * span_s};
+    Range offset = {median_difference(pairs), reach_s}, drift = {0, 0};
+    home_in(pairs, offset, drift, clock);
+    if (pairs->len < 4 || !(span_s > 0)) return;
+    RfLogClock drifting = *clock;
+    drift.half = 2 * reach_s / span_s;
+    home_in(pairs, offset, drift, &drifting);
+    if (fabs(drifting.drift.value) > 4 * drifting.drift.sigma) *clock = drifting;
 }
 
 static double best_offset(const GArray *spans, const GArray *switches, double reach_s, double *best_score)
