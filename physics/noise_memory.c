@@ -92,33 +92,37 @@ static void try_memories(Pool *pool, Memories memories)
     pool->best = memories;
 }
 
-static void try_both(Pool *pool, double share, double memory_s)
+static void try_both(Pool *pool, RfNoiseMemory memory)
 {
-    RfNoiseMemory m = {share, memory_s};
-    try_memories(pool, (Memories){m, m});
+    try_memories(pool, (Memories){memory, memory});
 }
 
-/* The shares of the two axes and the common memory, by steps that shrink. */
+/* The same kind of memory, larger and longer by these factors. */
+static RfNoiseMemory scaled(RfNoiseMemory memory, double size, double length)
+{
+    return (RfNoiseMemory){memory.share * size, memory.memory_s * length, memory.smear_s * size};
+}
+
+/* The sizes on the two axes and the common length, by steps that shrink. */
 static void polish(Pool *pool)
 {
-    static const double factors[] = {1.8, 1.35};
+    static const double factors[] = {1.8, 1.35, 1.15};
     for (size_t round = 0; round < G_N_ELEMENTS(factors); round++)
         for (int side = 0; side < 2; side++) {
             double f = side == 0 ? factors[round] : 1 / factors[round];
             Memories at = pool->best;
-            try_memories(pool, (Memories){{at.fall.share * f, at.fall.memory_s}, at.across});
+            try_memories(pool, (Memories){scaled(at.fall, f, 1), at.across});
             at = pool->best;
-            try_memories(pool, (Memories){at.fall, {at.across.share * f, at.across.memory_s}});
+            try_memories(pool, (Memories){at.fall, scaled(at.across, f, 1)});
             at = pool->best;
-            try_memories(pool, (Memories){{at.fall.share, at.fall.memory_s * f},
-                                          {at.across.share, at.across.memory_s * f}});
+            try_memories(pool, (Memories){scaled(at.fall, 1, f), scaled(at.across, 1, f)});
         }
 }
 
 void rf_noise_memory_estimate(const RfTrail *trails, const RfDropletFit *fits, size_t n,
                               const RfDropletModel *model, RfNoiseMemory *fall, RfNoiseMemory *across)
 {
-    static const double shares[] = {0.3, 1, 3, 10}, frames[] = {0.8, 4};
+    static const double shares[] = {0.3, 1, 3, 10}, smears[] = {0.05, 0.15, 0.4}, lengths[] = {0.5, 2.4};
     const Memories white = {0};
     RfDropletModel plain = *model;
     Pool pool = {0};
@@ -127,10 +131,13 @@ void rf_noise_memory_estimate(const RfTrail *trails, const RfDropletFit *fits, s
     pool_fill(&pool, trails, fits, n, &plain);
     double without = pool.best_value = pooled(&pool, &white);
     for (size_t i = 0; pool.n > 0 && i < G_N_ELEMENTS(shares); i++)
-        try_both(&pool, shares[i], 1.7 * pool.frame_s);
+        try_both(&pool, (RfNoiseMemory){.share = shares[i], .memory_s = 1.7 * pool.frame_s});
+    for (size_t i = 0; pool.n > 0 && i < G_N_ELEMENTS(smears); i++)
+        try_both(&pool, (RfNoiseMemory){.smear_s = smears[i] * pool.frame_s, .memory_s = 1.7 * pool.frame_s});
     bool is_promising = pool.best_value > without + 2;
-    for (size_t i = 0; is_promising && i < G_N_ELEMENTS(frames); i++)
-        try_both(&pool, pool.best.fall.share, frames[i] * pool.frame_s);
+    const Memories start = pool.best;
+    for (size_t i = 0; is_promising && i < G_N_ELEMENTS(lengths); i++)
+        try_both(&pool, scaled(start.fall, 1, lengths[i]));
     if (is_promising) polish(&pool);
     Memories found = pool.best_value > without + GAIN_MIN ? pool.best : white;
     *fall = found.fall;

@@ -1,7 +1,8 @@
 /* How long the localisation error of a recording lives, from all droplets together. Encoders hand errors on from frame
- * to frame; taken as white, such errors pass for diffusion (7 % in D at a correlation of 0.5 between neighbours). The
- * spread alone can't tell lasting errors from diffusion; the fall can, since it says how much diffusion there is. So
- * share and memory are common to all droplets, and each droplet's radius stays tied to both.
+ * to frame; taken as white, such errors pass for diffusion (7 % in D at a correlation of 0.5 between neighbours). They
+ * also mix a frame with its neighbours, which hides diffusion (11 % in D seen in interlaced MPEG-2 footage). The spread
+ * alone can't tell either from diffusion; the fall can, since it says how much diffusion there is. So kind, size and
+ * memory are common to all droplets, and each droplet's radius stays tied to both.
  * Not for droplets' own noise, which stays free in each fit. */
 #pragma once
 

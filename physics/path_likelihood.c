@@ -54,26 +54,46 @@ static bool whiten_white(const RfPathNoise *noise, size_t n, const double *times
     return true;
 }
 
-/* The state is (true position, error that lives on in units of its own standard deviation). */
+/* The state is (true position, error that lives on, in units of its own size). `sign` is the error's variance in these
+ * units: -1 where it stands for a running mean; the algebra is the same. */
 typedef struct {
     double pp, pe, ee; /* covariance */
 } JointCovariance;
 
-static void joint_predict(JointCovariance *c, double growth_m2, double memory)
+static void joint_predict(JointCovariance *c, double growth_m2, double memory, double sign)
 {
     c->pp += growth_m2;
     c->pe *= memory;
-    c->ee = 1 + memory * memory * (c->ee - 1);
+    c->ee = sign + memory * memory * (c->ee - sign);
+}
+
+static bool is_smeared(const RfPathNoise *noise)
+{
+    return noise->memory.smear_s > 0;
+}
+
+/* Size of the lasting part at one sample, metres. */
+static double reach_m(const RfPathNoise *noise, double u_m)
+{
+    return is_smeared(noise) ? sqrt(2 * noise->diffusion_m2_s * noise->memory.smear_s)
+                             : u_m * sqrt(noise->memory.share);
+}
+
+/* What is left of a sample's variance for the white part. c is free, so it takes up what smearing takes away. */
+static double white_m2(const RfPathNoise *noise, double u_m)
+{
+    double white_share = is_smeared(noise) ? 1 : 1 - noise->memory.share;
+    return u_m * u_m * white_share + noise->extra_variance_m2;
 }
 
 static bool whiten_with_memory(const RfPathNoise *noise, size_t n, const double *times_s, const double *u_m,
                                size_t m, double *columns, LogProduct *det)
 {
     g_autofree double *level = g_new(double, 2 * m);
-    double *lasting = level + m, share = noise->memory.share, reach = sqrt(share);
-    double first = reach * u_m[0];
+    const double sign = is_smeared(noise) ? -1 : 1, first = reach_m(noise, u_m[0]);
+    double *lasting = level + m;
     /* Position = first measurement less both errors. */
-    JointCovariance c = {u_m[0] * u_m[0] + noise->extra_variance_m2, -first, 1};
+    JointCovariance c = {white_m2(noise, u_m[0]) + sign * first * first, -sign * first, sign};
     for (size_t j = 0; j < m; j++) {
         level[j] = columns[j];
         lasting[j] = columns[j] = 0;
@@ -81,9 +101,9 @@ static bool whiten_with_memory(const RfPathNoise *noise, size_t n, const double 
     for (size_t i = 1; i < n; i++) {
         double *row = columns + i * m, dt = times_s[i] - times_s[i - 1],
                memory = exp(-dt / noise->memory.memory_s);
-        joint_predict(&c, 2 * noise->diffusion_m2_s * dt, memory);
-        double h = reach * u_m[i], white = u_m[i] * u_m[i] * (1 - share) + noise->extra_variance_m2;
-        double p = c.pp + h * c.pe, e = c.pe + h * c.ee, innovation = p + h * e + white;
+        joint_predict(&c, 2 * noise->diffusion_m2_s * dt, memory, sign);
+        double h = reach_m(noise, u_m[i]), p = c.pp + h * c.pe, e = c.pe + h * c.ee;
+        double innovation = p + h * e + white_m2(noise, u_m[i]);
         if (!(innovation > 0)) return false;
         double gain_p = p / innovation, gain_e = e / innovation, weight = 1 / sqrt(innovation);
         for (size_t j = 0; j < m; j++) {
@@ -104,8 +124,9 @@ bool rf_path_likelihood_whiten(const RfPathNoise *noise, size_t n, const double 
 {
     LogProduct det = {0, 1, 0};
     if (n == 0 || m == 0) return false;
-    bool fine = noise->memory.share > 0 ? whiten_with_memory(noise, n, times_s, u_m, m, columns, &det)
-                                        : whiten_white(noise, n, times_s, u_m, m, columns, &det);
+    bool is_white = !(noise->memory.share > 0) && !is_smeared(noise);
+    bool fine = !is_white ? whiten_with_memory(noise, n, times_s, u_m, m, columns, &det)
+                          : whiten_white(noise, n, times_s, u_m, m, columns, &det);
     if (!fine) return false;
     *log_det = log_product_result(&det);
     return isfinite(*log_det);

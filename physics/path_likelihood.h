@@ -13,11 +13,15 @@
 #include <stdbool.h>
 #include <stddef.h>
 
-/* Recording-wide memory of the localisation error. All zero: white. */
+/* Recording-wide memory of the localisation error, of one of two kinds. All zero: white.
+ * Errors that are handed on add a lasting part of variance share u_i^2. A picture that keeps something of its neighbours
+ * (an encoder's prediction from before and after) shows a running mean of the motion instead: its error goes against
+ * the steps, and enters the covariance like a lasting part of *negative* variance, -2 D smear_s, just as blur within one
+ * exposure enters c. Only one of the two may be set. */
 typedef struct {
-    double
-        share; /* part of u_i^2 that lives on; >= 0, may exceed 1 where u_i is stated too small. Unitless */
-    double memory_s; /* its correlation falls as exp(-dt/memory_s); > 0 where share > 0 */
+    double share;    /* part of u_i^2 that lives on; >= 0, may exceed 1 where u_i is stated too small. Unitless */
+    double memory_s; /* correlation falls as exp(-dt/memory_s); > 0 where share or smear_s is */
+    double smear_s;  /* >= 0 */
 } RfNoiseMemory;
 
 typedef struct {

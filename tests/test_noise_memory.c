@@ -1,7 +1,9 @@
 #include "physics/noise_memory.h"
 
 #include <gsl/gsl_errno.h>
+#include <gsl/gsl_randist.h>
 #include <math.h>
+#include <stdlib.h>
 
 #include "physics/constants.h"
 #include "tests/support/droplet_walk.h"
@@ -87,6 +89,52 @@ static void test_memory_found_and_bias_gone(void)
     record_clear(&r);
 }
 
+/* Every picture keeps a share of the three before and after it; localisation adds white noise of noise_m. The weights sum
+ * to 1, so that steady motion is unharmed. */
+static void smear(RfTrail *trail, double noise_m, gsl_rng *random)
+{
+    static const double weights[] = {0.84, 0.045, 0.023, 0.012};
+    enum { REACH = G_N_ELEMENTS(weights) - 1 };
+    RfSample *samples = g_new(RfSample, trail->n);
+    size_t kept = 0;
+    for (size_t i = REACH; i + REACH < trail->n; i++) {
+        RfSample sample = {.time_s = trail->samples[i].time_s, .u_fall_m = noise_m, .u_drift_m = noise_m};
+        for (int k = -REACH; k <= REACH; k++) {
+            const RfSample *at = &trail->samples[(ptrdiff_t)i + k];
+            sample.fall_m += weights[abs(k)] * at->fall_m;
+            sample.drift_m += weights[abs(k)] * at->drift_m;
+        }
+        sample.fall_m += gsl_ran_gaussian(random, noise_m);
+        sample.drift_m += gsl_ran_gaussian(random, noise_m);
+        samples[kept++] = sample;
+    }
+    g_free((void *)trail->samples);
+    trail->samples = samples;
+    trail->n = kept;
+}
+
+static void test_running_mean_found_and_bias_gone(void)
+{
+    Recording r;
+    record(&r, 0, 0);
+    gsl_rng *random = gsl_rng_alloc(gsl_rng_mt19937);
+    for (int i = 0; i < DROPLETS; i++) {
+        smear(&r.trails[i], 0.25e-6, random);
+        rf_droplet_fit(&r.trails[i], &r.model, &r.fits[i]);
+    }
+    gsl_rng_free(random);
+    RfDropletModel with = r.model;
+    rf_noise_memory_estimate(r.trails, r.fits, DROPLETS, &r.model, &with.fall_memory, &with.across_memory);
+    double before = spread_bias(&r, &r.model), after = spread_bias(&r, &with);
+    g_test_message("smear %.4f s, memory %.3f s; bias %.3f before, %.3f after", with.fall_memory.smear_s,
+                   with.fall_memory.memory_s, before, after);
+    g_assert_cmpfloat(with.fall_memory.smear_s, >, 0);
+    g_assert_cmpfloat(with.across_memory.smear_s, >, 0);
+    g_assert_cmpfloat(before, >, 0.045);
+    g_assert_cmpfloat(fabs(after), <, 0.035);
+    record_clear(&r);
+}
+
 static void test_no_droplets(void)
 {
     RfNoiseMemory fall, across;
@@ -102,5 +150,6 @@ int main(int argc, char **argv)
     g_test_add_func("/noise-memory/estimate/no-droplets", test_no_droplets);
     g_test_add_func("/noise-memory/estimate/white-stays-white", test_white_stays_white);
     g_test_add_func("/noise-memory/estimate/found-and-bias-gone", test_memory_found_and_bias_gone);
+    g_test_add_func("/noise-memory/estimate/running-mean-found-and-bias-gone", test_running_mean_found_and_bias_gone);
     return g_test_run();
 }

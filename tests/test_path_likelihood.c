@@ -35,8 +35,11 @@ static double position_covariance(const RfPathNoise *noise, const Path *p, int i
     double brownian = 2 * noise->diffusion_m2_s * fmin(p->times_s[i], p->times_s[j]);
     double share = noise->memory.share, lasting = 0;
     if (share > 0)
-        lasting = share * p->u_m[i] * p->u_m[j] *
-                  exp(-fabs(p->times_s[i] - p->times_s[j]) / noise->memory.memory_s);
+        lasting = share * p->u_m[i] * p->u_m[j];
+    else if (noise->memory.smear_s > 0)
+        lasting = -2 * noise->diffusion_m2_s * noise->memory.smear_s;
+    if (lasting != 0)
+        lasting *= exp(-fabs(p->times_s[i] - p->times_s[j]) / noise->memory.memory_s);
     double white = i == j ? p->u_m[i] * p->u_m[i] * (1 - share) + noise->extra_variance_m2 : 0;
     return brownian + lasting + white;
 }
@@ -108,9 +111,17 @@ static void test_negative_noise_as_dense(void)
 static void test_memory_as_dense(void)
 {
     compare_with_dense(
-        &(RfPathNoise){.diffusion_m2_s = 1e-11, .extra_variance_m2 = 2e-14, .memory = {0.8, 0.15}});
+        &(RfPathNoise){.diffusion_m2_s = 1e-11, .extra_variance_m2 = 2e-14, .memory = {.share = 0.8, .memory_s = 0.15}});
     compare_with_dense(
-        &(RfPathNoise){.diffusion_m2_s = 1e-11, .extra_variance_m2 = 3e-13, .memory = {1.7, 0.05}});
+        &(RfPathNoise){.diffusion_m2_s = 1e-11, .extra_variance_m2 = 3e-13, .memory = {.share = 1.7, .memory_s = 0.05}});
+}
+
+/* A running mean: the lasting part has a negative variance. */
+static void test_smear_as_dense(void)
+{
+    compare_with_dense(&(RfPathNoise){.diffusion_m2_s = 2e-11,
+                                      .extra_variance_m2 = 2e-13,
+                                      .memory = {.smear_s = 0.004, .memory_s = 0.06}});
 }
 
 static void test_short_memory_is_white(void)
@@ -120,7 +131,7 @@ static void test_short_memory_is_white(void)
     for (int i = 0; i < N; i++) white[i] = forgetful[i] = p.data_m[i];
     RfPathNoise noise = {.diffusion_m2_s = 2e-11, .extra_variance_m2 = 1e-13};
     g_assert_true(rf_path_likelihood_whiten(&noise, N, p.times_s, p.u_m, 1, white, &log_det_white));
-    noise.memory = (RfNoiseMemory){0.9, 1e-5};
+    noise.memory = (RfNoiseMemory){.share = 0.9, .memory_s = 1e-5};
     g_assert_true(rf_path_likelihood_whiten(&noise, N, p.times_s, p.u_m, 1, forgetful, &log_det_forgetful));
     g_assert_cmpfloat_with_epsilon(log_det_white, log_det_forgetful, 1e-9);
     for (int i = 0; i < N; i++) g_assert_cmpfloat_with_epsilon(white[i], forgetful[i], 1e-9);
@@ -246,6 +257,7 @@ int main(int argc, char **argv)
     g_test_add_func("/path-likelihood/whiten/white-as-dense", test_white_as_dense);
     g_test_add_func("/path-likelihood/whiten/negative-noise-as-dense", test_negative_noise_as_dense);
     g_test_add_func("/path-likelihood/whiten/memory-as-dense", test_memory_as_dense);
+    g_test_add_func("/path-likelihood/whiten/smear-as-dense", test_smear_as_dense);
     g_test_add_func("/path-likelihood/whiten/impossible-noise-refused", test_impossible_noise_refused);
     g_test_add_func("/path-likelihood/solve/degenerate-regressors-refused",
                     test_degenerate_regressors_refused);
