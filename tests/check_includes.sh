@@ -14,7 +14,7 @@ $found"
 done
 
 libav=$(grep -lE '#include <lib(av|sw)[a-z]+/' -r tracker calib physics cli | sort)
-[ "$libav" = "tracker/video_file.c" ] || complain "libav belongs in tracker/video_file.c alone; found in: $libav"
+[ "$libav" = "tracker/libav.c" ] || complain "libav belongs in tracker/libav.c alone; found in: $libav"
 
 opencv=$(grep -lE '#include <opencv' -r tracker calib physics cli | sort)
 [ "$opencv" = "tracker/spot_detector_opencv.cpp" ] ||

@@ -1,13 +1,44 @@
 #include "tracker/libav.h"
 
+#include <libavcodec/avcodec.h>
+#include <libavformat/avformat.h>
+#include <libavutil/opt.h>
+#include <libavutil/pixdesc.h>
+#include <math.h>
 #include <string.h>
+
+#include "tracker/rgb.h"
+#include "tracker/video_error.h"
 
 #define LONGEST_WORDS 200
 
-GQuark rf_video_error_quark(void)
-{
-    return g_quark_from_static_string("rf-video-error");
-}
+/* Containers that hold all of their own data. A positive list: what isn't here (concat scripts, playlists, image
+ * patterns, session descriptions, devices) can't be opened however it is named or disguised. */
+#define CONTAINERS                                                                                           \
+    "matroska,webm,mov,mp4,3gp,avi,mpeg,mpegts,mpegvideo,m4v,h264,hevc,obu,ivf,mjpeg,yuv4mpegpipe,nut,"      \
+    "flv,ogg,dv,asf,mxf,cine,gif,apng"
+
+/* All that differs between FFmpeg 5.1 and 7: two fields of a frame became flags (libavutil 58.7). */
+#if LIBAVUTIL_VERSION_INT >= AV_VERSION_INT(58, 7, 100)
+#define IS_INTERLACED(frame) (((frame)->flags & AV_FRAME_FLAG_INTERLACED) != 0)
+#define IS_TOP_FIRST(frame) (((frame)->flags & AV_FRAME_FLAG_TOP_FIELD_FIRST) != 0)
+#define SET_INTERLACED(frame, top_first)                                                                     \
+    ((frame)->flags |= AV_FRAME_FLAG_INTERLACED | ((top_first) ? AV_FRAME_FLAG_TOP_FIELD_FIRST : 0))
+#else
+#define IS_INTERLACED(frame) ((frame)->interlaced_frame != 0)
+#define IS_TOP_FIRST(frame) ((frame)->top_field_first != 0)
+#define SET_INTERLACED(frame, top_first)                                                                     \
+    ((frame)->interlaced_frame = 1, (frame)->top_field_first = (top_first))
+#endif
+
+_Static_assert(RF_NO_TICKS == AV_NOPTS_VALUE, "timestamps that aren't there");
+
+/* ---- what libav says ---- */
+
+typedef struct {    /* counted atomically, from any thread of libav's */
+    int complaints; /* errors */
+    int remarks;    /* also what it says in passing: that it conceals damage, for one */
+} Heard;
 
 /* libav's log callback gets no pointer of ours, so its last line waits in storage of the thread that called it. */
 static char *last_words(void)
@@ -30,63 +61,702 @@ static void remember(char *line)
 
 /* Decoders of ours carry a counter in `opaque` (copied to libav's own threads): some of them report damage nowhere
  * but in the log. */
-static void listen(void *context, int level, const char *format, va_list arguments)
+static void count(void *context, int level)
 {
+    const AVClass *class = context != NULL ? *(AVClass **)context : NULL;
+    if (class == NULL || class != avcodec_get_class()) return;
+    Heard *heard = ((AVCodecContext *)context)->opaque;
+    if (heard == NULL) return;
+    g_atomic_int_inc(&heard->remarks);
+    if (level <= AV_LOG_ERROR) g_atomic_int_inc(&heard->complaints);
+}
+
+static void hear(void *context, int level, const char *format, va_list arguments)
+{
+    if (level > AV_LOG_INFO) return;
+    count(context, level);
     if (level > AV_LOG_ERROR) return;
     int with_prefix = 1;
     char line[LONGEST_WORDS];
     av_log_format_line2(context, level, format, arguments, line, sizeof line, &with_prefix);
     g_strstrip(line);
     if (*line != '\0') remember(line);
-    const AVClass *class = context != NULL ? *(AVClass **)context : NULL;
-    if (class == NULL || class != avcodec_get_class()) return;
-    int *complaints = ((AVCodecContext *)context)->opaque;
-    if (complaints != NULL) g_atomic_int_inc(complaints);
 }
 
-void rf_libav_listen(void)
+/* Before libav on every thread: from here on its log is kept, not printed, and what it said before is forgotten. */
+static void listen(void)
 {
     static gsize is_listening = 0;
     if (g_once_init_enter(&is_listening)) {
-        av_log_set_callback(listen);
+        av_log_set_callback(hear);
         g_once_init_leave(&is_listening, 1);
     }
     *last_words() = '\0';
 }
 
 /* "clip.mkv: TEXT: Invalid data found when processing input (mov: moov atom not found)" */
-bool rf_libav_fail(GError **error, RfVideoError code, const char *path, int status, const char *text)
+static bool fail(GError **error, RfVideoError code, const char *path, int status, const char *text)
 {
-    GString *message = g_string_new(NULL);
-    g_string_printf(message, "%s: %s", path, text);
-    char words[AV_ERROR_MAX_STRING_SIZE];
-    if (status < 0 && av_strerror(status, words, sizeof words) == 0)
-        g_string_append_printf(message, ": %s", words);
-    if (status < 0 && *last_words() != '\0') g_string_append_printf(message, " (%s)", last_words());
-    g_set_error_literal(error, RF_VIDEO_ERROR, (int)code, message->str);
-    g_string_free(message, TRUE);
-    return false;
+    char words[AV_ERROR_MAX_STRING_SIZE] = "";
+    av_strerror(status, words, sizeof words);
+    bool has_more = *last_words() != '\0';
+    g_autofree char *whole =
+        g_strdup_printf("%s: %s%s%s%s", text, words, has_more ? " (" : "", last_words(), has_more ? ")" : "");
+    return rf_video_fail(error, code, path, whole);
 }
 
-bool rf_libav_check_file(const char *path, GError **error)
+bool rf_libav_fail_damaged(GError **error, const char *path, const char *text)
 {
-    if (!g_file_test(path, G_FILE_TEST_EXISTS)) {
-        return rf_libav_fail(error, RF_VIDEO_ERROR_ABSENT, path, 0, "no such file");
+    return fail(error, RF_VIDEO_ERROR_DAMAGED, path, AVERROR_INVALIDDATA, text);
+}
+
+/* ---- containers ---- */
+
+struct RfDemuxer {
+    AVFormatContext *format;
+    AVCodecParameters *parameters; /* as they were at the first packet */
+    AVPacket *packet;
+    int number; /* of the video stream */
+    RfStream stream;
+};
+
+static void find_streams(AVFormatContext *format)
+{
+    unsigned known = format->nb_streams;
+    AVDictionary **limits = g_new0(AVDictionary *, known + 1);
+    for (unsigned i = 0; i < known; i++) av_dict_set_int(&limits[i], "max_pixels", RF_VIDEO_MAX_PIXELS, 0);
+    avformat_find_stream_info(format, known > 0 ? limits : NULL); /* what it couldn't find out shows later */
+    for (unsigned i = 0; i < known; i++) av_dict_free(&limits[i]);
+    g_free(limits);
+}
+
+static AVFormatContext *open_container(const char *path, GError **error)
+{
+    AVDictionary *options = NULL;
+    av_dict_set(&options, "protocol_whitelist", "file", 0);
+    av_dict_set(&options, "format_whitelist", CONTAINERS, 0);
+    av_dict_set_int(&options, "probesize", 1 << 23, 0);
+    g_autofree char *address = g_strconcat("file:", path, NULL);
+    AVFormatContext *format = NULL;
+    int status = avformat_open_input(&format, address, NULL, &options);
+    av_dict_free(&options);
+    if (status >= 0) return format;
+    bool is_denied = status == AVERROR(EACCES) || status == AVERROR(EPERM);
+    fail(error, is_denied ? RF_VIDEO_ERROR_ABSENT : RF_VIDEO_ERROR_NOT_VIDEO, path, status,
+         is_denied ? "can't be read" : "not a video file of a known, self-contained format");
+    return NULL;
+}
+
+static bool is_indexable(enum AVCodecID codec, const AVCodecDescriptor *about)
+{
+    return codec == AV_CODEC_ID_H264 || codec == AV_CODEC_ID_HEVC || codec == AV_CODEC_ID_MPEG1VIDEO ||
+           codec == AV_CODEC_ID_MPEG2VIDEO || codec == AV_CODEC_ID_FFV1 ||
+           (about != NULL && (about->props & AV_CODEC_PROP_INTRA_ONLY));
+}
+
+static double ratio_or_zero(AVRational ratio)
+{
+    return ratio.num > 0 && ratio.den > 0 ? av_q2d(ratio) : 0;
+}
+
+static void describe(RfDemuxer *demuxer)
+{
+    AVStream *video = demuxer->format->streams[demuxer->number];
+    const AVCodecParameters *parameters = demuxer->parameters;
+    enum AVCodecID codec = parameters->codec_id;
+    const AVCodecDescriptor *about = avcodec_descriptor_get(codec);
+    const char *container = demuxer->format->iformat->name;
+    demuxer->stream =
+        (RfStream){.width = parameters->width,
+                   .height = parameters->height,
+                   .pixel_aspect = ratio_or_zero(av_guess_sample_aspect_ratio(demuxer->format, video, NULL)),
+                   .tick_s = {video->time_base.num, video->time_base.den},
+                   .rates_hz = {{video->avg_frame_rate.num, video->avg_frame_rate.den},
+                                {video->r_frame_rate.num, video->r_frame_rate.den}},
+                   .container = g_intern_string(container),
+                   .codec = about != NULL ? about->name : NULL,
+                   .is_lossless = about != NULL && !(about->props & AV_CODEC_PROP_LOSSY),
+                   .is_indexable = is_indexable(codec, about),
+                   .is_nal = codec == AV_CODEC_ID_H264 || codec == AV_CODEC_ID_HEVC,
+                   .is_hevc = codec == AV_CODEC_ID_HEVC,
+                   .may_lead = codec == AV_CODEC_ID_MPEG1VIDEO || codec == AV_CODEC_ID_MPEG2VIDEO ||
+                               codec == AV_CODEC_ID_HEVC,
+                   .is_seekable = strstr(container, "matroska") != NULL || strstr(container, "mp4") != NULL,
+                   .setup = parameters->extradata,
+                   .setup_size = (size_t)parameters->extradata_size};
+}
+
+static bool choose_stream(RfDemuxer *demuxer, const char *path, GError **error)
+{
+    AVFormatContext *format = demuxer->format;
+    int number = demuxer->number = av_find_best_stream(format, AVMEDIA_TYPE_VIDEO, -1, -1, NULL, 0);
+    if (number < 0 || (format->streams[number]->disposition & AV_DISPOSITION_ATTACHED_PIC)) {
+        return rf_video_fail(error, RF_VIDEO_ERROR_NOT_VIDEO, path, "no video stream in it");
     }
-    if (!g_file_test(path, G_FILE_TEST_IS_REGULAR)) {
-        return rf_libav_fail(error, RF_VIDEO_ERROR_ABSENT, path, 0, "not a regular file");
+    for (unsigned i = 0; i < format->nb_streams; i++) {
+        if ((int)i != number) format->streams[i]->discard = AVDISCARD_ALL;
+    }
+    demuxer->parameters = avcodec_parameters_alloc();
+    avcodec_parameters_copy(demuxer->parameters, format->streams[number]->codecpar);
+    describe(demuxer);
+    return true;
+}
+
+RfDemuxer *rf_demuxer_open(const char *path, GError **error)
+{
+    listen();
+    if (!rf_video_check_file(path, error)) return NULL;
+    g_autoptr(RfDemuxer) demuxer = g_new0(RfDemuxer, 1);
+    demuxer->packet = av_packet_alloc();
+    demuxer->format = open_container(path, error);
+    if (demuxer->format == NULL) return NULL;
+    find_streams(demuxer->format);
+    return choose_stream(demuxer, path, error) ? g_steal_pointer(&demuxer) : NULL;
+}
+
+void rf_demuxer_free(RfDemuxer *demuxer)
+{
+    if (demuxer == NULL) return;
+    av_packet_free(&demuxer->packet);
+    avcodec_parameters_free(&demuxer->parameters);
+    avformat_close_input(&demuxer->format);
+    g_free(demuxer);
+}
+
+const RfStream *rf_demuxer_stream(const RfDemuxer *demuxer)
+{
+    return &demuxer->stream;
+}
+
+bool rf_demuxer_next(RfDemuxer *demuxer, RfPacket *packet)
+{
+    AVPacket *held = demuxer->packet;
+    do {
+        av_packet_unref(held);
+        if (av_read_frame(demuxer->format, held) < 0) return false;
+    } while (held->stream_index != demuxer->number);
+    *packet = (RfPacket){.pts = held->pts,
+                         .dts = held->dts,
+                         .duration = held->duration,
+                         .is_key = held->flags & AV_PKT_FLAG_KEY,
+                         .is_hidden = held->flags & AV_PKT_FLAG_DISCARD,
+                         .is_broken = held->flags & AV_PKT_FLAG_CORRUPT,
+                         .bytes = held->data,
+                         .size = (size_t)held->size};
+    return true;
+}
+
+bool rf_demuxer_seek(RfDemuxer *demuxer, int64_t pts)
+{
+    return avformat_seek_file(demuxer->format, demuxer->number, INT64_MIN, pts, pts, 0) >= 0;
+}
+
+/* ---- decoders ---- */
+
+struct RfDecoder {
+    AVCodecContext *codec;
+    AVFrame *frame;
+    const AVPixFmtDescriptor *layout; /* of the frame */
+    Heard heard;
+    int complaints_seen;
+    /* For sources that have no luma plane of their own: */
+    void *rows;     /* tight */
+    uint16_t *work; /* three rows */
+};
+
+static RfDecoder *decoder_for(const AVCodec *codec)
+{
+    RfDecoder *decoder = g_new0(RfDecoder, 1);
+    decoder->frame = av_frame_alloc();
+    decoder->codec = avcodec_alloc_context3(codec);
+    decoder->codec->max_pixels = RF_VIDEO_MAX_PIXELS;
+    decoder->codec->opaque = &decoder->heard;
+    decoder->codec->thread_count = 1;
+    return decoder;
+}
+
+RfDecoder *rf_decoder_new(const char *path, const RfDemuxer *demuxer, int threads, int reorder,
+                          GError **error)
+{
+    listen();
+    const AVCodec *codec = avcodec_find_decoder(demuxer->parameters->codec_id);
+    if (codec == NULL) {
+        rf_video_fail(error, RF_VIDEO_ERROR_UNSUPPORTED, path,
+                      "no decoder for this kind of video is built in");
+        return NULL;
+    }
+    g_autoptr(RfDecoder) decoder = decoder_for(codec);
+    avcodec_parameters_to_context(decoder->codec, demuxer->parameters);
+    decoder->codec->thread_count = MAX(1, threads);
+    /* FFV1 passes its state from frame to frame, so only its slices gain. */
+    bool by_frame = (codec->capabilities & AV_CODEC_CAP_FRAME_THREADS) && codec->id != AV_CODEC_ID_FFV1;
+    decoder->codec->thread_type = by_frame ? FF_THREAD_FRAME : FF_THREAD_SLICE;
+    if (demuxer->stream.is_nal) decoder->codec->has_b_frames = MAX(decoder->codec->has_b_frames, reorder);
+    int status = avcodec_open2(decoder->codec, codec, NULL);
+    if (status < 0) {
+        fail(error, RF_VIDEO_ERROR_UNSUPPORTED, path, status, "the decoder refuses it");
+        return NULL;
+    }
+    decoder->heard = (Heard){0};
+    return g_steal_pointer(&decoder);
+}
+
+static int send_bytes(RfDecoder *decoder, const void *bytes, size_t size)
+{
+    AVPacket *packet = av_packet_alloc();
+    int status = av_new_packet(packet, (int)size);
+    if (status >= 0) memcpy(packet->data, bytes, size);
+    if (status >= 0) status = avcodec_send_packet(decoder->codec, packet);
+    if (status >= 0) status = avcodec_send_packet(decoder->codec, NULL);
+    av_packet_free(&packet);
+    return status;
+}
+
+RfDecoder *rf_decoder_still(const char *path, const char *codec_name, const void *bytes, size_t size,
+                            RfPicture *picture, GError **error)
+{
+    listen();
+    const AVCodec *codec = avcodec_find_decoder_by_name(codec_name);
+    g_autoptr(RfDecoder) decoder = codec != NULL ? decoder_for(codec) : NULL;
+    if (decoder == NULL || avcodec_open2(decoder->codec, codec, NULL) < 0) {
+        fail(error, RF_VIDEO_ERROR_UNSUPPORTED, path, AVERROR_DECODER_NOT_FOUND, "can't be decoded");
+        return NULL;
+    }
+    int status = send_bytes(decoder, bytes, size);
+    if (status >= 0 && rf_decoder_receive(decoder, picture) == RF_DECODER_PICTURE)
+        return g_steal_pointer(&decoder);
+    rf_libav_fail_damaged(error, path, "the picture can't be decoded");
+    return NULL;
+}
+
+void rf_decoder_free(RfDecoder *decoder)
+{
+    if (decoder == NULL) return;
+    avcodec_free_context(&decoder->codec);
+    av_frame_free(&decoder->frame);
+    g_free(decoder->rows);
+    g_free(decoder->work);
+    g_free(decoder);
+}
+
+bool rf_decoder_send(RfDecoder *decoder, const RfDemuxer *demuxer)
+{
+    return avcodec_send_packet(decoder->codec, demuxer != NULL ? demuxer->packet : NULL) >= 0;
+}
+
+static bool says_it_is_damaged(const AVFrame *frame)
+{
+    return (frame->flags & AV_FRAME_FLAG_CORRUPT) || frame->decode_error_flags != 0;
+}
+
+/* Frames that say so themselves; for decoders that neither reorder nor run ahead, also those during which they
+ * complained (FFV1's checksums, JPEG's broken runs are reported nowhere else). */
+static bool is_damaged(RfDecoder *decoder)
+{
+    int complaints = g_atomic_int_get(&decoder->heard.complaints);
+    bool is_direct =
+        decoder->codec->has_b_frames == 0 && !(decoder->codec->active_thread_type & FF_THREAD_FRAME);
+    bool complained = is_direct && complaints != decoder->complaints_seen;
+    decoder->complaints_seen = complaints;
+    return complained || says_it_is_damaged(decoder->frame);
+}
+
+/* Threads patch a broken picture with as much of itself and its neighbours as happens to be ready; only FFV1's slices
+ * have nothing to do with each other. A picture that is shown before the broken one that it was predicted from carries
+ * no mark: that the decoder said in passing that it conceals something is all there is. */
+bool rf_decoder_is_luck_involved(const RfDecoder *decoder)
+{
+    if (decoder->codec->active_thread_type == 0 || decoder->codec->codec_id == AV_CODEC_ID_FFV1) return false;
+    return g_atomic_int_get(&decoder->heard.remarks) != 0 || says_it_is_damaged(decoder->frame);
+}
+
+static bool is_grey_of_rgb(const AVPixFmtDescriptor *layout)
+{
+    return (layout->flags & (AV_PIX_FMT_FLAG_RGB | AV_PIX_FMT_FLAG_PAL)) != 0;
+}
+
+static bool is_readable(const AVPixFmtDescriptor *layout)
+{
+    uint64_t strange = AV_PIX_FMT_FLAG_HWACCEL | AV_PIX_FMT_FLAG_FLOAT | AV_PIX_FMT_FLAG_BAYER;
+    return layout != NULL && layout->nb_components > 0 && !(layout->flags & strange) &&
+           !g_str_has_prefix(layout->name, "xyz") && !g_str_equal(layout->name, "monow") &&
+           layout->comp[0].depth <= 16;
+}
+
+static int depth_of(const AVPixFmtDescriptor *layout)
+{
+    return MAX(8, layout->comp[0].depth);
+}
+
+static bool is_plain(const AVPixFmtDescriptor *layout)
+{
+    const AVComponentDescriptor *luma = &layout->comp[0];
+    bool is_wide = luma->depth > 8;
+    if (is_grey_of_rgb(layout) || (layout->flags & AV_PIX_FMT_FLAG_BITSTREAM) || luma->depth < 8)
+        return false;
+    if (is_wide && ((layout->flags & AV_PIX_FMT_FLAG_BE) != 0) != (G_BYTE_ORDER == G_BIG_ENDIAN))
+        return false;
+    return luma->shift == 0 && luma->offset == 0 && luma->step == (is_wide ? 2 : 1);
+}
+
+RfDecoderStep rf_decoder_receive(RfDecoder *decoder, RfPicture *picture)
+{
+    AVFrame *frame = decoder->frame;
+    int status = avcodec_receive_frame(decoder->codec, frame);
+    if (status == AVERROR(EAGAIN)) return RF_DECODER_HUNGRY;
+    if (status == AVERROR_EOF) return RF_DECODER_DONE;
+    if (status < 0) return RF_DECODER_REFUSES;
+    const AVPixFmtDescriptor *layout = decoder->layout = av_pix_fmt_desc_get(frame->format);
+    *picture = (RfPicture){.pts = frame->pts,
+                           .guess = frame->best_effort_timestamp,
+                           .width = frame->width,
+                           .height = frame->height,
+                           .bit_depth = layout != NULL ? depth_of(layout) : 0,
+                           .pixel_aspect = ratio_or_zero(frame->sample_aspect_ratio),
+                           .is_readable = is_readable(layout),
+                           .is_plain = layout != NULL && is_plain(layout),
+                           .is_damaged = is_damaged(decoder),
+                           .layout = layout != NULL ? layout->name : "nothing known"};
+    return RF_DECODER_PICTURE;
+}
+
+/* Unspecified range: RGB and grey are full by nature, YUV is limited unless it says otherwise. */
+static bool is_limited(const AVFrame *frame, const AVPixFmtDescriptor *layout)
+{
+    if (is_grey_of_rgb(layout) || frame->color_range == AVCOL_RANGE_JPEG) return false;
+    if (frame->color_range == AVCOL_RANGE_MPEG) return true;
+    return layout->nb_components >= 3 && !g_str_has_prefix(layout->name, "yuvj");
+}
+
+static void palette_row(const AVFrame *frame, int y, uint16_t *work)
+{
+    const uint8_t *row = frame->data[0] + (ptrdiff_t)y * frame->linesize[0];
+    const uint32_t *palette = (const uint32_t *)(const void *)frame->data[1]; /* ARGB in native order */
+    for (int x = 0; x < frame->width; x++) {
+        for (int c = 0; c < 3; c++) work[c * frame->width + x] = palette[row[x]] >> (16 - 8 * c) & 0xff;
+    }
+}
+
+/* One component, stretched to 8 bit if it has fewer. */
+static void component_row(const AVFrame *frame, const AVPixFmtDescriptor *layout, int component, int y,
+                          uint16_t *out)
+{
+    av_read_image_line2(out, (const uint8_t **)(void *)frame->data, frame->linesize, layout, 0, y, component,
+                        frame->width, 0, sizeof *out);
+    int depth = layout->comp[component].depth, full = (1 << depth) - 1;
+    for (int x = 0; x < frame->width && depth < 8; x++) {
+        out[x] = (uint16_t)((out[x] * 255 + full / 2) / full);
+    }
+}
+
+/* Any layout at all, component by component; slow, for sources that a microscope camera rarely has. */
+static void convert_row(const RfDecoder *decoder, int y, int bytes, void *out)
+{
+    const AVFrame *frame = decoder->frame;
+    const AVPixFmtDescriptor *layout = decoder->layout;
+    int width = frame->width, components = is_grey_of_rgb(layout) ? 3 : 1;
+    uint16_t *work = decoder->work;
+    if (layout->flags & AV_PIX_FMT_FLAG_PAL) {
+        palette_row(frame, y, work);
+    } else {
+        for (int c = 0; c < components; c++) component_row(frame, layout, c, y, work + c * width);
+    }
+    if (components == 3) rf_rgb_to_luma(work, work + width, work + 2 * width, (size_t)width, work);
+    if (bytes == 2) memcpy(out, work, (size_t)width * 2);
+    for (int x = 0; x < width && bytes == 1; x++) ((uint8_t *)out)[x] = (uint8_t)work[x];
+}
+
+static bool fit_rows(RfDecoder *decoder, size_t width, size_t height, size_t bytes)
+{
+    void *rows = g_try_realloc_n(decoder->rows, width * height, bytes);
+    void *work = g_try_realloc_n(decoder->work, 3 * width, sizeof *decoder->work);
+    if (rows != NULL) decoder->rows = rows;
+    if (work != NULL) decoder->work = work;
+    return rows != NULL && work != NULL;
+}
+
+bool rf_decoder_lend(RfDecoder *decoder, RfFrame *lent)
+{
+    const AVFrame *frame = decoder->frame;
+    *lent = (RfFrame){.luma = frame->data[0],
+                      .stride_bytes = frame->linesize[0],
+                      .width = frame->width,
+                      .height = frame->height,
+                      .bit_depth = depth_of(decoder->layout),
+                      .is_limited_range = is_limited(frame, decoder->layout),
+                      .is_interlaced = IS_INTERLACED(frame),
+                      .is_top_field_first = IS_TOP_FIRST(frame)};
+    if (is_plain(decoder->layout)) return true;
+    int bytes = lent->bit_depth > 8 ? 2 : 1;
+    if (!fit_rows(decoder, (size_t)frame->width, (size_t)frame->height, (size_t)bytes)) return false;
+    lent->stride_bytes = (ptrdiff_t)frame->width * bytes;
+    lent->luma = decoder->rows;
+    for (int y = 0; y < frame->height; y++) {
+        convert_row(decoder, y, bytes, (uint8_t *)decoder->rows + y * lent->stride_bytes);
     }
     return true;
 }
 
-bool rf_libav_check_size(const char *path, int width, int height, GError **error)
+/* ---- encoders ---- */
+
+struct RfEncoder {
+    char *path;
+    AVFormatContext *format;
+    AVCodecContext *codec;
+    AVFrame *frame;
+    AVPacket *packet;
+    RfVideoWriterOptions options;
+    bool is_finished;
+};
+
+static enum AVPixelFormat stored_layout(const RfVideoWriterOptions *options)
 {
-    if (width >= 1 && height >= 1 && width <= RF_VIDEO_MAX_SIDE_PX && height <= RF_VIDEO_MAX_SIDE_PX &&
-        (int64_t)width * height <= RF_VIDEO_MAX_PIXELS) {
-        return true;
+    bool is_deep = options->bit_depth > 8;
+    switch (options->codec) {
+    case RF_VIDEO_CODEC_FFV1:
+        if (options->is_colour) return AV_PIX_FMT_YUV420P;
+        if (options->bit_depth > 12) return AV_PIX_FMT_GRAY16;
+        if (options->bit_depth > 10) return AV_PIX_FMT_GRAY12;
+        return is_deep ? AV_PIX_FMT_GRAY10 : AV_PIX_FMT_GRAY8;
+    case RF_VIDEO_CODEC_H264:
+        return is_deep ? AV_PIX_FMT_YUV420P10 : AV_PIX_FMT_YUV420P;
+    case RF_VIDEO_CODEC_MJPEG:
+        return AV_PIX_FMT_YUVJ420P;
+    case RF_VIDEO_CODEC_MPEG2:
+        return AV_PIX_FMT_YUV420P;
     }
-    g_set_error(error, RF_VIDEO_ERROR, RF_VIDEO_ERROR_UNSUPPORTED,
-                "%s: a picture of %d x %d pixels; need 1 to %d on each side", path, width, height,
-                RF_VIDEO_MAX_SIDE_PX);
-    return false;
+    return AV_PIX_FMT_NONE;
+}
+
+static const char *encoder_name(RfVideoCodec codec)
+{
+    static const char *const names[] = {"ffv1", "libx264", "mjpeg", "mpeg2video"};
+    return names[codec];
+}
+
+/* A rate that MPEG-2 and AVI can hold: 30000/1001, not 29.97. */
+static AVRational nominal_rate(double rate_hz)
+{
+    double ntsc = rate_hz * 1.001;
+    bool is_ntsc = fabs(ntsc - round(ntsc)) < 1e-3 && fabs(rate_hz - round(rate_hz)) > 1e-3;
+    return is_ntsc ? (AVRational){(int)round(ntsc) * 1000, 1001} : av_d2q(rate_hz, 100000);
+}
+
+/* cpu-independent: x264 weighs blocks with approximate reciprocals on newer processors, and what comes out then depends
+ * on the processor, and now and then on where its buffers happen to lie. */
+static void set_x264(AVCodecContext *codec, const RfVideoWriterOptions *options)
+{
+    /* crf 0 isn't lossless beyond 8 bit; a quantiser of 0 is, in every depth. */
+    if (options->is_lossless)
+        av_opt_set_int(codec->priv_data, "qp", 0, 0);
+    else
+        av_opt_set_double(codec->priv_data, "crf", options->quality > 0 ? options->quality : 18, 0);
+    av_opt_set(codec->priv_data, "preset", options->preset != NULL ? options->preset : "medium", 0);
+    av_opt_set(codec->priv_data, "x264-params",
+               options->is_open_gop ? "cpu-independent=1:open-gop=1" : "cpu-independent=1", 0);
+}
+
+static void set_rate_control(AVCodecContext *codec, const RfVideoWriterOptions *options)
+{
+    if (options->codec == RF_VIDEO_CODEC_H264) {
+        set_x264(codec, options);
+    } else if (options->codec != RF_VIDEO_CODEC_FFV1) {
+        codec->flags |= AV_CODEC_FLAG_QSCALE;
+        codec->global_quality = (int)(FF_QP2LAMBDA * (options->quality > 0 ? options->quality : 3));
+    } else {
+        codec->level = 3;
+        codec->slices = options->slices > 0 ? options->slices : 4;
+        av_opt_set_int(codec->priv_data, "slicecrc", 1, 0);
+    }
+}
+
+static void set_order(AVCodecContext *codec, const RfVideoWriterOptions *options)
+{
+    if (options->keyframe_every > 0) codec->gop_size = options->keyframe_every;
+    if (options->codec == RF_VIDEO_CODEC_H264 || options->codec == RF_VIDEO_CODEC_MPEG2) {
+        codec->max_b_frames = options->b_frames;
+        if (!options->is_open_gop) codec->flags |= AV_CODEC_FLAG_CLOSED_GOP;
+    }
+    if (options->codec == RF_VIDEO_CODEC_MPEG2)
+        av_opt_set_int(codec, "sc_threshold", 1000000000, AV_OPT_SEARCH_CHILDREN);
+    if (!options->is_interlaced) return;
+    codec->flags |= AV_CODEC_FLAG_INTERLACED_DCT | AV_CODEC_FLAG_INTERLACED_ME;
+    codec->field_order = options->is_top_field_first ? AV_FIELD_TT : AV_FIELD_BB;
+}
+
+static bool open_codec(RfEncoder *encoder, GError **error)
+{
+    const RfVideoWriterOptions *options = &encoder->options;
+    const AVOutputFormat *container = encoder->format->oformat;
+    const AVCodec *kind = avcodec_find_encoder_by_name(encoder_name(options->codec));
+    if (kind == NULL) {
+        return rf_video_fail(error, RF_VIDEO_ERROR_ENCODER, encoder->path,
+                             "this build of libavcodec lacks the encoder asked for");
+    }
+    AVCodecContext *codec = encoder->codec = avcodec_alloc_context3(kind);
+    codec->width = options->width;
+    codec->height = options->height;
+    codec->pix_fmt = stored_layout(options);
+    codec->framerate = nominal_rate(options->frame_rate_hz);
+    bool has_fixed_rate = options->codec == RF_VIDEO_CODEC_MPEG2 || g_str_equal(container->name, "avi");
+    codec->time_base = has_fixed_rate ? av_inv_q(codec->framerate) : (AVRational){1, options->ticks_per_s};
+    codec->sample_aspect_ratio = av_d2q(options->pixel_aspect, 1000);
+    codec->color_range = options->is_full_range ? AVCOL_RANGE_JPEG : AVCOL_RANGE_MPEG;
+    /* A fixed number: x264's output depends on it, and the same input must give the same bytes on every machine. */
+    codec->thread_count =
+        options->codec == RF_VIDEO_CODEC_MPEG2 || options->codec == RF_VIDEO_CODEC_MJPEG ? 1 : 4;
+    codec->flags |= AV_CODEC_FLAG_BITEXACT;
+    if (container->flags & AVFMT_GLOBALHEADER) codec->flags |= AV_CODEC_FLAG_GLOBAL_HEADER;
+    set_order(codec, options);
+    set_rate_control(codec, options);
+    int status = avcodec_open2(codec, kind, NULL);
+    return status >= 0 ||
+           fail(error, RF_VIDEO_ERROR_ENCODER, encoder->path, status, "the encoder refuses these settings");
+}
+
+static bool open_file(RfEncoder *encoder, GError **error)
+{
+    const char *path = encoder->path;
+    const char *kind =
+        g_str_has_suffix(path, ".mpg") ? "vob" : NULL; /* MPEG-2 wants the newer pack headers */
+    avformat_alloc_output_context2(&encoder->format, NULL, kind, path);
+    if (encoder->format == NULL) {
+        return rf_video_fail(error, RF_VIDEO_ERROR_ENCODER, path,
+                             "name ends in no known container; use .mkv or .mp4");
+    }
+    encoder->format->flags |= AVFMT_FLAG_BITEXACT;
+    if (!open_codec(encoder, error)) return false;
+    AVStream *stream = avformat_new_stream(encoder->format, NULL);
+    avcodec_parameters_from_context(stream->codecpar, encoder->codec);
+    stream->time_base = encoder->codec->time_base;
+    stream->avg_frame_rate = encoder->codec->framerate;
+    stream->sample_aspect_ratio = encoder->codec->sample_aspect_ratio;
+    g_autofree char *address = g_strconcat("file:", path, NULL);
+    int status = avio_open(&encoder->format->pb, address, AVIO_FLAG_WRITE);
+    if (status >= 0) status = avformat_write_header(encoder->format, NULL);
+    return status >= 0 || fail(error, RF_VIDEO_ERROR_WRITE, path, status, "can't be written");
+}
+
+static AVFrame *blank_frame(const AVCodecContext *codec)
+{
+    AVFrame *frame = av_frame_alloc();
+    frame->format = codec->pix_fmt;
+    frame->width = codec->width;
+    frame->height = codec->height;
+    frame->color_range = codec->color_range;
+    frame->sample_aspect_ratio = codec->sample_aspect_ratio;
+    if (av_frame_get_buffer(frame, 0) < 0) av_frame_free(&frame);
+    return frame;
+}
+
+RfEncoder *rf_encoder_create(const char *path, const RfVideoWriterOptions *options, GError **error)
+{
+    listen();
+    g_autoptr(RfEncoder) encoder = g_new0(RfEncoder, 1);
+    encoder->options = *options;
+    encoder->path = g_strdup(path);
+    encoder->packet = av_packet_alloc();
+    if (!open_file(encoder, error)) return NULL;
+    encoder->frame = blank_frame(encoder->codec);
+    if (encoder->frame != NULL) return g_steal_pointer(&encoder);
+    rf_video_fail(error, RF_VIDEO_ERROR_WRITE, path, "not enough memory for one picture");
+    return NULL;
+}
+
+void rf_encoder_free(RfEncoder *encoder)
+{
+    if (encoder == NULL) return;
+    avcodec_free_context(&encoder->codec);
+    if (encoder->format != NULL) avio_closep(&encoder->format->pb);
+    avformat_free_context(encoder->format);
+    av_frame_free(&encoder->frame);
+    av_packet_free(&encoder->packet);
+    g_free(encoder->path);
+    g_free(encoder);
+}
+
+double rf_encoder_tick_s(const RfEncoder *encoder)
+{
+    return av_q2d(encoder->codec->time_base);
+}
+
+bool rf_encoder_canvas(RfEncoder *encoder, RfCanvas *canvas, GError **error)
+{
+    listen();
+    AVFrame *frame = encoder->frame;
+    int status = av_frame_make_writable(frame);
+    if (status < 0)
+        return fail(error, RF_VIDEO_ERROR_WRITE, encoder->path, status, "no memory for the next picture");
+    *canvas = (RfCanvas){{frame->data[0], frame->data[1], frame->data[2]},
+                         {frame->linesize[0], frame->linesize[1], frame->linesize[2]},
+                         frame->color_range == AVCOL_RANGE_JPEG};
+    return true;
+}
+
+static bool write_packets(RfEncoder *encoder, GError **error)
+{
+    const AVStream *stream = encoder->format->streams[0];
+    const AVCodecContext *codec = encoder->codec;
+    int status;
+    while ((status = avcodec_receive_packet(encoder->codec, encoder->packet)) >= 0) {
+        if (encoder->packet->duration == 0) {
+            encoder->packet->duration = av_rescale_q(1, av_inv_q(codec->framerate), codec->time_base);
+        }
+        av_packet_rescale_ts(encoder->packet, codec->time_base, stream->time_base);
+        status = av_interleaved_write_frame(encoder->format, encoder->packet);
+        if (status < 0) break;
+    }
+    if (status == AVERROR(EAGAIN) || status == AVERROR_EOF) return true;
+    return fail(error, RF_VIDEO_ERROR_WRITE, encoder->path, status, "can't be written on");
+}
+
+bool rf_encoder_write(RfEncoder *encoder, int64_t ticks, GError **error)
+{
+    encoder->frame->pts = ticks;
+    encoder->frame->quality = encoder->codec->global_quality;
+    if (encoder->options.is_interlaced) SET_INTERLACED(encoder->frame, encoder->options.is_top_field_first);
+    int status = avcodec_send_frame(encoder->codec, encoder->frame);
+    if (status < 0)
+        return fail(error, RF_VIDEO_ERROR_ENCODER, encoder->path, status, "the encoder refuses a frame");
+    return write_packets(encoder, error);
+}
+
+bool rf_encoder_finish(RfEncoder *encoder, GError **error)
+{
+    listen();
+    if (encoder->is_finished) return true;
+    avcodec_send_frame(encoder->codec, NULL);
+    if (!write_packets(encoder, error)) return false;
+    int status = av_write_trailer(encoder->format);
+    if (status >= 0) status = avio_closep(&encoder->format->pb);
+    encoder->is_finished = true;
+    return status >= 0 || fail(error, RF_VIDEO_ERROR_WRITE, encoder->path, status, "can't be finished");
+}
+
+/* ---- PNG ---- */
+
+GBytes *rf_libav_encode_png(const void *rows, ptrdiff_t stride_bytes, int width, int height, int channels,
+                            int bit_depth, GError **error)
+{
+    listen();
+    AVFrame *frame = av_frame_alloc();
+    AVPacket *packet = av_packet_alloc();
+    AVCodecContext *codec = avcodec_alloc_context3(avcodec_find_encoder(AV_CODEC_ID_PNG));
+    frame->format = channels == 3 ? AV_PIX_FMT_RGB24 : bit_depth > 8 ? AV_PIX_FMT_GRAY16BE : AV_PIX_FMT_GRAY8;
+    frame->width = codec->width = width, frame->height = codec->height = height;
+    frame->data[0] = (uint8_t *)(uintptr_t)rows; /* libav makes a copy of what isn't its own */
+    frame->linesize[0] = (int)stride_bytes;
+    codec->pix_fmt = frame->format;
+    codec->time_base = (AVRational){1, 1};
+    codec->thread_count = 1;
+    codec->flags |= AV_CODEC_FLAG_BITEXACT;
+    int status = avcodec_open2(codec, NULL, NULL);
+    if (status >= 0) status = avcodec_send_frame(codec, frame);
+    if (status >= 0) status = avcodec_receive_packet(codec, packet);
+    GBytes *png = status >= 0 ? g_bytes_new(packet->data, (size_t)packet->size) : NULL;
+    if (png == NULL) fail(error, RF_VIDEO_ERROR_ENCODER, "PNG in memory", status, "can't be encoded");
+    avcodec_free_context(&codec);
+    av_packet_free(&packet);
+    av_frame_free(&frame);
+    return png;
 }

@@ -1,59 +1,129 @@
-/* The one place that lets libav in, for the files of this room that read or write video and for nothing else.
- * Its versions' differences, its memory under g_autoptr, its log and its error codes end here. */
+/* libav in this room's own types: containers, decoders, encoders, and nothing of what is made of them. libav.c alone
+ * includes libav's headers; its versions' differences, its log, its error codes and its pixel layouts end there.
+ * Not for whole recordings: which packet is which frame, and when, is decided in video_part.c and video_reader.c. */
 #pragma once
 
 #include <glib.h>
-#include <libavcodec/avcodec.h>
-#include <libavformat/avformat.h>
-#include <libavutil/opt.h>
-#include <libavutil/pixdesc.h>
 #include <stdbool.h>
+#include <stddef.h>
+#include <stdint.h>
 
+#include "tracker/frame.h"
+#include "tracker/frame_clock.h"
 #include "tracker/video_file.h"
 
-/* All that differs between FFmpeg 5.1 and 7: two fields of a frame became flags (libavutil 58.7). */
-#if LIBAVUTIL_VERSION_INT >= AV_VERSION_INT(58, 7, 100)
-#define RF_LIBAV_IS_INTERLACED(frame) (((frame)->flags & AV_FRAME_FLAG_INTERLACED) != 0)
-#define RF_LIBAV_IS_TOP_FIRST(frame) (((frame)->flags & AV_FRAME_FLAG_TOP_FIELD_FIRST) != 0)
-#define RF_LIBAV_SET_INTERLACED(frame, top_first)                                                            \
-    ((frame)->flags |= AV_FRAME_FLAG_INTERLACED | ((top_first) ? AV_FRAME_FLAG_TOP_FIELD_FIRST : 0))
-#else
-#define RF_LIBAV_IS_INTERLACED(frame) ((frame)->interlaced_frame != 0)
-#define RF_LIBAV_IS_TOP_FIRST(frame) ((frame)->top_field_first != 0)
-#define RF_LIBAV_SET_INTERLACED(frame, top_first)                                                            \
-    ((frame)->interlaced_frame = 1, (frame)->top_field_first = (top_first))
-#endif
+#define RF_NO_TICKS INT64_MIN /* a timestamp that isn't there */
 
-static inline void rf_libav_close_container(AVFormatContext *format)
-{
-    avformat_close_input(&format);
-}
-static inline void rf_libav_close_codec(AVCodecContext *codec)
-{
-    avcodec_free_context(&codec);
-}
-static inline void rf_libav_free_packet(AVPacket *packet)
-{
-    av_packet_free(&packet);
-}
-static inline void rf_libav_free_frame(AVFrame *frame)
-{
-    av_frame_free(&frame);
-}
-G_DEFINE_AUTOPTR_CLEANUP_FUNC(AVFormatContext, rf_libav_close_container)
-G_DEFINE_AUTOPTR_CLEANUP_FUNC(AVCodecContext, rf_libav_close_codec)
-G_DEFINE_AUTOPTR_CLEANUP_FUNC(AVPacket, rf_libav_free_packet)
-G_DEFINE_AUTOPTR_CLEANUP_FUNC(AVFrame, rf_libav_free_frame)
+/* Sets "PATH: TEXT: invalid data (libav's last line on this thread)", code DAMAGED. Returns false. */
+bool rf_libav_fail_damaged(GError **error, const char *path, const char *text);
 
-/* Call before libav on every thread: from here on its log is kept, not printed, and what it said before is forgotten. A
- * decoder whose `opaque` points to an int has its complaints counted there (atomically, from any thread). */
-void rf_libav_listen(void);
+/* ---- containers ---- */
 
-/* Sets "PATH: TEXT: what the status means (libav's last line)", the latter two if status < 0. Returns false. */
-bool rf_libav_fail(GError **error, RfVideoError code, const char *path, int status, const char *text);
+typedef struct RfDemuxer RfDemuxer; /* one file, at one of its packets; one thread at a time */
 
-/* There, and a regular file: a pipe or device could block for ever. */
-bool rf_libav_check_file(const char *path, GError **error);
+typedef struct { /* of the video stream */
+    int width, height;
+    double pixel_aspect;   /* <= 0: not said */
+    RfRatio tick_s;        /* of its timestamps */
+    RfRatio rates_hz[2];   /* what the container says, the likelier one first */
+    const char *container; /* "matroska,webm" */
+    const char *codec;     /* "h264"; NULL: unknown to libav */
+    bool is_lossless;      /* the codec can't have altered the picture */
+    bool is_indexable; /* one packet, one frame, and a key flag that means what it says (is_nal: see nal.h) */
+    bool is_nal, is_hevc; /* H.264 or HEVC; the latter */
+    bool may_lead;        /* has open groups: see frame_index.h */
+    bool is_seekable;     /* the container's own index leads to any keyframe */
+    const uint8_t *setup; /* the codec's global header, of setup_size bytes; lives as long as the demuxer */
+    size_t setup_size;
+} RfStream;
 
-/* Within RF_VIDEO_MAX_SIDE_PX and RF_VIDEO_MAX_PIXELS: before anything is allocated. */
-bool rf_libav_check_size(const char *path, int width, int height, GError **error);
+typedef struct {
+    int64_t pts, dts, duration; /* ticks; RF_NO_TICKS */
+    bool is_key, is_hidden;     /* hidden: decoded, but not to be shown */
+    bool is_broken;             /* so says the container */
+    const uint8_t *bytes;       /* lent until the demuxer moves on */
+    size_t size;
+} RfPacket;
+
+/* A regular local file in a self-contained format, at its first packet; all but the video stream is skipped. */
+RfDemuxer *rf_demuxer_open(const char *path, GError **error);
+void rf_demuxer_free(RfDemuxer *demuxer);
+G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfDemuxer, rf_demuxer_free)
+
+const RfStream *rf_demuxer_stream(const RfDemuxer *demuxer);
+
+/* Moves on to the next packet and holds it; false at the end, or where the file can't be read on. */
+bool rf_demuxer_next(RfDemuxer *demuxer, RfPacket *packet);
+
+/* To a packet at or before pts, by the container's index, if it can. */
+bool rf_demuxer_seek(RfDemuxer *demuxer, int64_t pts);
+
+/* ---- decoders ---- */
+
+typedef struct RfDecoder RfDecoder;
+
+typedef struct {
+    int64_t pts;   /* of the packet it was in; RF_NO_TICKS */
+    int64_t guess; /* libav's best guess; RF_NO_TICKS */
+    int width, height, bit_depth;
+    double pixel_aspect; /* <= 0: not said */
+    bool is_readable;    /* grey, YUV, RGB or palette, whole numbers of up to 16 bit: can be lent */
+    bool is_plain;       /* lent as it lies in memory */
+    bool is_damaged;     /* the decoder reported or concealed errors */
+    const char *layout;  /* libav's name for it */
+} RfPicture;
+
+typedef enum { RF_DECODER_PICTURE, RF_DECODER_HUNGRY, RF_DECODER_DONE, RF_DECODER_REFUSES } RfDecoderStep;
+
+/* For the demuxer's stream. threads >= 1. reorder: how many frames it must hold back to show them in order (H.264, HEVC);
+ * one that starts midway must hold back as many as one that has seen the whole file; 0: not known. */
+RfDecoder *rf_decoder_new(const char *path, const RfDemuxer *demuxer, int threads, int reorder,
+                          GError **error);
+
+/* One picture from the bytes of a whole file, decoded. codec: "png", "mjpeg", "tiff", "bmp", "pgm", "ppm". */
+RfDecoder *rf_decoder_still(const char *path, const char *codec, const void *bytes, size_t size,
+                            RfPicture *picture, GError **error);
+void rf_decoder_free(RfDecoder *decoder);
+G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfDecoder, rf_decoder_free)
+
+/* Takes the packet that the demuxer holds; NULL: there are no more. */
+bool rf_decoder_send(RfDecoder *decoder, const RfDemuxer *demuxer);
+
+RfDecoderStep rf_decoder_receive(RfDecoder *decoder, RfPicture *picture);
+
+/* Something was wrong with the stream, and several threads decode it: pictures from here on, the last received among
+ * them, may depend on which thread came first. What one thread makes of the same packets doesn't. */
+bool rf_decoder_is_luck_involved(const RfDecoder *decoder);
+
+/* Lends the picture last received until the next call on this decoder. Sources with a luma plane are lent where they
+ * lie. Packed, big-endian, shifted (P010) and RGB ones are converted; RGB becomes ITU-R BT.601 luma. Index, time and
+ * damage are left at zero. False: not enough memory. */
+bool rf_decoder_lend(RfDecoder *decoder, RfFrame *lent);
+
+/* ---- encoders ---- */
+
+typedef struct RfEncoder RfEncoder; /* an encoder and the file that it writes */
+
+typedef struct { /* 8 bit, or 16 in native order; YUV 4:2:0, or grey alone (the other planes NULL) */
+    uint8_t *planes[3];
+    int strides_bytes[3];
+    bool is_full_range;
+} RfCanvas;
+
+/* options: checked by the caller, and no zeros left in what has a default. */
+RfEncoder *rf_encoder_create(const char *path, const RfVideoWriterOptions *options, GError **error);
+void rf_encoder_free(RfEncoder *encoder);
+G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfEncoder, rf_encoder_free)
+
+double rf_encoder_tick_s(const RfEncoder *encoder);
+
+/* The picture to be encoded next; holds the one before, to be painted over. */
+bool rf_encoder_canvas(RfEncoder *encoder, RfCanvas *canvas, GError **error);
+bool rf_encoder_write(RfEncoder *encoder, int64_t ticks, GError **error);
+
+/* What is still inside, and the file's end. */
+bool rf_encoder_finish(RfEncoder *encoder, GError **error);
+
+/* (returns new) See rf_video_file_encode_png(); 16-bit rows in big-endian order. */
+GBytes *rf_libav_encode_png(const void *rows, ptrdiff_t stride_bytes, int width, int height, int channels,
+                            int bit_depth, GError **error);

@@ -1,21 +1,22 @@
-#include "tracker/video_recording.h"
-
 #include <math.h>
+
+#include "tracker/video_error.h"
+#include "tracker/video_recording.h"
 
 #define PREFLIGHT_FRAMES 3
 
 static void describe(RfVideoInfo *info, const RfVideoReader *reader, const RfFrame *frame)
 {
-    const AVCodecDescriptor *about = avcodec_descriptor_get(reader->decoder->codec_id);
+    const RfStream *stream = rf_demuxer_stream(reader->demuxer);
     info->width = frame->width;
     info->height = frame->height;
     info->bit_depth = frame->bit_depth;
     info->is_limited_range = frame->is_limited_range;
-    info->is_converted = !rf_luma_is_plain(av_pix_fmt_desc_get(reader->frame->format));
-    info->is_lossless = about != NULL && !(about->props & AV_CODEC_PROP_LOSSY);
-    info->codec = about != NULL ? about->name : "unknown";
-    AVRational aspect = reader->frame->sample_aspect_ratio;
-    if (info->pixel_aspect <= 0) info->pixel_aspect = aspect.num > 0 && aspect.den > 0 ? av_q2d(aspect) : 1;
+    info->is_converted = !reader->picture.is_plain;
+    info->is_lossless = stream->is_lossless;
+    info->codec = stream->codec != NULL ? stream->codec : "unknown";
+    double aspect = reader->picture.pixel_aspect;
+    if (info->pixel_aspect <= 0) info->pixel_aspect = aspect > 0 ? aspect : 1;
 }
 
 /* Decodes the first frames of a file: what the picture is, and whether frames come out as its packets promise. */
@@ -40,8 +41,7 @@ static bool preflight(RfVideoFile *file, int number, bool *is_as_promised, GErro
     }
     if (step == RF_VIDEO_END) *is_as_promised = false;
     if (step == RF_VIDEO_END && !file->info.is_indexed && reader->faults.frames == 0) {
-        return rf_libav_fail(error, RF_VIDEO_ERROR_DAMAGED, part->path, AVERROR_INVALIDDATA,
-                             "not one frame can be decoded");
+        return rf_libav_fail_damaged(error, part->path, "not one frame can be decoded");
     }
     return step != RF_VIDEO_FAILED;
 }

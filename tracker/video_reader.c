@@ -1,20 +1,18 @@
+#include "tracker/video_error.h"
 #include "tracker/video_recording.h"
 
 static bool enter_part(RfVideoReader *reader, int part, GError **error)
 {
-    av_packet_unref(reader->packet);
-    avformat_close_input(&reader->format);
-    reader->format =
-        rf_video_part_container(rf_video_file_part(reader->file, part)->path, &reader->stream, error);
+    rf_demuxer_free(reader->demuxer);
+    reader->demuxer = rf_demuxer_open(rf_video_file_part(reader->file, part)->path, error);
     reader->part = part;
     reader->next_packet = 0;
     reader->has_packet = false;
-    return reader->format != NULL;
+    return reader->demuxer != NULL;
 }
 
 static void drop_packet(RfVideoReader *reader)
 {
-    av_packet_unref(reader->packet);
     reader->has_packet = false;
     reader->next_packet++;
 }
@@ -22,20 +20,18 @@ static void drop_packet(RfVideoReader *reader)
 /* By the container's own index; believed only when the very keyframe turns up. */
 static bool seek_entry(RfVideoReader *reader, const RfFrameEntry *entry)
 {
-    if (!rf_video_file_part(reader->file, reader->part)->is_seekable) return false;
-    if (reader->has_packet) drop_packet(reader);
+    if (!rf_demuxer_stream(reader->demuxer)->is_seekable) return false;
+    reader->has_packet = false;
     reader->next_packet = INT64_MAX; /* from here on nobody knows where the container stands */
-    if (avformat_seek_file(reader->format, reader->stream, INT64_MIN, entry->pts, entry->pts, 0) < 0)
-        return false;
-    while (rf_video_part_read(reader->format, reader->stream, reader->packet)) {
-        bool is_beyond = reader->packet->dts != AV_NOPTS_VALUE && reader->packet->dts > entry->pts;
-        if (reader->packet->pts == entry->pts && (reader->packet->flags & AV_PKT_FLAG_KEY)) {
+    if (!rf_demuxer_seek(reader->demuxer, entry->pts)) return false;
+    RfPacket *packet = &reader->packet;
+    while (rf_demuxer_next(reader->demuxer, packet)) {
+        if (packet->pts == entry->pts && packet->is_key) {
             reader->has_packet = true;
             reader->next_packet = entry->packet;
             return true;
         }
-        av_packet_unref(reader->packet);
-        if (is_beyond) break;
+        if (packet->dts != RF_NO_TICKS && packet->dts > entry->pts) break;
     }
     return false;
 }
@@ -45,13 +41,13 @@ static bool seek_entry(RfVideoReader *reader, const RfFrameEntry *entry)
 static bool reach_packet(RfVideoReader *reader, int part, const RfFrameEntry *entry, GError **error)
 {
     int64_t wanted = entry == NULL ? 0 : entry->packet;
-    if ((reader->format == NULL || reader->part != part) && !enter_part(reader, part, error)) return false;
+    if ((reader->demuxer == NULL || reader->part != part) && !enter_part(reader, part, error)) return false;
     if (reader->next_packet == wanted || (entry != NULL && seek_entry(reader, entry))) return true;
     if (reader->next_packet > wanted && !enter_part(reader, part, error)) return false;
     while (reader->next_packet < wanted) {
-        if (!reader->has_packet && !rf_video_part_read(reader->format, reader->stream, reader->packet)) {
-            return rf_libav_fail(error, RF_VIDEO_ERROR_CHANGED, rf_video_file_part(reader->file, part)->path,
-                                 0, "shorter than when it was opened");
+        if (!reader->has_packet && !rf_demuxer_next(reader->demuxer, &reader->packet)) {
+            return rf_video_fail(error, RF_VIDEO_ERROR_CHANGED, rf_video_file_part(reader->file, part)->path,
+                                 "shorter than when it was opened");
         }
         drop_packet(reader);
     }
@@ -70,16 +66,15 @@ static int64_t stop_packet(const RfVideoPart *part, int64_t end)
 
 static bool begin(RfVideoReader *reader, const RfVideoStretch *stretch, int threads, GError **error)
 {
-    rf_libav_listen();
     const RfVideoPart *part = rf_video_file_part(reader->file, stretch->part);
     const RfFrameEntry *entry =
         stretch->entry < 0 ? NULL : &g_array_index(part->index->entries, RfFrameEntry, stretch->entry);
     if (!reach_packet(reader, stretch->part, entry, error)) return false;
     /* A new decoder, not a flushed one: FFV1's keeps the last picture through a flush, and patches broken slices with
      * it, so that a damaged frame would depend on what this reader decoded before. */
-    avcodec_free_context(&reader->decoder);
-    reader->decoder = rf_video_part_decoder(part, threads, &reader->complaints, error);
-    reader->complaints_seen = reader->complaints_at_start = g_atomic_int_get(&reader->complaints);
+    rf_decoder_free(reader->decoder);
+    int reorder = part->index->obstacle == NULL ? part->index->reorder : 0;
+    reader->decoder = rf_decoder_new(part->path, reader->demuxer, threads, reorder, error);
     reader->threads = threads;
     reader->next = entry == NULL ? 0 : part->first_frame + entry->frame;
     reader->skip_to = stretch->first;
@@ -117,15 +112,16 @@ static bool has_next_part(const RfVideoReader *reader)
 
 static void send_packet(RfVideoReader *reader)
 {
-    if (!reader->has_packet && reader->next_packet < reader->stop_packet) {
-        reader->has_packet = rf_video_part_read(reader->format, reader->stream, reader->packet);
+    bool is_wanted = reader->next_packet < reader->stop_packet;
+    if (!reader->has_packet && is_wanted) {
+        reader->has_packet = rf_demuxer_next(reader->demuxer, &reader->packet);
     }
-    if (!reader->has_packet || reader->next_packet >= reader->stop_packet) {
-        avcodec_send_packet(reader->decoder, NULL);
+    if (!reader->has_packet || !is_wanted) {
+        rf_decoder_send(reader->decoder, NULL);
         return;
     }
-    int status = avcodec_send_packet(reader->decoder, reader->packet);
-    if (status < 0 && !reader->file->info.is_indexed) reader->faults.lost++;
+    bool is_taken = rf_decoder_send(reader->decoder, reader->demuxer);
+    if (!is_taken && !reader->file->info.is_indexed) reader->faults.lost++;
     drop_packet(reader);
 }
 
@@ -147,8 +143,8 @@ typedef enum { SHOW, SKIP, STOP } Fate;
 static Fate place_by_index(RfVideoReader *reader, RfFrame *lent)
 {
     const RfVideoPart *part = rf_video_file_part(reader->file, reader->part);
-    int64_t pts =
-        reader->frame->pts != AV_NOPTS_VALUE ? reader->frame->pts : reader->frame->best_effort_timestamp;
+    const RfPicture *picture = &reader->picture;
+    int64_t pts = picture->pts != RF_NO_TICKS ? picture->pts : picture->guess;
     int64_t within = rf_frame_index_find(part->index, pts, reader->next - part->first_frame);
     lent->index = part->first_frame + within;
     if (within < 0 || lent->index < reader->next)
@@ -163,37 +159,14 @@ static Fate place_by_index(RfVideoReader *reader, RfFrame *lent)
 static Fate place_by_count(RfVideoReader *reader, RfFrame *lent)
 {
     const RfVideoOptions *options = &reader->file->options;
-    int64_t ticks = reader->frame->best_effort_timestamp;
-    double time_s = rf_frame_timer_next(&reader->timer, ticks != AV_NOPTS_VALUE, ticks);
+    int64_t ticks = reader->picture.guess;
+    double time_s = rf_frame_timer_next(&reader->timer, ticks != RF_NO_TICKS, ticks);
     lent->index = reader->next++;
     lent->time_s = rf_video_file_own_time_s(reader->file, lent->index, time_s);
     reader->faults.missing = reader->timer.missing;
     reader->faults.backwards = reader->timer.backwards;
     if (options->stop_s > 0 && lent->time_s >= options->stop_s) return STOP;
     return lent->index < reader->skip_to || lent->time_s < options->start_s ? SKIP : SHOW;
-}
-
-/* Frames that say so themselves; for decoders that neither reorder nor run ahead, also those during which they
- * complained (FFV1's checksums, JPEG's broken runs are reported nowhere else). */
-static bool is_damaged(RfVideoReader *reader)
-{
-    int complaints = g_atomic_int_get(&reader->complaints);
-    bool is_direct =
-        reader->decoder->has_b_frames == 0 && !(reader->decoder->active_thread_type & FF_THREAD_FRAME);
-    bool complained = is_direct && complaints != reader->complaints_seen;
-    reader->complaints_seen = complaints;
-    return complained || (reader->frame->flags & AV_FRAME_FLAG_CORRUPT) ||
-           reader->frame->decode_error_flags != 0;
-}
-
-/* Threads patch a broken picture with as much of itself and its neighbours as happens to be ready; only FFV1's slices
- * have nothing to do with each other. */
-static bool is_luck_involved(const RfVideoReader *reader)
-{
-    if (reader->decoder->active_thread_type == 0 || reader->decoder->codec_id == AV_CODEC_ID_FFV1)
-        return false;
-    return g_atomic_int_get(&reader->complaints) != reader->complaints_at_start ||
-           (reader->frame->flags & AV_FRAME_FLAG_CORRUPT) || reader->frame->decode_error_flags != 0;
 }
 
 /* Once more from where the decoder was started, on one thread, up to the frame that comes next. */
@@ -210,38 +183,35 @@ static bool restart_alone(RfVideoReader *reader, GError **error)
     return true;
 }
 
-static bool check_frame(const RfVideoReader *reader, double time_s, GError **error)
+static bool check_picture(const RfVideoReader *reader, double time_s, GError **error)
 {
     const RfVideoInfo *info = &reader->file->info;
-    const AVFrame *frame = reader->frame;
+    const RfPicture *picture = &reader->picture;
     const char *path = rf_video_file_part(reader->file, reader->part)->path;
-    const AVPixFmtDescriptor *layout = av_pix_fmt_desc_get(frame->format);
-    if (!rf_libav_check_size(path, frame->width, frame->height, error)) return false;
-    if (!rf_luma_is_readable(layout)) {
+    if (!rf_video_check_size(path, picture->width, picture->height, error)) return false;
+    if (!picture->is_readable) {
         g_set_error(error, RF_VIDEO_ERROR, RF_VIDEO_ERROR_UNSUPPORTED,
-                    "%s: pixels stored as %s; need grey, YUV or RGB of up to 16 bit", path,
-                    layout != NULL ? layout->name : "nothing known");
+                    "%s: pixels stored as %s; need grey, YUV or RGB of up to 16 bit", path, picture->layout);
         return false;
     }
-    int depth = rf_luma_depth(layout);
-    if (info->width == 0 ||
-        (frame->width == info->width && frame->height == info->height && depth == info->bit_depth))
+    if (info->width == 0 || (picture->width == info->width && picture->height == info->height &&
+                             picture->bit_depth == info->bit_depth))
         return true;
     g_set_error(error, RF_VIDEO_ERROR, RF_VIDEO_ERROR_CHANGED,
                 "%s: at %.3f s the picture changes from %d x %d with %d bit to %d x %d with %d bit; cut the "
-                "recording "
-                "there, or set stop",
-                path, time_s, info->width, info->height, info->bit_depth, frame->width, frame->height, depth);
+                "recording there, or set stop",
+                path, time_s, info->width, info->height, info->bit_depth, picture->width, picture->height,
+                picture->bit_depth);
     return false;
 }
 
 static RfVideoStep show(RfVideoReader *reader, RfFrame *lent, GError **error)
 {
     RfFrame placed = *lent;
-    if (!check_frame(reader, placed.time_s, error)) return RF_VIDEO_FAILED;
-    if (!rf_luma_lend(reader->frame, &reader->scratch, lent)) {
-        rf_libav_fail(error, RF_VIDEO_ERROR_UNSUPPORTED, rf_video_file_part(reader->file, reader->part)->path,
-                      0, "not enough memory for one picture");
+    if (!check_picture(reader, placed.time_s, error)) return RF_VIDEO_FAILED;
+    if (!rf_decoder_lend(reader->decoder, lent)) {
+        rf_video_fail(error, RF_VIDEO_ERROR_UNSUPPORTED, rf_video_file_part(reader->file, reader->part)->path,
+                      "not enough memory for one picture");
         return RF_VIDEO_FAILED;
     }
     lent->index = placed.index;
@@ -257,18 +227,18 @@ RfVideoStep rf_video_file_next(RfVideoReader *reader, RfFrame *lent, GError **er
 {
     bool is_indexed = reader->file->info.is_indexed;
     while (reader->next < reader->end) {
-        int status = avcodec_receive_frame(reader->decoder, reader->frame);
-        if (status == AVERROR(EAGAIN)) {
+        RfDecoderStep step = rf_decoder_receive(reader->decoder, &reader->picture);
+        if (step == RF_DECODER_HUNGRY) {
             send_packet(reader);
-        } else if (status == AVERROR_EOF) {
+        } else if (rf_decoder_is_luck_involved(reader->decoder)) {
+            if (!restart_alone(reader, error)) return RF_VIDEO_FAILED;
+        } else if (step == RF_DECODER_DONE) {
             if (!has_next_part(reader)) break;
             if (!begin_next_part(reader, error)) return RF_VIDEO_FAILED;
-        } else if (is_luck_involved(reader)) {
-            if (!restart_alone(reader, error)) return RF_VIDEO_FAILED;
-        } else if (status < 0) {
+        } else if (step == RF_DECODER_REFUSES) {
             if (!is_indexed) reader->faults.lost++;
         } else {
-            *lent = (RfFrame){.is_damaged = is_damaged(reader)};
+            *lent = (RfFrame){.is_damaged = reader->picture.is_damaged};
             Fate fate = is_indexed ? place_by_index(reader, lent) : place_by_count(reader, lent);
             if (fate == SHOW) return show(reader, lent, error);
             if (fate == STOP) reader->end = reader->next; /* and stay there */
@@ -289,8 +259,6 @@ RfVideoReader *rf_video_reader_at(const RfVideoFile *file, const RfVideoStretch 
 {
     g_autoptr(RfVideoReader) reader = g_new0(RfVideoReader, 1);
     reader->file = file;
-    reader->packet = av_packet_alloc();
-    reader->frame = av_frame_alloc();
     reader->faults.first_fault_s = -1;
     if (!begin(reader, stretch, threads, error)) return NULL;
     return g_steal_pointer(&reader);
@@ -312,11 +280,8 @@ RfVideoReader *rf_video_file_reader_new(const RfVideoFile *file, int threads, GE
 void rf_video_reader_free(RfVideoReader *reader)
 {
     if (reader == NULL) return;
-    avcodec_free_context(&reader->decoder);
-    avformat_close_input(&reader->format);
-    av_packet_free(&reader->packet);
-    av_frame_free(&reader->frame);
-    rf_luma_clear(&reader->scratch);
+    rf_decoder_free(reader->decoder);
+    rf_demuxer_free(reader->demuxer);
     g_free(reader);
 }
 

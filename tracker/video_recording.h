@@ -4,36 +4,24 @@
 #include "tracker/frame_clock.h"
 #include "tracker/frame_index.h"
 #include "tracker/libav.h"
-#include "tracker/libav_luma.h"
 #include "tracker/video_file.h"
 
 /* ---- one file of a recording (video_part.c) ---- */
 
 typedef struct {
     char *path;
-    AVCodecParameters *parameters;
     RfFrameIndex *index;
     RfFrameClock clock;
     int64_t first_frame; /* of this file, in the recording */
     int64_t packets;     /* of its video stream */
     double offset_s;     /* of its first frame, on the recording's clock */
     double last_duration_s;
-    bool is_seekable; /* the container's own index leads to any keyframe */
 } RfVideoPart;
 
 /* Opens it, reads all its packets and closes it again. */
 RfVideoPart *rf_video_part_open(const char *path, RfVideoInfo *info, GError **error);
 void rf_video_part_free(RfVideoPart *part);
 G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfVideoPart, rf_video_part_free)
-
-/* (returns new) The container at its first packet, all but the video stream discarded. */
-AVFormatContext *rf_video_part_container(const char *path, int *stream, GError **error);
-
-/* The next packet of that stream; false at the end, or where the file can't be read on. */
-bool rf_video_part_read(AVFormatContext *format, int stream, AVPacket *packet);
-
-/* (returns new) */
-AVCodecContext *rf_video_part_decoder(const RfVideoPart *part, int threads, int *complaints, GError **error);
 
 /* ---- the recording (video_file.c) ---- */
 
@@ -75,13 +63,12 @@ static inline double rf_video_file_own_time_s(const RfVideoFile *file, int64_t i
 
 struct RfVideoReader {
     const RfVideoFile *file;
-    AVFormatContext *format; /* of `part` */
-    AVCodecContext *decoder;
-    AVPacket *packet;
-    AVFrame *frame;
-    int part, stream, threads;
-    int64_t
-        next_packet; /* number of the packet to be sent next: `packet` if held, else the container's next */
+    RfDemuxer *demuxer; /* of `part` */
+    RfDecoder *decoder;
+    RfPacket packet;
+    RfPicture picture;
+    int part, threads;
+    int64_t next_packet; /* number of the packet to be sent next: `packet` if held, else the demuxer's next */
     int64_t stop_packet; /* none is sent from here on */
     bool has_packet;
     int64_t next, end; /* index of the frame to come, and of the first one not to deliver */
@@ -90,8 +77,6 @@ struct RfVideoReader {
     RfVideoStretch from; /* where the decoder was started, and what was known then */
     int64_t from_next;
     RfFrameTimer from_timer;
-    int complaints, complaints_seen, complaints_at_start;
-    RfLumaScratch scratch;
     RfVideoFaults faults;
 };
 
