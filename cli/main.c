@@ -5,7 +5,7 @@
 
 static const RfCommand *const commands[] = {
     &rf_command_run,    &rf_command_calibrate, &rf_command_paths,
-    &rf_command_charge, &rf_command_simulate,  NULL,
+    &rf_command_charge, &rf_command_simulate, &rf_command_check,  NULL,
 };
 
 int main(int argc, char **argv)

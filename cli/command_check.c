@@ -1,0 +1,42 @@
+#include <stdio.h>
+
+#include "cli/command.h"
+#include "cli/examine.h"
+#include "cli/fitness_text.h"
+
+static int as_json, is_whole; /* GOption writes ints */
+
+static const GOptionEntry entries[] = {
+    {"json", 0, 0, G_OPTION_ARG_NONE, &as_json, "figures and verdicts as JSON", NULL},
+    {"whole", 0, 0, G_OPTION_ARG_NONE, &is_whole,
+     "look at every picture (default: at most 1800, from the middle)", NULL},
+    {0},
+};
+
+static RfExit run(char **arguments, GError **error)
+{
+    const char *path;
+    if (!rf_command_one_argument(arguments, "a recording", &path, error)) return RF_EXIT_USAGE;
+    const RfWatchHooks hooks = {rf_command_common()->threads, rf_command_progress, rf_command_is_cancelled};
+    RfFitnessFigures figures;
+    if (!rf_examine_recording(path, is_whole, &hooks, &figures, error)) return RF_EXIT_INPUT;
+    rf_command_progress_end();
+    g_autoptr(GArray) lines = rf_fitness_judge(&figures);
+    g_autofree char *text =
+        as_json ? rf_fitness_json(path, &figures, lines) : rf_fitness_text(path, &figures, lines);
+    if (as_json || !rf_command_common()->is_quiet) fputs(text, stdout);
+    return figures.droplets > 0 ? RF_EXIT_DONE : RF_EXIT_NOT_MEASURED;
+}
+
+const RfCommand rf_command_check = {
+    .verb = "check",
+    .arguments = "VIDEO",
+    .purpose = "is this recording fit for measuring",
+    .example = "  risefall check morning.mkv\n"
+               "prints one line a matter (timestamps, gaps, repeats, interlacing, exposure, noise, camera, "
+               "contrast, "
+               "compression ...): ok, care or BAD, with its figure and what to do next time.\n"
+               "Exit status 3: no droplet was seen.",
+    .entries = entries,
+    .run = run,
+};
