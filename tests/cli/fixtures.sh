@@ -1,8 +1,8 @@
 # Words for the setup lines of the cases: files that are what they should be, and files that aren't. Sourced by
 # run_cases.sh, which sets $program, $here and $work; each word works in the current folder.
 
-scene_text() { # duration, further lines of [picture]
-    printf '%s\n' '[picture]' 'width=160' 'height=120' 'frame_rate=30 Hz' "duration=$1" 'px_per_mm=400' 'seed=7' "${2:-}" \
+scene_text() { # duration, height (default 120), lines of the reticle (default grid)
+    printf '%s\n' '[picture]' 'width=160' "height=${2:-120}" 'frame_rate=30 Hz' "duration=$1" 'px_per_mm=400' 'seed=7' \
         '[reticle]' 'spacing=0.1000(2) mm' "lines=${3:-grid}" 'still=yes' '[droplets]' 'count=2' \
         '[field]' 'off=0.8..1 s' 'on=0.8..1 s' '[video]' 'codec=ffv1'
 }
@@ -44,4 +44,11 @@ fits_every_help() {
         [ "$(wc -l <help)" -le 24 ] || { echo "$verb: $(wc -l <help) lines" && return 1; }
         grep -q "^ *risefall $verb " help && grep -q '^Example:' help || { echo "$verb: no example" && return 1; }
     done <verbs
+}
+
+# Every row of a droplets.csv has a radius with its sigma, no charge, and a reason.
+radii_without_charges() {
+    awk -F, 'NR == 1 { for (i = 1; i <= NF; i++) at[$i] = i; next }
+             $(at["radius_um"]) <= 0 || $(at["u_radius_um"]) <= 0 || $(at["charge_C"]) != "" || $(at["reason"]) == "" { bad = 1 }
+             END { exit bad || NR < 2 }' "$1"
 }

@@ -13,7 +13,7 @@
 # Whatever ends with 1 or 2 must besides say why in one to three lines and leave the folder as it was.
 set -u
 program=$(realpath "$1") cases=$(realpath "$2")
-here=$(cd "$(dirname "$0")" && pwd)
+here=$(cd "$(dirname "$0")" && pwd) samples=$(cd "$(dirname "$0")/../../sample-synthetic" && pwd)
 work=$(mktemp -d)
 trap 'chmod -R u+w "$work"; rm -rf "$work"' EXIT
 stdout=$work/stdout stderr=$work/stderr before=$work/before
