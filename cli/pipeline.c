@@ -1,5 +1,6 @@
 #include "cli/pipeline.h"
 
+#include "cli/audit.h"
 #include "cli/conditions.h"
 #include "cli/digest.h"
 #include "cli/follow.h"
@@ -101,6 +102,7 @@ static bool follow_recording(Road *road, const RfSettings *settings, const RfWat
         return false;
     RfResults *results = road->results;
     rf_ruler_describe(scale, rf_ruler_source(settings), &results->scale);
+    rf_ruler_lines(scale, &follow->frame, &results->scale);
     road->scale_relative_u = scale_relative_u(scale, follow->frame.gravity_rad);
     g_array_unref(results->paths);
     results->paths = g_steal_pointer(&follow->rows);
@@ -119,7 +121,10 @@ static bool set_out(Road *road, const RfSettings *settings, GError **error)
 static bool measure(Road *road, const RfSettings *settings, const RfWatchHooks *hooks, GError **error)
 {
     const RfChargeInputs inputs = rf_conditions_of(settings, road->scale_relative_u);
-    return rf_measure_paths(road->results, &inputs, road->supply, hooks->threads, error);
+    if (!rf_measure_paths(road->results, &inputs, road->supply, hooks->threads, error))
+        return false;
+    const RfMedium medium = rf_charge_budget_medium(&inputs);
+    return !settings->timings || rf_audit_timings(settings->timings, road->results, &medium, error);
 }
 
 static RfResults *arrive(Road *road, bool is_well)

@@ -8,7 +8,7 @@
 /* Columns in the order of the struct below. Those from `field` on may be missing. */
 static const char *const names[] = {"droplet", "frame", "time_s", "x_px",   "y_px",   "x_mm",
                                     "y_mm",    "seen",  "u_px",   "u_x_px", "u_y_px", "u_x_mm",
-                                    "u_y_mm",  "field", "snr"};
+                                    "u_y_mm",  "field", "snr", "smooth_x_px", "smooth_y_px", "u_smooth_x_px", "u_smooth_y_px"};
 enum {
     DROPLET,
     FRAME,
@@ -25,6 +25,10 @@ enum {
     U_Y_MM,
     FIELD,
     SNR,
+    SMOOTH_X_PX,
+    SMOOTH_Y_PX,
+    U_SMOOTH_X_PX,
+    U_SMOOTH_Y_PX,
     COLUMNS,
     REQUIRED = U_X_PX
 };
@@ -79,6 +83,10 @@ static bool row_of(const RfTable *table, size_t row, const int column[COLUMNS], 
         .u_x_mm = cell[U_X_MM],
         .u_y_mm = cell[U_Y_MM],
         .snr = cell[SNR],
+        .smooth_x_px = column[SMOOTH_X_PX] >= 0 ? cell[SMOOTH_X_PX] : cell[X_PX],
+        .smooth_y_px = column[SMOOTH_Y_PX] >= 0 ? cell[SMOOTH_Y_PX] : cell[Y_PX],
+        .u_smooth_x_px = cell[U_SMOOTH_X_PX],
+        .u_smooth_y_px = cell[U_SMOOTH_Y_PX],
     };
     return true;
 }
@@ -156,7 +164,11 @@ static bool read_scale(const char *path, RfScaleRow *scale, GError **error)
         .lines_found = (unsigned)fmax(0, fmin(1e6, member(object, "lines_found"))),
         .residual_px = member(object, "residual_px"),
         .source = g_strdup(path),
+        .line_offset_mm = member(object, "line_offset_mm"),
+        .line_step_mm = member(object, "line_step_mm"),
+        .line_slope = member(object, "line_slope"),
     };
+    scale->has_lines = scale->line_step_mm > 0;
     scale->found = scale->px_per_mm_x > 0 && scale->px_per_mm_y > 0;
     return true;
 }

@@ -164,3 +164,14 @@ GString *rf_report_html_new(const RfResults *results, const RfFigureSet *figures
     foot(out, script);
     return out;
 }
+
+GString *rf_report_html_audit_new(const RfResults *results)
+{
+    g_autofree char *script = joined(SCRIPT, G_N_ELEMENTS(SCRIPT));
+    GString *out = g_string_sized_new(1 << 16);
+    head(out, results, script);
+    banner(out, results);
+    rf_report_audit(out, results);
+    foot(out, script);
+    return out;
+}

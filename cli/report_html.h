@@ -10,3 +10,6 @@
 
 /* `figures` may be NULL: the page then says that there are none. (returns new) */
 GString *rf_report_html_new(const RfResults *results, const RfFigureSet *figures);
+
+/* Only the section on hand timings, as a page of its own. (returns new) */
+GString *rf_report_html_audit_new(const RfResults *results);

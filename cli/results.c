@@ -36,6 +36,11 @@ static void audit_clear(void *item)
     g_free(row->evidence);
 }
 
+static void hand_charge_clear(void *item)
+{
+    g_free(((RfHandChargeRow *)item)->label);
+}
+
 static GArray *rows(size_t size, GDestroyNotify clear)
 {
     GArray *array = g_array_new(FALSE, TRUE, (guint)size);
@@ -58,6 +63,7 @@ RfResults *rf_results_new(void)
     results->droplets = rows(sizeof(RfDropletRow), droplet_clear);
     results->budget = rows(sizeof(RfBudgetRow), budget_clear);
     results->audit = rows(sizeof(RfAuditRow), audit_clear);
+    results->hand_charges = rows(sizeof(RfHandChargeRow), hand_charge_clear);
     results->unit.curve_unit_C = rows(sizeof(double), NULL);
     results->unit.curve_log_likelihood = rows(sizeof(double), NULL);
     return results;
@@ -75,7 +81,8 @@ void rf_results_free(RfResults *results)
     GArray *arrays[] = {results->inputs, results->settings,          results->notes,
                         results->paths,  results->segments,          results->switches,
                         results->steps,  results->droplets,          results->budget,
-                        results->audit,  results->unit.curve_unit_C, results->unit.curve_log_likelihood};
+                        results->audit,  results->unit.curve_unit_C, results->unit.curve_log_likelihood,
+                        results->hand_charges};
     for (size_t i = 0; i < G_N_ELEMENTS(arrays); i++) free_array(arrays[i]);
     if (results->warnings) g_ptr_array_unref(results->warnings);
     if (results->view_png) g_bytes_unref(results->view_png);

@@ -8,6 +8,7 @@
 #include <stdint.h>
 
 #include "calib/units.h"
+#include "physics/agreement.h"
 #include "physics/trail.h"
 
 typedef struct { /* one row of paths.csv */
@@ -75,6 +76,8 @@ typedef struct {
     unsigned lines_found;
     double residual_px;
     char *source;            /* "reticle.png" or "the recording's own background" */
+    bool has_lines;          /* lines across gravity were found: line i lies at y_mm = offset + i step + slope x_mm */
+    double line_offset_mm, line_step_mm, line_slope; /* step > 0: i counts the way things fall */
 } RfScaleRow;
 
 typedef struct { /* one line of the uncertainty budget of the charge, for a typical accepted droplet */
@@ -108,6 +111,30 @@ typedef struct { /* one row of audit.csv */
     double match_confidence;
     double start_s;          /* where in the recording to look */
 } RfAuditRow;
+
+typedef struct { /* the person behind the timings, from the entries that are sound */
+    bool is_known;           /* false: too few entries to say anything */
+    unsigned entries, sound, unreadable;
+    RfValue bias_s, spread_s; /* of timed intervals: by hand less recording */
+    bool has_clock;
+    RfValue clock_offset_s;  /* the person's clock less the recording's */
+    RfValue start_spread_s, stop_spread_s; /* where the clocks are tied */
+    RfValue trend_s_per_min; /* of the difference, over the recording */
+    RfAgreement agreement;   /* limits of agreement of by hand less recording, s; n = 0: too few */
+    double verdict_level_s;  /* a sound entry's difference less bias is beyond it once in a hundred */
+    RfValue velocity_effect; /* relative, median over entries: what the bias does */
+    RfValue charge_effect;
+    bool has_charge_effect;
+} RfPersonRow;
+
+typedef struct { /* a droplet's charge from hand timings alone */
+    unsigned droplet;
+    char *label;
+    unsigned falls, rises;
+    RfValue raw_C, corrected_C; /* corrected: the person's bias taken off */
+    RfValue tracked_C;
+    bool has_tracked;
+} RfHandChargeRow;
 
 typedef struct { /* a setting as it was used, for report and summary.json */
     char *group, *key, *value;
@@ -143,6 +170,8 @@ typedef struct {
     RfScaleRow scale;
     RfUnitResult unit;
     GBytes *view_png;        /* the background with the paths drawn over it, or NULL */
+    RfPersonRow person;
+    GArray *hand_charges;    /* RfHandChargeRow */
     bool measured;           /* false: ran, but nothing could be measured (exit 3) */
     char *verdict;           /* one sentence */
 } RfResults;

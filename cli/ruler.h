@@ -5,6 +5,7 @@
 #include <glib.h>
 
 #include "calib/length_scale.h"
+#include "calib/picture_frame.h"
 #include "cli/results.h"
 #include "cli/settings.h"
 #include "tracker/background.h"
@@ -19,6 +20,9 @@ RfPicture rf_ruler_background(const RfBackground *background);
 
 /* For scale.json and the report; `source` is copied. */
 void rf_ruler_describe(const RfLengthScale *scale, const char *source, RfScaleRow *row);
+
+/* Where the lines across gravity lie in the cell, for the audit of hand timings: fills has_lines and line_* of `row`. */
+void rf_ruler_lines(const RfLengthScale *scale, const RfPictureFrame *frame, RfScaleRow *row);
 
 /* What the report calls the picture. (borrowed) */
 const char *rf_ruler_source(const RfSettings *settings);

@@ -86,6 +86,9 @@ char *rf_write_json_scale(const RfResults *results)
     whole(json, "lines_found", scale->lines_found);
     number_if(json, "residual_px", scale->found, scale->residual_px);
     words(json, "source", scale->source);
+    number_if(json, "line_offset_mm", scale->has_lines, scale->line_offset_mm);
+    number_if(json, "line_step_mm", scale->has_lines, scale->line_step_mm);
+    number_if(json, "line_slope", scale->has_lines, scale->line_slope);
     return finish(json);
 }
 
