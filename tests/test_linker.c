@@ -121,6 +121,46 @@ static void test_specks(void)
     g_assert_cmpuint(paths->set_aside_still, ==, 3);
 }
 
+static RfSightings *standing_spot(const double (*at_px)[2], const int *visits, int exposures, double u_px)
+{
+    RfSightings *sightings = rf_sightings_new(640, 480, 1);
+    for (int e = 0; e < exposures; e++) {
+        RfExposure exposure = {.frame = e, .time_s = e / 30.0, .first_spot = sightings->spots->len};
+        if (visits[e] >= 0) {
+            RfSpot spot = {.x_px = (float)at_px[visits[e]][0],
+                           .y_px = (float)at_px[visits[e]][1],
+                           .u_x_px = (float)u_px,
+                           .u_y_px = (float)u_px,
+                           .peak = 5,
+                           .snr = 1,
+                           .width_px = 1.8f};
+            g_array_append_val(sightings->spots, spot);
+            exposure.spots = 1;
+        }
+        g_array_append_val(sightings->exposures, exposure);
+    }
+    return sightings;
+}
+
+/* What a codec makes of noise (places as found in H.264 at crf 18, signal below 1.5 times the noise) and of a speck's rim
+ * under a flickering lamp (crf 26): it stands for some frames, then jumps. */
+static void test_frozen_noise(void)
+{
+    static const double noise[][2] = {{198.855, 120.664}, {198.826, 121.445}, {198.697, 122.777},
+                                      {199.021, 120.201}, {199.770, 119.989}, {198.987, 118.965},
+                                      {199.018, 118.963}, {198.926, 118.574}, {197.976, 118.867}};
+    static const int stays[] = {0, 0, -1, 1, 1, 2, 2, 2, 3, 3, 3, 4, 4, 4, 5, 5, 6, 6,
+                                6, 6, 7,  7, 7, 7, 7, 8, 8, 8, 8, 8, 8, 8, 8, 8, 8};
+    static const double rim[][2] = {{52.383, 474.063}, {48.934, 473.961}, {47.754, 473.863}};
+    static const int jumps[] = {0, 0, -1, 0, -1, 0, 0, -1, 1, -1, 1, 2, 1, 1, -1, 1, 2};
+    g_autoptr(RfSightings) frozen = standing_spot(noise, stays, G_N_ELEMENTS(stays), 0.65);
+    g_autoptr(RfSightings) specks = standing_spot(rim, jumps, G_N_ELEMENTS(jumps), 0.15);
+    g_autoptr(RfPaths) of_noise = rf_linker_run(frozen, NULL, NULL, NULL);
+    g_autoptr(RfPaths) of_specks = rf_linker_run(specks, NULL, NULL, NULL);
+    g_assert_cmpuint(of_noise->paths->len, ==, 0);
+    g_assert_cmpuint(of_specks->paths->len, ==, 0);
+}
+
 static void test_quiet(void)
 {
     RfPlay play = quiet_play();
@@ -484,6 +524,7 @@ int main(int argc, char **argv)
     g_test_add_func("/linker/run/nothing", test_nothing);
     g_test_add_func("/linker/run/noise-only", test_noise_only);
     g_test_add_func("/linker/run/specks", test_specks);
+    g_test_add_func("/linker/run/frozen-noise", test_frozen_noise);
     g_test_add_func("/linker/run/quiet", test_quiet);
     g_test_add_func("/linker/run/reversal", test_reversal);
     g_test_add_func("/linker/run/crossing", test_crossing);

@@ -7,6 +7,13 @@
 
 enum { suspect_hits = 30 };
 
+/* A path must leave a circle of so many of its spots' own uncertainties: noise that a codec repeats from frame to frame
+ * wanders by a few. */
+static const double least_extent_u = 8;
+/* Steps shorter than this, in units of a droplet's Brownian step: one in a hundred of them. Where most are as short, it is
+ * something that stands and now and then jumps (the rim of a speck, frozen noise) unless it gets far. */
+static const double frozen_step = 0.15, frozen_extent_factor = 5;
+
 static const double missed_log_odds = 1.2; /* -log of the chance that a droplet is missed, generously */
 
 static const RfHit *hit(const RfChain *chain, unsigned i)
@@ -32,6 +39,45 @@ static double extent_px(const RfSight *smooth, size_t n)
             high[k] = fmax(high[k], smooth[i].at_px[k]);
         }
     return hypot(high[0] - low[0], high[1] - low[1]);
+}
+
+static int compare_floats(const void *a, const void *b)
+{
+    float x = *(const float *)a, y = *(const float *)b;
+    return (x > y) - (x < y);
+}
+
+static double median_u_px(const RfLinkScene *scene, const RfChain *chain)
+{
+    unsigned n = chain->hits->len;
+    g_autofree float *u = g_new(float, n);
+    for (unsigned i = 0; i < n; i++) {
+        const RfSpot *spot = rf_link_scene_spot(scene, hit(chain, i)->spot);
+        u[i] = fmaxf(spot->u_x_px, spot->u_y_px);
+    }
+    qsort(u, n, sizeof *u, compare_floats);
+    return (double)u[n / 2];
+}
+
+static bool is_mostly_frozen(const RfLinkScene *scene, const RfChain *chain)
+{
+    unsigned frozen = 0;
+    for (unsigned i = 1; i < chain->hits->len; i++) {
+        const RfHit *a = hit(chain, i - 1), *b = hit(chain, i);
+        const double *from_px = scene->sights[a->spot].at_px, *to_px = scene->sights[b->spot].at_px;
+        double dt_s = rf_link_scene_exposure(scene, b->exposure)->time_s -
+                      rf_link_scene_exposure(scene, a->exposure)->time_s;
+        frozen += hypot(to_px[0] - from_px[0], to_px[1] - from_px[1]) <
+                  frozen_step * sqrt(scene->model.noise.spread_px2_s * dt_s);
+    }
+    return 2 * frozen > chain->hits->len - 1;
+}
+
+static bool is_still(const RfLinkScene *scene, const RfChain *chain, const RfSight *smooth)
+{
+    double least_px = fmax(scene->options.least_extent_px, least_extent_u * median_u_px(scene, chain));
+    if (is_mostly_frozen(scene, chain)) least_px *= frozen_extent_factor;
+    return extent_px(smooth, rf_chain_last(chain) - rf_chain_first(chain) + 1) < least_px;
 }
 
 static RfPathPoint make_point(const RfLinkScene *scene, unsigned e, const RfSight *smooth)
@@ -71,12 +117,6 @@ static double chance_px2(const RfLinkScene *scene, const GPtrArray *chains)
         suspects += hits < suspect_hits ? hits : 0;
     }
     return rf_fill_unclaimed_px2(scene) + suspects / (exposures * scene->area_px2);
-}
-
-static int compare_floats(const void *a, const void *b)
-{
-    float x = *(const float *)a, y = *(const float *)b;
-    return (x > y) - (x < y);
 }
 
 static double median_snr(const RfLinkScene *scene, const RfChain *chain)
@@ -158,8 +198,7 @@ static void judge(RfLinkScene *scene, const RfChain *chain, double unclaimed_px2
         return;
     }
     g_autofree RfSight *smooth = rf_chain_smooth(scene, chain);
-    if (extent_px(smooth, rf_chain_last(chain) - rf_chain_first(chain) + 1) <
-        scene->options.least_extent_px) {
+    if (is_still(scene, chain, smooth)) {
         paths->set_aside_still++;
         return;
     }
