@@ -1,15 +1,23 @@
 #include "tracker/lamp.h"
 
 #include "tracker/interpolate.h"
+#include "tracker/lanes.h"
 #include "tracker/luma.h"
 
 #include <math.h>
 
-enum { COLUMN_STEP = 8, ROW_STEP = 2, ROUNDS = 3 };
+/* Pixels looked at: enough to know each band's light to a few thousandths, the whole picture's to less than one. */
+enum { MOST_ROWS = 6, MOST_COLUMNS = 64, ROUNDS = 3, ROOM = MOST_ROWS * MOST_COLUMNS };
 
 typedef struct {
     double light_seen, light_light, var_light_light; /* sums: seen * light, light^2, light^2 * var */
-    unsigned n;
+    double n;
+} Sums;
+
+/* One band's pixels, less the black level, filled up with dark ones. */
+typedef struct {
+    _Alignas(16) float light[ROOM], seen[ROOM], var[ROOM];
+    int n;
 } Band;
 
 typedef struct {
@@ -33,34 +41,61 @@ static double background_at(const View *view, int x, int y)
     return (double)rf_interpolate_linear(view->level, width, height, (float)x_ref, (float)y_ref);
 }
 
-/* One band's sums with the pixels that lie within `reach` noise sd of what `gain` predicts. */
-static Band sum_band(const View *view, int first_row, int end_row, int row_step, double gain, double reach)
+static void add_row(const View *view, int y, const int *columns, int n, Band *band)
 {
-    Band band = {0};
     double black = view->noise->black_level;
-    for (int y = first_row; y < end_row; y += row_step)
-        for (int x = COLUMN_STEP / 2; x < view->frame->width; x += COLUMN_STEP) {
-            double light = background_at(view, x, y) - black,
-                   seen = (double)rf_luma_at(view->frame, x, y) - black;
-            double var = view->noise->read_var + view->noise->photon_var_per_level * MAX(0.0, light);
-            double off = seen - gain * light;
-            if (off * off > reach * reach * var) continue;
-            band.light_seen += light * seen;
-            band.light_light += light * light;
-            band.var_light_light += light * light * var;
-            band.n++;
-        }
-    return band;
+    float read_var = (float)view->noise->read_var, photon = (float)view->noise->photon_var_per_level;
+    for (int i = 0; i < n; i++) {
+        int x = columns[i];
+        float light = (float)(background_at(view, x, y) - black);
+        band->light[band->n] = light;
+        band->seen[band->n] = rf_luma_at(view->frame, x, y) - (float)black;
+        band->var[band->n] = read_var + photon * (light > 0 ? light : 0);
+        band->n++;
+    }
 }
 
-static double mean_ratio(const View *view, int first_line, int line_step)
+/* Rows `first` to `end` (exclusive) of which every `line_step`-th belongs to the exposure. */
+static void take_band(const View *view, int first, int end, int line_step, Band *band)
 {
-    double light = 0, seen = 0, black = view->noise->black_level;
-    for (int y = first_line; y < view->frame->height; y += 8 * line_step)
-        for (int x = COLUMN_STEP / 2; x < view->frame->width; x += COLUMN_STEP) {
-            light += background_at(view, x, y) - black;
-            seen += (double)rf_luma_at(view->frame, x, y) - black;
-        }
+    int lines = (end - first + line_step - 1) / line_step, rows = MIN(lines, MOST_ROWS);
+    int columns[MOST_COLUMNS], across = MIN(MOST_COLUMNS, view->frame->width);
+    for (int i = 0; i < across; i++) columns[i] = (2 * i + 1) * view->frame->width / (2 * across);
+    band->n = 0;
+    for (int i = 0; i < rows; i++)
+        add_row(view, first + (2 * i + 1) * lines / (2 * rows) * line_step, columns, across, band);
+    for (; band->n % RF_LANES_STEP; band->n++)
+        band->light[band->n] = band->seen[band->n] = 0, band->var[band->n] = 1;
+}
+
+/* Sums over the pixels that lie within `reach` noise sd of what `gain` predicts. */
+static Sums sum_band(const Band *band, double gain, double reach)
+{
+    _Alignas(16) float kept[ROOM], light[ROOM], light_var[ROOM];
+    float g = (float)gain, reach2 = (float)(reach * reach);
+    for (int i = 0; i < band->n; i++) {
+        float off = band->seen[i] - g * band->light[i];
+        kept[i] = off * off <= reach2 * band->var[i] && band->light[i] != 0 ? 1.0f : 0.0f;
+        light[i] = kept[i] * band->light[i];
+        light_var[i] = light[i] * band->var[i];
+    }
+    return (Sums){
+        .light_seen = rf_lanes_total(rf_lanes_dot(light, band->seen, band->n)),
+        .light_light = rf_lanes_total(rf_lanes_dot(light, band->light, band->n)),
+        .var_light_light = rf_lanes_total(rf_lanes_dot(light_var, band->light, band->n)),
+        .n = rf_lanes_total(rf_lanes_dot(kept, kept, band->n)),
+    };
+}
+
+static double mean_ratio(const Band bands[RF_LAMP_BANDS])
+{
+    _Alignas(16) float ones[ROOM];
+    double light = 0, seen = 0;
+    for (int i = 0; i < ROOM; i++) ones[i] = 1;
+    for (int i = 0; i < RF_LAMP_BANDS; i++) {
+        light += rf_lanes_total(rf_lanes_dot(bands[i].light, ones, bands[i].n));
+        seen += rf_lanes_total(rf_lanes_dot(bands[i].seen, ones, bands[i].n));
+    }
     return light > 0 ? CLAMP(seen / light, 0.2, 5.0) : 1;
 }
 
@@ -84,21 +119,24 @@ void rf_lamp_measure(const float *level, const RfPixelNoise *noise, double pixel
                  pixel_aspect,
                  pose,
                  pose->angle_rad != 0 || pose->shift_x_px != 0 || pose->shift_y_px != 0};
+    Band bands[RF_LAMP_BANDS];
+    for (int i = 0; i < RF_LAMP_BANDS; i++) {
+        int first = frame->height * i / RF_LAMP_BANDS, end = frame->height * (i + 1) / RF_LAMP_BANDS;
+        first += (first_line - first % line_step + line_step) % line_step;
+        take_band(&view, first, end, line_step, &bands[i]);
+    }
     double gain[RF_LAMP_BANDS], var[RF_LAMP_BANDS];
-    lamp->gain = mean_ratio(&view, first_line, line_step);
+    lamp->gain = mean_ratio(bands);
     for (int round = 0; round < ROUNDS; round++) {
         double light_seen = 0, light_light = 0;
         for (int i = 0; i < RF_LAMP_BANDS; i++) {
-            int first = frame->height * i / RF_LAMP_BANDS, end = frame->height * (i + 1) / RF_LAMP_BANDS;
-            first += (first_line - first % line_step + line_step) % line_step;
-            double around = round ? gain[i] : lamp->gain;
-            Band band = sum_band(&view, first, end, ROW_STEP * line_step, around, round ? 3.5 : 6);
-            bool is_known = band.n >= 20 && band.light_light > 0;
-            gain[i] = is_known ? band.light_seen / band.light_light : lamp->gain;
+            Sums sums = sum_band(&bands[i], round ? gain[i] : lamp->gain, round ? 3.5 : 6);
+            bool is_known = sums.n >= 20 && sums.light_light > 0;
+            gain[i] = is_known ? sums.light_seen / sums.light_light : lamp->gain;
             var[i] =
-                is_known ? MAX(band.var_light_light / (band.light_light * band.light_light), 1e-10) : 1e3;
-            light_seen += band.light_seen;
-            light_light += band.light_light;
+                is_known ? MAX(sums.var_light_light / (sums.light_light * sums.light_light), 1e-10) : 1e3;
+            light_seen += sums.light_seen;
+            light_light += sums.light_light;
         }
         if (light_light > 0) lamp->gain = light_seen / light_light;
     }

@@ -51,3 +51,7 @@ RfLocaliseOutcome rf_localise(const RfLocaliser *localiser, const RfPatchPixel *
 /* Excess that the fitted spots predict at a pixel, shade included. Profiles of the spots as fitted. */
 double rf_localise_model(const RfLocaliser *localiser, const RfSpotFit *spots, unsigned n,
                          const RfPatchPixel *pixel);
+
+/* The same for all pixels at once, into `models`. */
+void rf_localise_models(const RfLocaliser *localiser, const RfSpotFit *spots, unsigned n,
+                        const RfPatchPixel *pixels, unsigned n_pixels, float *models);

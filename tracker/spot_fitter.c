@@ -68,7 +68,9 @@ static double distance(const RfSpotFit *a, const RfSpotFit *b, double aspect)
 /* Near enough that each lies in the other's wing. */
 static bool is_within_reach(const RfSpotFit *a, const RfSpotFit *b, double aspect)
 {
-    return distance(a, b, aspect) < 2.2 * (a->width_px + b->width_px) + 2;
+    double across = (a->x_px - b->x_px) * aspect, down = a->y_px - b->y_px,
+           reach = 2.2 * (a->width_px + b->width_px) + 2;
+    return across * across + down * down < reach * reach;
 }
 
 /* The strongest untaken candidate and what lies in its reach, chained, until the group is full. */
@@ -192,10 +194,9 @@ static void fill_residuals(RfSpotFitter *fitter, const RfFitterSettings *setting
 {
     RfSpotFit fits[RF_LOCALISE_MOST_SPOTS];
     for (unsigned i = 0; i < group->n; i++) fits[i] = group->members[i].fit;
+    rf_localise_models(&settings->localiser, fits, group->n, fitter->pixels, n_pixels, fitter->residuals);
     for (unsigned p = 0; p < n_pixels; p++)
-        fitter->residuals[p] =
-            (float)((double)fitter->pixels[p].excess - offset -
-                    rf_localise_model(&settings->localiser, fits, group->n, &fitter->pixels[p]));
+        fitter->residuals[p] = fitter->pixels[p].excess - (float)offset - fitter->residuals[p];
 }
 
 typedef struct {
@@ -321,10 +322,11 @@ static int by_place(const void *a, const void *b)
 /* Two groups may end on the same spot where one was full: the later, fainter one goes. */
 static bool is_known(const RfSpot *spots, unsigned n, const RfSpot *spot)
 {
-    for (unsigned i = 0; i < n; i++)
-        if (hypotf(spots[i].x_px - spot->x_px, spots[i].y_px - spot->y_px) <
-            0.7f * MIN(spots[i].width_px, spot->width_px))
-            return true;
+    for (unsigned i = 0; i < n; i++) {
+        float dx = spots[i].x_px - spot->x_px, dy = spots[i].y_px - spot->y_px,
+              reach = 0.7f * MIN(spots[i].width_px, spot->width_px);
+        if (dx * dx + dy * dy < reach * reach) return true;
+    }
     return false;
 }
 
