@@ -7,7 +7,6 @@
 #include <math.h>
 #include <string.h>
 
-#include "tracker/rgb.h"
 #include "tracker/video_error.h"
 
 #define LONGEST_WORDS 200
@@ -147,13 +146,6 @@ static AVFormatContext *open_container(const char *path, GError **error)
     return NULL;
 }
 
-static bool is_indexable(enum AVCodecID codec, const AVCodecDescriptor *about)
-{
-    return codec == AV_CODEC_ID_H264 || codec == AV_CODEC_ID_HEVC || codec == AV_CODEC_ID_MPEG1VIDEO ||
-           codec == AV_CODEC_ID_MPEG2VIDEO || codec == AV_CODEC_ID_FFV1 ||
-           (about != NULL && (about->props & AV_CODEC_PROP_INTRA_ONLY));
-}
-
 static double ratio_or_zero(AVRational ratio)
 {
     return ratio.num > 0 && ratio.den > 0 ? av_q2d(ratio) : 0;
@@ -166,6 +158,9 @@ static void describe(RfDemuxer *demuxer)
     enum AVCodecID codec = parameters->codec_id;
     const AVCodecDescriptor *about = avcodec_descriptor_get(codec);
     const char *container = demuxer->format->iformat->name;
+    bool is_nal = codec == AV_CODEC_ID_H264 || codec == AV_CODEC_ID_HEVC;
+    bool is_mpeg = codec == AV_CODEC_ID_MPEG1VIDEO || codec == AV_CODEC_ID_MPEG2VIDEO;
+    bool is_intra = about != NULL && (about->props & AV_CODEC_PROP_INTRA_ONLY);
     demuxer->stream =
         (RfStream){.width = parameters->width,
                    .height = parameters->height,
@@ -176,11 +171,10 @@ static void describe(RfDemuxer *demuxer)
                    .container = g_intern_string(container),
                    .codec = about != NULL ? about->name : NULL,
                    .is_lossless = about != NULL && !(about->props & AV_CODEC_PROP_LOSSY),
-                   .is_indexable = is_indexable(codec, about),
-                   .is_nal = codec == AV_CODEC_ID_H264 || codec == AV_CODEC_ID_HEVC,
+                   .is_indexable = is_nal || is_mpeg || is_intra || codec == AV_CODEC_ID_FFV1,
+                   .is_nal = is_nal,
                    .is_hevc = codec == AV_CODEC_ID_HEVC,
-                   .may_lead = codec == AV_CODEC_ID_MPEG1VIDEO || codec == AV_CODEC_ID_MPEG2VIDEO ||
-                               codec == AV_CODEC_ID_HEVC,
+                   .may_lead = is_mpeg || codec == AV_CODEC_ID_HEVC,
                    .is_seekable = strstr(container, "matroska") != NULL || strstr(container, "mp4") != NULL,
                    .setup = parameters->extradata,
                    .setup_size = (size_t)parameters->extradata_size};
@@ -259,9 +253,6 @@ struct RfDecoder {
     const AVPixFmtDescriptor *layout; /* of the frame */
     Heard heard;
     int complaints_seen;
-    /* For sources that have no luma plane of their own: */
-    void *rows;     /* tight */
-    uint16_t *work; /* three rows */
 };
 
 static RfDecoder *decoder_for(const AVCodec *codec)
@@ -334,8 +325,6 @@ void rf_decoder_free(RfDecoder *decoder)
     if (decoder == NULL) return;
     avcodec_free_context(&decoder->codec);
     av_frame_free(&decoder->frame);
-    g_free(decoder->rows);
-    g_free(decoder->work);
     g_free(decoder);
 }
 
@@ -391,12 +380,11 @@ static int depth_of(const AVPixFmtDescriptor *layout)
 static bool is_plain(const AVPixFmtDescriptor *layout)
 {
     const AVComponentDescriptor *luma = &layout->comp[0];
-    bool is_wide = luma->depth > 8;
-    if (is_grey_of_rgb(layout) || (layout->flags & AV_PIX_FMT_FLAG_BITSTREAM) || luma->depth < 8)
-        return false;
-    if (is_wide && ((layout->flags & AV_PIX_FMT_FLAG_BE) != 0) != (G_BYTE_ORDER == G_BIG_ENDIAN))
-        return false;
-    return luma->shift == 0 && luma->offset == 0 && luma->step == (is_wide ? 2 : 1);
+    bool is_wide = luma->depth > 8,
+         is_packed_or_rgb = (layout->flags & AV_PIX_FMT_FLAG_BITSTREAM) || is_grey_of_rgb(layout);
+    bool is_native = ((layout->flags & AV_PIX_FMT_FLAG_BE) != 0) == (G_BYTE_ORDER == G_BIG_ENDIAN);
+    return !is_packed_or_rgb && luma->depth >= 8 && (is_native || !is_wide) && luma->shift == 0 &&
+           luma->offset == 0 && luma->step == (is_wide ? 2 : 1);
 }
 
 RfDecoderStep rf_decoder_receive(RfDecoder *decoder, RfPicture *picture)
@@ -413,6 +401,7 @@ RfDecoderStep rf_decoder_receive(RfDecoder *decoder, RfPicture *picture)
                            .height = frame->height,
                            .bit_depth = layout != NULL ? depth_of(layout) : 0,
                            .pixel_aspect = ratio_or_zero(frame->sample_aspect_ratio),
+                           .components = layout != NULL && is_grey_of_rgb(layout) ? 3 : 1,
                            .is_readable = is_readable(layout),
                            .is_plain = layout != NULL && is_plain(layout),
                            .is_damaged = is_damaged(decoder),
@@ -428,54 +417,7 @@ static bool is_limited(const AVFrame *frame, const AVPixFmtDescriptor *layout)
     return layout->nb_components >= 3 && !g_str_has_prefix(layout->name, "yuvj");
 }
 
-static void palette_row(const AVFrame *frame, int y, uint16_t *work)
-{
-    const uint8_t *row = frame->data[0] + (ptrdiff_t)y * frame->linesize[0];
-    const uint32_t *palette = (const uint32_t *)(const void *)frame->data[1]; /* ARGB in native order */
-    for (int x = 0; x < frame->width; x++) {
-        for (int c = 0; c < 3; c++) work[c * frame->width + x] = palette[row[x]] >> (16 - 8 * c) & 0xff;
-    }
-}
-
-/* One component, stretched to 8 bit if it has fewer. */
-static void component_row(const AVFrame *frame, const AVPixFmtDescriptor *layout, int component, int y,
-                          uint16_t *out)
-{
-    av_read_image_line2(out, (const uint8_t **)(void *)frame->data, frame->linesize, layout, 0, y, component,
-                        frame->width, 0, sizeof *out);
-    int depth = layout->comp[component].depth, full = (1 << depth) - 1;
-    for (int x = 0; x < frame->width && depth < 8; x++) {
-        out[x] = (uint16_t)((out[x] * 255 + full / 2) / full);
-    }
-}
-
-/* Any layout at all, component by component; slow, for sources that a microscope camera rarely has. */
-static void convert_row(const RfDecoder *decoder, int y, int bytes, void *out)
-{
-    const AVFrame *frame = decoder->frame;
-    const AVPixFmtDescriptor *layout = decoder->layout;
-    int width = frame->width, components = is_grey_of_rgb(layout) ? 3 : 1;
-    uint16_t *work = decoder->work;
-    if (layout->flags & AV_PIX_FMT_FLAG_PAL) {
-        palette_row(frame, y, work);
-    } else {
-        for (int c = 0; c < components; c++) component_row(frame, layout, c, y, work + c * width);
-    }
-    if (components == 3) rf_rgb_to_luma(work, work + width, work + 2 * width, (size_t)width, work);
-    if (bytes == 2) memcpy(out, work, (size_t)width * 2);
-    for (int x = 0; x < width && bytes == 1; x++) ((uint8_t *)out)[x] = (uint8_t)work[x];
-}
-
-static bool fit_rows(RfDecoder *decoder, size_t width, size_t height, size_t bytes)
-{
-    void *rows = g_try_realloc_n(decoder->rows, width * height, bytes);
-    void *work = g_try_realloc_n(decoder->work, 3 * width, sizeof *decoder->work);
-    if (rows != NULL) decoder->rows = rows;
-    if (work != NULL) decoder->work = work;
-    return rows != NULL && work != NULL;
-}
-
-bool rf_decoder_lend(RfDecoder *decoder, RfFrame *lent)
+void rf_decoder_lend(const RfDecoder *decoder, RfFrame *lent)
 {
     const AVFrame *frame = decoder->frame;
     *lent = (RfFrame){.luma = frame->data[0],
@@ -486,15 +428,29 @@ bool rf_decoder_lend(RfDecoder *decoder, RfFrame *lent)
                       .is_limited_range = is_limited(frame, decoder->layout),
                       .is_interlaced = IS_INTERLACED(frame),
                       .is_top_field_first = IS_TOP_FIRST(frame)};
-    if (is_plain(decoder->layout)) return true;
-    int bytes = lent->bit_depth > 8 ? 2 : 1;
-    if (!fit_rows(decoder, (size_t)frame->width, (size_t)frame->height, (size_t)bytes)) return false;
-    lent->stride_bytes = (ptrdiff_t)frame->width * bytes;
-    lent->luma = decoder->rows;
-    for (int y = 0; y < frame->height; y++) {
-        convert_row(decoder, y, bytes, (uint8_t *)decoder->rows + y * lent->stride_bytes);
+}
+
+static void palette_levels(const AVFrame *frame, int component, int y, uint16_t *levels)
+{
+    const uint8_t *row = frame->data[0] + (ptrdiff_t)y * frame->linesize[0];
+    const uint32_t *palette = (const uint32_t *)(const void *)frame->data[1]; /* ARGB in native order */
+    for (int x = 0; x < frame->width; x++) levels[x] = palette[row[x]] >> (16 - 8 * component) & 0xff;
+}
+
+void rf_decoder_levels(const RfDecoder *decoder, int component, int y, uint16_t *levels)
+{
+    const AVFrame *frame = decoder->frame;
+    const AVPixFmtDescriptor *layout = decoder->layout;
+    if (layout->flags & AV_PIX_FMT_FLAG_PAL) {
+        palette_levels(frame, component, y, levels);
+        return;
     }
-    return true;
+    av_read_image_line2(levels, (const uint8_t **)(void *)frame->data, frame->linesize, layout, 0, y,
+                        component, frame->width, 0, sizeof *levels);
+    int depth = layout->comp[component].depth, full = (1 << depth) - 1;
+    for (int x = 0; x < frame->width && depth < 8; x++) {
+        levels[x] = (uint16_t)((levels[x] * 255 + full / 2) / full);
+    }
 }
 
 /* ---- encoders ---- */
@@ -506,32 +462,17 @@ struct RfEncoder {
     AVFrame *frame;
     AVPacket *packet;
     RfVideoWriterOptions options;
-    bool is_finished;
 };
 
 static enum AVPixelFormat stored_layout(const RfVideoWriterOptions *options)
 {
-    bool is_deep = options->bit_depth > 8;
-    switch (options->codec) {
-    case RF_VIDEO_CODEC_FFV1:
-        if (options->is_colour) return AV_PIX_FMT_YUV420P;
-        if (options->bit_depth > 12) return AV_PIX_FMT_GRAY16;
-        if (options->bit_depth > 10) return AV_PIX_FMT_GRAY12;
-        return is_deep ? AV_PIX_FMT_GRAY10 : AV_PIX_FMT_GRAY8;
-    case RF_VIDEO_CODEC_H264:
-        return is_deep ? AV_PIX_FMT_YUV420P10 : AV_PIX_FMT_YUV420P;
-    case RF_VIDEO_CODEC_MJPEG:
-        return AV_PIX_FMT_YUVJ420P;
-    case RF_VIDEO_CODEC_MPEG2:
-        return AV_PIX_FMT_YUV420P;
-    }
-    return AV_PIX_FMT_NONE;
-}
-
-static const char *encoder_name(RfVideoCodec codec)
-{
-    static const char *const names[] = {"ffv1", "libx264", "mjpeg", "mpeg2video"};
-    return names[codec];
+    int depth = options->bit_depth;
+    if (options->codec == RF_VIDEO_CODEC_MJPEG) return AV_PIX_FMT_YUVJ420P;
+    if (options->codec != RF_VIDEO_CODEC_FFV1 || options->is_colour)
+        return depth > 8 ? AV_PIX_FMT_YUV420P10 : AV_PIX_FMT_YUV420P;
+    if (depth > 12) return AV_PIX_FMT_GRAY16;
+    if (depth > 10) return AV_PIX_FMT_GRAY12;
+    return depth > 8 ? AV_PIX_FMT_GRAY10 : AV_PIX_FMT_GRAY8;
 }
 
 /* A rate that MPEG-2 and AVI can hold: 30000/1001, not 29.97. */
@@ -588,7 +529,8 @@ static bool open_codec(RfEncoder *encoder, GError **error)
 {
     const RfVideoWriterOptions *options = &encoder->options;
     const AVOutputFormat *container = encoder->format->oformat;
-    const AVCodec *kind = avcodec_find_encoder_by_name(encoder_name(options->codec));
+    static const char *const names[] = {"ffv1", "libx264", "mjpeg", "mpeg2video"}; /* by RfVideoCodec */
+    const AVCodec *kind = avcodec_find_encoder_by_name(names[options->codec]);
     if (kind == NULL) {
         return rf_video_fail(error, RF_VIDEO_ERROR_ENCODER, encoder->path,
                              "this build of libavcodec lacks the encoder asked for");
@@ -724,12 +666,10 @@ bool rf_encoder_write(RfEncoder *encoder, int64_t ticks, GError **error)
 bool rf_encoder_finish(RfEncoder *encoder, GError **error)
 {
     listen();
-    if (encoder->is_finished) return true;
     avcodec_send_frame(encoder->codec, NULL);
     if (!write_packets(encoder, error)) return false;
     int status = av_write_trailer(encoder->format);
     if (status >= 0) status = avio_closep(&encoder->format->pb);
-    encoder->is_finished = true;
     return status >= 0 || fail(error, RF_VIDEO_ERROR_WRITE, encoder->path, status, "can't be finished");
 }
 

@@ -66,9 +66,10 @@ typedef struct {
     int64_t pts;   /* of the packet it was in; RF_NO_TICKS */
     int64_t guess; /* libav's best guess; RF_NO_TICKS */
     int width, height, bit_depth;
+    int components;      /* 1 luma; 3 red, green, blue */
     double pixel_aspect; /* <= 0: not said */
     bool is_readable;    /* grey, YUV, RGB or palette, whole numbers of up to 16 bit: can be lent */
-    bool is_plain;       /* lent as it lies in memory */
+    bool is_plain;       /* its first plane is luma as RfFrame has it */
     bool is_damaged;     /* the decoder reported or concealed errors */
     const char *layout;  /* libav's name for it */
 } RfPicture;
@@ -95,10 +96,12 @@ RfDecoderStep rf_decoder_receive(RfDecoder *decoder, RfPicture *picture);
  * them, may depend on which thread came first. What one thread makes of the same packets doesn't. */
 bool rf_decoder_is_luck_involved(const RfDecoder *decoder);
 
-/* Lends the picture last received until the next call on this decoder. Sources with a luma plane are lent where they
- * lie. Packed, big-endian, shifted (P010) and RGB ones are converted; RGB becomes ITU-R BT.601 luma. Index, time and
- * damage are left at zero. False: not enough memory. */
-bool rf_decoder_lend(RfDecoder *decoder, RfFrame *lent);
+/* Lends the picture last received as it lies in memory, until the next call on this decoder. Its rows are luma only if
+ * is_plain. Index, time and damage are left at zero. */
+void rf_decoder_lend(const RfDecoder *decoder, RfFrame *lent);
+
+/* One row of one component of it, of whatever layout: luma, or red, green, blue; less than 8 bit stretched to 8. */
+void rf_decoder_levels(const RfDecoder *decoder, int component, int y, uint16_t *levels);
 
 /* ---- encoders ---- */
 

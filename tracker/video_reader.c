@@ -209,7 +209,7 @@ static RfVideoStep show(RfVideoReader *reader, RfFrame *lent, GError **error)
 {
     RfFrame placed = *lent;
     if (!check_picture(reader, placed.time_s, error)) return RF_VIDEO_FAILED;
-    if (!rf_decoder_lend(reader->decoder, lent)) {
+    if (!rf_video_luma_lend(&reader->scratch, reader->decoder, &reader->picture, lent)) {
         rf_video_fail(error, RF_VIDEO_ERROR_UNSUPPORTED, rf_video_file_part(reader->file, reader->part)->path,
                       "not enough memory for one picture");
         return RF_VIDEO_FAILED;
@@ -282,6 +282,7 @@ void rf_video_reader_free(RfVideoReader *reader)
     if (reader == NULL) return;
     rf_decoder_free(reader->decoder);
     rf_demuxer_free(reader->demuxer);
+    rf_video_luma_clear(&reader->scratch);
     g_free(reader);
 }
 

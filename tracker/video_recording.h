@@ -5,6 +5,7 @@
 #include "tracker/frame_index.h"
 #include "tracker/libav.h"
 #include "tracker/video_file.h"
+#include "tracker/video_luma.h"
 
 /* ---- one file of a recording (video_part.c) ---- */
 
@@ -77,6 +78,7 @@ struct RfVideoReader {
     RfVideoStretch from; /* where the decoder was started, and what was known then */
     int64_t from_next;
     RfFrameTimer from_timer;
+    RfLumaRows scratch;
     RfVideoFaults faults;
 };
 

@@ -3,6 +3,7 @@
 #include "tracker/libav.h"
 #include "tracker/video_error.h"
 #include "tracker/video_file.h"
+#include "tracker/video_luma.h"
 
 #define LARGEST_STILL_BYTES (INT64_C(1) << 30)
 
@@ -63,13 +64,16 @@ RfStill *rf_video_file_read_still(const char *path, GError **error)
     RfPicture picture;
     g_autoptr(RfDecoder) decoder = decode(path, &picture, error);
     if (decoder == NULL || !rf_video_check_size(path, picture.width, picture.height, error)) return NULL;
+    RfLumaRows scratch = {0};
     RfFrame lent;
-    if (picture.is_readable && rf_decoder_lend(decoder, &lent)) {
-        return still_copy(&lent, picture.pixel_aspect);
-    }
-    rf_video_fail(error, RF_VIDEO_ERROR_UNSUPPORTED, path,
-                  "pixels of a kind that isn't read; need grey or RGB");
-    return NULL;
+    RfStill *still = NULL;
+    if (picture.is_readable && rf_video_luma_lend(&scratch, decoder, &picture, &lent))
+        still = still_copy(&lent, picture.pixel_aspect);
+    else
+        rf_video_fail(error, RF_VIDEO_ERROR_UNSUPPORTED, path,
+                      "pixels of a kind that isn't read; need grey or RGB");
+    rf_video_luma_clear(&scratch);
+    return still;
 }
 
 void rf_still_free(RfStill *still)

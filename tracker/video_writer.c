@@ -11,6 +11,7 @@ struct RfVideoWriter {
     char *path;
     RfEncoder *encoder;
     int64_t last_ticks;
+    bool is_finished;
 };
 
 static bool check_options(const char *path, const RfVideoWriterOptions *options, GError **error)
@@ -104,7 +105,9 @@ bool rf_video_file_write(RfVideoWriter *writer, const void *pixels, ptrdiff_t st
 
 bool rf_video_file_finish(RfVideoWriter *writer, GError **error)
 {
-    return rf_encoder_finish(writer->encoder, error);
+    bool was_finished = writer->is_finished;
+    writer->is_finished = true;
+    return was_finished || rf_encoder_finish(writer->encoder, error);
 }
 
 void rf_video_writer_free(RfVideoWriter *writer)
