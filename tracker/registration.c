@@ -15,6 +15,7 @@ enum {
     COARSE_STEP = 5,   /* every fifth steep pixel will do for the coarse search */
     REACH_CELLS = 10,  /* coarse search: this many pixels of the smallest picture either way */
 };
+static const double TRUSTED_PX = 0.2; /* less certain, and lines that run one way only have let it slide along them */
 static const int REDUCTION[LEVELS] = {8, 4, 1};
 
 /* One steep pixel of a reduced reference picture; places from the picture's middle, in full-size stored pixels. */
@@ -414,7 +415,7 @@ static bool refine(const RfRegistration *registration, const RfRegistrationScrat
         *u_px = sqrt(MAX(variance[0], variance[1])) * guess->scale;
         if (fabs(d[0]) + fabs(d[1]) < 2e-4 && fabs(d[2]) * registration->width < 4e-4) return true;
     }
-    return *u_px < 0.2;
+    return *u_px < TRUSTED_PX;
 }
 
 bool rf_registration_find(const RfRegistration *registration, RfRegistrationScratch *scratch,
@@ -435,7 +436,7 @@ bool rf_registration_find(const RfRegistration *registration, RfRegistrationScra
         else if (i == LEVELS - 1)
             return false;
     }
-    if (guess.gain < 0.3 || guess.gain > 3) return false;
+    if (guess.gain < 0.3 || guess.gain > 3 || u > TRUSTED_PX) return false;
     *pose = guess.pose;
     if (u_px) *u_px = u;
     return true;
