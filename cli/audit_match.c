@@ -13,11 +13,17 @@ enum { ROUNDS = 25, LEARN_FROM = 1500 };
 /* How often each comes about, before anything is looked at: a judgement, of one order with published transcription errors
  * (one to a few per cent); a factor of two either way moves findings only where two explain an entry nearly as well. */
 static const double prior_agrees = 0.82, prior_disagrees = 0.02, prior_other = 0.02, prior_miscount = 0.03,
-                    prior_miscount_by_two = 0.003, prior_slip = 0.03, prior_switched = 0.08,
-                    prior_unmatched = 0.02;
+                    prior_slip = 0.03, prior_switched = 0.08, prior_unmatched = 0.02;
 
 /* A start at a crossing again, not at the first; a noted voltage that contradicts the field; its sign alone. */
 static const double again_share = 0.15, wrong_voltage_share = 0.05, wrong_sign_share = 0.5;
+
+/* A hand that slips now and then: so often, so many times the usual spread. Only where another mistake is at work already; for a
+ * sound entry the verdict level decides. */
+static const double clumsy_share = 0.03, clumsy_spreads = 3;
+
+/* The label's own droplet in view speaks against a timing of nothing. */
+static const double in_view_share = 0.25;
 
 static const double least_spread_s = 0.01, least_clock_spread_s = 0.02;
 
@@ -113,6 +119,15 @@ static double time_density(const Case *one, const RfExplanation *seen, double re
     return normal(read_s - seen->tracked_s - habit->bias_s.value, sigma_s);
 }
 
+static double clumsy_density(const Case *one, const RfExplanation *seen)
+{
+    const RfHandHabit *habit = &one->match->habit;
+    double off_s = one->entry->time_s - seen->tracked_s - habit->bias_s.value;
+    double wide_s = hypot(clumsy_spreads * habit->spread_s.value, seen->u_tracked_s);
+    return (1 - clumsy_share) * time_density(one, seen, one->entry->time_s) +
+           clumsy_share * normal(off_s, wide_s);
+}
+
 static void add(const Case *one, const RfExplanation *seen, RfFinding finding, double read_s, double weight)
 {
     if (!(weight > 0)) return;
@@ -140,7 +155,8 @@ static void explain_claimed(const Case *one, const RfExplanation *seen)
     double written_s = one->entry->time_s, density = time_density(one, seen, written_s);
     if (!is_own) {
         if (seen->passage->switches == 0)
-            add(one, seen, RF_FINDING_OTHER_DROPLET, written_s, prior_other / one->rivals * density);
+            add(one, seen, RF_FINDING_OTHER_DROPLET, written_s,
+                prior_other / one->rivals * clumsy_density(one, seen));
         return;
     }
     if (seen->passage->switches > 0) {
@@ -154,14 +170,13 @@ static void explain_claimed(const Case *one, const RfExplanation *seen)
     add_slips(one, seen, share);
 }
 
-static void explain_miscount(const Case *one, const RfExplanation *seen, double off)
+static void explain_miscount(const Case *one, const RfExplanation *seen)
 {
     bool is_own = one->owner < 0 || (unsigned)one->owner == seen->passage->course;
-    if (!is_own || seen->passage->switches > 0) return;
     double share = one->owner < 0 ? 1 / one->rivals : 1;
-    double prior = fabs(off) < 1.5 ? prior_miscount / 2 : prior_miscount_by_two / 2;
-    add(one, seen, RF_FINDING_LINE_MISCOUNT, one->entry->time_s,
-        share * prior * time_density(one, seen, one->entry->time_s));
+    if (is_own && seen->passage->switches == 0)
+        add(one, seen, RF_FINDING_LINE_MISCOUNT, one->entry->time_s,
+            share * prior_miscount / 2 * clumsy_density(one, seen));
 }
 
 static void explain_passage(const Case *one, const RfPassage *passage, double divisions, double off,
@@ -178,7 +193,7 @@ static void explain_passage(const Case *one, const RfPassage *passage, double di
                   (passage->is_first ? 1 : again_share) * voltage_share(one->entry, passage),
     };
     if (fabs(off) > 0)
-        explain_miscount(one, &seen, off);
+        explain_miscount(one, &seen);
     else
         explain_claimed(one, &seen);
 }
@@ -195,7 +210,7 @@ static void explain_typical(const Case *one, const RfTypicalPassage *typical, do
             voltage_share(one->entry, typical->nearest) / rf_line_crossings_end_s(one->match->crossings),
     };
     if (fabs(off) > 0)
-        explain_miscount(one, &seen, off);
+        explain_miscount(one, &seen);
     else
         explain_claimed(one, &seen);
 }
@@ -236,7 +251,8 @@ static void add_unmatched(const Case *one)
         .finding = RF_FINDING_UNMATCHED,
         .read_s = one->entry->time_s,
         .divisions = rf_audit_match_divisions(one->match, one->index),
-        .weight = prior_unmatched / (2 * rf_line_crossings_end_s(one->match->crossings) + 1) / usual_s,
+        .weight = prior_unmatched * (one->owner < 0 ? 1 : in_view_share) /
+                  (2 * rf_line_crossings_end_s(one->match->crossings) + 1) / usual_s,
     };
     g_array_append_val(one->out, nothing);
 }
@@ -253,10 +269,8 @@ void rf_audit_match_explain(const RfAuditMatch *match, guint index, GArray *out)
     one.owner = rf_audit_labels_owner(match->labels, index, one.at_s);
     one.rivals = rivals_at(match, one.at_s, one.has_at);
     explain_divisions(&one, 0);
-    for (double off = 1; off < 2.5; off++) {
-        explain_divisions(&one, off);
-        explain_divisions(&one, -off);
-    }
+    explain_divisions(&one, 1);
+    explain_divisions(&one, -1);
     add_unmatched(&one);
 }
 

@@ -130,18 +130,30 @@ static RfFallAtVoltage fall_of(const Bench *bench, const Sound *one, double bias
     };
 }
 
-static bool charge_of(const Bench *bench, const GArray *sound, unsigned droplet, double bias_s,
-                      RfValue *charge_C)
+/* What belongs to one spell of one droplet: what was timed in it, and falls without a field from any time, since those
+ * don't depend on the charge. */
+static GArray *entries_of(const GArray *sound, const RfDropletRow *spell)
 {
-    g_autoptr(GArray) falls = g_array_new(FALSE, FALSE, sizeof(RfFallAtVoltage));
+    GArray *chosen = g_array_new(FALSE, FALSE, sizeof(Sound));
     for (guint i = 0; i < sound->len; i++) {
         const Sound *one = &g_array_index(sound, Sound, i);
-        if (one->row->droplet != droplet) continue;
-        RfFallAtVoltage fall = fall_of(bench, one, bias_s);
+        bool is_inside = one->row->start_s >= spell->start_s && one->row->start_s <= spell->end_s;
+        bool is_free = !(fabs(one->voltage_V) > 0);
+        if (one->row->droplet == spell->droplet && (is_inside || is_free)) g_array_append_val(chosen, *one);
+    }
+    return chosen;
+}
+
+static bool charge_of(const Bench *bench, const GArray *chosen, double bias_s, RfValue *charge_C)
+{
+    g_autoptr(GArray) falls = g_array_new(FALSE, FALSE, sizeof(RfFallAtVoltage));
+    for (guint i = 0; i < chosen->len; i++) {
+        RfFallAtVoltage fall = fall_of(bench, &g_array_index(chosen, Sound, i), bias_s);
         g_array_append_val(falls, fall);
     }
     RfVelocityCharge found;
-    if (!rf_velocity_charge_find(bench->medium, (const RfFallAtVoltage *)(const void *)falls->data,
+    if (falls->len == 0 ||
+        !rf_velocity_charge_find(bench->medium, (const RfFallAtVoltage *)(const void *)falls->data,
                                  falls->len, &found, NULL) ||
         found.outcome != RF_VELOCITY_CHARGE_DONE)
         return false;
@@ -149,65 +161,20 @@ static bool charge_of(const Bench *bench, const GArray *sound, unsigned droplet,
     return true;
 }
 
-/* The tracked charge beside it, where the droplet has one spell only: over a charge step there is no one charge. */
-static void add_tracked(const RfResults *results, RfHandChargeRow *row)
+static void add_charge(RfResults *results, const Bench *bench, const GArray *sound, const RfDropletRow *spell)
 {
-    unsigned spells = 0;
-    for (guint i = 0; i < results->droplets->len; i++) {
-        const RfDropletRow *droplet = &g_array_index(results->droplets, RfDropletRow, i);
-        if (droplet->droplet != row->droplet) continue;
-        spells++;
-        row->tracked_C = droplet->charge_C;
-        row->has_tracked = droplet->has_charge;
-    }
-    row->has_tracked = row->has_tracked && spells == 1;
-}
-
-static bool has_step(const RfResults *results, unsigned droplet)
-{
-    for (guint i = 0; i < results->steps->len; i++)
-        if (g_array_index(results->steps, RfStepRow, i).droplet == droplet) return true;
-    return false;
-}
-
-static void add_charge(RfResults *results, const Bench *bench, const GArray *sound, unsigned droplet)
-{
-    RfHandChargeRow row = {.droplet = droplet};
-    const char *label = NULL;
-    for (guint i = 0; i < sound->len; i++) {
-        const Sound *one = &g_array_index(sound, Sound, i);
-        if (one->row->droplet != droplet) continue;
-        label = label ? label : one->entry->label;
-        if (one->entry->is_rise)
-            row.rises++;
-        else
-            row.falls++;
-    }
-    if (has_step(results, droplet) || !charge_of(bench, sound, droplet, 0, &row.raw_C) ||
-        !charge_of(bench, sound, droplet, results->person.bias_s.value, &row.corrected_C))
+    RfHandChargeRow row = {.droplet = spell->droplet, .spell = spell->spell, .tracked_C = spell->charge_C};
+    g_autoptr(GArray) chosen = entries_of(sound, spell);
+    if (!charge_of(bench, chosen, 0, &row.raw_C) ||
+        !charge_of(bench, chosen, results->person.bias_s.value, &row.corrected_C))
         return;
-    row.label = g_strdup(label);
-    add_tracked(results, &row);
-    g_array_append_val(results->hand_charges, row);
-}
-
-static int compare_droplets(const void *left, const void *right)
-{
-    unsigned a = *(const unsigned *)left, b = *(const unsigned *)right;
-    return (a > b) - (a < b);
-}
-
-static void add_charges(RfResults *results, const Bench *bench, const GArray *sound)
-{
-    g_autoptr(GArray) droplets = g_array_new(FALSE, FALSE, sizeof(unsigned));
-    for (guint i = 0; i < sound->len; i++)
-        g_array_append_val(droplets, g_array_index(sound, Sound, i).row->droplet);
-    g_array_sort(droplets, compare_droplets);
-    for (guint i = 0; i < droplets->len; i++) {
-        unsigned droplet = g_array_index(droplets, unsigned, i);
-        if (i == 0 || droplet != g_array_index(droplets, unsigned, i - 1))
-            add_charge(results, bench, sound, droplet);
+    for (guint i = 0; i < chosen->len; i++) {
+        bool is_rise = g_array_index(chosen, Sound, i).entry->is_rise;
+        row.rises += is_rise;
+        row.falls += !is_rise;
     }
+    row.label = g_strdup(g_array_index(chosen, Sound, 0).entry->label);
+    g_array_append_val(results->hand_charges, row);
 }
 
 /* Relative, mean over droplets weighted by nothing but their number; sigma as the bias's. */
@@ -253,6 +220,8 @@ void rf_audit_person_describe(RfResults *results, const RfHandTimings *timings, 
     describe_clock(person, sound, habit);
     if (!medium || !results->scale.has_lines) return;
     const Bench bench = {medium, results->scale.line_step_mm * 1e-3, habit->spread_s.value};
-    add_charges(results, &bench, sound);
+    for (guint i = 0; i < results->droplets->len; i++)
+        if (g_array_index(results->droplets, RfDropletRow, i).has_charge)
+            add_charge(results, &bench, sound, &g_array_index(results->droplets, RfDropletRow, i));
     describe_charge_effect(results);
 }

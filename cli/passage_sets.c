@@ -95,7 +95,7 @@ RfPassageSets *rf_passage_sets_new(const RfHandTimings *timings, const RfLineCro
         const RfHandEntry *entry = &g_array_index(timings->entries, RfHandEntry, i);
         if (entry->problem) continue;
         double claimed = rf_passage_sets_divisions(sets, entry);
-        for (double off = -2; off < 2.5; off++) ensure(sets, crossings, claimed + off, entry->is_rise);
+        for (double off = -1; off < 1.5; off++) ensure(sets, crossings, claimed + off, entry->is_rise);
     }
     return sets;
 }

@@ -19,7 +19,7 @@ typedef struct {
 
 typedef struct RfPassageSets RfPassageSets;
 
-/* Sets for what the entries claim, and for up to two divisions more or less. (returns new) */
+/* Sets for what the entries claim, and for one division more or less. (returns new) */
 RfPassageSets *rf_passage_sets_new(const RfHandTimings *timings, const RfLineCrossings *crossings);
 void rf_passage_sets_free(RfPassageSets *sets);
 G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfPassageSets, rf_passage_sets_free)

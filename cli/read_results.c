@@ -6,6 +6,7 @@
 #include "cli/settings.h"
 
 #include <json-glib/json-glib.h>
+#include <math.h>
 #include <string.h>
 
 /* ---- tables ---- */
@@ -59,23 +60,18 @@ static bool droplet_number(const RfTable *table, size_t row, unsigned *droplet, 
     return true;
 }
 
-static bool add_step(const RfTable *table, size_t row, RfResults *results, GError **error)
-{
-    RfStepRow out = {.whole_multiples_p = -1};
-    if (!droplet_number(table, row, &out.droplet, error) ||
-        !number_or_0(table, row, "time_s", &out.time_s.value, error))
-        return false;
-    g_array_append_val(results->steps, out);
-    return true;
-}
-
 static bool add_droplet(const RfTable *table, size_t row, RfResults *results, GError **error)
 {
     RfDropletRow out = {0};
+    double spell;
     if (!droplet_number(table, row, &out.droplet, error) ||
+        !number_or_0(table, row, "start_s", &out.start_s, error) ||
+        !number_or_0(table, row, "end_s", &out.end_s, error) ||
+        !number_or_0(table, row, "spell", &spell, error) ||
         !number_or_0(table, row, "charge_C", &out.charge_C.value, error) ||
         !number_or_0(table, row, "u_charge_C", &out.charge_C.sigma, error))
         return false;
+    out.spell = (unsigned)fmax(0, fmin(spell, 1e9));
     out.has_charge = out.charge_C.sigma > 0;
     out.reason = g_strdup("");
     g_array_append_val(results->droplets, out);
@@ -174,9 +170,7 @@ static void read_summary(const char *folder, RfResults *results, RfMedium *mediu
 
 RfResults *rf_read_results(const char *folder, RfMedium *medium, bool *has_medium, GError **error)
 {
-    static const Part parts[] = {{"switches.csv", true, add_switch},
-                                 {"steps.csv", false, add_step},
-                                 {"droplets.csv", false, add_droplet}};
+    static const Part parts[] = {{"switches.csv", true, add_switch}, {"droplets.csv", false, add_droplet}};
     g_autoptr(RfResults) results = rf_results_new();
     g_autofree char *paths = g_build_filename(folder, "paths.csv", NULL);
     double scale_relative_u;

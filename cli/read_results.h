@@ -1,5 +1,5 @@
 /* A result folder that an earlier run wrote, back into results, as far as an audit of hand timings needs it: paths, scale, switches,
- * steps, droplets, and the conditions out of summary.json. Not for writing it again: what isn't needed isn't read. */
+ * droplets, and the conditions out of summary.json. Not for writing it again: what isn't needed isn't read. */
 #pragma once
 
 #include <glib.h>

@@ -127,13 +127,12 @@ typedef struct { /* the person behind the timings, from the entries that are sou
     bool has_charge_effect;
 } RfPersonRow;
 
-typedef struct { /* a droplet's charge from hand timings alone */
-    unsigned droplet;
+typedef struct { /* a droplet's charge from hand timings alone, over one spell of constant charge */
+    unsigned droplet, spell;
     char *label;
     unsigned falls, rises;
     RfValue raw_C, corrected_C; /* corrected: the person's bias taken off */
     RfValue tracked_C;
-    bool has_tracked;
 } RfHandChargeRow;
 
 typedef struct { /* a setting as it was used, for report and summary.json */

@@ -89,11 +89,12 @@ static void charge_object(GString *out, const RfHandChargeRow *row)
     append_quoted(out, row->label);
     g_string_append(out, ",\n");
     count(out, "droplet", row->droplet);
+    count(out, "spell", row->spell);
     count(out, "falls", row->falls);
     count(out, "rises", row->rises);
     pair(out, "raw_C", row->raw_C, 6, true);
     pair(out, "corrected_C", row->corrected_C, 6, true);
-    if (row->has_tracked) pair(out, "tracked_C", row->tracked_C, 6, true);
+    pair(out, "tracked_C", row->tracked_C, 6, true);
     end_object(out);
 }
 
