@@ -5,6 +5,7 @@
 
 #include "tests/support/spot_play.h"
 #include "tests/support/track_score.h"
+#include "tracker/fill.h"
 
 /* Off, up, off, up: seconds at which the supply is switched. */
 static const RfFieldChange switches[] = {{0, 0}, {4.013, -1}, {7.52, 0}, {12.34, -1}, {16.02, 0}};
@@ -517,6 +518,32 @@ static void test_refuses_disorder(void)
     g_clear_error(&error);
 }
 
+/* A chain that knows the middle of a droplet's life finds the beginning and then, undisturbed by that, the end. */
+static void test_both_ends_are_filled(void)
+{
+    enum { frames = 31, known_from = 10, known_until = 21 };
+    const RfActor actor = {
+        .x_px = 100, .y_px = 60, .vy_px_s = 30, .response_px_s = 70, .spread_px = 0.5, .until = frames};
+    RfPlay play = {
+        .actors = &actor, .n_actors = 1, .frames = frames, .rate_hz = 30, .noise_px = 0.08, .seed = 7};
+    g_autoptr(GPtrArray) truth = NULL;
+    g_autoptr(RfSightings) sightings = rf_spot_play_run(&play, &truth);
+    const RfLinkerOptions options = RF_LINKER_DEFAULTS;
+    g_autoptr(RfLinkScene) scene = rf_link_scene_new(sightings, NULL, &options);
+    g_autoptr(GPtrArray) chains = g_ptr_array_new_with_free_func((GDestroyNotify)rf_chain_free);
+    RfChain *chain = rf_chain_new(scene);
+    g_ptr_array_add(chains, chain);
+    for (int e = known_from; e < known_until; e++) {
+        RfHit hit = {(unsigned)e, e}; /* one spot an exposure */
+        g_array_append_val(chain->hits, hit);
+        scene->is_claimed[e] = true;
+    }
+    rf_fill_ends(scene, chains);
+    g_assert_cmpuint(chain->hits->len, ==, frames);
+    for (unsigned i = 0; i < frames; i++)
+        g_assert_cmpuint(g_array_index(chain->hits, RfHit, i).exposure, ==, i);
+}
+
 int main(int argc, char **argv)
 {
     g_test_init(&argc, &argv, NULL);
@@ -540,6 +567,7 @@ int main(int argc, char **argv)
     g_test_add_func("/linker/run/spread-is-found", test_spread_is_found);
     g_test_add_func("/linker/run/deterministic", test_deterministic);
     g_test_add_func("/linker/run/thousand", test_thousand);
+    g_test_add_func("/linker/fill/both-ends", test_both_ends_are_filled);
     g_test_add_func("/linker/run/refuses-disorder", test_refuses_disorder);
     return g_test_run();
 }

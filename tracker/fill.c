@@ -294,8 +294,9 @@ void rf_fill_ends(RfLinkScene *scene, GPtrArray *chains)
             g_autoptr(GArray) found = search_beyond(scene, chain, direction, limit);
             for (unsigned i = 0; i < found->len; i++)
                 scene->is_claimed[g_array_index(found, RfHit, i).spot] = true;
-            if (found->len > 0) g_array_append_vals(chain->hits, found->data, found->len);
+            if (found->len == 0) continue;
+            g_array_append_vals(chain->hits, found->data, found->len);
+            g_array_sort(chain->hits, compare_hits); /* the other end is looked for among them */
         }
-        g_array_sort(chain->hits, compare_hits);
     }
 }
