@@ -8,17 +8,19 @@
 
 /* With position errors of correlation rho^k between exposures k apart, increments have the covariances
  * c1 = 2 R D dt - s^2 (1 - rho)^2 and c2 = -s^2 rho (1 - rho)^2; 2 D dt is c0 + 2 (c1 + c2 + c3) up to rho^4. A covariance
- * of n increments has a standard error of about c0/sqrt(n). */
+ * of n increments has a standard error of about c0/sqrt(n). Where diffusion outweighs the errors (c1 not clearly
+ * negative), rho can't be told. */
 static RfValue error_correlation(const RfPathErrors *noise)
 {
-    double c[4] = {0};
-    for (int lag = 0; lag < 4; lag++) c[lag] = noise->lag_px2[0][lag] + noise->lag_px2[1][lag];
-    if (noise->increments < 100) return (RfValue){0, 0};
-    const double u_px2 = c[0] / sqrt(2.0 * noise->increments);
-    const double spread_px2 = fmax(0, c[0] + 2 * (c[1] + c[2] + c[3]));
-    const double first_px2 = c[1] - noise->blur * spread_px2;
-    if (first_px2 > -5 * u_px2) return (RfValue){0, 0};
-    const double rho = c[2] / first_px2;
+    enum { LEAST = 100 };
+    /* Reversals that nobody has told of look like lasting covariance: the axis with less of it is across gravity. */
+    const int axis = fabs(noise->lag_px2[0][3]) < fabs(noise->lag_px2[1][3]) ? 0 : 1;
+    const double *c_px2 = noise->lag_px2[axis];
+    const double u_px2 = c_px2[0] / sqrt(fmax(1, noise->increments));
+    if (noise->increments < LEAST || c_px2[1] > -5 * u_px2) return (RfValue){0, 0};
+    const double spread_px2 = fmax(0, c_px2[0] + 2 * (c_px2[1] + c_px2[2] + c_px2[3]));
+    const double first_px2 = c_px2[1] - noise->blur * spread_px2;
+    const double rho = c_px2[2] / first_px2;
     return (RfValue){CLAMP(rho, -1, 1), u_px2 / -first_px2 * sqrt(1 + rho * rho)};
 }
 

@@ -3,6 +3,7 @@
 #include <string.h>
 
 #include "cli/figure_script.h"
+#include "cli/plotter.h"
 
 static void figure_free(void *item)
 {
@@ -22,22 +23,13 @@ void rf_figure_set_free(RfFigureSet *set)
     g_free(set);
 }
 
-/* Works with gnuplot 5.2 and later; the PDF only where that terminal was built in. */
 static char *whole_script(const RfFigureScript *what, const char *body)
 {
     const bool is_square = strcmp(what->name, "radius") == 0, is_low = strcmp(what->name, "multiples") == 0;
-    const char *size = is_square ? "560,460" : is_low ? "860,280" : "860,430";
-    const char *page = is_square ? "12cm,10cm" : is_low ? "17cm,5.6cm" : "17cm,8.5cm";
-    return g_strdup_printf(
-        "# %s. Run in this folder: gnuplot %s.gp\n"
-        "reset\nset encoding utf8\nset key off\nset border 3 lw 0.8\nset tics nomirror out scale 0.5\n"
-        "set grid lt 1 lc rgb '#808080' lw 0.4\n"
-        "set terminal svg size %s dynamic enhanced font 'sans-serif,14'\nset output '%s.svg'\n%s"
-        "set output\n"
-        "if (strstrt(GPVAL_TERMINALS, 'pdfcairo') > 0) {\n"
-        "  set terminal pdfcairo size %s enhanced font 'sans,9'\n  set output '%s.pdf'\n  replot\n"
-        "  set output\n}\n",
-        what->title, what->name, size, what->name, body, page, what->name);
+    const RfPlotterSize size = is_square ? (RfPlotterSize){"560,460", "12cm,10cm"}
+                               : is_low  ? (RfPlotterSize){"860,280", "17cm,5.6cm"}
+                                         : (RfPlotterSize){"860,430", "17cm,8.5cm"};
+    return rf_plotter_script(what->name, what->title, &size, body);
 }
 
 static bool add_figure(RfFigureSet *set, const RfFigureScript *what, const RfResults *results,
@@ -58,31 +50,12 @@ static bool add_figure(RfFigureSet *set, const RfFigureScript *what, const RfRes
     return true;
 }
 
-/* Fixed surroundings: nobody's start-up file, locale or clock in the picture. */
-static bool run_plotter(const char *program, const char *inside, const char *script, char **complaint)
-{
-    const char *const arguments[] = {program, "-d", script, NULL};
-    const char *const surroundings[] = {"PATH=/usr/local/bin:/usr/bin:/bin", "LC_ALL=C.UTF-8",
-                                        "HOME=/nonexistent", "SOURCE_DATE_EPOCH=0", NULL};
-    g_autoptr(GError) error = NULL;
-    g_autofree char *talk = NULL;
-    int status = 0;
-    bool is_done = g_spawn_sync(inside, (char **)arguments, (char **)surroundings,
-                                G_SPAWN_STDOUT_TO_DEV_NULL | G_SPAWN_CLOEXEC_PIPES, NULL, NULL, NULL, &talk,
-                                &status, &error) &&
-                   g_spawn_check_wait_status(status, &error);
-    if (!is_done)
-        *complaint = g_strdup_printf("%s: %s%s%s", script, error->message, talk && *talk ? "; it said: " : "",
-                                     talk && *talk ? g_strstrip(talk) : "");
-    return is_done;
-}
-
 static void draw_one(RfFigureSet *set, RfFigure *figure, const char *program, const char *inside)
 {
     g_autofree char *script = g_strconcat(figure->name, ".gp", NULL);
     g_autofree char *picture = g_strconcat(inside, "/", figure->name, ".svg", NULL);
     g_autofree char *complaint = NULL;
-    const bool is_done = run_plotter(program, inside, script, &complaint);
+    const bool is_done = rf_plotter_run(program, inside, script, &complaint);
     if (is_done && g_file_get_contents(picture, &figure->svg, NULL, NULL)) return;
     if (set->warning) return;
     set->warning = g_strdup_printf("figures: gnuplot failed on %s; data and scripts are in figures/",

@@ -2,6 +2,8 @@
 
 #include <math.h>
 
+#include "cli/text_number.h"
+
 /* Where a verdict changes is a matter of experience with such footage; every limit below says what it protects. */
 
 const char *rf_fitness_verdict_to_string(RfFitnessVerdict verdict)
@@ -140,7 +142,8 @@ static void judge_interlacing(GArray *lines, const RfFitnessFigures *f)
         add(lines, "interlacing", g_strdup("none said; too little moves to test it"), RF_FITNESS_FIT, NULL);
         return;
     }
-    char *text = g_strdup_printf("odd and even lines %.2f(%.2f) frames apart", fabs(c.value), c.sigma);
+    g_autofree char *apart = rf_text_number_concise((RfValue){fabs(c.value), c.sigma});
+    char *text = g_strdup_printf("odd and even lines %s frames apart", apart);
     /* fields are 0.5 frames apart: nearer to that than to 0, and beyond chance */
     const bool is_combed = fabs(c.value) > 0.25 && fabs(c.value) > 5 * c.sigma;
     add(lines, "interlacing", text, is_combed ? RF_FITNESS_UNFIT : RF_FITNESS_FIT,
@@ -300,14 +303,13 @@ static void judge_scatter(GArray *lines, const RfFitnessFigures *f)
 static void judge_memory(GArray *lines, const RfFitnessFigures *f)
 {
     const RfValue rho = f->error_correlation;
+    g_autofree char *number = rf_text_number_concise(rho);
     char *text =
         rho.sigma > 0
-            ? g_strdup_printf(
-                  "errors of neighbouring frames correlated %.2f(%.2f); %.2g %% of the steps are copies",
-                  rho.value, rho.sigma, 100 * f->standstill_share)
-            : g_strdup_printf(
-                  "too small to be seen beside the droplets' own motion; %.2g %% of the steps are copies",
-                  100 * f->standstill_share);
+            ? g_strdup_printf("errors of neighbouring frames correlated %s, %.2g %% of the steps are copies",
+                              number, 100 * f->standstill_share)
+            : g_strdup_printf("errors small beside the droplets' own motion, %.2g %% of the steps are copies",
+                              100 * f->standstill_share);
     const bool is_correlated = rho.value > 0.3 && rho.value > 5 * rho.sigma;
     /* 7 % in the diffusion, and 4 % in a charge read from it, at a correlation of 0.5 */
     if (f->standstill_share > 0.2)
@@ -329,8 +331,8 @@ static void judge_lag(GArray *lines, const RfFitnessFigures *f)
             RF_FITNESS_FIT, NULL);
         return;
     }
-    char *text = g_strdup_printf("droplets leap %+.2f(%.2f) px onwards where the encoder starts afresh",
-                                 jump.value, jump.sigma);
+    g_autofree char *leap = rf_text_number_concise(jump);
+    char *text = g_strdup_printf("droplets leap %s px onwards where the encoder starts afresh", leap);
     const bool is_seen = jump.value > 4 * jump.sigma;
     /* a lag shifts switches in time, and a speed just after each reversal */
     add(lines, "lag", text,

@@ -67,20 +67,3 @@ void rf_droplet_fit(const RfTrail *trail, const RfDropletModel *model, RfDroplet
 /* The interval in which the log-likelihood, maximised over all else, is within 1/2 of its top: 68 % for ln(radius). */
 bool rf_droplet_fit_profile_radius(const RfTrail *trail, const RfDropletModel *model, const RfDropletFit *fit,
                                    double *low_m, double *high_m);
-
-/* The best that anyone could do (Cramer-Rao), for planning. */
-typedef struct {
-    double radius_m, charge_coulomb;
-    double off_s, on_s, voltage_v, frame_rate_hz;
-    double u_position_m; /* localisation, its size taken as unknown */
-} RfObservationPlan;
-
-typedef struct {
-    double u_charge_joint_coulomb,
-        u_charge_speeds_coulomb; /* radius from fall and spread; from the fall alone */
-    double u_radius_joint_m, u_radius_speeds_m;
-    double fall_m_s, on_speed_m_s;
-} RfAttainable;
-
-void rf_droplet_fit_attainable(const RfObservationPlan *plan, const RfMedium *medium,
-                               RfAttainable *attainable);

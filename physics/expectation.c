@@ -15,7 +15,7 @@ typedef struct {
     double velocity, diffusion, noise, diffusion_noise;
 } Information;
 
-static Information information_of(double seconds, const RfWatch *watch, double diffusion_m2_s)
+static Information information_of(double seconds, const RfObservation *watch, double diffusion_m2_s)
 {
     const double dt = 1.0 / watch->frame_rate_hz;
     const int n = GSL_MAX_INT((int)lrint(seconds * watch->frame_rate_hz), 1);
@@ -59,7 +59,8 @@ typedef struct {
     double off_by_radius, on_by_radius, on_by_charge, diffusion_by_radius;
 } Slopes;
 
-static Slopes slopes_of(const RfMedium *medium, const RfWatch *watch, double radius_m, double charge_coulomb)
+static Slopes slopes_of(const RfMedium *medium, const RfObservation *watch, double radius_m,
+                        double charge_coulomb)
 {
     const double k = rf_drag_coefficient_kg_s(medium, radius_m);
     const double dk_da = rf_drag_coefficient_slope_kg_s_m(medium, radius_m);
@@ -91,7 +92,7 @@ static double crossing_s(double view_m, double speed_m_s)
     return fmin(LONGEST_S, view_m / fmax(fabs(speed_m_s), view_m / LONGEST_S));
 }
 
-RfExpectation rf_expectation_find(const RfMedium *medium, const RfWatch *watch, double radius_m,
+RfExpectation rf_expectation_find(const RfMedium *medium, const RfObservation *watch, double radius_m,
                                   double charge_coulomb)
 {
     const double diffusion = rf_drag_diffusion_m2_s(medium, radius_m);

@@ -20,7 +20,7 @@ typedef struct {
     double
         blur; /* R, unitless: exposure over frame interval over 6; 0 for a flash, 1/6 for an open shutter */
     double view_m; /* height of the field of view */
-} RfWatch;
+} RfObservation;
 
 typedef struct {
     double fall_off_m_s, fall_on_m_s; /* positive downward */
@@ -34,7 +34,7 @@ typedef struct {
 } RfExpectation;
 
 /* radius_m > 0; charge of any sign. Pure. */
-RfExpectation rf_expectation_find(const RfMedium *medium, const RfWatch *watch, double radius_m,
+RfExpectation rf_expectation_find(const RfMedium *medium, const RfObservation *watch, double radius_m,
                                   double charge_coulomb);
 
 /* The voltage that holds a droplet still (signed: negative for a positive charge), V. charge not 0. */

@@ -6,6 +6,7 @@
 #include "physics/charge_budget.h"
 #include "physics/constants.h"
 #include "physics/drag.h"
+#include "physics/expectation.h"
 #include "tests/support/droplet_walk.h"
 
 static const double E = RF_ELEMENTARY_CHARGE_COULOMB;
@@ -95,28 +96,6 @@ static void test_watched_under_field_only(void)
     gsl_rng_free(random);
 }
 
-/* Cramer-Rao bounds for q = 3 e, 20 s off, 20 s on, 500 V over 6 mm, 0.5 um of noise of unknown size, 30 frames/s,
- * computed beforehand from the covariance of the displacements: radius 0.3 um: 0.37 e from speeds alone, 0.13 e with the
- * spread; 0.5 um: 0.083 and 0.070 e; 1 um: 0.029 e both. Tolerance: half a last digit, widened by 5 % of the air that
- * they were computed for. */
-static void test_attainable_known_bounds(void)
-{
-    static const struct {
-        double radius_m, speeds_e, joint_e, half_digit;
-    } cases[] = {{0.3e-6, 0.37, 0.13, 0.005}, {0.5e-6, 0.083, 0.070, 0.0005}, {1e-6, 0.029, 0.029, 0.0005}};
-    for (size_t i = 0; i < G_N_ELEMENTS(cases); i++) {
-        RfObservationPlan plan = {cases[i].radius_m, 3 * E, 20, 20, 500, 30, 0.5e-6};
-        RfAttainable best;
-        rf_droplet_fit_attainable(&plan, &WALK_MEDIUM, &best);
-        double speeds = best.u_charge_speeds_coulomb / E, joint = best.u_charge_joint_coulomb / E;
-        g_test_message("%.1f um: %.4f e from speeds, %.4f e jointly", cases[i].radius_m * 1e6, speeds, joint);
-        g_assert_cmpfloat_with_epsilon(speeds, cases[i].speeds_e,
-                                       cases[i].half_digit + 0.05 * cases[i].speeds_e);
-        g_assert_cmpfloat_with_epsilon(joint, cases[i].joint_e,
-                                       cases[i].half_digit + 0.05 * cases[i].joint_e);
-    }
-}
-
 typedef struct {
     int n, within_1, within_2;
     double squares, over_bound, sigma_over_bound;
@@ -148,9 +127,9 @@ static Coverage watch_many(int n, unsigned long seed)
         RfDropletFit fit;
         rf_droplet_fit(&trail, &model, &fit);
         g_assert_cmpint(fit.state, ==, RF_FIT_DONE);
-        RfObservationPlan plan = {walk.radius_m, walk.charge_coulomb, 10.01, 9.99, 500, 28.5, walk.noise_m};
-        RfAttainable best;
-        rf_droplet_fit_attainable(&plan, &WALK_MEDIUM, &best);
+        const RfObservation observation = {10.01, 9.99, 500, 28.5, walk.noise_m, walk.exposure / 6, 1e-3};
+        const RfExpectation best =
+            rf_expectation_find(&WALK_MEDIUM, &observation, walk.radius_m, walk.charge_coulomb);
         count(&coverage, fit.spell[0].charge_coulomb, walk.charge_coulomb, best.u_charge_joint_coulomb);
         walk_trail_clear(&trail);
     }
@@ -352,7 +331,6 @@ int main(int argc, char **argv)
     g_test_add_func("/droplet-fit/fit/never-a-field", test_never_a_field);
     g_test_add_func("/droplet-fit/fit/neutral-droplet", test_neutral_droplet);
     g_test_add_func("/droplet-fit/fit/watched-under-field-only", test_watched_under_field_only);
-    g_test_add_func("/droplet-fit/attainable/known-bounds", test_attainable_known_bounds);
     g_test_add_func("/droplet-fit/fit/coverage", test_coverage);
     g_test_add_func("/droplet-fit/profile/agrees-with-sigma", test_profile_agrees_with_sigma);
     g_test_add_func("/droplet-fit/shares/budget-as-refitted", test_budget_as_refitted);

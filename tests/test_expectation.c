@@ -16,16 +16,16 @@ static RfMedium room_air(void)
     return medium;
 }
 
-static RfWatch watch(void)
+static RfObservation watch(void)
 {
-    return (RfWatch){20.0, 20.0, 500.0, 30.0, 0.5e-6, 0.0, 2e-3};
+    return (RfObservation){20.0, 20.0, 500.0, 30.0, 0.5e-6, 0.0, 2e-3};
 }
 
 /* Without localisation noise the bound on a velocity is sqrt(2 D/T), for a Brownian path with drift (elementary). */
 static void velocity_bound_without_noise(void)
 {
     const RfMedium medium = room_air();
-    RfWatch quiet = watch();
+    RfObservation quiet = watch();
     quiet.localisation_m = 1e-12;
     const RfExpectation expected = rf_expectation_find(&medium, &quiet, 0.5e-6, 3.0 * E);
     const double bound = sqrt(2.0 * expected.diffusion_m2_s / 20.0);
@@ -39,7 +39,7 @@ static void velocity_bound_without_diffusion(void)
     RfMedium medium = room_air();
     medium.temperature_kelvin = 1e-9;
     const RfExpectation expected =
-        rf_expectation_find(&medium, &(RfWatch){20, 20, 500, 30, 0.5e-6, 0.0, 2e-3}, 2e-6, E);
+        rf_expectation_find(&medium, &(RfObservation){20, 20, 500, 30, 0.5e-6, 0.0, 2e-3}, 2e-6, E);
     const double n = 601.0;
     g_assert_cmpfloat_with_epsilon(expected.u_fall_off_m_s / (0.5e-6 * sqrt(12.0 / (n * n * n)) * 30.0), 1.0,
                                    1e-3);
@@ -49,7 +49,7 @@ static void velocity_bound_without_diffusion(void)
 static void velocity_bound_is_the_matrix_one(void)
 {
     const RfMedium medium = room_air();
-    const RfWatch w = watch();
+    const RfObservation w = watch();
     const RfExpectation expected = rf_expectation_find(&medium, &w, 0.4e-6, 2.0 * E);
     enum { N = 600 };
     gsl_vector *diagonal = gsl_vector_alloc(N), *beside = gsl_vector_alloc(N - 1);
@@ -75,7 +75,7 @@ static void bounds_on_charge(void)
     static const double rows[][3] = {{0.3e-6, 0.37, 0.13}, {0.5e-6, 0.083, 0.070}, {1.0e-6, 0.029, 0.029}};
     static const double half_digit[][2] = {{0.005, 0.005}, {0.0005, 0.0005}, {0.0005, 0.0005}};
     const RfMedium medium = room_air();
-    RfWatch w = watch();
+    RfObservation w = watch();
     w.blur = 1.0 / 6.0;
     for (size_t i = 0; i < G_N_ELEMENTS(rows); i++) {
         const RfExpectation a = rf_expectation_find(&medium, &w, rows[i][0], 3.0 * E);
@@ -92,7 +92,7 @@ static void bounds_on_charge(void)
 static void spread_rules_small_droplets(void)
 {
     const RfMedium medium = room_air();
-    const RfWatch w = watch();
+    const RfObservation w = watch();
     g_assert_cmpfloat(rf_expectation_find(&medium, &w, 0.35e-6, 3.0 * E).spread_share, >, 0.5);
     g_assert_cmpfloat(rf_expectation_find(&medium, &w, 0.6e-6, 3.0 * E).spread_share, <, 0.5);
     double before = 1.0;
@@ -107,7 +107,7 @@ static void spread_rules_small_droplets(void)
 static void longer_is_better(void)
 {
     const RfMedium medium = room_air();
-    RfWatch w = watch();
+    RfObservation w = watch();
     const RfExpectation once = rf_expectation_find(&medium, &w, 0.5e-6, 3.0 * E);
     w.off_s *= 4.0;
     w.on_s *= 4.0;
@@ -118,7 +118,7 @@ static void longer_is_better(void)
 static void balance_voltage_stops_the_droplet(void)
 {
     const RfMedium medium = room_air();
-    RfWatch w = watch();
+    RfObservation w = watch();
     w.voltage_V = rf_expectation_balance_voltage_V(&medium, 0.7e-6, 4.0 * E);
     const RfExpectation still = rf_expectation_find(&medium, &w, 0.7e-6, 4.0 * E);
     g_assert_cmpfloat(w.voltage_V, <, 0.0);

@@ -6,6 +6,7 @@
 #include <stdlib.h>
 
 #include "physics/constants.h"
+#include "physics/expectation.h"
 #include "tests/support/droplet_walk.h"
 
 static const double E = RF_ELEMENTARY_CHARGE_COULOMB;
@@ -51,10 +52,10 @@ static void measure(const RfFieldTimeline *timeline, gsl_rng *random, Tally *tal
         return;
     }
     double on_s = on_seconds(timeline, walk.end_s);
-    RfObservationPlan plan = {walk.radius_m, walk.charge_coulomb, walk.end_s - on_s, on_s, 400,
-                              28.5,          walk.noise_m};
-    RfAttainable best;
-    rf_droplet_fit_attainable(&plan, &WALK_MEDIUM, &best);
+    const RfObservation observation = {walk.end_s - on_s, on_s, 400, 28.5, walk.noise_m,
+                                       walk.exposure / 6, 1e-3};
+    const RfExpectation best =
+        rf_expectation_find(&WALK_MEDIUM, &observation, walk.radius_m, walk.charge_coulomb);
     RfValue charge = fit.spell[0].charge_coulomb;
     double miss = fabs(charge.value - walk.charge_coulomb), bound = best.u_charge_joint_coulomb;
     tally->within_1 += miss < charge.sigma;
