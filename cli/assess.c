@@ -22,11 +22,15 @@ static const double disagreement_p = 1e-3;
 
 /* ---- droplets ---- */
 
-static char *why_set_aside(const RfDropletFit *fit, const RfSpellFit *spell, double u_charge_coulomb)
+static char *why_set_aside(const RfDropletFit *fit, const RfSpellFit *spell, const RfFieldTimeline *timeline,
+                           double u_charge_coulomb)
 {
     double charge_coulomb = fabs(spell->charge_coulomb.value);
     if (!spell->has_charge)
         return g_strdup("no field was on while it was watched: radius only");
+    if (rf_field_timeline_is_doubtful(timeline, fit->spell[0].start_s, fit->spell[fit->spells - 1].end_s))
+        return g_strdup("which state the field was in while it was watched can't be told for sure: another reading of the "
+                        "motion is likelier than 1 in 1000");
     if (fit->radius_agreement_p < disagreement_p) {
         g_autofree char *fall = rf_quantity_format(
             (RfValue){fit->radius_fall_m.value * 1e6, fit->radius_fall_m.sigma * 1e6}, "um");
@@ -81,8 +85,8 @@ static bool radius_with_common(const RfChargeInputs *inputs, const RfChargeEstim
     return budget != NULL;
 }
 
-static bool fitted_row(unsigned droplet, const RfDropletFit *fit, size_t s, const RfChargeInputs *inputs,
-                       RfDropletRow *row, GError **error)
+static bool fitted_row(unsigned droplet, const RfDropletFit *fit, size_t s, const RfFieldTimeline *timeline,
+                       const RfChargeInputs *inputs, RfDropletRow *row, GError **error)
 {
     const RfSpellFit *spell = &fit->spell[s];
     const RfChargeEstimate estimate = estimate_of(fit, spell);
@@ -105,7 +109,7 @@ static bool fitted_row(unsigned droplet, const RfDropletFit *fit, size_t s, cons
         .has_charge = spell->has_charge,
         .charge_C = charge_coulomb,
         .u_random_C = spell->has_charge ? spell->charge_coulomb.sigma : 0,
-        .reason = why_set_aside(fit, spell, charge_coulomb.sigma),
+        .reason = why_set_aside(fit, spell, timeline, charge_coulomb.sigma),
     };
     row->accepted = *row->reason == '\0';
     if (row->has_charge)
@@ -176,11 +180,11 @@ static void add_steps(RfResults *results, unsigned droplet, const GArray *steps)
 }
 
 static bool add_fitted(RfResults *results, unsigned droplet, const RfDropletFit *fit, double median_snr,
-                       const RfChargeInputs *inputs, GError **error)
+                       const RfFieldTimeline *timeline, const RfChargeInputs *inputs, GError **error)
 {
     for (size_t s = 0; s < fit->spells; s++) {
         RfDropletRow row;
-        if (!fitted_row(droplet, fit, s, inputs, &row, error)) {
+        if (!fitted_row(droplet, fit, s, timeline, inputs, &row, error)) {
             g_prefix_error(error, "droplet %u, spell %zu: ", droplet, s + 1);
             return false;
         }
@@ -198,7 +202,7 @@ bool rf_assess_droplets(RfResults *results, const RfTrail *trails, const RfDropl
         Seen seen = seen_of(results->paths, trails[i].droplet);
         if (result->fit.state != RF_FIT_DONE)
             add_unfitted(results, trails[i].droplet, &result->fit, &seen);
-        else if (!add_fitted(results, trails[i].droplet, &result->fit, seen.median_snr, inputs, error))
+        else if (!add_fitted(results, trails[i].droplet, &result->fit, seen.median_snr, set->timeline, inputs, error))
             return false;
         add_steps(results, trails[i].droplet, result->steps);
     }

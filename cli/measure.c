@@ -206,8 +206,16 @@ static void warn_of_log(RfResults *results, const RfLogFinding *finding)
 
 static void warn_of_timeline(RfResults *results, const RfFieldTimeline *timeline)
 {
-    if (timeline->labels_ambiguous)
-        warn(results, "motion alone can't settle which field state is which; signs of charges may be swapped");
+    double doubtful_s = 0;
+    for (guint i = 0; i < timeline->doubts->len; i++) {
+        const RfStateDoubt *doubt = &g_array_index(timeline->doubts, RfStateDoubt, i);
+        doubtful_s += doubt->end_s - doubt->start_s;
+    }
+    if (doubtful_s > 0)
+        warn(results,
+             "for %.1f s in all, motion can't settle which field state the recording is in; charges that hang on it are "
+             "set aside. A voltage log would tell, or droplets that stay in view across the switches",
+             doubtful_s);
     for (guint i = 0; i < timeline->findings->len; i++)
         warn_of_log(results, &g_array_index(timeline->findings, RfLogFinding, i));
 }

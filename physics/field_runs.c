@@ -159,6 +159,26 @@ static void partition(const Binned *binned, size_t *cut)
     }
 }
 
+/* Bins at which trails begin or end with one other in view at most; of several in a row the middle one. */
+static void mark_blind(const Binned *binned, bool *blind)
+{
+    size_t first = 0;
+    for (size_t b = 1; b <= binned->bins; b++) {
+        size_t spanning = 0, beside = 0;
+        for (size_t j = 0; j < binned->trails; j++) {
+            const BinnedTrail *t = &binned->trail[j];
+            if (t->end <= t->first) continue;
+            spanning += t->first < b && b < t->end;
+            beside += t->first == b || t->end == b;
+        }
+        bool is_blind = b < binned->bins && (spanning == 0 || (spanning == 1 && beside > 0));
+        if (is_blind && first == 0) first = b;
+        if (is_blind || first == 0) continue;
+        blind[(first + b - 1) / 2] = true;
+        first = 0;
+    }
+}
+
 static void fill_speeds(const Binned *binned, const size_t *edges, RfFieldRuns *runs)
 {
     for (size_t j = 0; j < runs->droplets; j++) {
@@ -175,20 +195,66 @@ static void fill_speeds(const Binned *binned, const size_t *edges, RfFieldRuns *
     }
 }
 
-static RfFieldRuns *collect(const Binned *binned, const size_t *cut)
+static RfFieldRuns *alloc_runs(size_t n_runs, size_t droplets, double bin_s)
 {
     RfFieldRuns *runs = g_new0(RfFieldRuns, 1);
-    for (size_t b = binned->bins; b > 0; b = cut[b]) runs->runs++;
-    runs->droplets = binned->trails;
-    runs->bin_s = binned->bin_s;
-    runs->edge_s = g_new(double, runs->runs + 1);
-    runs->speed = g_new0(RfRunSpeed, runs->droplets * runs->runs);
-    g_autofree size_t *edges = g_new(size_t, runs->runs + 1);
-    size_t r = runs->runs, b = binned->bins;
-    for (edges[r] = b; b > 0; edges[--r] = b) b = cut[b];
-    for (r = 0; r <= runs->runs; r++) runs->edge_s[r] = binned->start_s + (double)edges[r] * binned->bin_s;
+    *runs = (RfFieldRuns){.runs = n_runs, .droplets = droplets, .bin_s = bin_s};
+    runs->edge_s = g_new(double, n_runs + 1);
+    runs->is_blind = g_new0(bool, n_runs + 1);
+    runs->speed = g_new0(RfRunSpeed, droplets * n_runs);
+    return runs;
+}
+
+static RfFieldRuns *collect(const Binned *binned, const size_t *cut)
+{
+    g_autofree bool *blind = g_new0(bool, binned->bins + 1), *is_edge = g_new0(bool, binned->bins + 1);
+    size_t n = 0, e = 0;
+    mark_blind(binned, blind);
+    for (size_t b = binned->bins; b > 0; b = cut[b]) is_edge[b] = true;
+    is_edge[0] = true;
+    for (size_t b = 1; b <= binned->bins; b++) n += is_edge[b] = is_edge[b] || blind[b];
+    RfFieldRuns *runs = alloc_runs(n, binned->trails, binned->bin_s);
+    g_autofree size_t *edges = g_new(size_t, n + 1);
+    for (size_t b = 0; b <= binned->bins; b++) {
+        if (!is_edge[b]) continue;
+        runs->edge_s[e] = binned->start_s + (double)b * binned->bin_s;
+        runs->is_blind[e] = blind[b];
+        edges[e++] = b;
+    }
     fill_speeds(binned, edges, runs);
     return runs;
+}
+
+static void add_speed(RfRunSpeed *to, const RfRunSpeed *more)
+{
+    if (!(more->time_s > 0)) return;
+    double time_s = to->time_s + more->time_s, rate = more->variance_m2_s2 * more->time_s;
+    to->speed_m_s = (to->speed_m_s * to->time_s + more->speed_m_s * more->time_s) / time_s;
+    to->variance_m2_s2 = rate / time_s;
+    to->time_s = time_s;
+}
+
+RfFieldRuns *rf_field_runs_merge(const RfFieldRuns *runs, const unsigned *label, size_t *part)
+{
+    size_t n = 0;
+    for (size_t r = 0; r < runs->runs; r++) {
+        if (r > 0 && (label[r] != label[r - 1] || runs->is_blind[r])) n++;
+        part[r] = n;
+    }
+    RfFieldRuns *merged = alloc_runs(n + 1, runs->droplets, runs->bin_s);
+    for (size_t r = 0; r < runs->runs; r++) {
+        if (r == 0 || part[r] != part[r - 1]) {
+            merged->edge_s[part[r]] = runs->edge_s[r];
+            merged->is_blind[part[r]] = runs->is_blind[r];
+        }
+        for (size_t j = 0; j < runs->droplets; j++)
+            add_speed(&merged->speed[j * merged->runs + part[r]], &runs->speed[j * runs->runs + r]);
+    }
+    merged->edge_s[n + 1] = runs->edge_s[runs->runs];
+    merged->diffusion_m2_s = g_memdup2(runs->diffusion_m2_s, runs->droplets * sizeof(double));
+    merged->own_diffusion_m2_s = g_memdup2(runs->own_diffusion_m2_s, runs->droplets * sizeof(double));
+    merged->samples = g_memdup2(runs->samples, runs->droplets * sizeof(size_t));
+    return merged;
 }
 
 RfFieldRuns *rf_field_runs_new(const RfTrail *trails, size_t n)
@@ -213,6 +279,7 @@ void rf_field_runs_free(RfFieldRuns *runs)
 {
     if (!runs) return;
     g_free(runs->edge_s);
+    g_free(runs->is_blind);
     g_free(runs->speed);
     g_free(runs->diffusion_m2_s);
     g_free(runs->own_diffusion_m2_s);

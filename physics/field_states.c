@@ -8,7 +8,9 @@
 
 enum { BEAM = 48 };
 /* Price of an explanation outside the model (a step of charge, a mistake of the tracker), and of a switch. */
-static const double SURPRISE_COST = 10, SWITCH_COST = 3;
+static const double SURPRISE_COST = 10, BRIEF_COST = 4, SWITCH_COST = 3;
+/* While nobody looked, a switch is as likely as none. */
+static const double BLIND_SWITCH_COST = 0;
 /* What is known of a droplet beforehand: it falls, at tens of micrometres a second; the field moves it by some
  * hundred micrometres a second. */
 static const double FALL_PRIOR_M_S = 50e-6, FALL_SPREAD_M_S = 50e-6, FIELD_SPREAD_M_S = 200e-6;
@@ -45,8 +47,9 @@ static double learn(Belief *b, double h, const RfRunSpeed *seen)
     return cost;
 }
 
-/* The same, or at a price: a new charge where there is a field, a mistake where there is none. */
-static double learn_or_wonder(Belief *b, double h, const RfRunSpeed *seen)
+/* The same, or at a price: a new charge where there is a field, a mistake where there is none. A run of a single bin may
+ * hold a switch, so that its speed belongs to no state; that is cheap and teaches nothing. */
+static double learn_or_wonder(Belief *b, double h, const RfRunSpeed *seen, bool is_brief)
 {
     Belief as_before = *b, renewed = *b;
     double cost = learn(&as_before, h, seen);
@@ -57,8 +60,8 @@ static double learn_or_wonder(Belief *b, double h, const RfRunSpeed *seen)
     } else {
         renewed = PRIOR;
     }
-    double otherwise = SURPRISE_COST + learn(&renewed, h, seen);
-    if (h == 0) renewed = *b; /* a mistake teaches nothing */
+    double otherwise = (is_brief ? BRIEF_COST : SURPRISE_COST) + learn(&renewed, h, seen);
+    if (h == 0 || is_brief) renewed = *b; /* a mistake teaches nothing */
     *b = cost <= otherwise ? as_before : renewed;
     return fmin(cost, otherwise);
 }
@@ -87,12 +90,13 @@ static void hypothesis_copy(Hypothesis *to, const Hypothesis *from, size_t runs,
 
 static void extend(Hypothesis *h, const RfFieldRuns *runs, size_t run, unsigned state, const double *relative)
 {
-    if (run > 0 && state != h->last) h->cost += SWITCH_COST;
+    if (run > 0 && state != h->last) h->cost += runs->is_blind[run] ? BLIND_SWITCH_COST : SWITCH_COST;
     if (state == h->used) h->used++;
     h->last = h->label[run] = state;
+    bool is_brief = runs->edge_s[run + 1] - runs->edge_s[run] < 1.5 * runs->bin_s;
     for (size_t j = 0; j < runs->droplets; j++) {
         const RfRunSpeed *seen = &runs->speed[j * runs->runs + run];
-        if (seen->time_s > 0) h->cost += learn_or_wonder(&h->belief[j], relative[state], seen);
+        if (seen->time_s > 0) h->cost += learn_or_wonder(&h->belief[j], relative[state], seen, is_brief);
     }
 }
 
@@ -137,6 +141,8 @@ static void advance(Beam *beam, const RfFieldRuns *runs, size_t run, unsigned st
 {
     beam->n_next = 0;
     for (size_t i = 0; i < beam->n_now; i++) {
+        /* What came first while nobody looked can't be known. */
+        if (runs->is_blind[run]) beam->now[i].used = states;
         unsigned choices = MIN(beam->now[i].used + 1, states);
         for (unsigned s = 0; s < choices; s++) {
             Hypothesis *to = &beam->next[beam->n_next++];
@@ -160,39 +166,65 @@ static void report(const Hypothesis *best, size_t droplets, double largest_v, Rf
     }
 }
 
-/* Cost by which the best labels lead over the best that differ for a tenth of the recording; others in the beam are the
- * same reading but for a bin here or there. */
-static double lead(const Beam *beam, const RfFieldRuns *runs)
+/* Chance, run by run, that the label is not the best reading's: readings weighted by their likelihoods. */
+static void weigh_doubts(const Beam *beam, size_t runs, double *doubt)
 {
     const Hypothesis *best = &beam->now[0];
-    double whole_s = runs->edge_s[runs->runs] - runs->edge_s[0];
-    for (size_t i = 1; i < beam->n_now; i++) {
-        double different_s = 0;
-        for (size_t r = 0; r < runs->runs; r++)
-            if (beam->now[i].label[r] != best->label[r]) different_s += runs->edge_s[r + 1] - runs->edge_s[r];
-        if (different_s > 0.1 * whole_s) return beam->now[i].cost - best->cost;
+    double sum = 0;
+    for (size_t r = 0; r < runs; r++) doubt[r] = 0;
+    for (size_t i = 0; i < beam->n_now; i++) {
+        double weight = exp(best->cost - beam->now[i].cost);
+        sum += weight;
+        for (size_t r = 0; r < runs; r++)
+            if (beam->now[i].label[r] != best->label[r]) doubt[r] += weight;
     }
-    return HUGE_VAL;
+    for (size_t r = 0; r < runs; r++) doubt[r] /= sum;
 }
 
-double rf_field_states_label(const RfFieldRuns *runs, const RfFieldSheet *sheet, const double *voltage_v,
-                             unsigned *label, RfStateDroplet *droplet)
+static Beam *beam_new(const RfFieldRuns *runs, const RfMedium *medium)
 {
-    double relative[RF_FIELD_STATES], largest = 0;
-    for (unsigned s = 0; s < sheet->states; s++) largest = fmax(largest, fabs(voltage_v[s]));
-    for (unsigned s = 0; s < sheet->states; s++) relative[s] = largest > 0 ? voltage_v[s] / largest : 0;
     Beam *beam = g_new0(Beam, 1);
     for (int i = 0; i < BEAM; i++) hypothesis_init(&beam->now[i], runs->runs, runs->droplets);
     for (int i = 0; i < BEAM * RF_FIELD_STATES; i++)
         hypothesis_init(&beam->next[i], runs->runs, runs->droplets);
-    for (size_t j = 0; j < runs->droplets; j++) beam->now[0].belief[j] = first_belief(runs, j, sheet->medium);
+    for (size_t j = 0; j < runs->droplets; j++) beam->now[0].belief[j] = first_belief(runs, j, medium);
     beam->n_now = 1;
-    for (size_t r = 0; r < runs->runs; r++) advance(beam, runs, r, sheet->states, relative);
-    memcpy(label, beam->now[0].label, runs->runs * sizeof *label);
-    report(&beam->now[0], runs->droplets, largest, droplet);
-    double margin = lead(beam, runs);
+    return beam;
+}
+
+static void beam_free(Beam *beam)
+{
     for (int i = 0; i < BEAM; i++) hypothesis_clear(&beam->now[i]);
     for (int i = 0; i < BEAM * RF_FIELD_STATES; i++) hypothesis_clear(&beam->next[i]);
     g_free(beam);
-    return margin;
+}
+
+static Beam *search(const RfFieldRuns *runs, const RfFieldSheet *sheet, const double *relative)
+{
+    Beam *beam = beam_new(runs, sheet->medium);
+    for (size_t r = 0; r < runs->runs; r++) advance(beam, runs, r, sheet->states, relative);
+    return beam;
+}
+
+/* Twice: runs are many, and a beam over them fills up with readings that differ by a bin here or there. Stretches of one
+ * label are few, and among their readings are those that differ in earnest. */
+void rf_field_states_label(const RfFieldRuns *runs, const RfFieldSheet *sheet, const double *voltage_v,
+                           unsigned *label, double *doubt, RfStateDroplet *droplet)
+{
+    double relative[RF_FIELD_STATES], largest = 0;
+    for (unsigned s = 0; s < sheet->states; s++) largest = fmax(largest, fabs(voltage_v[s]));
+    for (unsigned s = 0; s < sheet->states; s++) relative[s] = largest > 0 ? voltage_v[s] / largest : 0;
+    g_autofree size_t *part = g_new(size_t, runs->runs);
+    Beam *rough = search(runs, sheet, relative);
+    g_autoptr(RfFieldRuns) merged = rf_field_runs_merge(runs, rough->now[0].label, part);
+    Beam *beam = search(merged, sheet, relative);
+    g_autofree double *merged_doubt = g_new(double, merged->runs);
+    weigh_doubts(beam, merged->runs, merged_doubt);
+    for (size_t r = 0; r < runs->runs; r++) {
+        label[r] = beam->now[0].label[part[r]];
+        doubt[r] = merged_doubt[part[r]];
+    }
+    report(&beam->now[0], runs->droplets, largest, droplet);
+    beam_free(rough);
+    beam_free(beam);
 }

@@ -12,7 +12,7 @@ typedef struct {
     double u_speed_per_volt_m_s_v;
 } RfStateDroplet;
 
-/* label: runs, index into sheet->state; droplet: as many as in runs, filled.
- * Returns the log-likelihood by which the best labels beat the best different ones. */
-double rf_field_states_label(const RfFieldRuns *runs, const RfFieldSheet *sheet, const double *voltage_v,
-                             unsigned *label, RfStateDroplet *droplet);
+/* label: runs, index into sheet->state; doubt: runs, chance that a run has another label, from the likelihoods of all
+ * readings; droplet: as many as in runs. All filled. */
+void rf_field_states_label(const RfFieldRuns *runs, const RfFieldSheet *sheet, const double *voltage_v,
+                           unsigned *label, double *doubt, RfStateDroplet *droplet);

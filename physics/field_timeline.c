@@ -8,12 +8,16 @@
 #include "physics/switch_instant.h"
 #include "physics/trail_join.h"
 
+/* Another state this likely is reason enough not to trust a charge. */
+static const double DOUBT_MIN = 1e-3;
+
 RfFieldTimeline *rf_field_timeline_new(void)
 {
     RfFieldTimeline *timeline = g_new0(RfFieldTimeline, 1);
     timeline->intervals = g_array_new(FALSE, TRUE, sizeof(RfFieldInterval));
     timeline->switches = g_array_new(FALSE, TRUE, sizeof(RfFieldSwitch));
     timeline->findings = g_array_new(FALSE, TRUE, sizeof(RfLogFinding));
+    timeline->doubts = g_array_new(FALSE, TRUE, sizeof(RfStateDoubt));
     return timeline;
 }
 
@@ -23,6 +27,7 @@ void rf_field_timeline_free(RfFieldTimeline *timeline)
     g_array_unref(timeline->intervals);
     g_array_unref(timeline->switches);
     g_array_unref(timeline->findings);
+    g_array_unref(timeline->doubts);
     g_free(timeline);
 }
 
@@ -72,6 +77,24 @@ static void collect_intervals(RfFieldTimeline *timeline, const RfFieldRuns *runs
             .time_s = {runs->edge_s[r], 0.1}, .from = sheet->state[label[r - 1]], .to = interval.state};
         g_array_append_val(timeline->switches, s);
     }
+}
+
+static void collect_doubts(RfFieldTimeline *timeline, const RfFieldRuns *runs, const double *doubt)
+{
+    for (size_t r = 0; r < runs->runs; r++) {
+        RfStateDoubt one = {runs->edge_s[r], runs->edge_s[r + 1], doubt[r]};
+        if (doubt[r] > DOUBT_MIN) g_array_append_val(timeline->doubts, one);
+    }
+}
+
+bool rf_field_timeline_is_doubtful(const RfFieldTimeline *timeline, double start_s, double end_s)
+{
+    static const double brief_s = 0.15; /* edges are that rough; nothing hangs on so little */
+    for (unsigned i = 0; i < timeline->doubts->len; i++) {
+        const RfStateDoubt *d = &g_array_index(timeline->doubts, RfStateDoubt, i);
+        if (fmin(end_s, d->end_s) - fmax(start_s, d->start_s) > brief_s) return true;
+    }
+    return false;
 }
 
 /* A switch from one polarity to the other within a bin looks like a bin without field: labels of runs of a single bin
@@ -156,9 +179,10 @@ RfFieldTimeline *rf_field_timeline_find(const RfTrail *fragments, size_t n_fragm
     g_autoptr(RfFieldRuns) runs = rf_field_runs_new(trails, n);
     g_autofree unsigned *label = g_new0(unsigned, runs->runs);
     g_autofree RfStateDroplet *droplets = g_new0(RfStateDroplet, n);
-    double margin = rf_field_states_label(runs, &states, voltage_v, label, droplets);
+    g_autofree double *doubt = g_new(double, runs->runs);
+    rf_field_states_label(runs, &states, voltage_v, label, doubt, droplets);
     heal_labels(runs, label);
-    timeline->labels_ambiguous = states.states == 3 && margin < 3;
+    if (!spans) collect_doubts(timeline, runs, doubt);
     collect_intervals(timeline, runs, label, &states, voltage_v);
     for (unsigned k = 0; k < timeline->switches->len; k++) refine_roughly(timeline, k, trails, runs);
     if (spans && !rf_field_log_apply(spans, &states, runs, droplets, timeline, error)) return NULL;

@@ -48,14 +48,20 @@ typedef struct {
     RfValue difference; /* late: log less tracks, s; misfit: voltage by motion less log, V; else 0 */
 } RfLogFinding;
 
+/* A stretch whose state the motion can't settle. */
+typedef struct {
+    double start_s, end_s;
+    double chance; /* that it is another state than stated */
+} RfStateDoubt;
+
 typedef struct {
     GArray *intervals; /* RfFieldInterval, contiguous, at least one */
     GArray *switches;  /* RfFieldSwitch, one between neighbouring intervals */
     GArray *findings;  /* RfLogFinding, by time */
     bool has_log;
-    RfValue log_offset_s;  /* log clock less recording clock, at the middle of the recording */
-    RfValue log_drift;     /* relative rate of the log's clock; value 0 where not significant. Unitless */
-    bool labels_ambiguous; /* three states, and motion alone couldn't settle which is which */
+    RfValue log_offset_s; /* log clock less recording clock, at the middle of the recording */
+    RfValue log_drift;    /* relative rate of the log's clock; value 0 where not significant. Unitless */
+    GArray *doubts;       /* RfStateDoubt, by time; chances below 1e-3 are not listed */
 } RfFieldTimeline;
 
 RfFieldTimeline *rf_field_timeline_new(void);
@@ -80,6 +86,9 @@ typedef struct {
     const RfMedium
         *medium; /* (borrowed) or NULL; with it, a droplet's wander tells how fast it falls without field */
 } RfFieldSheet;
+
+/* Does anything seen in [start, end] hang on a state in doubt? */
+bool rf_field_timeline_is_doubtful(const RfFieldTimeline *timeline, double start_s, double end_s);
 
 /* Trails may be whole paths or fragments. Needs at least one sample in all; no switch found is a result, not an error.
  *   returns new, or NULL with error (a log that can't be matched, states that can't be) */

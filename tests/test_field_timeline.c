@@ -135,8 +135,70 @@ static void test_three_states(void)
     cell_fill(&cell, 18);
     g_autoptr(RfFieldTimeline) found = rf_field_timeline_find(cell.trails, DROPLETS, &sheet, NULL);
     assert_switches(found, cell.truth);
-    g_assert_false(found->labels_ambiguous);
+    g_assert_cmpuint(found->doubts->len, ==, 0);
     cell_clear(&cell);
+}
+
+static Walk lone_walk(const RfFieldTimeline *truth, double start_s, double end_s, int units)
+{
+    return (Walk){.medium = &WALK_MEDIUM,
+                  .timeline = truth,
+                  .radius_m = 0.5e-6,
+                  .charge_coulomb = units * E,
+                  .start_s = start_s,
+                  .end_s = end_s,
+                  .frame_s = 1.0 / 30,
+                  .exposure = 0.5,
+                  .noise_m = 0.1e-6};
+}
+
+/* One droplet leaves, another comes: between two polarities nothing tells which one the second droplet meets first, and
+ * that is said. A droplet that stays in view across both tells. */
+static void test_lone_droplets_leave_doubt(void)
+{
+    static const RfFieldSheet sheet = {.states = 2,
+                                       .state = {RF_FIELD_TOP_PLUS, RF_FIELD_TOP_MINUS},
+                                       .top_plus_v = 400,
+                                       .top_minus_v = -400};
+    gsl_rng *random = gsl_rng_alloc(gsl_rng_mt19937);
+    g_autoptr(RfFieldTimeline) truth = rf_field_timeline_new();
+    for (unsigned k = 0; k < 8; k++) {
+        RfFieldInterval v = {2.5 * k, 2.5 * (k + 1), k % 2 ? RF_FIELD_TOP_MINUS : RF_FIELD_TOP_PLUS,
+                             k % 2 ? -400 : 400};
+        g_array_append_val(truth->intervals, v);
+    }
+    const Walk walks[] = {lone_walk(truth, 0, 8, 3), lone_walk(truth, 11, 20, -2),
+                          lone_walk(truth, 4, 16, 2)};
+    RfTrail trails[3];
+    for (unsigned i = 0; i < 3; i++) trails[i] = walk_trail_new(&walks[i], i + 1, random);
+    g_autoptr(RfFieldTimeline) apart = rf_field_timeline_find(trails, 2, &sheet, NULL);
+    g_assert_false(rf_field_timeline_is_doubtful(apart, 0, 8));
+    g_assert_true(rf_field_timeline_is_doubtful(apart, 11, 20));
+    g_autoptr(RfFieldTimeline) together = rf_field_timeline_find(trails, 3, &sheet, NULL);
+    g_assert_cmpuint(together->doubts->len, ==, 0);
+    g_assert_cmpuint(together->switches->len, ==, 7);
+    for (unsigned i = 0; i < 3; i++) walk_trail_clear(&trails[i]);
+    gsl_rng_free(random);
+}
+
+/* A droplet that leaves soon after a switch, and another that comes when the field is on again: the switch that nobody
+ * saw must not make the one before it vanish. */
+static void test_unseen_switch_hides_no_other(void)
+{
+    static const double switches_s[] = {2, 4, 6, 7, 8.5, 11};
+    gsl_rng *random = gsl_rng_alloc(gsl_rng_mt19937);
+    g_autoptr(RfFieldTimeline) truth =
+        walk_timeline_new(switches_s, G_N_ELEMENTS(switches_s), RF_FIELD_TOP_PLUS, 400, 14);
+    const Walk walks[] = {lone_walk(truth, 0, 7.8, 3), lone_walk(truth, 9, 14, -2)};
+    RfTrail trails[2];
+    for (unsigned i = 0; i < 2; i++) trails[i] = walk_trail_new(&walks[i], i + 1, random);
+    g_autoptr(RfFieldTimeline) found = rf_field_timeline_find(trails, 2, &TWO_STATES, NULL);
+    static const double asked_s[] = {1, 3, 5, 6.5, 7.5, 10, 12};
+    for (size_t k = 0; k < G_N_ELEMENTS(asked_s); k++)
+        g_assert_cmpint(rf_field_timeline_at(found, asked_s[k])->state, ==,
+                        rf_field_timeline_at(truth, asked_s[k])->state);
+    for (unsigned i = 0; i < 2; i++) walk_trail_clear(&trails[i]);
+    gsl_rng_free(random);
 }
 
 /* A change of charge of one droplet among others is no switch. */
@@ -340,6 +402,8 @@ int main(int argc, char **argv)
     g_test_add_func("/field-timeline/find/two-states", test_two_states);
     g_test_add_func("/field-timeline/find/pulls", test_pulls);
     g_test_add_func("/field-timeline/find/three-states", test_three_states);
+    g_test_add_func("/field-timeline/find/lone-droplets-leave-doubt", test_lone_droplets_leave_doubt);
+    g_test_add_func("/field-timeline/find/unseen-switch-hides-no-other", test_unseen_switch_hides_no_other);
     g_test_add_func("/field-timeline/find/step-is-no-switch", test_step_is_no_switch);
     g_test_add_func("/field-timeline/find/fragments", test_fragments);
     g_test_add_func("/field-timeline/clock/by-edges", test_clock_by_edges);
