@@ -144,6 +144,13 @@ static void append_finding(GString *out, const RfAuditMatch *match, const RfHand
     }
 }
 
+static void append_noted_start(GString *out, const RfAuditMatch *match, double at_s)
+{
+    double end_s = rf_audit_match_end_s(match);
+    g_string_append_printf(out, "; on the recording's clock that is %.2f s", at_s);
+    if (at_s < 0 || at_s > end_s) g_string_append_printf(out, ", outside its 0 to %.2f s", end_s);
+}
+
 static char *evidence_of(const RfAuditMatch *match, const RfHandEntry *entry, guint index,
                          const RfExplanation *chosen, const Tally *tally)
 {
@@ -161,8 +168,7 @@ static char *evidence_of(const RfAuditMatch *match, const RfHandEntry *entry, gu
             "frames %" PRId64 " to %" PRId64,
             chosen->passage->first_frame, chosen->passage->last_frame);
     else if (has_clock)
-        g_string_append_printf(out, "; on the recording's clock the noted start is %.2f s",
-                               entry->start_s - habit->clock_offset_s.value);
+        append_noted_start(out, match, entry->start_s - habit->clock_offset_s.value);
     return g_string_free(out, FALSE);
 }
 

@@ -2,7 +2,7 @@
 
 #include <math.h>
 
-enum { CLOCK_ENTRIES = 80, CLOCK_TRIES = 60, LABEL_ENTRIES = 400, CROWD = 4 };
+enum { CLOCK_ENTRIES = 80, CLOCK_TRIES = 60, LABEL_ENTRIES = 400, LEAST_NOTED = 4, CROWD = 4 };
 
 /* A match this poor says nothing; so much must all entries of a label say together; a match this good counts as one; and a
  * label follows a droplet if at least this share of what it could match belongs there. */
@@ -217,7 +217,9 @@ bool rf_audit_labels_find_clock(const RfAuditLabels *labels, double *offset_s)
     unsigned used;
     double best = evidence_for(labels, 0, stride, &used) + unmoved_bonus;
     *offset_s = 0;
-    for (guint i = 0; i < tries->len; i++) {
+    /* so few starts fit somewhere by chance */
+    guint n_tries = used < LEAST_NOTED ? 0 : tries->len;
+    for (guint i = 0; i < n_tries; i++) {
         double here = evidence_for(labels, g_array_index(tries, double, i), stride, &used);
         if (here > best) {
             best = here;

@@ -65,6 +65,11 @@ double rf_audit_match_divisions(const RfAuditMatch *match, guint index)
     return rf_passage_sets_divisions(match->sets, entry);
 }
 
+double rf_audit_match_end_s(const RfAuditMatch *match)
+{
+    return rf_line_crossings_end_s(match->crossings);
+}
+
 unsigned rf_audit_match_owner(const RfAuditMatch *match, guint index)
 {
     const RfHandEntry *entry = entry_at(match, index);
@@ -280,6 +285,8 @@ typedef struct {
     double weight;         /* entries that tell */
     double precision, sum; /* of the mean: each weighs as its variance asks */
     double squares;        /* expected squares of the person's own part */
+    double shared;         /* variance of acts that several entries have in common: those without a clock */
+    GHashTable *acts;      /* which those are; NULL: not kept */
     double share;          /* how much of the scatter is the person's: what the spread is known from */
 } Moments;
 
@@ -293,6 +300,19 @@ static void gather(Moments *moments, double weight, double value, double varianc
     moments->sum += weight * value / all;
     moments->squares += weight * (expected * expected + variance * own / all);
     moments->share += weight * (own / all) * (own / all);
+}
+
+/* Without a clock all timings of one droplet are held against the same mean: what that is off by doesn't average out. */
+static void gather_shared(Moments *moments, double weight, const RfExplanation *one)
+{
+    moments->shared += weight * one->u_tracked_s * one->u_tracked_s;
+    g_hash_table_add(moments->acts, (void *)(uintptr_t)one->passage);
+}
+
+static double shared_variance(const Moments *moments)
+{
+    guint acts = g_hash_table_size(moments->acts);
+    return acts > 0 ? moments->shared / moments->weight / acts : 0;
 }
 
 static double mean_of(const Moments *moments)
@@ -310,6 +330,7 @@ static void gather_entry(const RfAuditMatch *match, guint index, GArray *explana
                          Moments *start)
 {
     const RfHandEntry *entry = entry_at(match, index);
+    bool has_clock = entry->has_start && match->habit.has_clock;
     rf_audit_match_explain(match, index, explanations);
     double total = 0;
     for (guint i = 0; i < explanations->len; i++)
@@ -318,10 +339,11 @@ static void gather_entry(const RfAuditMatch *match, guint index, GArray *explana
         const RfExplanation *one = &g_array_index(explanations, RfExplanation, i);
         double share = one->weight / total;
         if (!(share > 1e-6) || !one->passage || one->finding == RF_FINDING_DISAGREES) continue;
+        if (one->finding == RF_FINDING_AGREES && !has_clock) gather_shared(interval, share, one);
         if (one->finding == RF_FINDING_AGREES)
             gather(interval, share, one->read_s - one->tracked_s, one->u_tracked_s * one->u_tracked_s,
                    match->habit.bias_s.value, match->habit.spread_s.value);
-        if (entry->has_start && match->habit.has_clock)
+        if (has_clock)
             gather(start, share, entry->start_s - one->passage->start_s, 0, match->habit.clock_offset_s.value,
                    match->habit.clock_spread_s);
     }
@@ -330,7 +352,8 @@ static void gather_entry(const RfAuditMatch *match, guint index, GArray *explana
 /* One round of expectation and maximisation; at most LEARN_FROM entries, evenly chosen. */
 static void learn(RfAuditMatch *match)
 {
-    Moments interval = {0}, start = {0};
+    g_autoptr(GHashTable) acts = g_hash_table_new(NULL, NULL);
+    Moments interval = {.acts = acts}, start = {0};
     g_autoptr(GArray) explanations = g_array_new(FALSE, FALSE, sizeof(RfExplanation));
     guint n = match->timings->entries->len, stride = (n + LEARN_FROM - 1) / LEARN_FROM;
     for (guint i = 0; i < n; i += MAX(stride, 1))
@@ -340,7 +363,7 @@ static void learn(RfAuditMatch *match)
     if (interval.weight > 2.5) {
         habit->bias_s.value = mean_of(&interval);
         habit->spread_s.value = spread_of(&interval, least_spread_s);
-        habit->bias_s.sigma = 1 / sqrt(interval.precision);
+        habit->bias_s.sigma = sqrt(1 / interval.precision + shared_variance(&interval));
         habit->spread_s.sigma = habit->spread_s.value / sqrt(2 * fmax(interval.share - 1, 0.5));
     }
     if (start.weight > 2.5) {

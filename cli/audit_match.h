@@ -61,5 +61,7 @@ void rf_audit_match_explain(const RfAuditMatch *match, guint index, GArray *out)
 
 /* The droplet that the entry's label follows at that time; 0: none does, or labels don't follow droplets. */
 unsigned rf_audit_match_owner(const RfAuditMatch *match, guint index);
+/* How long the recording shows droplets. */
+double rf_audit_match_end_s(const RfAuditMatch *match);
 /* The number of divisions that the entry claims. */
 double rf_audit_match_divisions(const RfAuditMatch *match, guint index);
