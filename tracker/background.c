@@ -1,16 +1,19 @@
 #include "tracker/background.h"
 
-#include "tracker/interpolate.h"
 #include "tracker/lamp.h"
+#include "tracker/level_stack.h"
 #include "tracker/luma.h"
 #include "tracker/registration.h"
 #include "tracker/reticle_shade.h"
+#include "tracker/row_threads.h"
 
 #include <math.h>
 #include <string.h>
 
 static const double MOVEMENT_PX = 0.1; /* less than this, rms over the sample, is a camera at rest */
 static const double FLICKER = 0.002;   /* a lamp steadier than this needs no second look */
+
+enum { FIRST_FRAMES = 15 };
 
 /* Everything known about the sampled frames while learning. */
 typedef struct {
@@ -56,99 +59,89 @@ static float kth_smallest(float *v, unsigned n, unsigned k)
     return v[k];
 }
 
-/* Level and variance of one pixel from its values in n frames. The median alone is a whole number in 8-bit footage: the
- * mean of what lies within `reach` of it is finer. */
-static void robust_level(float *v, unsigned n, float reach, float *level, float *variance)
-{
-    float middle = kth_smallest(v, n, n / 2), sum = 0, square = 0, kept = 0;
-    for (unsigned i = 0; i < n; i++) {
-        float off = v[i] - middle;
-        bool is_near = fabsf(off) <= reach;
-        sum += is_near ? off : 0, square += is_near ? off * off : 0, kept += is_near ? 1.0f : 0.0f;
-    }
-    float mean = sum / kept;
-    *level = middle + mean;
-    *variance = kept > 1 ? (square - kept * mean * mean) / (kept - 1) : 0;
-}
-
-/* Row y of the reference picture as frame i shows it; false where the frame doesn't reach that far. */
+/* Row y of the reference picture as frame i shows it, dimmed or brightened to what the background's lamp would have given. */
 static void reference_row(const Learning *learning, unsigned i, const RfBackground *background, int y,
-                          const float *frame_image, float *out, bool *is_seen)
+                          int16_t *out)
 {
     const RfFrame *frame = rf_picture_sample_frame(learning->sample, i);
-    int width = background->width, height = background->height;
     const RfPose *pose = &learning->poses[i];
+    double gain = rf_lamp_gain(&learning->lamps[i], y, background->height);
+    float scale = (float)(1 / gain), black = (float)background->noise.black_level,
+          offset = black - black * scale;
     if (!background->is_moving) {
-        rf_luma_copy_row(frame, y, out);
-        memset(is_seen, true, (size_t)width);
+        rf_level_stack_copy_row(frame, y, scale, offset, out);
         return;
     }
     double c = cos(pose->angle_rad), s = sin(pose->angle_rad), aspect = background->pixel_aspect;
-    double centre_x = 0.5 * (width - 1), down = y - 0.5 * (height - 1);
-    for (int x = 0; x < width; x++) {
-        double right = (x - centre_x) * aspect;
-        double at_x = (c * right - s * down) / aspect + centre_x + pose->shift_x_px;
-        double at_y = s * right + c * down + 0.5 * (height - 1) + pose->shift_y_px;
-        is_seen[x] = rf_interpolate_cubic(frame_image, width, height, (float)at_x, (float)at_y, &out[x]);
-    }
+    double centre_x = 0.5 * (background->width - 1), centre_y = 0.5 * (background->height - 1);
+    double right = -centre_x * aspect, down = y - centre_y;
+    RfRowLine line = {
+        .x_px = (c * right - s * down) / aspect + centre_x + pose->shift_x_px,
+        .y_px = s * right + c * down + centre_y + pose->shift_y_px,
+        .step_x = c,
+        .step_y = s * aspect,
+    };
+    rf_level_stack_resample_row(frame, &line, scale, offset, out);
 }
 
-/* A frame's rows are dimmed or brightened to what the background's lamp would have given. */
-static void undo_lamp(const RfLamp *lamp, double black, int y, int width, int height, float *row)
+/* A pixel that hardly any frame shows gets its left neighbour's level, or the one above. */
+static void fill_gaps(const Learning *learning, RfBackground *background, const int16_t *kept, int y)
 {
-    double gain = rf_lamp_gain(lamp, y, height);
-    float scale = (float)(1 / gain), offset = (float)(black - black / gain);
-    for (int x = 0; x < width; x++) row[x] = row[x] * scale + offset;
-}
-
-static float **frame_images(const Learning *learning, const RfBackground *background)
-{
-    if (!background->is_moving) return NULL;
-    float **images = g_new(float *, learning->n);
-    for (unsigned i = 0; i < learning->n; i++) {
-        const RfFrame *frame = rf_picture_sample_frame(learning->sample, i);
-        images[i] = g_new(float, (size_t)frame->width *(size_t)frame->height);
-        for (int y = 0; y < frame->height; y++)
-            rf_luma_copy_row(frame, y, images[i] + (size_t)y * (size_t)frame->width);
-    }
-    return images;
-}
-
-static void free_images(float **images, unsigned n)
-{
-    for (unsigned i = 0; images && i < n; i++) g_free(images[i]);
-    g_free(images);
-}
-
-/* Fills level and variance, pixel by pixel. A pixel that no frame shows gets its left neighbour's. */
-static void learn_levels(Learning *learning, RfBackground *background)
-{
-    int width = background->width, height = background->height;
-    unsigned n = learning->n;
-    g_autofree float *rows = g_new(float, n *(size_t)width), *values = g_new(float, n);
-    g_autofree bool *seen = g_new(bool, n *(size_t)width);
-    float **images = frame_images(learning, background);
-    for (int y = 0; y < height; y++) {
-        for (unsigned i = 0; i < n; i++) {
-            float *row = rows + i * (size_t)width;
-            reference_row(learning, i, background, y, images ? images[i] : NULL, row,
-                          seen + i * (size_t)width);
-            undo_lamp(&learning->lamps[i], background->noise.black_level, y, width, height, row);
+    float *level = background->level + (size_t)y * (size_t)background->width;
+    float *variance = learning->variance + (size_t)y * (size_t)background->width;
+    const int16_t *seen = kept + (size_t)y * (size_t)background->width;
+    for (int x = 0; x < background->width; x++)
+        if (seen[x] < 3) {
+            level[x] = x ? level[x - 1] : y ? level[-background->width] : 0;
+            variance[x] = x ? variance[x - 1] : 0;
         }
-        float *level = background->level + (size_t)y * (size_t)width;
-        float *variance = learning->variance + (size_t)y * (size_t)width;
-        for (int x = 0; x < width; x++) {
-            unsigned kept = 0;
-            for (unsigned i = 0; i < n; i++)
-                if (learning->is_usable[i] && seen[i * (size_t)width + (size_t)x])
-                    values[kept++] = rows[i * (size_t)width + (size_t)x];
-            if (kept >= 3)
-                robust_level(values, kept, learning->reach, &level[x], &variance[x]);
-            else
-                level[x] = x ? level[x - 1] : y ? level[x - width] : 0, variance[x] = x ? variance[x - 1] : 0;
-        }
+}
+
+typedef struct {
+    const Learning *learning;
+    RfBackground *background;
+    unsigned every; /* frames taken: every so many-th */
+    bool is_whole;  /* no lamp to undo, no interpolation */
+    int16_t *kept;
+} LevelJob;
+
+static void learn_rows(int first, int end, void *user)
+{
+    const LevelJob *job = user;
+    const Learning *learning = job->learning;
+    size_t width = (size_t)job->background->width;
+    g_autofree int16_t *rows = g_new0(int16_t, (learning->n + 1) * width + 64);
+    for (int y = first; y < end; y++) {
+        int n = 0;
+        for (unsigned i = 0; i < learning->n; i += job->every)
+            if (learning->is_usable[i])
+                reference_row(learning, i, job->background, y, rows + (size_t)n++ * width);
+        RfLevelStack stack = {.rows = rows,
+                              .n = n,
+                              .width = job->background->width,
+                              .bit_depth = job->background->bit_depth,
+                              .is_whole = job->is_whole,
+                              .reach = learning->reach};
+        size_t at = (size_t)y * width;
+        rf_level_stack_reduce(&stack, job->background->level + at, learning->variance + at, job->kept + at);
     }
-    free_images(images, n);
+}
+
+static bool is_any_lamp_off(const Learning *learning)
+{
+    for (unsigned i = 0; i < learning->n; i++)
+        for (int band = 0; band < RF_LAMP_BANDS; band++)
+            if (learning->lamps[i].band_gain[band] != 1) return true;
+    return false;
+}
+
+/* Fills level and variance from every so many-th frame. */
+static void learn_levels(Learning *learning, RfBackground *background, unsigned every)
+{
+    g_autofree int16_t *kept = g_new0(int16_t, (size_t)background->width * (size_t)background->height);
+    LevelJob job = {learning, background, every, !background->is_moving && !is_any_lamp_off(learning), kept};
+    rf_row_threads_run(background->height, learn_rows, &job);
+    for (int y = 0; y < background->height; y++) fill_gaps(learning, background, kept, y);
 }
 
 static int by_value(const void *a, const void *b)
@@ -360,7 +353,7 @@ static void check_movement(Learning *learning, RfBackground *background)
     background->is_moving = background->movement_rms_px > MOVEMENT_PX;
     if (background->is_moving) return;
     stay_put(learning);
-    learn_levels(learning, background);
+    learn_levels(learning, background, 1);
     fit_noise(learning, background);
 }
 
@@ -371,12 +364,13 @@ static void learn(Learning *learning, RfBackground *background)
         learning->lamps[i].gain = 1;
         for (int band = 0; band < RF_LAMP_BANDS; band++) learning->lamps[i].band_gain[band] = 1;
     }
-    learn_levels(learning, background);
+    /* the first picture of a moving camera only has to be better than one frame */
+    learn_levels(learning, background, background->is_moving ? MAX(1u, learning->n / FIRST_FRAMES) : 1);
     fit_noise(learning, background);
     if (background->is_moving) check_movement(learning, background);
     measure_lamps(learning, background);
     if (background->is_moving || flicker(learning) > FLICKER) {
-        learn_levels(learning, background);
+        learn_levels(learning, background, 1);
         fit_noise(learning, background);
     }
     rf_reticle_shade_find(background);

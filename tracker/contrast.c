@@ -1,6 +1,5 @@
 #include "tracker/contrast.h"
 
-#include "tracker/interpolate.h"
 #include "tracker/luma.h"
 
 #include <math.h>
@@ -11,13 +10,15 @@ struct RfContrast {
     float *light
         [3]; /* mean light (level less black) per cell: of the whole cell, of its upper, of its lower line */
     float *per_sd; /* 1 / noise sd of one pixel, 0 in cells with a bad pixel; camera at rest */
-    float *box;    /* moving camera: mean light of the 2 x 2 pixels from each stored pixel on */
-    float *
-        box_per_sd; /* the same place's 1 / sd, less where the picture is steep: registration isn't perfect */
-    uint8_t *is_bad; /* moving camera: cell holds a bad sensor pixel */
+    /* moving camera, in the reference picture's place: */
+    uint16_t
+        *box; /* mean level of the 2 x 2 pixels from each pixel on, in units; small, for the cache's sake */
+    float *box_per_sd; /* per cell: 1 / sd, less where the picture is steep: registration isn't perfect */
+    uint8_t *is_bad;   /* cell of the frame holds a bad sensor pixel */
 };
 
 enum { WHOLE, UPPER, LOWER };
+enum { RUN = 16, FULL_BITS = 14 };
 static const double POSE_ERROR_PX = 0.06; /* taken for registration and interpolation together */
 
 int rf_contrast_width(const RfContrast *contrast)
@@ -51,23 +52,44 @@ static void fill_cells(RfContrast *contrast)
         }
 }
 
+static double box_units(const RfBackground *b)
+{
+    return ldexp(1, FULL_BITS - b->bit_depth);
+}
+
+/* 1 / sd of a box from pixel (x, y) on. */
+static float box_per_sd(const RfBackground *b, int x, int y)
+{
+    int right = MIN(x + 1, b->width - 1), down = MIN(y + 1, b->height - 1);
+    const float *row = b->level + (size_t)y * (size_t)b->width,
+                *next = b->level + (size_t)down * (size_t)b->width;
+    float mean = 0.25f * (row[x] + row[right] + next[x] + next[right]);
+    float steep_x = 0.5f * (row[right] + next[right] - row[x] - next[x]),
+          steep_y = 0.5f * (next[x] + next[right] - row[x] - row[right]);
+    double var = rf_pixel_noise_var(&b->noise, (double)mean);
+    /* 4: it is that of one pixel of four */
+    var += 4 * POSE_ERROR_PX * POSE_ERROR_PX * (double)(steep_x * steep_x + steep_y * steep_y);
+    return (float)(1 / sqrt(var));
+}
+
 static void fill_box(RfContrast *contrast)
 {
     const RfBackground *b = contrast->background;
     int w = b->width, h = b->height;
-    float black = (float)b->noise.black_level;
-    for (int y = 0; y < h; y++)
+    float quarter = (float)(0.25 * box_units(b));
+    for (int y = 0; y < h; y++) {
+        const float *row = b->level + (size_t)y * (size_t)w, *next = y < h - 1 ? row + w : row;
         for (int x = 0; x < w; x++) {
-            int right = x + (x < w - 1), down = y + (y < h - 1);
-            const float *row = b->level + (size_t)y * (size_t)w, *next = b->level + (size_t)down * (size_t)w;
-            size_t i = (size_t)y * (size_t)w + (size_t)x;
-            contrast->box[i] = 0.25f * (row[x] + row[right] + next[x] + next[right]) - black;
-            double steep = hypot((double)(row[right] + next[right] - row[x] - next[x]) / 2,
-                                 (double)(next[x] + next[right] - row[x] - row[right]) / 2);
-            double var = rf_pixel_noise_var(&b->noise, (double)(contrast->box[i] + black));
-            var += 4 * POSE_ERROR_PX * POSE_ERROR_PX * steep *
-                   steep; /* 4: `per_sd` is that of one pixel of four */
-            contrast->box_per_sd[i] = (float)(1 / sqrt(var));
+            int right = x + (x < w - 1);
+            float mean = quarter * (row[x] + row[right] + next[x] + next[right]);
+            contrast->box[(size_t)y * (size_t)w + (size_t)x] = (uint16_t)(CLAMP(mean, 0.0f, 65000.0f) + 0.5f);
+        }
+    }
+    for (int y = 0; y < contrast->height; y++)
+        for (int x = 0; x < contrast->width; x++) {
+            float upper = fminf(box_per_sd(b, 2 * x, 2 * y), box_per_sd(b, 2 * x + 1, 2 * y)),
+                  lower = fminf(box_per_sd(b, 2 * x, 2 * y + 1), box_per_sd(b, 2 * x + 1, 2 * y + 1));
+            contrast->box_per_sd[(size_t)y * (size_t)contrast->width + (size_t)x] = fminf(upper, lower);
         }
 }
 
@@ -84,8 +106,8 @@ RfContrast *rf_contrast_new(const RfBackground *background)
     contrast->is_bad = g_new(uint8_t, cells);
     fill_cells(contrast);
     if (background->is_moving) {
-        contrast->box = g_new(float, pixels);
-        contrast->box_per_sd = g_new(float, pixels);
+        contrast->box = g_new(uint16_t, pixels);
+        contrast->box_per_sd = g_new(float, cells);
         fill_box(contrast);
     }
     return contrast;
@@ -138,29 +160,93 @@ static void weigh_row(const float *light, const float *per_sd, int width, float 
         row[x] = (row[x] - pixels * (gain * light[x] + black)) * per_sd[x] * scale;
 }
 
-/* The background under a moving camera: linear between the box means, which are smooth enough for that. */
+/* Where a row of cells lies in the reference picture: cell x at (x_px + x * step_x, y_px + x * step_y). */
+typedef struct {
+    double x_px, y_px, step_x, step_y;
+} Line;
+
+static Line reference_line(const RfExposureView *view, int y)
+{
+    double upper_left = 2 * y + (view->line_step == 2 ? view->first_line - 0.5 : 0), x1, y1;
+    Line line;
+    rf_exposure_view_reference(view, 0, upper_left, &line.x_px, &line.y_px);
+    rf_exposure_view_reference(view, 2, upper_left, &x1, &y1);
+    line.step_x = x1 - line.x_px;
+    line.step_y = y1 - line.y_px;
+    return line;
+}
+
+/* Linear between box means, which are smooth enough for that. */
+static void light_of_run(const RfContrast *contrast, const Line *line, int x, float black, float *light)
+{
+    const RfBackground *b = contrast->background;
+    double at_x = line->x_px + x * line->step_x, at_y = line->y_px + x * line->step_y;
+    int column = (int)at_x, row = (int)at_y;
+    const uint16_t *upper = contrast->box + (size_t)row * (size_t)b->width + (size_t)column,
+                   *lower = upper + b->width;
+    float part_x = (float)(at_x - column), part_y = (float)(at_y - row), per_unit = (float)(1 / box_units(b));
+    float grow_x = (float)line->step_x - 2, grow_y = (float)line->step_y;
+    for (int i = 0; i < RUN; i++) {
+        float tx = part_x + (float)i * grow_x, ty = part_y + (float)i * grow_y;
+        float a = (float)upper[2 * i], c = (float)lower[2 * i];
+        float above = a + tx * ((float)upper[2 * i + 1] - a), below = c + tx * ((float)lower[2 * i + 1] - c);
+        light[i] = (above + ty * (below - above)) * per_unit - black;
+    }
+}
+
+static bool light_of_one(const RfContrast *contrast, double at_x, double at_y, float black, float *light)
+{
+    const RfBackground *b = contrast->background;
+    if (!(at_x >= 0 && at_y >= 0 && at_x < b->width - 2 && at_y < b->height - 2)) return false;
+    int column = (int)at_x, row = (int)at_y;
+    const uint16_t *upper = contrast->box + (size_t)row * (size_t)b->width + (size_t)column,
+                   *lower = upper + b->width;
+    float tx = (float)(at_x - column), ty = (float)(at_y - row), a = upper[0], c = lower[0];
+    float above = a + tx * ((float)upper[1] - a), below = c + tx * ((float)lower[1] - c);
+    *light = (above + ty * (below - above)) / (float)box_units(b) - black;
+    return true;
+}
+
+/* Do the places of RUN cells from x on lie side by side, all inside? */
+static bool is_one_run(const RfContrast *contrast, const Line *line, int x)
+{
+    const RfBackground *b = contrast->background;
+    double x0 = line->x_px + x * line->step_x, y0 = line->y_px + x * line->step_y;
+    double x1 = x0 + (RUN - 1) * line->step_x, y1 = y0 + (RUN - 1) * line->step_y;
+    return x + RUN <= contrast->width && x0 >= 0 && x1 < b->width - 3 && fmin(y0, y1) >= 0 &&
+           fmax(y0, y1) < b->height - 2 && (int)x1 - (int)x0 == 2 * (RUN - 1) && (int)y0 == (int)y1;
+}
+
+static const float *per_sd_at(const RfContrast *contrast, double at_x, double at_y, int cells)
+{
+    int x = CLAMP((int)(0.5 * at_x), 0, contrast->width - cells),
+        y = CLAMP((int)(0.5 * at_y), 0, contrast->height - 1);
+    return contrast->box_per_sd + (size_t)y * (size_t)contrast->width + (size_t)x;
+}
+
 static void weigh_posed_row(const RfContrast *contrast, const RfExposureView *view, int y, float pixels,
                             float gain, float scale, float *row)
 {
-    const RfBackground *b = contrast->background;
-    float black = (float)b->noise.black_level;
-    double line =
-        2 * y + (view->line_step == 2 ? view->first_line - 0.5 : 0); /* upper left pixel of the box */
-    double x0, y0, x1, y1;
-    rf_exposure_view_reference(view, 0, line, &x0, &y0);
-    rf_exposure_view_reference(view, 2, line, &x1, &y1);
-    for (int x = 0; x < contrast->width; x++) {
-        float at_x = (float)(x0 + x * (x1 - x0)), at_y = (float)(y0 + x * (y1 - y0));
-        bool is_outside =
-            at_x < 0 || at_y < 0 || at_x > (float)(b->width - 2) || at_y > (float)(b->height - 2);
-        if (is_outside || contrast->is_bad[(size_t)y * (size_t)contrast->width + (size_t)x]) {
-            row[x] = 0;
-            continue;
+    float black = (float)contrast->background->noise.black_level;
+    const uint8_t *is_bad = contrast->is_bad + (size_t)y * (size_t)contrast->width;
+    Line line = reference_line(view, y);
+    for (int x = 0; x < contrast->width;) {
+        float light[RUN];
+        double at_x = line.x_px + x * line.step_x, at_y = line.y_px + x * line.step_y;
+        if (is_one_run(contrast, &line, x)) {
+            light_of_run(contrast, &line, x, black, light);
+            weigh_row(light, per_sd_at(contrast, at_x, at_y, RUN), RUN, pixels, black, gain, scale, row + x);
+            x += RUN;
+        } else {
+            if (light_of_one(contrast, at_x, at_y, black, light))
+                weigh_row(light, per_sd_at(contrast, at_x, at_y, 1), 1, pixels, black, gain, scale, row + x);
+            else
+                row[x] = 0;
+            x++;
         }
-        float light = rf_interpolate_linear(contrast->box, b->width, b->height, at_x, at_y);
-        float per_sd = contrast->box_per_sd[(size_t)(at_y + 0.5f) * (size_t)b->width + (size_t)(at_x + 0.5f)];
-        row[x] = (row[x] - pixels * (gain * light + black)) * per_sd * scale;
     }
+    for (int x = 0; x < contrast->width; x++)
+        if (is_bad[x]) row[x] = 0;
 }
 
 void rf_contrast_fill(const RfContrast *contrast, const RfExposureView *view, double sign, float *picture)

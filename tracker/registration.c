@@ -1,7 +1,7 @@
 #include "tracker/registration.h"
 
 #include "tracker/interpolate.h"
-#include "tracker/luma.h"
+#include "tracker/luma_reduce.h"
 
 #include <math.h>
 #include <string.h>
@@ -12,10 +12,13 @@ enum {
     LEAST_POINTS = 60, /* fewer: nothing to hold on to */
     UNKNOWNS = 5,      /* shift x, shift y, angle, gain, offset */
     STEPS = 12,        /* Gauss-Newton steps per level, at most */
-    COARSE_STEP = 5,   /* every fifth steep pixel will do for the coarse search */
-    REACH_CELLS = 10,  /* coarse search: this many pixels of the smallest picture either way */
+    COARSE_STEP = 10,  /* every tenth steep pixel will do for the coarse search, */
+    ROUGH_STEP = 4,    /* every fourth for all steps but the last two */
+    LAST_STEPS = 2,
+    REACH_CELLS = 10, /* coarse search: this many pixels of the smallest picture either way */
 };
-static const double TRUSTED_PX = 0.2; /* less certain, and lines that run one way only have let it slide along them */
+static const double TRUSTED_PX =
+    0.2; /* less certain, and lines that run one way only have let it slide along them */
 static const int REDUCTION[LEVELS] = {8, 4, 1};
 
 /* One steep pixel of a reduced reference picture; places from the picture's middle, in full-size stored pixels. */
@@ -23,6 +26,7 @@ typedef struct {
     float x_px, y_px;
     float level;
     float slope_x, slope_y; /* grey levels per full-size stored pixel */
+    int column, row;        /* of the reduced picture */
 } SteepPixel;
 
 typedef struct {
@@ -36,11 +40,11 @@ struct RfRegistration {
     double pixel_aspect;
     double noise_sd;
     Level levels[LEVELS];
+    RfBlur blur;
 };
 
 struct RfRegistrationScratch {
-    float *full;
-    float *picture[LEVELS];
+    float *picture[LEVELS - 1]; /* the frame reduced; at full size it is looked at where it lies */
 };
 
 /* Mean of reduction x reduction pixels; what doesn't fill a cell at the right and bottom is left out. */
@@ -86,8 +90,7 @@ static void soften(float *image, int width, int height)
     }
 }
 
-/* Value at (x, y) after a Gaussian blur of 1 px: no interpolation can tell a shift to a hundredth of a pixel from thin
- * lines that the pixels undersample, but of the blurred picture it is exact to 1e-4. */
+/* As rf_blur_sample, of the reference picture. */
 static bool sample_blurred(const float *image, int width, int height, float x, float y, float *value)
 {
     enum { REACH = 3, TAPS = 2 * REACH + 1 };
@@ -107,13 +110,6 @@ static bool sample_blurred(const float *image, int width, int height, float x, f
     }
     *value = sum / (total_across * total_down);
     return true;
-}
-
-/* The reduced pictures are smooth enough as they are. */
-static bool sample(const Level *level, int reduction, const float *picture, float x, float y, float *value)
-{
-    return reduction == 1 ? sample_blurred(picture, level->width, level->height, x, y, value)
-                          : rf_interpolate_cubic(picture, level->width, level->height, x, y, value);
 }
 
 typedef struct {
@@ -157,6 +153,8 @@ static SteepPixel steep_pixel(const Level *level, const float *image, int reduct
         .level = p[0],
         .slope_x = 0.5f * (p[1] - p[-1]) / (float)reduction,
         .slope_y = 0.5f * (p[w] - p[-w]) / (float)reduction,
+        .column = s.x,
+        .row = s.y,
     };
 }
 
@@ -207,6 +205,7 @@ RfRegistration *rf_registration_new(const float *image, int width, int height, d
     registration->height = height;
     registration->pixel_aspect = pixel_aspect;
     registration->noise_sd = noise_sd;
+    rf_blur_prepare(&registration->blur);
     for (int i = 0; i < LEVELS; i++) {
         Level *level = &registration->levels[i];
         level->width = width / REDUCTION[i];
@@ -231,8 +230,7 @@ void rf_registration_free(RfRegistration *registration)
 RfRegistrationScratch *rf_registration_scratch_new(const RfRegistration *registration)
 {
     RfRegistrationScratch *scratch = g_new0(RfRegistrationScratch, 1);
-    scratch->full = g_new(float, (size_t)registration->width *(size_t)registration->height);
-    for (int i = 0; i < LEVELS; i++)
+    for (int i = 0; i < LEVELS - 1; i++)
         scratch->picture[i] =
             g_new0(float, (size_t)registration->levels[i].width *(size_t)registration->levels[i].height + 1);
     return scratch;
@@ -241,42 +239,35 @@ RfRegistrationScratch *rf_registration_scratch_new(const RfRegistration *registr
 void rf_registration_scratch_free(RfRegistrationScratch *scratch)
 {
     if (!scratch) return;
-    for (int i = 0; i < LEVELS; i++) g_free(scratch->picture[i]);
-    g_free(scratch->full);
+    for (int i = 0; i < LEVELS - 1; i++) g_free(scratch->picture[i]);
     g_free(scratch);
 }
 
 static void fill_pictures(const RfRegistration *registration, RfRegistrationScratch *scratch,
                           const RfFrame *frame)
 {
-    float *full = scratch->full;
-    for (int y = 0; y < frame->height; y++)
-        rf_luma_copy_row(frame, y, full + (size_t)y * (size_t)frame->width);
     for (int i = 0; i < LEVELS - 1; i++) {
         const Level *level = &registration->levels[i];
         if (!level->n) continue;
-        reduce(full, frame->width, REDUCTION[i], level->width, level->height, scratch->picture[i]);
+        rf_luma_reduce(frame, REDUCTION[i], scratch->picture[i]);
         soften(scratch->picture[i], level->width, level->height);
     }
 }
 
 /* Correlation of the smallest pictures' steep pixels at a shift of whole pixels, or -1 where too few overlap. */
-static double correlation_at(const Level *level, const float *picture, int full_width, int full_height,
-                             int dx, int dy)
+static double correlation_at(const Level *level, const float *picture, int dx, int dy)
 {
-    double n = 0, s_a = 0, s_b = 0, s_aa = 0, s_bb = 0, s_ab = 0;
-    float half = 0.5f * (float)(REDUCTION[0] - 1);
+    float n = 0, s_a = 0, s_b = 0, s_aa = 0, s_bb = 0, s_ab = 0;
     for (unsigned i = 0; i < level->n; i += COARSE_STEP) {
         const SteepPixel *p = &level->points[i];
-        int x = (int)lrintf((p->x_px + 0.5f * (float)(full_width - 1) - half) / (float)REDUCTION[0]) + dx;
-        int y = (int)lrintf((p->y_px + 0.5f * (float)(full_height - 1) - half) / (float)REDUCTION[0]) + dy;
+        int x = p->column + dx, y = p->row + dy;
         if (x < 0 || y < 0 || x >= level->width || y >= level->height) continue;
-        double a = (double)p->level, b = (double)picture[(size_t)y * (size_t)level->width + (size_t)x];
+        float a = p->level, b = picture[y * level->width + x];
         n += 1, s_a += a, s_b += b, s_aa += a * a, s_bb += b * b, s_ab += a * b;
     }
-    if (n * COARSE_STEP < 0.5 * level->n || n < 8) return -1;
-    double var_a = s_aa - s_a * s_a / n, var_b = s_bb - s_b * s_b / n;
-    return var_a > 0 && var_b > 0 ? (s_ab - s_a * s_b / n) / sqrt(var_a * var_b) : -1;
+    if (n * COARSE_STEP < 0.5f * (float)level->n || n < 8) return -1;
+    float var_a = s_aa - s_a * s_a / n, var_b = s_bb - s_b * s_b / n;
+    return var_a > 0 && var_b > 0 ? (double)((s_ab - s_a * s_b / n) / sqrtf(var_a * var_b)) : -1;
 }
 
 /* A reticle looks nearly the same one spacing on: of shifts that fit about as well, the smallest is taken. */
@@ -287,9 +278,7 @@ static void search_coarsely(const RfRegistration *registration, const RfRegistra
     double best = -2;
     for (int dy = -REACH_CELLS; level->n && dy <= REACH_CELLS; dy++)
         for (int dx = -REACH_CELLS; dx <= REACH_CELLS; dx++) {
-            double score = correlation_at(level, scratch->picture[0], registration->width,
-                                          registration->height, dx, dy) -
-                           0.04 * hypot(dx, dy);
+            double score = correlation_at(level, scratch->picture[0], dx, dy) - 0.04 * hypot(dx, dy);
             if (score > best) {
                 best = score;
                 pose->shift_x_px = dx * REDUCTION[0];
@@ -355,23 +344,41 @@ typedef struct {
     double scale; /* of the residuals, grey levels */
 } Guess;
 
-/* Linearised at the guess: frame(place) - gain * level - offset = -(slope . d place) * gain + ... */
-static void gather(const RfRegistration *registration, const Level *level, int reduction,
-                   const float *picture, const Guess *guess, Normal *normal)
+/* One level's search: which points of which picture. */
+typedef struct {
+    const RfRegistration *registration;
+    const Level *level;
+    int reduction;
+    const float *picture; /* reduced; NULL at full size */
+    const RfFrame *frame;
+    unsigned step; /* every so many-th point */
+} View;
+
+/* The reduced pictures are smooth enough as they are. */
+static bool sample(const View *view, double x, double y, float *value)
 {
+    if (!view->picture)
+        return rf_blur_sample(&view->registration->blur, view->frame, (float)x, (float)y, value);
+    float half = 0.5f * (float)(view->reduction - 1), per_cell = 1 / (float)view->reduction;
+    return rf_interpolate_cubic(view->picture, view->level->width, view->level->height,
+                                ((float)x - half) * per_cell, ((float)y - half) * per_cell, value);
+}
+
+/* Linearised at the guess: frame(place) - gain * level - offset = -(slope . d place) * gain + ... */
+static void gather(const View *view, const Guess *guess, Normal *normal)
+{
+    const RfRegistration *registration = view->registration;
+    const Level *level = view->level;
     double aspect = registration->pixel_aspect, c = cos(guess->pose.angle_rad),
            s = sin(guess->pose.angle_rad);
-    float half = 0.5f * (float)(reduction - 1);
     memset(normal, 0, sizeof *normal);
-    for (unsigned i = 0; i < level->n; i++) {
+    for (unsigned i = 0; i < level->n; i += view->step) {
         const SteepPixel *p = &level->points[i];
         double right = (double)p->x_px * aspect, down = (double)p->y_px;
         double x = (c * right - s * down) / aspect + guess->pose.shift_x_px + 0.5 * (registration->width - 1);
         double y = s * right + c * down + guess->pose.shift_y_px + 0.5 * (registration->height - 1);
         float seen;
-        if (!sample(level, reduction, picture, ((float)x - half) / (float)reduction,
-                    ((float)y - half) / (float)reduction, &seen))
-            continue;
+        if (!sample(view, x, y, &seen)) continue;
         double residual = (double)seen - guess->gain * (double)p->level - guess->offset;
         double slope_x = (double)p->slope_x * guess->gain, slope_y = (double)p->slope_y * guess->gain;
         double row[UNKNOWNS] = {-slope_x, -slope_y, slope_x * down / aspect - slope_y * right,
@@ -383,39 +390,58 @@ static void gather(const RfRegistration *registration, const Level *level, int r
     }
 }
 
-static double residual_scale(const RfRegistration *registration, const Level *level, int reduction,
-                             const float *picture, Guess *guess)
+static double residual_scale(const View *view, const Guess *guess)
 {
     Guess open = *guess;
     open.scale = 1e6; /* no robust weight: all points count */
     Normal normal;
-    gather(registration, level, reduction, picture, &open, &normal);
+    gather(view, &open, &normal);
     return normal.n ? sqrt(normal.weighted_square / normal.weight) : 0;
 }
 
-/* Gauss-Newton at one level. The robust scale starts at the plain rms and only shrinks. */
-static bool refine(const RfRegistration *registration, const RfRegistrationScratch *scratch, int which,
-                   Guess *guess, double *u_px)
+typedef enum { LOST, MOVED, SETTLED } Step;
+
+/* One step of Gauss-Newton. The robust scale only shrinks. */
+static Step step_on(const View *view, Guess *guess, double *u_px)
 {
-    const Level *level = &registration->levels[which];
-    const float *picture = REDUCTION[which] == 1 ? scratch->full : scratch->picture[which];
-    double floor = registration->noise_sd / REDUCTION[which];
-    guess->scale = MAX(floor, residual_scale(registration, level, REDUCTION[which], picture, guess));
-    for (int step = 0; step < STEPS; step++) {
-        Normal normal;
-        double d[UNKNOWNS] = {0}, variance[2] = {0};
-        gather(registration, level, REDUCTION[which], picture, guess, &normal);
-        if (normal.n < LEAST_POINTS || normal.n < level->n / 4 || !solve(&normal, d, variance)) return false;
-        guess->pose.shift_x_px += d[0];
-        guess->pose.shift_y_px += d[1];
-        guess->pose.angle_rad += d[2];
-        guess->gain += d[3];
-        guess->offset += d[4];
-        guess->scale = CLAMP(1.3 * sqrt(normal.weighted_square / normal.weight), floor, guess->scale);
-        *u_px = sqrt(MAX(variance[0], variance[1])) * guess->scale;
-        if (fabs(d[0]) + fabs(d[1]) < 2e-4 && fabs(d[2]) * registration->width < 4e-4) return true;
+    Normal normal;
+    double d[UNKNOWNS] = {0}, variance[2] = {0};
+    gather(view, guess, &normal);
+    if (normal.n * view->step < LEAST_POINTS || normal.n * view->step < view->level->n / 4 ||
+        !solve(&normal, d, variance))
+        return LOST;
+    guess->pose.shift_x_px += d[0];
+    guess->pose.shift_y_px += d[1];
+    guess->pose.angle_rad += d[2];
+    guess->gain += d[3];
+    guess->offset += d[4];
+    double floor = view->registration->noise_sd / view->reduction;
+    guess->scale = CLAMP(1.3 * sqrt(normal.weighted_square / normal.weight), floor, guess->scale);
+    *u_px = sqrt(MAX(variance[0], variance[1])) * guess->scale;
+    bool is_small = fabs(d[0]) + fabs(d[1]) < 1e-3 && fabs(d[2]) * view->registration->width < 2e-3;
+    return is_small ? SETTLED : MOVED;
+}
+
+/* At one level: a few of the points find the place, at full size all of them then refine it. */
+static bool refine(const RfRegistration *registration, const RfRegistrationScratch *scratch,
+                   const RfFrame *frame, int which, Guess *guess, double *u_px)
+{
+    bool is_full = which == LEVELS - 1;
+    View view = {registration,
+                 &registration->levels[which],
+                 REDUCTION[which],
+                 is_full ? NULL : scratch->picture[which],
+                 frame,
+                 1};
+    if (view.level->n > ROUGH_STEP * 300) view.step = ROUGH_STEP;
+    guess->scale = MAX(registration->noise_sd / view.reduction, residual_scale(&view, guess));
+    Step last = MOVED;
+    for (int step = 0; step < STEPS && last == MOVED; step++) last = step_on(&view, guess, u_px);
+    if (last != LOST && is_full && view.step > 1) {
+        view.step = 1;
+        for (int step = 0; step < LAST_STEPS && last != LOST; step++) last = step_on(&view, guess, u_px);
     }
-    return *u_px < TRUSTED_PX;
+    return last == SETTLED || (last == MOVED && *u_px < TRUSTED_PX);
 }
 
 bool rf_registration_find(const RfRegistration *registration, RfRegistrationScratch *scratch,
@@ -430,7 +456,7 @@ bool rf_registration_find(const RfRegistration *registration, RfRegistrationScra
     for (int i = 0; i < LEVELS; i++) {
         Guess tried = guess;
         bool is_found =
-            registration->levels[i].n >= LEAST_POINTS && refine(registration, scratch, i, &tried, &u);
+            registration->levels[i].n >= LEAST_POINTS && refine(registration, scratch, frame, i, &tried, &u);
         if (is_found)
             guess = tried;
         else if (i == LEVELS - 1)

@@ -307,8 +307,10 @@ static void harvest_spots(const Lesson *lesson, const RfExposureView *view, void
 
 static void use_shape(RfSpotFinder *finder, double focus_width_px, double expected_width_px)
 {
-    rf_spot_shape_free(finder->shape);
-    finder->shape = rf_spot_shape_new(focus_width_px);
+    RfSpotShape *before = finder->shape;
+    finder->shape =
+        before ? rf_spot_shape_resized(before, focus_width_px) : rf_spot_shape_new(focus_width_px);
+    rf_spot_shape_free(before);
     finder->fitting.localiser.shape = finder->shape;
     finder->fitting.localiser.expected_width_px = expected_width_px;
 }

@@ -13,6 +13,8 @@ enum {
 /* Between rows the table is linear in w^2, in which a barely blurred spot is linear too: no kink where discs begin. */
 static const double ROW_STEP = 0.014;
 
+static const double FAR = 6.5; /* exp(-FAR^2 / 2) is below what a float tells from nothing */
+
 struct RfSpotShape {
     double focus_width_px;
     float table[ROWS][ENTRIES + 1][NUMBERS];
@@ -31,6 +33,7 @@ static void smoothed_disc(double u, double t, double *value, double *slope_over_
     double sum = 0, slope = 0, h = t / SLICES;
     for (int i = 1; i <= SLICES; i++) { /* the integrand vanishes at 0 */
         double rho = i * h, weight = i == SLICES ? 1 : i % 2 ? 4 : 2;
+        if (fabs(u - rho) > FAR) continue;
         double bell = weight * rho * exp(-(u - rho) * (u - rho) / 2);
         double i0 = gsl_sf_bessel_I0_scaled(u * rho);
         double i1_over_u = u > 1e-3 ? gsl_sf_bessel_I1_scaled(u * rho) / u : rho / 2;
@@ -57,6 +60,15 @@ RfSpotShape *rf_spot_shape_new(double focus_width_px)
         }
     }
     return shape;
+}
+
+RfSpotShape *rf_spot_shape_resized(const RfSpotShape *shape, double focus_width_px)
+{
+    g_assert(focus_width_px > 0);
+    RfSpotShape *resized = g_new(RfSpotShape, 1);
+    *resized = *shape;
+    resized->focus_width_px = focus_width_px;
+    return resized;
 }
 
 void rf_spot_shape_free(RfSpotShape *shape)
