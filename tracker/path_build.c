@@ -14,6 +14,7 @@ static const double least_extent_u = 8;
  * something that stands and now and then jumps (the rim of a speck, frozen noise) unless it gets far. */
 static const double frozen_step = 0.15, frozen_extent_factor = 5;
 
+static const double least_share = 0.6;     /* of the exposures that a suspect must be seen in */
 static const double missed_log_odds = 1.2; /* -log of the chance that a droplet is missed, generously */
 
 static const RfHit *hit(const RfChain *chain, unsigned i)
@@ -21,11 +22,23 @@ static const RfHit *hit(const RfChain *chain, unsigned i)
     return &g_array_index(chain->hits, RfHit, i);
 }
 
-/* log odds of a droplet against a chain of chance spots. */
-static double weigh(const RfLinkScene *scene, const RfChain *chain, double unclaimed_px2)
+static unsigned usable_exposures(const RfLinkScene *scene, const RfChain *chain)
 {
     unsigned usable = 0;
     for (unsigned e = rf_chain_first(chain); e <= rf_chain_last(chain); e++) usable += scene->is_usable[e];
+    return usable;
+}
+
+/* What strong compression leaves behind a droplet may move like one for a few exposures, but is rarely seen in most. */
+static bool is_sparse(const RfLinkScene *scene, const RfChain *chain)
+{
+    return chain->hits->len < suspect_hits && chain->hits->len < least_share * usable_exposures(scene, chain);
+}
+
+/* log odds of a droplet against a chain of chance spots. */
+static double weigh(const RfLinkScene *scene, const RfChain *chain, double unclaimed_px2)
+{
+    unsigned usable = usable_exposures(scene, chain);
     return rf_chain_log_likelihood(scene, chain, chain->spread_px2_s) -
            (chain->hits->len - 1) * log(unclaimed_px2) - (usable - chain->hits->len) * missed_log_odds;
 }
@@ -193,7 +206,8 @@ static void judge(RfLinkScene *scene, const RfChain *chain, double unclaimed_px2
 {
     /* any spot may begin a chance chain: their number is taken off as so many tries */
     double evidence = weigh(scene, chain, unclaimed_px2) - log(fmax(1, scene->sightings->spots->len));
-    if (chain->hits->len < scene->options.least_seen || evidence < scene->options.least_evidence) {
+    if (chain->hits->len < scene->options.least_seen || evidence < scene->options.least_evidence ||
+        is_sparse(scene, chain)) {
         paths->set_aside_short++;
         return;
     }
