@@ -13,7 +13,7 @@ for room in tracker calib physics; do
 $found"
 done
 
-libav=$(grep -lE '#include <lib(av|sw)[a-z]+/' -r tracker calib physics cli | sort)
+libav=$(grep -lE '#include [<"]lib(av|sw|postproc)[a-z]*/' -r tracker calib physics cli | sort)
 [ "$libav" = "tracker/libav.c" ] || complain "libav belongs in tracker/libav.c alone; found in: $libav"
 
 opencv=$(grep -lE '#include <opencv' -r tracker calib physics cli | sort)
