@@ -122,7 +122,8 @@ static void test_specks(void)
     g_assert_cmpuint(paths->set_aside_still, ==, 3);
 }
 
-static RfSightings *standing_spot(const double (*at_px)[2], const int *visits, int exposures, double u_px)
+static RfSightings *standing_spot(const double (*at_px)[2], const int *visits, int exposures, double u_px,
+                                  double snr)
 {
     RfSightings *sightings = rf_sightings_new(640, 480, 1);
     for (int e = 0; e < exposures; e++) {
@@ -133,7 +134,7 @@ static RfSightings *standing_spot(const double (*at_px)[2], const int *visits, i
                            .u_x_px = (float)u_px,
                            .u_y_px = (float)u_px,
                            .peak = 5,
-                           .snr = 1,
+                           .snr = (float)snr,
                            .width_px = 1.8f};
             g_array_append_val(sightings->spots, spot);
             exposure.spots = 1;
@@ -154,8 +155,8 @@ static void test_frozen_noise(void)
                                 6, 6, 7,  7, 7, 7, 7, 8, 8, 8, 8, 8, 8, 8, 8, 8, 8};
     static const double rim[][2] = {{52.383, 474.063}, {48.934, 473.961}, {47.754, 473.863}};
     static const int jumps[] = {0, 0, -1, 0, -1, 0, 0, -1, 1, -1, 1, 2, 1, 1, -1, 1, 2};
-    g_autoptr(RfSightings) frozen = standing_spot(noise, stays, G_N_ELEMENTS(stays), 0.65);
-    g_autoptr(RfSightings) specks = standing_spot(rim, jumps, G_N_ELEMENTS(jumps), 0.15);
+    g_autoptr(RfSightings) frozen = standing_spot(noise, stays, G_N_ELEMENTS(stays), 0.65, 1.2);
+    g_autoptr(RfSightings) specks = standing_spot(rim, jumps, G_N_ELEMENTS(jumps), 0.15, 14);
     g_autoptr(RfPaths) of_noise = rf_linker_run(frozen, NULL, NULL, NULL);
     g_autoptr(RfPaths) of_specks = rf_linker_run(specks, NULL, NULL, NULL);
     g_assert_cmpuint(of_noise->paths->len, ==, 0);
@@ -168,9 +169,23 @@ static void test_sparse_residue(void)
     static const double residue[][2] = {{506.876, 407.025}, {508.135, 407.635}, {511.342, 418.576},
                                         {512.416, 416.926}, {513.085, 417.491}, {513.003, 418.000}};
     static const int seen[] = {0, 1, -1, -1, -1, -1, -1, -1, -1, -1, -1, 2, 3, 4, 5};
-    g_autoptr(RfSightings) sightings = standing_spot(residue, seen, G_N_ELEMENTS(seen), 0.12);
+    g_autoptr(RfSightings) sightings = standing_spot(residue, seen, G_N_ELEMENTS(seen), 0.12, 9);
     g_autoptr(RfPaths) paths = rf_linker_run(sightings, NULL, NULL, NULL);
     g_assert_cmpuint(paths->paths->len, ==, 0);
+}
+
+/* What is left of a speck where the camera moves, signal below 3 times the noise; twice as bright it might be a droplet. */
+static void test_faint_remainder(void)
+{
+    static const double remainder[][2] = {{473.824, 56.540}, {473.021, 56.742}, {472.665, 56.731},
+                                          {473.156, 52.997}, {473.007, 52.965}, {471.985, 55.656}};
+    static const int seen[] = {0, -1, 1, 2, -1, 3, 4, -1, 5};
+    for (int is_bright = 0; is_bright < 2; is_bright++) {
+        g_autoptr(RfSightings) sightings =
+            standing_spot(remainder, seen, G_N_ELEMENTS(seen), 0.23, is_bright ? 5.2 : 2.6);
+        g_autoptr(RfPaths) paths = rf_linker_run(sightings, NULL, NULL, NULL);
+        g_assert_cmpuint(paths->paths->len, ==, is_bright);
+    }
 }
 
 static void test_quiet(void)
@@ -564,6 +579,7 @@ int main(int argc, char **argv)
     g_test_add_func("/linker/run/specks", test_specks);
     g_test_add_func("/linker/run/frozen-noise", test_frozen_noise);
     g_test_add_func("/linker/run/sparse-residue", test_sparse_residue);
+    g_test_add_func("/linker/run/faint-remainder", test_faint_remainder);
     g_test_add_func("/linker/run/quiet", test_quiet);
     g_test_add_func("/linker/run/reversal", test_reversal);
     g_test_add_func("/linker/run/crossing", test_crossing);

@@ -15,11 +15,27 @@ static const double least_extent_u = 8;
 static const double frozen_step = 0.15, frozen_extent_factor = 5;
 
 static const double least_share = 0.6;     /* of the exposures that a suspect must be seen in */
+static const double faint_snr = 3;         /* of the spot's peak; a suspect must be brighter */
 static const double missed_log_odds = 1.2; /* -log of the chance that a droplet is missed, generously */
 
 static const RfHit *hit(const RfChain *chain, unsigned i)
 {
     return &g_array_index(chain->hits, RfHit, i);
+}
+
+static int compare_floats(const void *a, const void *b)
+{
+    float x = *(const float *)a, y = *(const float *)b;
+    return (x > y) - (x < y);
+}
+
+static double median_snr(const RfLinkScene *scene, const RfChain *chain)
+{
+    unsigned n = chain->hits->len;
+    g_autofree float *snr = g_new(float, n);
+    for (unsigned i = 0; i < n; i++) snr[i] = rf_link_scene_spot(scene, hit(chain, i)->spot)->snr;
+    qsort(snr, n, sizeof *snr, compare_floats);
+    return (double)snr[n / 2];
 }
 
 static unsigned usable_exposures(const RfLinkScene *scene, const RfChain *chain)
@@ -29,10 +45,13 @@ static unsigned usable_exposures(const RfLinkScene *scene, const RfChain *chain)
     return usable;
 }
 
-/* What strong compression leaves behind a droplet may move like one for a few exposures, but is rarely seen in most. */
-static bool is_sparse(const RfLinkScene *scene, const RfChain *chain)
+/* What strong compression leaves behind a droplet may move like one for a few exposures, but is rarely seen in most; what
+ * a moving camera leaves of a speck is hardly brighter than the noise. */
+static bool is_suspicious(const RfLinkScene *scene, const RfChain *chain)
 {
-    return chain->hits->len < suspect_hits && chain->hits->len < least_share * usable_exposures(scene, chain);
+    return chain->hits->len < suspect_hits &&
+           (chain->hits->len < least_share * usable_exposures(scene, chain) ||
+            median_snr(scene, chain) < faint_snr);
 }
 
 /* log odds of a droplet against a chain of chance spots. */
@@ -52,12 +71,6 @@ static double extent_px(const RfSight *smooth, size_t n)
             high[k] = fmax(high[k], smooth[i].at_px[k]);
         }
     return hypot(high[0] - low[0], high[1] - low[1]);
-}
-
-static int compare_floats(const void *a, const void *b)
-{
-    float x = *(const float *)a, y = *(const float *)b;
-    return (x > y) - (x < y);
 }
 
 static double median_u_px(const RfLinkScene *scene, const RfChain *chain)
@@ -132,15 +145,6 @@ static double chance_px2(const RfLinkScene *scene, const GPtrArray *chains)
     return rf_fill_unclaimed_px2(scene) + suspects / (exposures * scene->area_px2);
 }
 
-static double median_snr(const RfLinkScene *scene, const RfChain *chain)
-{
-    unsigned n = chain->hits->len;
-    g_autofree float *snr = g_new(float, n);
-    for (unsigned i = 0; i < n; i++) snr[i] = rf_link_scene_spot(scene, hit(chain, i)->spot)->snr;
-    qsort(snr, n, sizeof *snr, compare_floats);
-    return (double)snr[n / 2];
-}
-
 /* Whether a droplet at this end of its path, going on for a few exposures, would be at the picture's border. */
 static bool is_at_edge(const RfLinkScene *scene, const RfChain *chain, bool is_last)
 {
@@ -207,7 +211,7 @@ static void judge(RfLinkScene *scene, const RfChain *chain, double unclaimed_px2
     /* any spot may begin a chance chain: their number is taken off as so many tries */
     double evidence = weigh(scene, chain, unclaimed_px2) - log(fmax(1, scene->sightings->spots->len));
     if (chain->hits->len < scene->options.least_seen || evidence < scene->options.least_evidence ||
-        is_sparse(scene, chain)) {
+        is_suspicious(scene, chain)) {
         paths->set_aside_short++;
         return;
     }
