@@ -26,6 +26,8 @@ static char *why_set_aside(const RfDropletFit *fit, const RfSpellFit *spell, con
                            double u_charge_coulomb)
 {
     double charge_coulomb = fabs(spell->charge_coulomb.value);
+    if (!spell->has_charge && timeline->switches->len == 0 && !timeline->has_log)
+        return g_strdup("no field was seen to act: it was off, or nothing in view was charged: radius only");
     if (!spell->has_charge)
         return g_strdup("no field was on while it was watched: radius only");
     if (rf_field_timeline_is_doubtful(timeline, fit->spell[0].start_s, fit->spell[fit->spells - 1].end_s))
@@ -336,7 +338,8 @@ void rf_assess_run(RfResults *results)
         results->verdict = g_strdup("Nothing could be measured: no droplet was seen.");
     else if (!has_charged_row(results))
         results->verdict = g_strdup_printf(
-            "No charge could be measured: the field was never on while %u droplet%s fell; radii only.",
+            "No charge could be measured: no field was seen to act on the %u droplet%s in view. It was off, or none was "
+            "charged: a voltage log would tell. Radii only.",
             tally.droplets, tally.droplets == 1 ? "" : "s");
     else if (!results->measured)
         results->verdict = g_strdup_printf("Nothing could be measured: all %u droplets were set aside.", tally.droplets);

@@ -193,6 +193,12 @@ static void warn_of_log(RfResults *results, const RfLogFinding *finding)
     case RF_LOG_UNSEEN:
         warn(results, "the voltage log's switch at %.2f s was seen by no charged droplet", finding->time_s);
         break;
+    case RF_LOG_UNTIED:
+        warn(results,
+             "no droplet moved with the field that the voltage log reports: they carry no charge, or the log is another "
+             "recording's; its clock is taken to be %.1f s ahead of the recording's",
+             finding->difference.value);
+        break;
     case RF_LOG_LATE:
         warn(results, "the voltage log's switch at %.2f s is %.3f s off what the droplets show (u = %.3f s)",
              finding->time_s, finding->difference.value, finding->difference.sigma);

@@ -174,13 +174,28 @@ static void merge_intervals(RfFieldTimeline *timeline)
     }
 }
 
+/* No droplet moved with the field, so nothing ties the clocks: they are taken as one where log and recording begin within
+ * a second of each other, else as having their middles in common. Charges of nought don't mind. */
+static void take_clocks_as_one(const GArray *spans, const RfFieldRuns *runs, RfFieldTimeline *timeline,
+                               RfLogClock *clock)
+{
+    double first_s = runs->edge_s[0], last_s = runs->edge_s[runs->runs];
+    double log_first_s = span_at(spans, 0)->start_s, log_last_s = span_at(spans, spans->len - 1)->end_s;
+    double offset_s =
+        fabs(log_first_s - first_s) > 1 ? 0.5 * (log_first_s + log_last_s - first_s - last_s) : 0;
+    clock->offset_s = (RfValue){offset_s, (last_s - first_s) / sqrt(12)};
+    add_finding(timeline, RF_LOG_UNTIED, first_s, clock->offset_s);
+}
+
 bool rf_field_log_apply(const GArray *spans, const RfFieldSheet *sheet, const RfFieldRuns *runs,
                         const RfStateDroplet *droplets, RfFieldTimeline *timeline, GError **error)
 {
     g_autoptr(GArray) pairs = g_array_new(FALSE, TRUE, sizeof(RfLogPair));
     RfLogClock clock = {0};
     timeline->has_log = true;
-    if (spans->len > 1) {
+    if (spans->len > 1 && timeline->switches->len == 0) {
+        take_clocks_as_one(spans, runs, timeline, &clock);
+    } else if (spans->len > 1) {
         if (!rf_log_clock_match(spans, timeline->switches, sheet->log_clock_reach_s, pairs)) {
             g_set_error(
                 error, RF_PHYSICS_ERROR, RF_PHYSICS_ERROR_SHAPE,

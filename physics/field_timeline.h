@@ -38,14 +38,16 @@ typedef enum {
     RF_LOG_MISSING,       /* tracks show a switch that the log doesn't */
     RF_LOG_EXTRA,         /* the log has a switch that tracks contradict */
     RF_LOG_UNSEEN,        /* the log has a switch while nothing charged was in view */
+    RF_LOG_UNTIED,        /* no droplet moved with the field: the log's clock is taken as the recording's */
     RF_LOG_LATE,          /* both have it, apart by more than chance (4 sigma) */
     RF_LOG_VOLTAGE_MISFIT /* the voltage of an interval doesn't fit the motion (4 sigma) */
 } RfLogFindingKind;
 
 typedef struct {
     RfLogFindingKind kind;
-    double time_s;      /* on the recording's clock */
-    RfValue difference; /* late: log less tracks, s; misfit: voltage by motion less log, V; else 0 */
+    double time_s; /* on the recording's clock */
+    RfValue
+        difference; /* late: log less tracks, s; untied: offset taken, s; misfit: voltage by motion less log, V; else 0 */
 } RfLogFinding;
 
 /* A stretch whose state the motion can't settle. */

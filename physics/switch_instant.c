@@ -165,8 +165,9 @@ static double home_in(RfFieldTimeline *timeline, unsigned number, const RfSwitch
 static void set_switch(RfFieldTimeline *timeline, unsigned number, RfValue time_s, unsigned droplets)
 {
     RfFieldSwitch *s = &g_array_index(timeline->switches, RfFieldSwitch, number);
-    s->time_s = time_s;
     s->droplets = droplets;
+    if (droplets == 0 && s->has_log_time) return; /* the log knows better than nobody */
+    s->time_s = time_s;
     if (droplets > 0) move_switch(timeline, number, time_s.value);
 }
 

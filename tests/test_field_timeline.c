@@ -373,12 +373,30 @@ static void test_log_audited(void)
 
 static void test_log_of_another_recording_refused(void)
 {
-    Cell cell = cell_new(NULL, 0, 20, 6);
-    g_autoptr(RfFieldTimeline) other = walk_timeline_new(SWITCHES_S, 4, RF_FIELD_TOP_PLUS, 400, 32);
+    Cell cell = cell_new(SWITCHES_S, 1, 20, 6);
+    g_autoptr(RfFieldTimeline) other = walk_timeline_new(SWITCHES_S, 4, RF_FIELD_TOP_MINUS, -400, 32);
     g_autoptr(GArray) log = log_new(other, 0, 0, 32, cell.random);
     g_autoptr(GError) error = NULL;
     g_assert_null(find_with_log(&cell, log, &error));
     g_assert_nonnull(error);
+    cell_clear(&cell);
+}
+
+/* Only the log knows that there was a field: its switches are taken over, and it is said that nobody saw them. */
+static void test_log_beside_neutral_droplets(void)
+{
+    Cell cell = cell_new(NULL, 0, 20, 6);
+    g_autoptr(RfFieldTimeline) truth = walk_timeline_new(SWITCHES_S, 4, RF_FIELD_TOP_PLUS, 400, 32);
+    g_autoptr(GArray) log = log_new(truth, 0, 0, 32, cell.random);
+    g_autoptr(RfFieldTimeline) found = find_with_log(&cell, log, NULL);
+    g_assert_nonnull(found);
+    g_assert_cmpuint(found->switches->len, ==, 4);
+    g_assert_cmpuint(count_findings(found, RF_LOG_UNTIED, 0), ==, 1);
+    for (unsigned k = 0; k < 4; k++) {
+        g_assert_cmpuint(count_findings(found, RF_LOG_UNSEEN, SWITCHES_S[k]), ==, 1);
+        g_assert_cmpfloat_with_epsilon(switch_of(found, k)->time_s.value, SWITCHES_S[k], 0.1);
+    }
+    g_assert_cmpint(rf_field_timeline_at(found, 6)->state, ==, RF_FIELD_TOP_PLUS);
     cell_clear(&cell);
 }
 
@@ -412,5 +430,6 @@ int main(int argc, char **argv)
     g_test_add_func("/field-timeline/log/audited", test_log_audited);
     g_test_add_func("/field-timeline/log/of-another-recording-refused",
                     test_log_of_another_recording_refused);
+    g_test_add_func("/field-timeline/log/beside-neutral-droplets", test_log_beside_neutral_droplets);
     return g_test_run();
 }
