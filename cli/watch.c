@@ -1,5 +1,6 @@
 #include "cli/watch.h"
 
+#include "tracker/coding_noise.h"
 #include "tracker/frame_feed.h"
 
 enum { SAMPLE_FRAMES = 60, SAMPLE_SPACING_FRAMES = 8 };
@@ -164,6 +165,7 @@ RfWatch *rf_watch_recording(const RfSettings *settings, const RfWatchHooks *hook
         g_prefix_error(error, "%s: ", (const char *)g_ptr_array_index(settings->videos, 0));
         return NULL;
     }
+    rf_coding_noise_apply(watch->sightings);
     return g_steal_pointer(&watch);
 }
 

@@ -417,6 +417,16 @@ static bool is_limited(const AVFrame *frame, const AVPixFmtDescriptor *layout)
     return layout->nb_components >= 3 && !g_str_has_prefix(layout->name, "yuvj");
 }
 
+static RfCoding coding_of(const AVFrame *frame)
+{
+    switch (frame->pict_type) {
+    case AV_PICTURE_TYPE_I: return RF_CODING_ALONE;
+    case AV_PICTURE_TYPE_P: return RF_CODING_PAST;
+    case AV_PICTURE_TYPE_B: return RF_CODING_BOTH;
+    default: return RF_CODING_UNKNOWN;
+    }
+}
+
 void rf_decoder_lend(const RfDecoder *decoder, RfFrame *lent)
 {
     const AVFrame *frame = decoder->frame;
@@ -427,7 +437,8 @@ void rf_decoder_lend(const RfDecoder *decoder, RfFrame *lent)
                       .bit_depth = depth_of(decoder->layout),
                       .is_limited_range = is_limited(frame, decoder->layout),
                       .is_interlaced = IS_INTERLACED(frame),
-                      .is_top_field_first = IS_TOP_FIRST(frame)};
+                      .is_top_field_first = IS_TOP_FIRST(frame),
+                      .coding = coding_of(frame)};
 }
 
 static void palette_levels(const AVFrame *frame, int component, int y, uint16_t *levels)

@@ -3,6 +3,8 @@
  * Spots of one exposure are contiguous, sorted by y_px then x_px; exposures are sorted by time. */
 #pragma once
 
+#include "tracker/spot_excess.h"
+
 #include <glib.h>
 #include <stdbool.h>
 #include <stddef.h>
@@ -29,6 +31,7 @@ typedef struct {
     unsigned first_spot, spots;
     uint8_t field;      /* 0: frame or first field in time; 1: second field in time */
     uint8_t flags;      /* RfExposureFlags */
+    uint8_t coding;     /* RfCoding of its frame */
 } RfExposure;
 
 typedef enum {
@@ -46,6 +49,7 @@ typedef struct {
     float snr;            /* |peak| over the noise sd of one pixel there */
     float width_px;       /* standard deviation of the fitted spot along x, stored pixels */
     uint32_t flags;       /* RfSpotFlags */
+    RfSpotExcess excess;  /* of what the fit left; 0 where not known */
 } RfSpot;
 
 typedef struct {

@@ -173,6 +173,7 @@ bool rf_spot_finder_look(const RfSpotFinder *finder, RfSpotScratch *scratch, con
             .field = (uint8_t)field,
             .flags = (uint8_t)((frame->is_damaged ? RF_EXPOSURE_DAMAGED : 0) |
                                (is_posed ? 0 : RF_EXPOSURE_UNPOSED)),
+            .coding = (uint8_t)frame->coding,
         };
         take_fingerprint(&view, &look->fingerprint[field]);
     }

@@ -119,7 +119,7 @@ static RfLocaliseOutcome fit_group(RfSpotFitter *fitter, const RfFitterSettings 
         double before = widest(fits, group->n);
         *window = collect(fitter, view, fits, group->n);
         outcome = rf_localise(&settings->localiser, fitter->pixels, window->n, fits, group->n);
-        if (fabs(widest(fits, group->n) - before) < 0.15 * before) break;
+        if (fabs(widest(fits, group->n) - before) < 0.25 * before) break;
     }
     for (unsigned i = 0; i < group->n; i++) group->members[i].fit = fits[i];
     return outcome;
@@ -294,22 +294,31 @@ static RfSpot spot_of(const RfFitterSettings *settings, const RfExposureView *vi
     const RfBackground *b = view->background;
     int x = CLAMP((int)lrint(fit->x_px), 0, b->width - 1), y = CLAMP((int)lrint(fit->y_px), 0, b->height - 1);
     double level = (double)b->level[(size_t)y * (size_t)b->width + (size_t)x],
-           k2 = settings->u_factor * settings->u_factor;
+           level_sd = sqrt(settings->localiser.var_factor * rf_pixel_noise_var(&b->noise, level));
     unsigned flags = (window->is_saturated ? RF_SPOT_SATURATED : 0) | (window->is_cut ? RF_SPOT_EDGE : 0) |
                      (window->has_line ? RF_SPOT_LINE : 0) |
                      (group->n > 1 || group->is_crowded ? RF_SPOT_CROWDED : 0);
     return (RfSpot){
         .x_px = (float)fit->x_px,
         .y_px = (float)fit->y_px,
-        .u_x_px = (float)sqrt(k2 * fit->var_x_px2),
-        .u_y_px = (float)sqrt(k2 * fit->var_y_px2),
-        .cov_xy_px2 = (float)(k2 * fit->cov_xy_px2),
+        .u_x_px = (float)sqrt(fit->var_x_px2),
+        .u_y_px = (float)sqrt(fit->var_y_px2),
+        .cov_xy_px2 = (float)fit->cov_xy_px2,
         .peak = (float)fit->peak,
-        .snr = (float)(fabs(fit->peak) /
-                       sqrt(settings->localiser.var_factor * rf_pixel_noise_var(&b->noise, level))),
+        .snr = (float)(fabs(fit->peak) / level_sd),
         .width_px = (float)(fit->width_px / b->pixel_aspect),
         .flags = flags,
     };
+}
+
+/* Only of a spot by itself. */
+static RfSpotExcess excess_of(RfSpotFitter *fitter, const RfFitterSettings *settings, const Group *group,
+                              const RfWindow *window, double offset)
+{
+    const RfSpotFit *fit = &group->members[0].fit;
+    if (group->n != 1 || group->is_crowded) return (RfSpotExcess){0, 0};
+    rf_localise_models(&settings->localiser, fit, 1, fitter->pixels, window->n, fitter->residuals);
+    return rf_spot_excess(&settings->localiser, fitter->pixels, fitter->residuals, window->n, fit, offset);
 }
 
 static int by_place(const void *a, const void *b)
@@ -345,6 +354,7 @@ void rf_spot_fitter_run(RfSpotFitter *fitter, const RfFitterSettings *settings, 
         if (group.n) outcome = add_hidden(fitter, settings, view, &group, &window, outcome);
         for (unsigned k = 0; k < group.n; k++) {
             RfSpot spot = spot_of(settings, view, &group, k, &window);
+            spot.excess = excess_of(fitter, settings, &group, &window, outcome.offset);
             const RfSpot *before = &g_array_index(spots, RfSpot, first_spot);
             if (is_known(before, spots->len - first_spot, &spot)) continue;
             g_array_append_val(spots, spot);

@@ -13,7 +13,7 @@ typedef struct {
     double sign;               /* +1 bright spots, -1 dark ones */
     double least_significance; /* peak over its u: less is noise */
     double narrowest_px;       /* less wide is a bad pixel, not a droplet */
-    double u_factor;           /* >= 1: what noise correlated between pixels adds to every uncertainty */
+    double u_factor;           /* >= 1: what noise correlated between pixels adds to the peak's uncertainty */
     double
         shape_error; /* unitless, >= 0: misfit of the spot's shape that isn't noise, as a share of the peak */
 } RfFitterSettings;

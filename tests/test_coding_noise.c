@@ -1,0 +1,142 @@
+#include "tracker/coding_noise.h"
+
+#include <gsl/gsl_errno.h>
+#include <gsl/gsl_randist.h>
+#include <math.h>
+
+enum { SPOTS = 8 };
+static const float STATED_PX = 0.05f;
+
+/* What a recording's fits leave: level of the excess per picture, two shapes each. */
+typedef struct {
+    RfCoding coding;
+    double twofold, threefold;
+} Picture;
+
+static RfSightings *sight(const Picture *cycle, unsigned kinds, unsigned pictures, uint32_t flags)
+{
+    RfSightings *sightings = rf_sightings_new(640, 480, 1);
+    gsl_rng *random = gsl_rng_alloc(gsl_rng_mt19937);
+    gsl_rng_set(random, 1867);
+    for (unsigned e = 0; e < pictures; e++) {
+        const Picture *picture = &cycle[e % kinds];
+        RfExposure exposure = {.frame = e,
+                               .time_s = e / 30.0,
+                               .first_spot = sightings->spots->len,
+                               .spots = SPOTS,
+                               .coding = (uint8_t)picture->coding};
+        g_array_append_val(sightings->exposures, exposure);
+        for (int i = 0; i < SPOTS; i++) {
+            RfSpot spot = {.x_px = (float)(40 * i),
+                           .u_x_px = STATED_PX,
+                           .u_y_px = STATED_PX,
+                           .cov_xy_px2 = 1e-4f,
+                           .flags = flags,
+                           .excess = {(float)(picture->twofold * gsl_ran_chisq(random, 2) / 2),
+                                      (float)(picture->threefold * gsl_ran_chisq(random, 2) / 2)}};
+            g_array_append_val(sightings->spots, spot);
+        }
+    }
+    gsl_rng_free(random);
+    return sightings;
+}
+
+/* Mean square of u over the stated one in pictures `from`, `from` + step ... */
+static double widened(const RfSightings *sightings, unsigned from, unsigned step)
+{
+    double sum = 0, n = 0;
+    for (unsigned e = from; e < sightings->exposures->len; e += step)
+        for (unsigned i = 0; i < SPOTS; i++, n++)
+            sum +=
+                pow((double)(g_array_index(sightings->spots, RfSpot, e * SPOTS + i).u_x_px / STATED_PX), 2);
+    return sum / n;
+}
+
+/* Noise as modelled: what is stated stays within 1 % (that is 2 % of its square), whatever the pictures were coded from. */
+static void test_lossless(void)
+{
+    static const RfCoding codings[] = {RF_CODING_UNKNOWN, RF_CODING_ALONE, RF_CODING_PAST, RF_CODING_BOTH};
+    for (unsigned k = 0; k < G_N_ELEMENTS(codings); k++) {
+        Picture white = {codings[k], 1, 1};
+        g_autoptr(RfSightings) sightings = sight(&white, 1, 2400, 0);
+        rf_coding_noise_apply(sightings);
+        double factor = widened(sightings, 0, 1);
+        g_test_message("coding %d: variance times %.4f", (int)codings[k], factor);
+        g_assert_cmpfloat(factor, <, 1.02);
+        g_assert_cmpfloat(factor, >=, 1);
+    }
+}
+
+/* Three kinds of pictures in turn: each gets its own factor, the same on both axes and the covariance. */
+static void test_kinds(void)
+{
+    const Picture cycle[] = {{RF_CODING_ALONE, 2.3, 2.2}, {RF_CODING_BOTH, 5, 3}, {RF_CODING_PAST, 3.2, 2.7}};
+    g_autoptr(RfSightings) sightings = sight(cycle, 3, 900, 0);
+    rf_coding_noise_apply(sightings);
+    for (unsigned k = 0; k < 3; k++) {
+        double expected = rf_coding_noise_factor(cycle[k].coding, cycle[k].twofold, cycle[k].threefold);
+        double found = widened(sightings, k, 3);
+        g_test_message("kind %u: variance times %.3f, expected %.3f", k, found, expected);
+        g_assert_cmpfloat_with_epsilon(found, expected, 0.06 * expected);
+    }
+    const RfSpot *spot = &g_array_index(sightings->spots, RfSpot, 0);
+    g_assert_cmpfloat(spot->u_x_px, ==, spot->u_y_px);
+    g_assert_cmpfloat_with_epsilon((double)(spot->cov_xy_px2 / 1e-4f),
+                                   pow((double)(spot->u_x_px / STATED_PX), 2), 1e-5);
+}
+
+/* Pictures of one kind that differ among themselves, as a bit rate held constant makes them. */
+static void test_pictures_differ(void)
+{
+    const Picture cycle[] = {{RF_CODING_PAST, 2, 2}, {RF_CODING_PAST, 8, 8}};
+    g_autoptr(RfSightings) sightings = sight(cycle, 2, 600, 0);
+    rf_coding_noise_apply(sightings);
+    double calm = widened(sightings, 0, 2), rough = widened(sightings, 1, 2);
+    g_test_message("variance times %.2f and %.2f", calm, rough);
+    g_assert_cmpfloat(rough, >, 3 * calm);
+}
+
+/* Never below what the fit says; more with more excess; most where the coarser shape is worse than the finer. */
+static void test_law(void)
+{
+    for (int coding = 0; coding < RF_CODINGS; coding++) {
+        g_assert_cmpfloat(rf_coding_noise_factor((RfCoding)coding, 0.7, 0.9), ==, 1);
+        g_assert_cmpfloat(rf_coding_noise_factor((RfCoding)coding, 1, 1), ==, 1);
+        double before = 1;
+        for (double excess = 1.1; excess < 20; excess *= 1.3) {
+            double now = rf_coding_noise_factor((RfCoding)coding, excess, excess);
+            g_assert_cmpfloat(now, >, before);
+            before = now;
+        }
+        g_assert_cmpfloat(rf_coding_noise_factor((RfCoding)coding, 5, 3), >,
+                          rf_coding_noise_factor((RfCoding)coding, 5, 5));
+    }
+    g_assert_cmpfloat(rf_coding_noise_factor(RF_CODING_PAST, 5, 5), >,
+                      rf_coding_noise_factor(RF_CODING_ALONE, 5, 5));
+}
+
+static void test_nothing_known(void)
+{
+    Picture rough = {RF_CODING_PAST, 9, 9};
+    g_autoptr(RfSightings) crowded = sight(&rough, 1, 100, RF_SPOT_CROWDED);
+    rf_coding_noise_apply(crowded);
+    g_assert_cmpfloat(widened(crowded, 0, 1), ==, 1);
+    g_autoptr(RfSightings) few = sight(&rough, 1, 3, 0);
+    rf_coding_noise_apply(few);
+    g_assert_cmpfloat(widened(few, 0, 1), ==, 1);
+    g_autoptr(RfSightings) none = rf_sightings_new(64, 48, 1);
+    rf_coding_noise_apply(none);
+    g_assert_cmpuint(none->spots->len, ==, 0);
+}
+
+int main(int argc, char **argv)
+{
+    gsl_set_error_handler_off();
+    g_test_init(&argc, &argv, NULL);
+    g_test_add_func("/coding-noise/limits/law", test_law);
+    g_test_add_func("/coding-noise/limits/lossless", test_lossless);
+    g_test_add_func("/coding-noise/apply/kinds", test_kinds);
+    g_test_add_func("/coding-noise/apply/pictures-differ", test_pictures_differ);
+    g_test_add_func("/coding-noise/apply/nothing-known", test_nothing_known);
+    return g_test_run();
+}

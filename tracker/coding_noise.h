@@ -1,0 +1,16 @@
+/* What compression adds to the uncertainty of places. The fits' covariances hold for noise that is independent from
+ * pixel to pixel; encoders also bend and drag whole spots, differently in pictures coded alone, from the past, and from
+ * both sides. How much shows in what the fits leave (spot_excess.h). Displacements are larger than that by a law read
+ * from recordings of known truth.
+ * The paths can't tell: such errors follow the motion, and look like exposure blur in its covariances. */
+#pragma once
+
+#include "tracker/frame.h"
+#include "tracker/sightings.h"
+
+/* Variance of a place over that of the fit, for these means of spots' excess (1 each where noise is as modelled). */
+double rf_coding_noise_factor(RfCoding coding, double twofold, double threefold);
+
+/* Multiplies the uncertainties of all spots. Means are taken per picture, and drawn towards those of all pictures coded
+ * alike as far as the pictures don't differ beyond chance. */
+void rf_coding_noise_apply(RfSightings *sightings);
