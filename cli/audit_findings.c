@@ -2,24 +2,8 @@
 
 #include "physics/agreement.h"
 
-#include <gsl/gsl_cdf.h>
 #include <inttypes.h>
 #include <math.h>
-
-/* Two-sided chance that the level leaves to a sound entry; spreads within which a noted start fits. */
-static const double level_chance = 0.005, start_fits = 3.5;
-
-double rf_audit_findings_level(const RfHandHabit *habit)
-{
-    return gsl_cdf_tdist_Qinv(level_chance / 2, fmax(habit->sound - 1, 2));
-}
-
-static double z_of(const RfHandHabit *habit, const RfExplanation *one)
-{
-    double u_s = sqrt(habit->spread_s.value * habit->spread_s.value + one->u_tracked_s * one->u_tracked_s +
-                      habit->bias_s.sigma * habit->bias_s.sigma);
-    return fabs(one->read_s - one->tracked_s - habit->bias_s.value) / u_s;
-}
 
 /* ---- choosing ---- */
 
@@ -57,10 +41,8 @@ static const RfExplanation *choose(const RfHandHabit *habit, const Tally *tally)
     RfFinding finding = heaviest(tally, RF_FINDINGS);
     const RfExplanation *sound = tally->best[RF_FINDING_AGREES];
     if (finding == RF_FINDING_SWITCHED_INSIDE || !sound) return tally->best[finding];
-    bool is_within =
-        z_of(habit, sound) <= rf_audit_findings_level(habit) && fabs(sound->start_z) <= start_fits;
-    if (is_within) return sound;
-    return finding == RF_FINDING_AGREES && z_of(habit, sound) > rf_audit_findings_level(habit)
+    if (rf_audit_match_is_within(habit, sound)) return sound;
+    return finding == RF_FINDING_AGREES && rf_audit_match_spreads(habit, sound) > rf_audit_match_level(habit)
                ? tally->best[heaviest(tally, RF_FINDING_AGREES)]
                : tally->best[finding];
 }
@@ -112,7 +94,7 @@ static void append_finding(GString *out, const RfAuditMatch *match, const RfHand
             out,
             "droplet %u took %.2f s; the difference of %+.2f s is %.1f spreads from the person's usual "
             "%+.2f s, and no single slip explains it",
-            droplet, chosen->tracked_s, off_s, z_of(habit, chosen), habit->bias_s.value);
+            droplet, chosen->tracked_s, off_s, rf_audit_match_spreads(habit, chosen), habit->bias_s.value);
         break;
     case RF_FINDING_OTHER_DROPLET:
         append_claim(out, habit, entry, tally->best[RF_FINDING_DISAGREES]);

@@ -6,10 +6,6 @@
 #include "cli/audit_match.h"
 #include "cli/results.h"
 
-/* A sound entry's |difference - bias| over its uncertainty exceeds this once in two hundred: Student's t, because the spread
- * is known from so many entries only. (The other half of the hundredth is left to matching.) */
-double rf_audit_findings_level(const RfHandHabit *habit);
-
 /* One row; label and evidence are new. `explanations` is room to work in (RfExplanation). */
 RfAuditRow rf_audit_findings_row(const RfAuditMatch *match, const RfHandTimings *timings, guint index,
                                  GArray *explanations);

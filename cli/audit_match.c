@@ -4,6 +4,7 @@
 #include "cli/digit_slip.h"
 #include "cli/passage_sets.h"
 
+#include <gsl/gsl_cdf.h>
 #include <gsl/gsl_math.h>
 #include <math.h>
 #include <string.h>
@@ -17,6 +18,9 @@ static const double prior_agrees = 0.82, prior_disagrees = 0.02, prior_other = 0
 
 /* A start at a crossing again, not at the first; a noted voltage that contradicts the field; its sign alone. */
 static const double again_share = 0.15, wrong_voltage_share = 0.05, wrong_sign_share = 0.5;
+
+/* Two-sided chance that the verdict level leaves to a sound entry; spreads within which a noted start fits. */
+static const double level_chance = 0.005, start_fits = 3.5;
 
 /* A hand that slips now and then: so often, so many times the usual spread. Only where another mistake is at work already; for a
  * sound entry the verdict level decides. */
@@ -33,6 +37,7 @@ struct RfAuditMatch {
     RfPassageSets *sets;
     RfAuditLabels *labels;
     RfHandHabit habit;
+    bool is_settled; /* the habit is known well enough to say who is within it */
 };
 
 const char *rf_finding_to_string(RfFinding finding)
@@ -63,6 +68,24 @@ double rf_audit_match_divisions(const RfAuditMatch *match, guint index)
 {
     const RfHandEntry *entry = entry_at(match, index);
     return rf_passage_sets_divisions(match->sets, entry);
+}
+
+double rf_audit_match_level(const RfHandHabit *habit)
+{
+    return gsl_cdf_tdist_Qinv(level_chance / 2, fmax(habit->sound - 1, 2));
+}
+
+double rf_audit_match_spreads(const RfHandHabit *habit, const RfExplanation *one)
+{
+    double u_s = sqrt(habit->spread_s.value * habit->spread_s.value + one->u_tracked_s * one->u_tracked_s +
+                      habit->bias_s.sigma * habit->bias_s.sigma);
+    return fabs(one->read_s - one->tracked_s - habit->bias_s.value) / u_s;
+}
+
+bool rf_audit_match_is_within(const RfHandHabit *habit, const RfExplanation *one)
+{
+    return rf_audit_match_spreads(habit, one) <= rf_audit_match_level(habit) &&
+           fabs(one->start_z) <= start_fits;
 }
 
 double rf_audit_match_end_s(const RfAuditMatch *match)
@@ -326,21 +349,38 @@ static double spread_of(const Moments *moments, double least)
     return fmax(least, sqrt(moments->squares / fmax(moments->weight - 1, 1)));
 }
 
+/* What an entry's explanations weigh together. Once the habit is settled, an entry that is within it is sound and nothing else:
+ * shares lost to chance explanations of sound entries would make the spread come out too small. */
+static double total_weight(const RfAuditMatch *match, const GArray *explanations, bool *is_sound)
+{
+    double total = 0, sound = 0;
+    *is_sound = false;
+    for (guint i = 0; i < explanations->len; i++) {
+        const RfExplanation *one = &g_array_index(explanations, RfExplanation, i);
+        total += one->weight;
+        if (one->finding != RF_FINDING_AGREES) continue;
+        sound += one->weight;
+        *is_sound |= match->is_settled && rf_audit_match_is_within(&match->habit, one);
+    }
+    return *is_sound ? sound : total;
+}
+
 static void gather_entry(const RfAuditMatch *match, guint index, GArray *explanations, Moments *interval,
                          Moments *start)
 {
     const RfHandEntry *entry = entry_at(match, index);
-    bool has_clock = entry->has_start && match->habit.has_clock;
+    bool has_clock = entry->has_start && match->habit.has_clock, is_sound;
     rf_audit_match_explain(match, index, explanations);
-    double total = 0;
-    for (guint i = 0; i < explanations->len; i++)
-        total += g_array_index(explanations, RfExplanation, i).weight;
+    double total = total_weight(match, explanations, &is_sound);
     for (guint i = 0; i < explanations->len; i++) {
         const RfExplanation *one = &g_array_index(explanations, RfExplanation, i);
         double share = one->weight / total;
-        if (!(share > 1e-6) || !one->passage || one->finding == RF_FINDING_DISAGREES) continue;
-        if (one->finding == RF_FINDING_AGREES && !has_clock) gather_shared(interval, share, one);
-        if (one->finding == RF_FINDING_AGREES)
+        bool is_agreement = one->finding == RF_FINDING_AGREES;
+        if (!(share > 1e-6) || !one->passage || one->finding == RF_FINDING_DISAGREES ||
+            (is_sound && !is_agreement))
+            continue;
+        if (is_agreement && !has_clock) gather_shared(interval, share, one);
+        if (is_agreement)
             gather(interval, share, one->read_s - one->tracked_s, one->u_tracked_s * one->u_tracked_s,
                    match->habit.bias_s.value, match->habit.spread_s.value);
         if (has_clock)
@@ -401,6 +441,7 @@ RfAuditMatch *rf_audit_match_new(const RfHandTimings *timings, const RfLineCross
                                     habit->bias_s.value, habit->spread_s.value};
         rf_audit_labels_assign(match->labels, &known);
         for (int round = 0; round < ROUNDS; round++) learn(match);
+        match->is_settled = true;
     }
     return match;
 }

@@ -61,6 +61,14 @@ void rf_audit_match_explain(const RfAuditMatch *match, guint index, GArray *out)
 
 /* The droplet that the entry's label follows at that time; 0: none does, or labels don't follow droplets. */
 unsigned rf_audit_match_owner(const RfAuditMatch *match, guint index);
+/* A sound entry's |difference - bias| over its uncertainty exceeds this once in two hundred: Student's t, because the spread
+ * is known from so many entries only. (The other half of a hundredth is left to matching.) */
+double rf_audit_match_level(const RfHandHabit *habit);
+/* That |difference - bias| over its uncertainty, for the time as it should have been written. */
+double rf_audit_match_spreads(const RfHandHabit *habit, const RfExplanation *one);
+/* Under the level, and the noted start fits. */
+bool rf_audit_match_is_within(const RfHandHabit *habit, const RfExplanation *one);
+
 /* How long the recording shows droplets. */
 double rf_audit_match_end_s(const RfAuditMatch *match);
 /* The number of divisions that the entry claims. */

@@ -213,8 +213,7 @@ void rf_audit_person_describe(RfResults *results, const RfHandTimings *timings, 
     g_autofree double *differences = column_of(sound, difference_of);
     rf_agreement_limits(differences, sound->len, limits_coverage, limits_confidence, &person->agreement,
                         NULL);
-    person->verdict_level_s =
-        rf_audit_findings_level(habit) * hypot(habit->spread_s.value, habit->bias_s.sigma);
+    person->verdict_level_s = rf_audit_match_level(habit) * hypot(habit->spread_s.value, habit->bias_s.sigma);
     person->trend_s_per_min = trend_of(sound, differences);
     person->velocity_effect = velocity_effect(sound, habit->bias_s);
     describe_clock(person, sound, habit);
