@@ -7,7 +7,7 @@
 #include <math.h>
 
 /* Pixels looked at: enough to know each band's light to a few thousandths, the whole picture's to less than one. */
-enum { MOST_ROWS = 6, MOST_COLUMNS = 64, ROUNDS = 3, ROOM = MOST_ROWS * MOST_COLUMNS };
+enum { MOST_ROWS = 4, MOST_COLUMNS = 48, ROUNDS = 3, ROOM = MOST_ROWS * MOST_COLUMNS };
 
 typedef struct {
     double light_seen, light_light, var_light_light; /* sums: seen * light, light^2, light^2 * var */
@@ -29,30 +29,38 @@ typedef struct {
     bool is_posed;
 } View;
 
-static double background_at(const View *view, int x, int y)
+static float level_under_pose(const View *view, int x, int y)
 {
     int width = view->frame->width, height = view->frame->height;
-    if (!view->is_posed) return (double)view->level[(size_t)y * (size_t)width + (size_t)x];
     double centre_x = 0.5 * (width - 1), centre_y = 0.5 * (height - 1);
     double right = (x - centre_x - view->pose->shift_x_px) * view->pixel_aspect,
            down = y - centre_y - view->pose->shift_y_px;
     double x_ref = (view->cos_angle * right + view->sin_angle * down) / view->pixel_aspect + centre_x;
     double y_ref = -view->sin_angle * right + view->cos_angle * down + centre_y;
-    return (double)rf_interpolate_linear(view->level, width, height, (float)x_ref, (float)y_ref);
+    return rf_interpolate_linear(view->level, width, height, (float)x_ref, (float)y_ref);
 }
 
 static void add_row(const View *view, int y, const int *columns, int n, Band *band)
 {
-    double black = view->noise->black_level;
+    float black = (float)view->noise->black_level;
+    const float *level = view->level + (size_t)y * (size_t)view->frame->width;
+    float *light = band->light + band->n, *seen = band->seen + band->n;
+    const uint8_t *row = rf_luma_row(view->frame, y);
+    const uint16_t *wide = (const uint16_t *)(const void *)row;
+    for (int i = 0; i < n; i++)
+        light[i] = (view->is_posed ? level_under_pose(view, columns[i], y) : level[columns[i]]) - black;
+    if (view->frame->bit_depth == 8)
+        for (int i = 0; i < n; i++) seen[i] = (float)row[columns[i]] - black;
+    else
+        for (int i = 0; i < n; i++) seen[i] = (float)wide[columns[i]] - black;
+    band->n += n;
+}
+
+static void add_noise(const View *view, Band *band)
+{
     float read_var = (float)view->noise->read_var, photon = (float)view->noise->photon_var_per_level;
-    for (int i = 0; i < n; i++) {
-        int x = columns[i];
-        float light = (float)(background_at(view, x, y) - black);
-        band->light[band->n] = light;
-        band->seen[band->n] = rf_luma_at(view->frame, x, y) - (float)black;
-        band->var[band->n] = read_var + photon * (light > 0 ? light : 0);
-        band->n++;
-    }
+    for (int i = 0; i < band->n; i++)
+        band->var[i] = read_var + photon * (band->light[i] > 0 ? band->light[i] : 0);
 }
 
 /* Rows `first` to `end` (exclusive) of which every `line_step`-th belongs to the exposure. */
@@ -64,8 +72,8 @@ static void take_band(const View *view, int first, int end, int line_step, Band 
     band->n = 0;
     for (int i = 0; i < rows; i++)
         add_row(view, first + (2 * i + 1) * lines / (2 * rows) * line_step, columns, across, band);
-    for (; band->n % RF_LANES_STEP; band->n++)
-        band->light[band->n] = band->seen[band->n] = 0, band->var[band->n] = 1;
+    for (; band->n % RF_LANES_STEP; band->n++) band->light[band->n] = band->seen[band->n] = 0;
+    add_noise(view, band);
 }
 
 /* Sums over the pixels that lie within `reach` noise sd of what `gain` predicts. */

@@ -5,7 +5,7 @@
 #include <math.h>
 #include <string.h>
 
-enum { PER_SPOT = RF_NORMAL_PER_SPOT, MOST = RF_NORMAL_MOST, STEPS = 30, ROUNDS = 4, HASTY_STEPS = 12 };
+enum { PER_SPOT = RF_NORMAL_PER_SPOT, MOST = RF_NORMAL_MOST, STEPS = 30, ROUNDS = 4, HASTY_STEPS = 8 };
 enum { X = RF_NORMAL_X, Y = RF_NORMAL_Y, PEAK = RF_NORMAL_PEAK, WIDTH = RF_NORMAL_WIDTH };
 
 static const double WIDTH_PRIOR = 0.7;  /* sd of ln width around the expected one */
@@ -119,12 +119,12 @@ static State moved(const Problem *problem, const State *state, const double *d)
     return next;
 }
 
-/* So many standard uncertainties; of the width, on which a place hardly depends, five times as many. */
+/* So many standard uncertainties; of the unknowns on which a place hardly depends, five times as many. */
 static bool is_small(const Problem *problem, const double *d, const Normal *normal, double share)
 {
     for (unsigned i = 0; i < unknowns(problem); i++) {
-        bool is_width = i % PER_SPOT == WIDTH && i < problem->n * PER_SPOT;
-        double limit = is_width ? 5 * share : share;
+        bool is_place = i < problem->n * PER_SPOT && (i % PER_SPOT == X || i % PER_SPOT == Y);
+        double limit = is_place ? share : 5 * share;
         if (d[i] * d[i] * normal->sums.matrix[i][i] > limit * limit) return false;
     }
     return true;
@@ -144,11 +144,11 @@ static int descend(const Problem *problem, State *state, Normal *normal)
             continue;
         }
         substitute(factor, unknowns(problem), d);
-        bool is_last = is_small(problem, d, normal, 0.01);
+        bool is_last = is_small(problem, d, normal, 0.03);
         State next = moved(problem, state, d);
         gather(problem, &next, &trial);
         /* where widths of the table meet, slopes jump a little: such steps may go to and fro for nothing */
-        is_last |= fabs(trial.cost - normal->cost) < 3e-4;
+        is_last |= fabs(trial.cost - normal->cost) < 3e-3;
         if (trial.cost <= normal->cost * (1 + 1e-9)) {
             *state = next;
             *normal = trial;
@@ -185,12 +185,56 @@ static double expected_gain(const Problem *problem, const Normal *normal, const 
     return gain;
 }
 
+static double element(const Normal *normal, unsigned i, unsigned j)
+{
+    return i > j ? normal->sums.matrix[i][j] : normal->sums.matrix[j][i];
+}
+
+/* The other unknowns' equations with every spot as bright as its place and width make it now. */
+static void rescale(const Problem *problem, Normal *normal, const double *ratios)
+{
+    for (unsigned i = 0; i < problem->n * PER_SPOT; i++) {
+        double factor = i % PER_SPOT == PEAK ? 1 : ratios[i / PER_SPOT];
+        normal->sums.right[i] *= factor;
+        for (unsigned j = 0; j < unknowns(problem); j++) {
+            if (j <= i) normal->sums.matrix[i][j] *= factor;
+            if (j >= i) normal->sums.matrix[j][i] *= factor;
+        }
+    }
+}
+
+/* Peaks and offset enter linearly, so their best values at the first guess of places and widths follow from the equations
+ * at hand. A guess too faint would throw places and widths far off. */
+static void settle_peaks(const Problem *problem, State *state, Normal *normal)
+{
+    unsigned m = problem->n + 1, which[RF_LOCALISE_MOST_SPOTS + 1];
+    double factor[MOST][MOST], z[MOST], ratios[RF_LOCALISE_MOST_SPOTS];
+    for (unsigned i = 0; i < m; i++) which[i] = i < problem->n ? i * PER_SPOT + PEAK : problem->n * PER_SPOT;
+    for (unsigned i = 0; i < m; i++) {
+        z[i] = normal->sums.right[which[i]];
+        for (unsigned j = 0; j <= i; j++) factor[i][j] = element(normal, which[i], which[j]);
+    }
+    if (!factorise(factor, m, 1e-6)) return;
+    substitute(factor, m, z);
+    for (unsigned i = 0; i < problem->n; i++) {
+        double peak = state->spots[i].peak;
+        ratios[i] = (peak + z[i]) / peak;
+        if (!(ratios[i] > 0.1 && ratios[i] < 100)) return; /* no spot, or none by itself: as guessed */
+    }
+    for (unsigned i = 0; i < problem->n; i++) state->spots[i].peak += z[i];
+    state->offset += z[problem->n];
+    for (unsigned i = 0; i < unknowns(problem); i++)
+        for (unsigned k = 0; k < m; k++) normal->sums.right[i] -= element(normal, i, which[k]) * z[k];
+    rescale(problem, normal, ratios);
+}
+
 /* Plain Gauss-Newton, the weights a step behind: three or four steps do for nearly every spot. Each step squares the error
  * of the one before, so that after one of a tenth of the uncertainty nothing is left to gain. */
 static bool hurry(const Problem *problem, State *state, Normal *normal)
 {
     rf_spot_normal_weigh(problem->columns, problem->localiser->var_factor, 0);
     gather(problem, state, normal);
+    settle_peaks(problem, state, normal);
     for (int step = 0; step < HASTY_STEPS; step++) {
         double factor[MOST][MOST], d[MOST];
         copy_equations(problem, normal, factor, d);
