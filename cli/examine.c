@@ -151,6 +151,9 @@ static void describe_droplets(const RfWatch *watch, const RfPaths *paths, RfFitn
     figures->snr_lower_quartile = (double)g_array_index(snr, float, snr->len / 4);
     figures->spot_width_px = (double)g_array_index(width, float, width->len / 2);
     figures->saturated_share = (double)saturated / snr->len;
+    figures->followed_mean_s = (double)snr->len / paths->paths->len *
+                               (figures->part_stop_s - figures->part_start_s) /
+                               (double)MAX(1, figures->part_exposures);
     figures->droplets_per_exposure = (double)snr->len / (double)MAX(1, figures->part_exposures);
 }
 

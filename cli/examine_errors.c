@@ -2,26 +2,59 @@
 
 #include <math.h>
 
-#include "tracker/path_noise.h"
-
-/* ---- errors that live on from exposure to exposure ---- */
+/* ---- errors beside diffusion ---- */
 
 /* With position errors of correlation rho^k between exposures k apart, increments have the covariances
  * c1 = 2 R D dt - s^2 (1 - rho)^2 and c2 = -s^2 rho (1 - rho)^2; 2 D dt is c0 + 2 (c1 + c2 + c3) up to rho^4. A covariance
  * of n increments has a standard error of about c0/sqrt(n). Where diffusion outweighs the errors (c1 not clearly
- * negative), rho can't be told. */
-static RfValue error_correlation(const RfPathErrors *noise)
+ * negative), neither s nor rho can be told without knowing the droplets' size. */
+typedef struct {
+    bool is_told;
+    double first_px2, second_px2, u_px2; /* c1 less its part of diffusion, c2, the standard error of either */
+    int axis;
+} Errors;
+
+static Errors errors_beside_diffusion(const RfPathErrors *noise)
 {
     enum { LEAST = 100 };
     /* Reversals that nobody has told of look like lasting covariance: the axis with less of it is across gravity. */
     const int axis = fabs(noise->lag_px2[0][3]) < fabs(noise->lag_px2[1][3]) ? 0 : 1;
     const double *c_px2 = noise->lag_px2[axis];
     const double u_px2 = c_px2[0] / sqrt(fmax(1, noise->increments));
-    if (noise->increments < LEAST || c_px2[1] > -5 * u_px2) return (RfValue){0, 0};
     const double spread_px2 = fmax(0, c_px2[0] + 2 * (c_px2[1] + c_px2[2] + c_px2[3]));
-    const double first_px2 = c_px2[1] - noise->blur * spread_px2;
-    const double rho = c_px2[2] / first_px2;
-    return (RfValue){CLAMP(rho, -1, 1), u_px2 / -first_px2 * sqrt(1 + rho * rho)};
+    return (Errors){noise->increments >= LEAST && c_px2[1] < -5 * u_px2, c_px2[1] - noise->blur * spread_px2,
+                    c_px2[2], u_px2, axis};
+}
+
+static RfValue error_correlation(const Errors *errors)
+{
+    if (!errors->is_told) return (RfValue){0, 0};
+    const double rho = errors->second_px2 / errors->first_px2;
+    return (RfValue){CLAMP(rho, -1, 1), errors->u_px2 / -errors->first_px2 * sqrt(1 + rho * rho)};
+}
+
+static double stated_variance_px2(const RfWatch *watch, const RfPaths *paths, int axis)
+{
+    double sum = 0, n = 0;
+    for (guint i = 0; i < paths->paths->len; i++) {
+        const GArray *points = ((const RfPath *)g_ptr_array_index(paths->paths, i))->points;
+        for (guint k = 0; k < points->len; k++) {
+            const int number = g_array_index(points, RfPathPoint, k).spot;
+            if (number < 0) continue;
+            const RfSpot *spot = &g_array_index(watch->sightings->spots, RfSpot, number);
+            const double u_px = (double)(axis == 0 ? spot->u_x_px : spot->u_y_px);
+            sum += u_px * u_px;
+            n++;
+        }
+    }
+    return sum / fmax(1, n);
+}
+
+static RfValue excess_scatter(const Errors *errors, double stated_px2)
+{
+    if (!errors->is_told || !(stated_px2 > 0)) return (RfValue){0, 0};
+    const double excess = sqrt(-errors->first_px2 / stated_px2);
+    return (RfValue){excess, 0.5 * excess * errors->u_px2 / -errors->first_px2};
 }
 
 /* ---- along the paths ---- */
@@ -41,6 +74,15 @@ static const RfPathPoint *point_at(const RfPath *path, guint i)
 static const RfExposure *exposure_of(const Walk *walk, const RfPathPoint *point)
 {
     return &g_array_index(walk->watch->sightings->exposures, RfExposure, point->exposure);
+}
+
+/* In the reference picture: a camera that moves is no leap. */
+static RfPixel place_of(const Walk *walk, const RfPathPoint *point)
+{
+    RfPixel place;
+    rf_pose_to_reference(&exposure_of(walk, point)->pose, walk->watch->sightings, point->x_px, point->y_px,
+                         &place.x, &place.y);
+    return place;
 }
 
 /* An encoder that saves bits copies the blocks of the picture before: the droplet then stands where it stood, and so
@@ -63,9 +105,11 @@ static void measure_jump(Walk *walk, const RfPath *path, guint i)
     const RfPathPoint *at = point_at(path, i), *before = point_at(path, i - 1);
     const RfPathPoint *late = point_at(path, i - 2), *early = point_at(path, i - 2 - BACK);
     if (!at->is_seen || !before->is_seen || !late->is_seen || !early->is_seen) return;
-    const double dx = late->x_px - early->x_px, dy = late->y_px - early->y_px, way = hypot(dx, dy);
+    const RfPixel from = place_of(walk, early), to = place_of(walk, late);
+    const double dx = to.x - from.x, dy = to.y - from.y, way = hypot(dx, dy);
     if (way < MOVED_PX) return;
-    const double jump = ((at->x_px - before->x_px) * dx + (at->y_px - before->y_px) * dy) / way - way / BACK;
+    const RfPixel last = place_of(walk, before), now = place_of(walk, at);
+    const double jump = ((now.x - last.x) * dx + (now.y - last.y) * dy) / way - way / BACK;
     g_array_append_val(walk->jumps, jump);
 }
 
@@ -117,10 +161,9 @@ static GHashTable *keyframes_of(const RfVideoFile *video)
 
 void rf_examine_errors(const RfWatch *watch, const RfPaths *paths, RfFitnessFigures *figures)
 {
-    const RfPathErrors *noise = &paths->noise;
-    figures->excess_scatter = fmax(rf_path_noise_widening(noise->scale_x, noise->u_scale_x),
-                                   rf_path_noise_widening(noise->scale_y, noise->u_scale_y));
-    figures->error_correlation = error_correlation(noise);
+    const Errors errors = errors_beside_diffusion(&paths->noise);
+    figures->excess_scatter = excess_scatter(&errors, stated_variance_px2(watch, paths, errors.axis));
+    figures->error_correlation = error_correlation(&errors);
     g_autoptr(GHashTable) keyframes = keyframes_of(watch->video);
     g_autoptr(GArray) jumps = g_array_new(FALSE, FALSE, sizeof(double));
     Walk walk = {.watch = watch, .keyframes = keyframes, .jumps = jumps};

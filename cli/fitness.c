@@ -197,6 +197,11 @@ static void judge_noise(GArray *lines, const RfFitnessFigures *f)
             "there is no noise left: compression or the camera's denoising ate it, and faint droplets with "
             "it; switch denoising off, "
             "raise the bit rate");
+    else if (f->noise_correlation > 0.7)
+        add(lines, "noise", text, RF_FITNESS_UNFIT,
+            "compression or denoising ate the noise, loses faint droplets and drags the others: record again "
+            "with "
+            "less of it");
     else if (f->noise_correlation > 0.3 && !f->is_lossless)
         add(lines, "noise", text, RF_FITNESS_CARE,
             "compression smoothed the noise, so it doesn't tell how well droplets are located: raise the bit "
@@ -235,13 +240,16 @@ static void judge_camera(GArray *lines, const RfFitnessFigures *f)
 
 static void judge_droplets(GArray *lines, const RfFitnessFigures *f)
 {
-    char *text = f->droplets > 0 ? g_strdup_printf("%u followed, %.1f in each picture", f->droplets,
-                                                   f->droplets_per_exposure)
+    char *text = f->droplets > 0 ? g_strdup_printf("%u followed for %.1f s on average, %.1f in each picture",
+                                                   f->droplets, f->followed_mean_s, f->droplets_per_exposure)
                                  : g_strdup("none seen");
     if (f->droplets == 0)
         add(lines, "droplets", text, RF_FITNESS_UNFIT,
             "nothing that moves like a droplet: focus on the middle between the plates, "
             "light from the side, record while droplets are in view");
+    else if (f->followed_mean_s < 2)
+        add(lines, "droplets", text, RF_FITNESS_CARE,
+            "lost again soon: slower droplets, a wider view, more light or less compression would keep them");
     else if (f->droplets_per_exposure > 100)
         add(lines, "droplets", text, RF_FITNESS_CARE,
             "a crowd: paths are cut where droplets can't be told apart; wait until fewer are left");
@@ -287,17 +295,21 @@ static void judge_compression(GArray *lines, const RfFitnessFigures *f)
 
 static void judge_scatter(GArray *lines, const RfFitnessFigures *f)
 {
-    char *text =
-        g_strdup_printf("positions scatter %.1f times as much as the noise explains", f->excess_scatter);
+    const RfValue excess = f->excess_scatter;
+    if (!(excess.sigma > 0)) {
+        add(lines, "scatter", g_strdup("too small to be seen beside the droplets' own motion"),
+            RF_FITNESS_FIT, NULL);
+        return;
+    }
+    g_autofree char *number = rf_text_number_concise(excess);
+    char *text = g_strdup_printf("positions scatter %s times as much as the noise explains", number);
+    const double least = excess.value - 3 * excess.sigma;
     /* measured against lossless footage: 1.6 at mild compression, 4.5 and more where faint droplets drown */
-    if (f->excess_scatter > 4)
-        add(lines, "scatter", text, RF_FITNESS_UNFIT,
-            "compression spoils the positions: record again with less of it");
-    else if (f->excess_scatter > 1.3)
-        add(lines, "scatter", text, RF_FITNESS_CARE,
-            "stated uncertainties are widened by that; record with less compression");
-    else
-        add(lines, "scatter", text, RF_FITNESS_FIT, NULL);
+    add(lines, "scatter", text,
+        least > 4     ? RF_FITNESS_UNFIT
+        : least > 1.3 ? RF_FITNESS_CARE
+                      : RF_FITNESS_FIT,
+        "stated uncertainties are widened by that; record with less compression");
 }
 
 static void judge_memory(GArray *lines, const RfFitnessFigures *f)
@@ -333,7 +345,7 @@ static void judge_lag(GArray *lines, const RfFitnessFigures *f)
     }
     g_autofree char *leap = rf_text_number_concise(jump);
     char *text = g_strdup_printf("droplets leap %s px onwards where the encoder starts afresh", leap);
-    const bool is_seen = jump.value > 4 * jump.sigma;
+    const bool is_seen = jump.value > 3 * jump.sigma;
     /* a lag shifts switches in time, and a speed just after each reversal */
     add(lines, "lag", text,
         is_seen && jump.value > 0.5 ? RF_FITNESS_UNFIT

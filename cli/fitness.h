@@ -37,6 +37,7 @@ typedef struct {
     /* droplets followed for a moment at least */
     unsigned droplets;
     double droplets_per_exposure, snr_median, snr_lower_quartile;
+    double followed_mean_s; /* how long one was followed */
     double spot_width_px;   /* standard deviation of a typical droplet's spot */
     double saturated_share; /* of the measurements */
 
@@ -46,7 +47,8 @@ typedef struct {
     double unposed_share; /* of the exposures: the reticle was not found in them */
 
     /* errors of position */
-    double excess_scatter; /* over what the picture's noise explains, of the worse axis; 1: as it should be */
+    RfValue
+        excess_scatter; /* over what the picture's noise explains; 1: as it should be; sigma 0: not determined */
     RfValue error_correlation; /* from one exposure to the next; sigma 0: not determined */
     double
         standstill_share; /* of the steps of moving droplets: the picture before was copied to the last digit */

@@ -152,7 +152,9 @@ static void add_droplets(JsonBuilder *json, const RfFitnessFigures *f)
     number_if(json, "snr_lower_quartile", is_any, f->snr_lower_quartile);
     number_if(json, "spot_width_px", is_any, f->spot_width_px);
     number_if(json, "saturated_share", is_any, f->saturated_share);
-    number_if(json, "excess_scatter", is_any, f->excess_scatter);
+    number_if(json, "followed_mean_s", is_any, f->followed_mean_s);
+    number_if(json, "excess_scatter", f->excess_scatter.sigma > 0, f->excess_scatter.value);
+    number_if(json, "u_excess_scatter", f->excess_scatter.sigma > 0, f->excess_scatter.sigma);
     number_if(json, "error_correlation", f->error_correlation.sigma > 0, f->error_correlation.value);
     number_if(json, "u_error_correlation", f->error_correlation.sigma > 0, f->error_correlation.sigma);
     number_if(json, "standstill_share", is_any, f->standstill_share);

@@ -32,10 +32,11 @@ static RfFitnessFigures good(void)
         .noise_correlation = 0.01,
         .droplets = 12,
         .droplets_per_exposure = 8,
+        .followed_mean_s = 15,
         .snr_median = 20,
         .snr_lower_quartile = 12,
         .spot_width_px = 1.8,
-        .excess_scatter = 1,
+        .excess_scatter = {1.02, 0.03},
         .combing = {0.01, 0.02},
     };
 }
@@ -106,6 +107,7 @@ static void faults_of_the_picture(void)
     FAULT("exposure", RF_FITNESS_CARE, f.black_clipped_share = 0.9);
     FAULT("noise", RF_FITNESS_CARE, f.noise_sd = 0.14);
     FAULT("noise", RF_FITNESS_CARE, f.noise_correlation = 0.6);
+    FAULT("noise", RF_FITNESS_UNFIT, f.noise_correlation = 0.8);
     FAULT("noise", RF_FITNESS_FIT, f.bit_depth = 10; f.noise_sd = 2);
     FAULT("noise", RF_FITNESS_CARE, f.bit_depth = 12; f.noise_sd = 2); /* an eighth of an 8-bit level */
     FAULT("flicker", RF_FITNESS_CARE, f.flicker_relative_sd = 0.2);
@@ -116,6 +118,7 @@ static void faults_of_the_picture(void)
 static void faults_of_the_droplets(void)
 {
     FAULT("droplets", RF_FITNESS_CARE, f.droplets_per_exposure = 150);
+    FAULT("droplets", RF_FITNESS_CARE, f.followed_mean_s = 1);
     FAULT("contrast", RF_FITNESS_CARE, f.snr_median = 6);
     FAULT("contrast", RF_FITNESS_UNFIT, f.snr_median = 3);
     FAULT("contrast", RF_FITNESS_CARE, f.spot_width_px = 0.5);
@@ -129,14 +132,15 @@ static void faults_of_the_droplets(void)
 static void faults_of_compression(void)
 {
     FAULT("compression", RF_FITNESS_CARE, f.is_lossless = false);
-    FAULT("scatter", RF_FITNESS_CARE, f.excess_scatter = 1.8);
-    FAULT("scatter", RF_FITNESS_UNFIT, f.excess_scatter = 5);
+    FAULT("scatter", RF_FITNESS_CARE, f.excess_scatter = ((RfValue){1.8, 0.1}));
+    FAULT("scatter", RF_FITNESS_FIT, f.excess_scatter = ((RfValue){1.8, 0.4})); /* by chance */
+    FAULT("scatter", RF_FITNESS_UNFIT, f.excess_scatter = ((RfValue){5, 0.2}));
     FAULT("memory", RF_FITNESS_CARE, f.error_correlation = ((RfValue){0.6, 0.05}));
     FAULT("memory", RF_FITNESS_FIT, f.error_correlation = ((RfValue){0.6, 0.2}));
     FAULT("memory", RF_FITNESS_UNFIT, f.standstill_share = 0.4);
     FAULT("lag", RF_FITNESS_CARE, f.keyframe_jump_px = ((RfValue){0.2, 0.03}));
     FAULT("lag", RF_FITNESS_UNFIT, f.keyframe_jump_px = ((RfValue){0.62, 0.05}));
-    FAULT("lag", RF_FITNESS_FIT, f.keyframe_jump_px = ((RfValue){0.62, 0.3}));
+    FAULT("lag", RF_FITNESS_FIT, f.keyframe_jump_px = ((RfValue){0.62, 0.25}));
 }
 
 /* Scripts rely on the keys. */
