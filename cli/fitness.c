@@ -337,9 +337,9 @@ static void judge_memory(GArray *lines, const RfFitnessFigures *f)
 static void judge_lag(GArray *lines, const RfFitnessFigures *f)
 {
     const RfValue jump = f->keyframe_jump_px;
-    if (!(jump.sigma > 0)) {
+    if (f->is_lossless || !(jump.sigma > 0)) {
         add(lines, "lag",
-            g_strdup(f->is_lossless ? "none possible" : "too few fresh starts of the encoder to tell"),
+            g_strdup(f->is_lossless ? "none: lossless" : "too few fresh starts of the encoder to tell"),
             RF_FITNESS_FIT, NULL);
         return;
     }

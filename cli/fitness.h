@@ -17,7 +17,7 @@ typedef struct {
     bool is_limited_range, is_interlaced, is_lossless;
     double bits_per_pixel; /* what the file spends on a stored pixel of a frame; 0: unknown */
     double frame_rate_hz;  /* mean */
-    bool is_rate_constant, are_times_doubtful; /* doubtful: some were missing or ran backwards */
+    bool is_rate_constant;
     double tick_s, duration_s;
     int64_t frames, times_missing, times_backwards, gaps;
 

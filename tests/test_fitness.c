@@ -138,9 +138,27 @@ static void faults_of_compression(void)
     FAULT("memory", RF_FITNESS_CARE, f.error_correlation = ((RfValue){0.6, 0.05}));
     FAULT("memory", RF_FITNESS_FIT, f.error_correlation = ((RfValue){0.6, 0.2}));
     FAULT("memory", RF_FITNESS_UNFIT, f.standstill_share = 0.4);
-    FAULT("lag", RF_FITNESS_CARE, f.keyframe_jump_px = ((RfValue){0.2, 0.03}));
-    FAULT("lag", RF_FITNESS_UNFIT, f.keyframe_jump_px = ((RfValue){0.62, 0.05}));
-    FAULT("lag", RF_FITNESS_FIT, f.keyframe_jump_px = ((RfValue){0.62, 0.25}));
+}
+
+/* Only where something was compressed away can a droplet lag. */
+static void lag_needs_a_lossy_file(void)
+{
+    static const struct {
+        RfValue jump_px;
+        bool is_lossless;
+        RfFitnessVerdict verdict;
+    } cases[] = {
+        {{0.2, 0.03}, false, RF_FITNESS_CARE}, {{0.62, 0.05}, false, RF_FITNESS_UNFIT},
+        {{0.62, 0.25}, false, RF_FITNESS_FIT}, {{-0.62, 0.05}, false, RF_FITNESS_FIT},
+        {{0.62, 0.05}, true, RF_FITNESS_FIT},  {{0, 0}, false, RF_FITNESS_FIT},
+    };
+    for (size_t i = 0; i < G_N_ELEMENTS(cases); i++) {
+        RfFitnessFigures figures = good();
+        figures.is_lossless = cases[i].is_lossless;
+        figures.keyframe_jump_px = cases[i].jump_px;
+        g_autoptr(GArray) lines = rf_fitness_judge(&figures);
+        g_assert_cmpint(line_of(lines, "lag").verdict, ==, cases[i].verdict);
+    }
 }
 
 /* Scripts rely on the keys. */
@@ -197,6 +215,7 @@ int main(int argc, char **argv)
     g_test_add_func("/fitness/judge/faults-of-the-picture", faults_of_the_picture);
     g_test_add_func("/fitness/judge/faults-of-the-droplets", faults_of_the_droplets);
     g_test_add_func("/fitness/judge/faults-of-compression", faults_of_compression);
+    g_test_add_func("/fitness/judge/lag-needs-a-lossy-file", lag_needs_a_lossy_file);
     g_test_add_func("/fitness/json/has-its-keys", json_has_its_keys);
     g_test_add_func("/fitness/text/fits-the-terminal", text_fits_the_terminal);
     return g_test_run();
