@@ -42,7 +42,8 @@ static bool report(RfResults *results, RfResultFolder *folder, GError **error)
 bool rf_write_results(RfResults *results, RfResultFolder *folder, RfWriteResultsPart part, GError **error)
 {
     if (!tables(results, folder, part, error)) return false;
-    g_autofree char *audit = results->audit->len ? rf_write_audit_json(results) : NULL;
+    g_autofree char *audit =
+        part != RF_WRITE_RESULTS_PATHS && results->audit->len ? rf_write_audit_json(results) : NULL;
     if (audit && !rf_result_folder_add_text(folder, "audit.json", audit, error)) return false;
     g_autofree char *scale = rf_write_json_scale(results);
     if (!rf_result_folder_add_text(folder, "scale.json", scale, error)) return false;

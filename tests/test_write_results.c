@@ -30,9 +30,9 @@ static void every_file(void)
 {
     g_autofree char *root = g_dir_make_tmp("risefall-write-XXXXXX", NULL);
     g_autofree char *folder = write_whole(root, "out", RF_WRITE_RESULTS_ALL);
-    const char *const names[] = {"paths.csv",    "segments.csv", "switches.csv",      "steps.csv",
-                                 "droplets.csv", "audit.csv",    "budget.csv",        "scale.json",
-                                 "summary.json", "report.html",  "figures/charges.gp"};
+    const char *const names[] = {"paths.csv",    "segments.csv", "switches.csv", "steps.csv",
+                                 "droplets.csv", "audit.csv",    "budget.csv",   "scale.json",
+                                 "summary.json", "audit.json",   "report.html",  "figures/charges.gp"};
     for (size_t i = 0; i < G_N_ELEMENTS(names); i++) {
         g_autofree char *text = content(folder, names[i]);
         g_assert_cmpuint(strlen(text), >, 60);
