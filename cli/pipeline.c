@@ -1,6 +1,7 @@
 #include "cli/pipeline.h"
 
 #include "cli/audit.h"
+#include "cli/certificate.h"
 #include "cli/conditions.h"
 #include "cli/digest.h"
 #include "cli/follow.h"
@@ -9,6 +10,7 @@
 #include "cli/read_paths.h"
 #include "cli/ruler.h"
 #include "cli/view.h"
+#include "cli/write_csv.h"
 
 #include <math.h>
 
@@ -104,8 +106,10 @@ static bool follow_recording(Road *road, const RfSettings *settings, const RfWat
     rf_ruler_describe(scale, rf_ruler_source(settings), &results->scale);
     rf_ruler_lines(scale, &follow->frame, &results->scale);
     road->scale_relative_u = scale_relative_u(scale, follow->frame.gravity_rad);
+    results->scale.u_relative_along_gravity = road->scale_relative_u;
     g_array_unref(results->paths);
     results->paths = g_steal_pointer(&follow->rows);
+    rf_write_csv_settle_paths(results->paths);
     rf_health_describe(results, watch, follow);
     results->view_png = rf_view_background_png(background);
     return true;

@@ -160,6 +160,7 @@ static bool read_scale(const char *path, RfScaleRow *scale, GError **error)
         .px_per_mm_y = member(object, "px_per_mm_y"),
         .u_px_per_mm_x = member(object, "u_px_per_mm_x"),
         .u_px_per_mm_y = member(object, "u_px_per_mm_y"),
+        .u_relative_along_gravity = member(object, "u_relative_along_gravity"),
         .rotation_deg = member(object, "rotation_deg"),
         .lines_found = (unsigned)fmax(0, fmin(1e6, member(object, "lines_found"))),
         .residual_px = member(object, "residual_px"),
@@ -173,6 +174,13 @@ static bool read_scale(const char *path, RfScaleRow *scale, GError **error)
     return true;
 }
 
+static double relative_u(const RfScaleRow *scale)
+{
+    if (scale->u_relative_along_gravity > 0)
+        return scale->u_relative_along_gravity;
+    return scale->found ? scale->u_px_per_mm_y / scale->px_per_mm_y : 0;
+}
+
 bool rf_read_paths(const char *path, RfResults *results, double *scale_relative_u, GError **error)
 {
     g_autoptr(RfTable) table = rf_table_read(path, error);
@@ -182,7 +190,7 @@ bool rf_read_paths(const char *path, RfResults *results, double *scale_relative_
     g_autofree char *scale_path = g_build_filename(folder, "scale.json", NULL);
     if (g_file_test(scale_path, G_FILE_TEST_EXISTS) && !read_scale(scale_path, &results->scale, error))
         return false;
-    *scale_relative_u = results->scale.found ? results->scale.u_px_per_mm_y / results->scale.px_per_mm_y : 0;
+    *scale_relative_u = relative_u(&results->scale);
     if (!results->scale.found)
         g_ptr_array_add(results->warnings,
                         g_strdup("no scale.json lies beside the paths: the scale's uncertainty is missing from u_charge_C"));

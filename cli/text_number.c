@@ -31,6 +31,14 @@ void rf_text_number_append_fixed(GString *out, double value, int decimals)
     g_string_append_len(out, text + at, (gssize)(sizeof text - at));
 }
 
+double rf_text_number_settle(double value, int decimals)
+{
+    g_return_val_if_fail(decimals >= 0 && decimals <= 9, value);
+    const double scaled = round(fabs(value) * POWER[decimals]);
+    if (!(scaled <= EXACT_LIMIT)) return value;
+    return scaled > 0 ? copysign(scaled / POWER[decimals], value) : 0;
+}
+
 void rf_text_number_append_exponent(GString *out, double value, int decimals)
 {
     g_return_if_fail(decimals >= 0 && decimals <= 15);

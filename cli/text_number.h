@@ -8,6 +8,8 @@
 
 /* value rounded to `decimals` (0 to 9), half away from zero; never "-0.00". Nothing at all for a value that is not finite. */
 void rf_text_number_append_fixed(GString *out, double value, int decimals);
+/* The number that is read back from what rf_text_number_append_fixed wrote. */
+double rf_text_number_settle(double value, int decimals);
 /* d.dddE-dd with `decimals` (0 to 15) behind the point. Nothing for a value that is not finite. */
 void rf_text_number_append_exponent(GString *out, double value, int decimals);
 /* 6.000(10), 12300(1200), 0(15); with sigma 0 up to six digits and no brackets. (returns new) */

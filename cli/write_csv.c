@@ -12,6 +12,7 @@ enum {
     TIME = 6,
     PLACE_PX = 4,
     PLACE_MM = 7,
+    SIGMA_MM = 8,
     SPEED = 6,
     RADIUS = 5,
     VOLTS = 3,
@@ -107,14 +108,45 @@ static void path_row(GString *out, const RfPathRow *row)
     fixed(out, row->u_smooth_x_px, PLACE_PX);
     fixed(out, row->u_smooth_y_px, PLACE_PX);
     fixed(out, row->snr, RATIO);
+    fixed(out, row->u_x_mm, SIGMA_MM);
+    fixed(out, row->u_y_mm, SIGMA_MM);
     end_row(out);
+}
+
+static void settle(double *value, int decimals)
+{
+    *value = rf_text_number_settle(*value, decimals);
+}
+
+static void settle_row(RfPathRow *row)
+{
+    settle(&row->time_s, TIME);
+    settle(&row->x_px, PLACE_PX);
+    settle(&row->y_px, PLACE_PX);
+    settle(&row->u_x_px, PLACE_PX);
+    settle(&row->u_y_px, PLACE_PX);
+    settle(&row->x_mm, PLACE_MM);
+    settle(&row->y_mm, PLACE_MM);
+    settle(&row->u_x_mm, SIGMA_MM);
+    settle(&row->u_y_mm, SIGMA_MM);
+    settle(&row->smooth_x_px, PLACE_PX);
+    settle(&row->smooth_y_px, PLACE_PX);
+    settle(&row->u_smooth_x_px, PLACE_PX);
+    settle(&row->u_smooth_y_px, PLACE_PX);
+    settle(&row->snr, RATIO);
+}
+
+void rf_write_csv_settle_paths(GArray *rows)
+{
+    for (guint i = 0; i < rows->len; i++)
+        settle_row(&g_array_index(rows, RfPathRow, i));
 }
 
 GString *rf_write_csv_paths(const RfResults *results)
 {
     GString *out = table("droplet,frame,time_s,x_px,y_px,u_px,x_mm,y_mm,seen,field,u_x_px,u_y_px,"
-                         "smooth_x_px,smooth_y_px,u_smooth_x_px,u_smooth_y_px,snr\n",
-                         results->paths->len, 144);
+                         "smooth_x_px,smooth_y_px,u_smooth_x_px,u_smooth_y_px,snr,u_x_mm,u_y_mm\n",
+                         results->paths->len, 166);
     for (guint i = 0; i < results->paths->len; i++)
         path_row(out, &g_array_index(results->paths, RfPathRow, i));
     return out;

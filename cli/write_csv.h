@@ -8,6 +8,9 @@
 #include "cli/results.h"
 
 GString *rf_write_csv_paths(const RfResults *results);
+/* Rounds every number of the RfPathRow to what paths.csv says, so that what is measured from the rows is what anyone can
+ * measure from the file. */
+void rf_write_csv_settle_paths(GArray *rows);
 GString *rf_write_csv_segments(const RfResults *results);
 GString *rf_write_csv_switches(const RfResults *results);
 GString *rf_write_csv_steps(const RfResults *results);

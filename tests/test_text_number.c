@@ -73,6 +73,20 @@ static void concise_cases(void)
     g_assert_cmpstr(scaled, ==, "1.6022(31)");
 }
 
+/* What is settled is what a reader of the text gets, to the last bit. */
+static void settle_is_what_is_read_back(void)
+{
+    const double values[] = {0, -0.0, 0.33333333333333331, -17.04565, 123456.7890625, 4.4e-9, -4.4e-9, 1e17, 639.99995};
+    for (size_t i = 0; i < G_N_ELEMENTS(values); i++)
+        for (int decimals = 0; decimals <= 9; decimals++) {
+            g_autoptr(GString) text = g_string_new("");
+            rf_text_number_append_fixed(text, values[i], decimals);
+            const double read = g_ascii_strtod(text->str, NULL), settled = rf_text_number_settle(values[i], decimals);
+            g_assert_true(settled == read && signbit(settled) == signbit(read));
+            g_assert_true(rf_text_number_settle(settled, decimals) == settled);
+        }
+}
+
 static void locale_does_not_matter(void)
 {
     if (!setlocale(LC_NUMERIC, "de_DE.UTF-8"))
@@ -87,6 +101,7 @@ int main(int argc, char **argv)
     g_test_init(&argc, &argv, NULL);
     g_test_add_func("/text_number/fixed/limits", fixed_limits);
     g_test_add_func("/text_number/fixed/agrees-with-printf", fixed_agrees_with_printf);
+    g_test_add_func("/text_number/settle/is-what-is-read-back", settle_is_what_is_read_back);
     g_test_add_func("/text_number/exponent/form", exponent_form);
     g_test_add_func("/text_number/concise/published", concise_published);
     g_test_add_func("/text_number/concise/cases", concise_cases);

@@ -81,6 +81,8 @@ static void path_row_digits(void)
                            .u_y_px = 0.04,
                            .x_mm = 0.0617283,
                            .y_mm = 1,
+                           .u_x_mm = 0.00015121,
+                           .u_y_mm = 0.000201613,
                            .snr = 9.5};
     g_array_append_val(results->paths, row);
     g_autoptr(GString) text = rf_write_csv_paths(results);
@@ -89,7 +91,12 @@ static void path_row_digits(void)
     g_assert_cmpstr(
         first, ==,
         "3,12,0.400400,12.3457,0.0000,0.0354,0.0617283,1.0000000,1,1,0.0300,0.0400,0.0000,0.0000,0.0000,"
-        "0.0000,9.500");
+        "0.0000,9.500,0.00015121,0.00020161");
+    rf_write_csv_settle_paths(results->paths);
+    g_assert_cmpfloat(g_array_index(results->paths, RfPathRow, 0).u_y_mm, ==, 0.00020161);
+    g_assert_cmpfloat(g_array_index(results->paths, RfPathRow, 0).y_px, ==, 0);
+    g_autoptr(GString) settled = rf_write_csv_paths(results);
+    g_assert_cmpstr(settled->str, ==, text->str);
 }
 
 static void absent_is_empty(void)

@@ -282,8 +282,15 @@ RfResults *sample_results_new(void)
     results->measured = true;
     results->verdict =
         g_strdup("Six of seven droplets carry whole multiples of one unit of charge, 1.6049(13)e-19 C");
-    results->scale = (RfScaleRow){
-        true, 198.41, 198.37, 0.21, 0.23, 1.204, 18, 0.061, g_strdup("the recording's own background")};
+    results->scale = (RfScaleRow){.found = true,
+                                  .px_per_mm_x = 198.41,
+                                  .px_per_mm_y = 198.37,
+                                  .u_px_per_mm_x = 0.21,
+                                  .u_px_per_mm_y = 0.23,
+                                  .rotation_deg = 1.204,
+                                  .lines_found = 18,
+                                  .residual_px = 0.061,
+                                  .source = g_strdup("the recording's own background")};
     g_ptr_array_add(results->warnings,
                     g_strdup("gravity: no value in the sheet; 9.80665 m/s^2 taken, with 0.3 % uncertainty"));
     add_droplets(results);
