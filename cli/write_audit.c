@@ -12,7 +12,9 @@ enum { MOST_SHOWN = 40 };
 static void number(GString *out, const char *name, double value, int decimals, bool is_exponent)
 {
     g_string_append_printf(out, "    \"%s\": ", name);
-    if (is_exponent)
+    if (!isfinite(value)) /* JSON has no word for what is not a number */
+        g_string_append(out, "null");
+    else if (is_exponent)
         rf_text_number_append_exponent(out, value, decimals);
     else
         rf_text_number_append_fixed(out, value, decimals);

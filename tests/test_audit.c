@@ -12,6 +12,7 @@
 #include <glib/gstdio.h>
 #include <gsl/gsl_errno.h>
 #include <gsl/gsl_randist.h>
+#include <json-glib/json-glib.h>
 #include <math.h>
 #include <string.h>
 #include <time.h>
@@ -443,6 +444,20 @@ static RfMedium air(void)
                       .plate_gap_m = 6e-3};
 }
 
+static void assert_json_says(const RfResults *results)
+{
+    g_autofree char *text = rf_write_audit_json(results);
+    g_autoptr(JsonParser) parser = json_parser_new();
+    g_assert_true(json_parser_load_from_data(parser, text, -1, NULL));
+    JsonObject *root = json_node_get_object(json_parser_get_root(parser));
+    JsonObject *person = json_object_get_object_member(root, "person");
+    g_assert_cmpint(json_object_get_int_member(person, "sound"), ==, results->person.sound);
+    g_assert_cmpfloat_with_epsilon(json_object_get_double_member(person, "bias_s"),
+                                   results->person.bias_s.value, 1e-6);
+    g_assert_cmpuint(json_array_get_length(json_object_get_array_member(root, "charges")), ==,
+                     results->hand_charges->len);
+}
+
 static void charge_from_the_stopwatch(void)
 {
     const RfMedium medium = air();
@@ -472,6 +487,7 @@ static void charge_from_the_stopwatch(void)
     g_assert_cmpfloat_with_epsilon(found->corrected_C.value / charge, 1, 0.01);
     g_assert_cmpfloat(found->raw_C.value / charge, <, 0.97); /* timed too long: too slow, too little charge */
     g_assert_true(results->person.has_charge_effect);
+    assert_json_says(results);
     g_assert_cmpfloat(results->person.charge_effect.value, <, -0.03);
     g_assert_cmpfloat(results->person.velocity_effect.value, <, -0.03);
 }
