@@ -154,9 +154,11 @@ static void append_voltages(GString *out, const RfPlanConditions *conditions)
     for (unsigned i = 0; i < RF_PLAN_VOLTAGES; i++)
         g_string_append_printf(out, "%s %.*f V: %u", i ? "," : "", decimals, voltages.voltage_V[i],
                                voltages.picks[i]);
-    g_string_append_printf(out,
-                           "\n         of %u worth picking; best %.*f V, if supply and local rules allow\n",
-                           rf_plan_radii * RF_PLAN_UNITS_MOST, decimals, voltages.voltage_V[voltages.best]);
+    g_string_append_printf(out, "\n         of %u worth picking", rf_plan_radii * RF_PLAN_UNITS_MOST);
+    if (voltages.picks[voltages.best] > 0)
+        g_string_append_printf(out, "; best %.*f V, if supply and local rules allow", decimals,
+                               voltages.voltage_V[voltages.best]);
+    g_string_append_c(out, '\n');
 }
 
 static void append_common(GString *out, const RfPlanCommon *common)

@@ -37,7 +37,7 @@ void rf_plan_figure(const RfPlanConditions *conditions, GString *data, GString *
     g_string_append(
         script,
         "set key top right reverse Left samplen 2\nset logscale xy\nset xlabel 'radius, µm'\n"
-        "set ylabel 'attainable u(q), units of e'\nset xrange [0.2:2]\nset yrange [0.01:10]\n"
+        "set ylabel 'attainable u(q), units of e (q V < 0)'\nset xrange [0.2:2]\nset yrange [0.01:10]\n"
         "set xtics (0.2, 0.3, 0.5, 0.7, 1, 1.5, 2)\nset ytics (0.01, 0.03, 0.1, 0.3, 1, 3, 10)\nplot ");
     rf_figure_text_number(script, RF_PLAN_GOOD_U_E);
     g_string_append(script, " with lines lc rgb '#808080' lw 1.5 title 'an integer can be named below'");
