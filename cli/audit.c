@@ -24,6 +24,12 @@ static void warn_of_problems(RfResults *results, const char *path, const RfHandT
         }
 }
 
+bool rf_audit_can_read(const char *path, GError **error)
+{
+    g_autoptr(RfHandTimings) timings = rf_hand_timings_read(path, error);
+    return timings != NULL;
+}
+
 bool rf_audit_timings(const char *path, RfResults *results, const RfMedium *medium, GError **error)
 {
     g_autoptr(RfHandTimings) timings = rf_hand_timings_read(path, error);

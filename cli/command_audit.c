@@ -4,6 +4,7 @@
 #include "cli/result_folder.h"
 #include "cli/write_audit.h"
 
+#include <glib/gstdio.h>
 #include <stdio.h>
 
 static char *against, *out;
@@ -32,12 +33,28 @@ static void tell(const RfResults *results)
         fprintf(stderr, "risefall: note: %s\n", (const char *)g_ptr_array_index(results->warnings, i));
 }
 
+/* The results would be replaced by their audit. */
+static bool is_elsewhere(GError **error)
+{
+    g_autofree char *from = g_canonicalize_filename(against, NULL),
+                    *to = out ? g_canonicalize_filename(out, NULL) : NULL;
+    GStatBuf one, other;
+    bool is_same =
+        to && (g_str_equal(from, to) || (g_stat(from, &one) == 0 && g_stat(to, &other) == 0 &&
+                                         one.st_dev == other.st_dev && one.st_ino == other.st_ino));
+    if (is_same)
+        g_set_error(error, RF_COMMAND_ERROR, RF_COMMAND_ERROR_USAGE,
+                    "--out %s is the folder of --against, whose results would be lost; name another", out);
+    return !is_same;
+}
+
 static RfExit run(char **arguments, GError **error)
 {
     const char *timings;
     if (!rf_command_one_argument(arguments, "a table of hand timings", &timings, error) ||
         !rf_command_required(against, "--against", "DIR", error))
         return RF_EXIT_USAGE;
+    if (!is_elsewhere(error)) return RF_EXIT_USAGE;
     if (out && !rf_result_folder_may_replace(out, error)) return RF_EXIT_INPUT;
     RfMedium medium;
     bool has_medium;

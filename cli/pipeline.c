@@ -119,7 +119,16 @@ static bool set_out(Road *road, const RfSettings *settings, GError **error)
 {
     road->results = new_results(settings, error);
     road->supply = road->results ? rf_measure_supply_new(settings, error) : NULL;
-    return road->supply != NULL;
+    /* A table that is none is said now, not after the work. */
+    return road->supply != NULL && (!settings->timings || rf_audit_can_read(settings->timings, error));
+}
+
+/* A record that can't be audited is no reason to lose the run. */
+static void audit(RfResults *results, const RfSettings *settings, const RfMedium *medium)
+{
+    g_autoptr(GError) error = NULL;
+    if (settings->timings && !rf_audit_timings(settings->timings, results, medium, &error))
+        g_ptr_array_add(results->warnings, g_strdup(error->message));
 }
 
 static bool measure(Road *road, const RfSettings *settings, const RfWatchHooks *hooks, GError **error)
@@ -128,7 +137,8 @@ static bool measure(Road *road, const RfSettings *settings, const RfWatchHooks *
     if (!rf_measure_paths(road->results, &inputs, road->supply, hooks->threads, error))
         return false;
     const RfMedium medium = rf_charge_budget_medium(&inputs);
-    return !settings->timings || rf_audit_timings(settings->timings, road->results, &medium, error);
+    audit(road->results, settings, &medium);
+    return true;
 }
 
 static RfResults *arrive(Road *road, bool is_well)
