@@ -4,6 +4,7 @@
 #include "cli/tally.h"
 #include "physics/charge_unit.h"
 #include "physics/constants.h"
+#include "physics/two_radii.h"
 #include "physics/whole_multiples.h"
 
 #include <math.h>
@@ -21,6 +22,28 @@ static const double misfit_sigmas = 4;
 static const double disagreement_p = 1e-3;
 
 /* ---- droplets ---- */
+
+/* "; likely: dust (it carries no charge, 0.1 e at most); nothing speaks for: evaporation (...)" */
+static char *causes_text(const RfTrail *trails, const RfDropletSet *set, const RfMedium *medium, size_t droplet)
+{
+    RfCauseEvidence causes[RF_CAUSES];
+    GString *text = g_string_new(NULL);
+    rf_two_radii_examine(trails, set, medium, droplet, causes);
+    for (int is_for = 1; is_for >= 0; is_for--) {
+        bool is_first = true;
+        for (int c = 0; c < RF_CAUSES; c++) {
+            if (causes[c].is_supported != (is_for == 1))
+                continue;
+            g_string_append_printf(text, "%s%s (%s)",
+                                   !is_first ? ", " : is_for ? "; likely: " : "; nothing speaks for: ",
+                                   rf_cause_to_string((RfCause)c), causes[c].evidence);
+            is_first = false;
+        }
+    }
+    for (int c = 0; c < RF_CAUSES; c++)
+        g_free(causes[c].evidence);
+    return g_string_free(text, FALSE);
+}
 
 static char *why_set_aside(const RfDropletFit *fit, const RfSpellFit *spell, const RfFieldTimeline *timeline,
                            double u_charge_coulomb)
@@ -196,16 +219,35 @@ static bool add_fitted(RfResults *results, unsigned droplet, const RfDropletFit 
     return true;
 }
 
+/* A disagreement of the two radii gets its possible causes beside it. */
+static void add_causes(RfResults *results, guint first_row, const RfTrail *trails, const RfDropletSet *set,
+                       const RfChargeInputs *inputs, size_t droplet)
+{
+    const RfMedium medium = rf_charge_budget_medium(inputs);
+    g_autofree char *causes = causes_text(trails, set, &medium, droplet);
+    for (guint r = first_row; r < results->droplets->len; r++) {
+        RfDropletRow *row = &g_array_index(results->droplets, RfDropletRow, r);
+        if (row->accepted || !g_str_has_prefix(row->reason, "radius from the fall"))
+            continue;
+        char *longer = g_strconcat(row->reason, causes, NULL);
+        g_free(row->reason);
+        row->reason = longer;
+    }
+}
+
 bool rf_assess_droplets(RfResults *results, const RfTrail *trails, const RfDropletSet *set,
                         const RfChargeInputs *inputs, GError **error)
 {
     for (size_t i = 0; i < set->n; i++) {
         const RfDropletResult *result = &set->droplets[i];
         Seen seen = seen_of(results->paths, trails[i].droplet);
+        guint first_row = results->droplets->len;
         if (result->fit.state != RF_FIT_DONE)
             add_unfitted(results, trails[i].droplet, &result->fit, &seen);
         else if (!add_fitted(results, trails[i].droplet, &result->fit, seen.median_snr, set->timeline, inputs, error))
             return false;
+        if (result->fit.state == RF_FIT_DONE && result->fit.radius_agreement_p < disagreement_p)
+            add_causes(results, first_row, trails, set, inputs, i);
         add_steps(results, trails[i].droplet, result->steps);
     }
     return true;

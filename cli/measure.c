@@ -2,6 +2,7 @@
 
 #include "calib/voltage_log.h"
 #include "cli/assess.h"
+#include "cli/effects.h"
 #include "cli/trails.h"
 
 #include <math.h>
@@ -251,6 +252,7 @@ bool rf_measure_paths(RfResults *results, const RfChargeInputs *inputs, const Rf
             !rf_assess_budget(results, trails->trails, set, &shared, error))
             return false;
         warn_of_timeline(results, set->timeline);
+        rf_effects_state(results, trails->trails, set, &shared);
     }
     rf_assess_unit(results);
     rf_assess_run(results);

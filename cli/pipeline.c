@@ -134,7 +134,8 @@ static void audit(RfResults *results, const RfSettings *settings, const RfMedium
 static bool measure(Road *road, const RfSettings *settings, const RfWatchHooks *hooks, GError **error)
 {
     const RfChargeInputs inputs = rf_conditions_of(settings, road->scale_relative_u);
-    if (!rf_measure_paths(road->results, &inputs, road->supply, hooks->threads, error))
+    if (!rf_measure_paths(road->results, &inputs, road->supply, hooks->threads, error) ||
+        !rf_certificate_check(road->results, settings, &inputs, error))
         return false;
     const RfMedium medium = rf_charge_budget_medium(&inputs);
     audit(road->results, settings, &medium);

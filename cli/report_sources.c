@@ -100,6 +100,49 @@ static void recording(GString *out, const RfResults *results)
     rf_report_text_table_end(out);
 }
 
+static void certificate(GString *out, const GArray *rows)
+{
+    if (rows->len == 0) return;
+    g_string_append(out, "<h3>Against the certificate</h3>\n"
+                         "<p>E<sub>n</sub> between -1 and 1: they agree within expanded uncertainties.</p>\n");
+    rf_report_text_table(out, "Table of certified against found",
+                         "<th scope=\"col\">Quantity</th><th scope=\"col\">Certified</th><th "
+                         "scope=\"col\">Found</th><th scope=\"col\" class=\"number\">E<sub>n</sub></th><th "
+                         "scope=\"col\" class=\"number\">Droplets</th>");
+    for (guint i = 0; i < rows->len; i++) {
+        const RfCertificateRow *row = &g_array_index(rows, RfCertificateRow, i);
+        g_autofree char *certified = rf_text_number_concise(row->certified),
+                        *found = rf_text_number_concise(row->found);
+        g_autofree char *certified_unit = g_strdup_printf("%s %s", certified, row->unit),
+                        *found_unit = g_strdup_printf("%s %s", found, row->unit);
+        g_string_append_printf(out, "<tr><th scope=\"row\">%s</th>", row->quantity);
+        rf_report_text_cell(out, false, certified_unit);
+        rf_report_text_cell(out, false, found_unit);
+        rf_report_text_fixed_cell(out, row->en_number, 2);
+        g_string_append_printf(out, "<td class=\"number\">%u</td></tr>\n", row->droplets);
+    }
+    rf_report_text_table_end(out);
+}
+
+static void effects(GString *out, const GArray *rows)
+{
+    if (rows->len == 0) return;
+    g_string_append(out, "<h3>Effects beside the formula</h3>\n");
+    rf_report_text_table(out, "Table of effects",
+                         "<th scope=\"col\">Effect</th><th scope=\"col\">Size</th><th scope=\"col\">What was "
+                         "done</th>");
+    for (guint i = 0; i < rows->len; i++) {
+        const RfEffectRow *row = &g_array_index(rows, RfEffectRow, i);
+        g_string_append(out, "<tr><th scope=\"row\">");
+        rf_report_text(out, row->effect);
+        g_string_append(out, "</th>");
+        rf_report_text_cell(out, false, row->size);
+        rf_report_text_cell(out, false, row->done);
+        g_string_append(out, "</tr>\n");
+    }
+    rf_report_text_table_end(out);
+}
+
 static void settings(GString *out, const GArray *rows)
 {
     g_string_append(out, "<h3>Every setting used</h3>\n");
@@ -178,6 +221,8 @@ void rf_report_sources(GString *out, const RfResults *results)
 {
     rf_report_text_open(out, "sources", "Where the numbers come from");
     recording(out, results);
+    certificate(out, results->certificate);
+    effects(out, results->effects);
     settings(out, results->settings);
     notes(out, results->notes);
     files(out, results);

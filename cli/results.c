@@ -41,6 +41,14 @@ static void hand_charge_clear(void *item)
     g_free(((RfHandChargeRow *)item)->label);
 }
 
+static void effect_clear(void *item)
+{
+    RfEffectRow *row = item;
+    g_free(row->effect);
+    g_free(row->size);
+    g_free(row->done);
+}
+
 static GArray *rows(size_t size, GDestroyNotify clear)
 {
     GArray *array = g_array_new(FALSE, TRUE, (guint)size);
@@ -64,6 +72,8 @@ RfResults *rf_results_new(void)
     results->budget = rows(sizeof(RfBudgetRow), budget_clear);
     results->audit = rows(sizeof(RfAuditRow), audit_clear);
     results->hand_charges = rows(sizeof(RfHandChargeRow), hand_charge_clear);
+    results->effects = rows(sizeof(RfEffectRow), effect_clear);
+    results->certificate = rows(sizeof(RfCertificateRow), NULL);
     results->unit.curve_unit_C = rows(sizeof(double), NULL);
     results->unit.curve_log_likelihood = rows(sizeof(double), NULL);
     return results;
@@ -82,7 +92,7 @@ void rf_results_free(RfResults *results)
                         results->paths,  results->segments,          results->switches,
                         results->steps,  results->droplets,          results->budget,
                         results->audit,  results->unit.curve_unit_C, results->unit.curve_log_likelihood,
-                        results->hand_charges};
+                        results->hand_charges, results->effects, results->certificate};
     for (size_t i = 0; i < G_N_ELEMENTS(arrays); i++) free_array(arrays[i]);
     if (results->warnings) g_ptr_array_unref(results->warnings);
     if (results->view_png) g_bytes_unref(results->view_png);

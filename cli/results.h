@@ -136,6 +136,17 @@ typedef struct { /* a droplet's charge from hand timings alone, over one spell o
     RfValue tracked_C;
 } RfHandChargeRow;
 
+typedef struct { /* an effect on the droplets that isn't in the charge's formula */
+    char *effect, *size, *done; /* "evaporation", how large, what was done about it */
+} RfEffectRow;
+
+typedef struct { /* spheres of known size: what was found against their certificate */
+    const char *quantity, *unit; /* static */
+    RfValue certified, found;    /* sigma of found: common parts too */
+    double en_number;            /* |E_n| <= 1: they agree */
+    unsigned droplets;           /* that found is the mean of; 0: of none in particular */
+} RfCertificateRow;
+
 typedef struct { /* a setting as it was used, for report and summary.json */
     char *group, *key, *value;
     bool is_default;
@@ -172,6 +183,8 @@ typedef struct {
     GBytes *view_png;        /* the background with the paths drawn over it, or NULL */
     RfPersonRow person;
     GArray *hand_charges;    /* RfHandChargeRow */
+    GArray *effects;         /* RfEffectRow */
+    GArray *certificate;     /* RfCertificateRow; empty without a certificate */
     bool measured;           /* false: ran, but nothing could be measured (exit 3) */
     char *verdict;           /* one sentence */
 } RfResults;

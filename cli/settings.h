@@ -56,6 +56,9 @@ typedef struct {
     RfValue density_kg_m3;
     RfMaybeValue density_at_kelvin, density_slope_kg_m3_kelvin; /* both or neither */
 
+    /* [certificate]: of spheres in place of oil */
+    RfMaybeValue certified_radius_m, certified_density_kg_m3;
+
     /* [air]: the temperature is that of the thermistor where the sheet gives a resistance */
     RfValue temperature_kelvin;
     RfMaybeValue resistance_ohm; /* of the thermistor, where it serves */

@@ -47,6 +47,11 @@ const RfSettingsKey rf_settings_keys[] = {
     {"oil", "density_slope", RF_KEY_MAYBE_QUANTITY, "kg m-3 K-1", -50, 50, NULL, NULL,
      "change with temperature, as in -0.65(5) kg/m^3/K; needs density_at", SET(density_slope_kg_m3_kelvin)},
 
+    {"certificate", "radius", RF_KEY_MAYBE_QUANTITY, "m", 1e-8, 1e-4, NULL, NULL,
+     "certified spheres in place of oil: their radius, as in 0.500(3) um; checks the whole chain", SET(certified_radius_m)},
+    {"certificate", "density", RF_KEY_MAYBE_QUANTITY, "kg m-3", 100, 3e4, NULL, NULL,
+     "their density, as in 1050.0(5) kg/m^3, against that of [oil]", SET(certified_density_kg_m3)},
+
     {"air", "temperature", RF_KEY_MAYBE_QUANTITY, "K", 200, 400, NULL, NULL,
      "in the cell, as in 23.0(2) degC; or resistance beside a [thermistor] group", AT(temperature_kelvin)},
     {"air", "resistance", RF_KEY_MAYBE_QUANTITY, "ohm", 1e-3, 1e9, NULL, NULL,

@@ -141,7 +141,7 @@ char *rf_simulate_scene_text(const RfScene *scene, const char *group, const char
 
 static bool is_known(const char *group, const char *key)
 {
-    if (g_str_equal(group, "notes")) return true;
+    if (g_str_equal(group, "notes") || g_str_equal(group, "certificate")) return true;
     if (g_str_has_prefix(group, "droplet ")) return !key || g_strv_contains(droplet_keys, key);
     return find_key(group, key) != NULL;
 }

@@ -30,13 +30,14 @@ static void append_reticle(GString *out, const RfScene *scene)
     copy(out, scene, "reticle", "lines");
 }
 
-static void append_notes(GString *out, const RfScene *scene)
+/* Word for word. */
+static void append_group(GString *out, const RfScene *scene, const char *group)
 {
-    g_auto(GStrv) keys = g_key_file_get_keys(scene->source, "notes", NULL, NULL);
+    g_auto(GStrv) keys = g_key_file_get_keys(scene->source, group, NULL, NULL);
     if (!keys) return;
-    g_string_append(out, "[notes]\n");
+    g_string_append_printf(out, "[%s]\n", group);
     for (int i = 0; keys[i]; i++) {
-        g_autofree char *text = g_key_file_get_value(scene->source, "notes", keys[i], NULL);
+        g_autofree char *text = g_key_file_get_value(scene->source, group, keys[i], NULL);
         g_string_append_printf(out, "%s=%s\n", keys[i], text);
     }
 }
@@ -60,6 +61,7 @@ char *rf_simulate_sheet(const RfScene *scene, const char *video)
     copy(out, scene, "supply", "voltage");
     copy(out, scene, "supply", "states");
     if (scene->log_interval_s > 0) g_string_append(out, "log=volts.csv\n");
-    append_notes(out, scene);
+    append_group(out, scene, "certificate");
+    append_group(out, scene, "notes");
     return g_string_free(out, FALSE);
 }

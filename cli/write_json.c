@@ -157,6 +157,41 @@ static void warnings(JsonBuilder *json, const GPtrArray *list)
     json_builder_end_array(json);
 }
 
+static void effects(JsonBuilder *json, const GArray *rows)
+{
+    json_builder_set_member_name(json, "effects");
+    json_builder_begin_array(json);
+    for (guint i = 0; i < rows->len; i++) {
+        const RfEffectRow *row = &g_array_index(rows, RfEffectRow, i);
+        json_builder_begin_object(json);
+        words(json, "effect", row->effect);
+        words(json, "size", row->size);
+        words(json, "done", row->done);
+        json_builder_end_object(json);
+    }
+    json_builder_end_array(json);
+}
+
+static void certificate(JsonBuilder *json, const GArray *rows)
+{
+    json_builder_set_member_name(json, "certificate");
+    json_builder_begin_array(json);
+    for (guint i = 0; i < rows->len; i++) {
+        const RfCertificateRow *row = &g_array_index(rows, RfCertificateRow, i);
+        json_builder_begin_object(json);
+        words(json, "quantity", row->quantity);
+        words(json, "unit", row->unit);
+        number(json, "certified", row->certified.value);
+        number(json, "u_certified", row->certified.sigma);
+        number(json, "found", row->found.value);
+        number(json, "u_found", row->found.sigma);
+        number(json, "en_number", row->en_number);
+        whole(json, "droplets", row->droplets);
+        json_builder_end_object(json);
+    }
+    json_builder_end_array(json);
+}
+
 char *rf_write_json_summary(const RfResults *results)
 {
     const RfTally tally = rf_tally_droplets(results);
@@ -174,6 +209,8 @@ char *rf_write_json_summary(const RfResults *results)
     whole(json, "switches", results->switches->len);
     whole(json, "steps", results->steps->len);
     warnings(json, results->warnings);
+    certificate(json, results->certificate);
+    effects(json, results->effects);
     words(json, "sheet", results->sheet_path);
     recording(json, results);
     inputs(json, results->inputs);
