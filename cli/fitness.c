@@ -348,9 +348,9 @@ static void judge_lag(GArray *lines, const RfFitnessFigures *f)
     const bool is_seen = jump.value > 3 * jump.sigma;
     /* a lag shifts switches in time, and a speed just after each reversal */
     add(lines, "lag", text,
-        is_seen && jump.value > 0.5 ? RF_FITNESS_UNFIT
-        : is_seen                   ? RF_FITNESS_CARE
-                                    : RF_FITNESS_FIT,
+        jump.value > fmax(0.5, 5 * jump.sigma) ? RF_FITNESS_UNFIT
+        : is_seen                              ? RF_FITNESS_CARE
+                                               : RF_FITNESS_FIT,
         "compression drags droplets behind their motion; record with less of it, with a keyframe every "
         "second");
 }
