@@ -152,6 +152,13 @@ static bool look_at_all(RfWatch *watch, const RfWatchHooks *hooks, GError **erro
     return is_done;
 }
 
+/* All codecs in use since H.264 but MPEG-4's first visual part; those before have no filter in the loop. */
+static bool predicts_from_smoothed(const char *codec)
+{
+    return codec && !g_str_has_prefix(codec, "mpeg") && !g_str_has_prefix(codec, "h263") &&
+           g_strcmp0(codec, "dvvideo") != 0;
+}
+
 RfWatch *rf_watch_recording(const RfSettings *settings, const RfWatchHooks *hooks, GError **error)
 {
     g_autoptr(RfWatch) watch = g_new0(RfWatch, 1);
@@ -165,7 +172,7 @@ RfWatch *rf_watch_recording(const RfSettings *settings, const RfWatchHooks *hook
         g_prefix_error(error, "%s: ", (const char *)g_ptr_array_index(settings->videos, 0));
         return NULL;
     }
-    rf_coding_noise_apply(watch->sightings);
+    rf_coding_noise_apply(watch->sightings, predicts_from_smoothed(info->codec));
     return g_steal_pointer(&watch);
 }
 

@@ -3,54 +3,75 @@
 #include <math.h>
 
 enum { LEAST_SPOTS = 30 };
-static const double MOST_EXCESS = 40; /* of one spot: a neighbour unnoticed, not noise */
 
 /* Sums over spots whose excess is known. */
 typedef struct {
-    double twofold, threefold, n;
+    double excess, n;
 } Sums;
 
-/* One kind of picture. */
+/* All pictures coded alike. */
 typedef struct {
+    GArray *seen; /* of float: excess of every spot */
+    double level; /* of the excess, which a few misfits don't move */
     Sums sums;
-    double inside, groups,
-        n2;         /* squares of twofold about each picture's mean; pictures; sum of their n squared */
-    double between; /* squares of pictures' means of twofold about the common mean, times n */
-    double weight;  /* in spots: how firmly a picture is drawn to the common mean */
+    double groups, n2;      /* pictures with spots; sum of the squares of their n */
+    double inside, between; /* squares about each picture's mean; of those, times n, about the common one */
+    double weight;          /* in spots: how firmly a picture is drawn to the common mean */
 } Kind;
 
 static bool is_telling(const RfSpot *spot)
 {
-    return spot->excess.twofold > 0 && !(spot->flags & ~(unsigned)RF_SPOT_LINE);
+    return spot->excess > 0 && !(spot->flags & ~(unsigned)RF_SPOT_LINE);
 }
 
-static double bounded(float excess)
+/* For comparing pictures: beyond three times the level it is a neighbour unnoticed rather than noise. */
+static double bounded(const Kind *kind, const RfSpot *spot)
 {
-    return fmin((double)excess, MOST_EXCESS);
+    return fmin((double)spot->excess, 3 * kind->level);
 }
 
-static Sums sums_of(const RfSightings *sightings, const RfExposure *exposure)
+static Sums sums_of(const RfSightings *sightings, const RfExposure *exposure, const Kind *kind)
 {
-    Sums sums = {0};
+    Sums sums = {0, 0};
     for (unsigned i = 0; i < exposure->spots; i++) {
         const RfSpot *spot = &g_array_index(sightings->spots, RfSpot, exposure->first_spot + i);
         if (!is_telling(spot)) continue;
-        sums.twofold += bounded(spot->excess.twofold);
-        sums.threefold += bounded(spot->excess.threefold);
+        sums.excess += bounded(kind, spot);
         sums.n++;
     }
     return sums;
 }
 
-static RfCoding kind_of(const RfExposure *exposure)
+static RfCoding coding_of(const RfExposure *exposure)
 {
     return exposure->coding < RF_CODINGS ? (RfCoding)exposure->coding : RF_CODING_UNKNOWN;
 }
 
+static void collect(const RfSightings *sightings, const RfExposure *exposure, Kind *kind)
+{
+    for (unsigned i = 0; i < exposure->spots; i++) {
+        const RfSpot *spot = &g_array_index(sightings->spots, RfSpot, exposure->first_spot + i);
+        if (is_telling(spot)) g_array_append_val(kind->seen, spot->excess);
+    }
+}
+
+static int compare_floats(const void *a, const void *b)
+{
+    float x = *(const float *)a, y = *(const float *)b;
+    return (x > y) - (x < y);
+}
+
+/* The median of an exponential variable is ln 2 of its mean. */
+static void find_level(Kind *kind)
+{
+    if (!kind->seen->len) return;
+    g_array_sort(kind->seen, compare_floats);
+    kind->level = (double)g_array_index(kind->seen, float, kind->seen->len / 2) / G_LN2;
+}
+
 static void add_sums(Kind *kind, const Sums *sums)
 {
-    kind->sums.twofold += sums->twofold;
-    kind->sums.threefold += sums->threefold;
+    kind->sums.excess += sums->excess;
     kind->sums.n += sums->n;
     kind->n2 += sums->n * sums->n;
     kind->groups += sums->n > 0;
@@ -58,19 +79,19 @@ static void add_sums(Kind *kind, const Sums *sums)
 
 static void add_squares(const RfSightings *sightings, const RfExposure *exposure, Kind *kind)
 {
-    Sums sums = sums_of(sightings, exposure);
+    Sums sums = sums_of(sightings, exposure, kind);
     if (!(sums.n > 0)) return;
-    double mean = sums.twofold / sums.n, away = mean - kind->sums.twofold / kind->sums.n;
+    double mean = sums.excess / sums.n, away = mean - kind->sums.excess / kind->sums.n;
     kind->between += sums.n * away * away;
     for (unsigned i = 0; i < exposure->spots; i++) {
         const RfSpot *spot = &g_array_index(sightings->spots, RfSpot, exposure->first_spot + i);
-        if (is_telling(spot)) kind->inside += pow(bounded(spot->excess.twofold) - mean, 2);
+        if (is_telling(spot)) kind->inside += pow(bounded(kind, spot) - mean, 2);
     }
 }
 
 /* One-way analysis of variance with pictures as random groups of unequal size (e.g. S. R. Searle, G. Casella and C. E.
- * McCulloch, Variance Components, 1992, section 3.6): the best linear prediction of a picture's mean. What
- * chance may make of equal pictures (two sigma) is no difference. */
+ * McCulloch, Variance Components, 1992, section 3.6): the best linear prediction of a picture's mean. What chance may
+ * make of equal pictures (two sigma) is no difference. */
 static void weigh(Kind *kind)
 {
     double n = kind->sums.n, inside = kind->inside / fmax(1, n - kind->groups);
@@ -85,33 +106,35 @@ static void learn(const RfSightings *sightings, Kind kinds[RF_CODINGS])
     const GArray *exposures = sightings->exposures;
     for (unsigned e = 0; e < exposures->len; e++) {
         const RfExposure *exposure = &g_array_index(exposures, RfExposure, e);
-        Sums sums = sums_of(sightings, exposure);
-        add_sums(&kinds[kind_of(exposure)], &sums);
+        collect(sightings, exposure, &kinds[coding_of(exposure)]);
+    }
+    for (int k = 0; k < RF_CODINGS; k++) find_level(&kinds[k]);
+    for (unsigned e = 0; e < exposures->len; e++) {
+        const RfExposure *exposure = &g_array_index(exposures, RfExposure, e);
+        Kind *kind = &kinds[coding_of(exposure)];
+        Sums sums = sums_of(sightings, exposure, kind);
+        add_sums(kind, &sums);
     }
     for (unsigned e = 0; e < exposures->len; e++) {
         const RfExposure *exposure = &g_array_index(exposures, RfExposure, e);
-        add_squares(sightings, exposure, &kinds[kind_of(exposure)]);
+        add_squares(sightings, exposure, &kinds[coding_of(exposure)]);
     }
     for (int k = 0; k < RF_CODINGS; k++) weigh(&kinds[k]);
 }
 
-/* Exponents of the law: least squares on synthetic recordings of known truth (H.264 of quality 14 to 28, MPEG-2, MJPEG),
- * in which it holds to 13 % of an uncertainty. Pictures coded from others also drag spots behind their motion. Where
- * hardly anything is in excess, the ratio of the two says nothing. */
-double rf_coding_noise_factor(RfCoding coding, double twofold, double threefold)
+/* What prediction adds by dragging spots behind their motion, as a multiple: means over synthetic recordings of known
+ * truth (H.264 of quality 14 to 28 and MPEG-2; MJPEG and MPEG-2 for pictures coded alone), in which it holds to 15 % of
+ * an uncertainty. It sets in with the excess: lossless predicted pictures have none. */
+double rf_coding_noise_factor(RfCoding coding, bool is_smooth, double excess)
 {
-    static const double of_size_alone = 0.9, of_size = 1.22, of_slope = 0.9;
-    double size = fmax(1, twofold), slope = fmax(1, size / fmax(1, threefold));
-    return pow(size, coding == RF_CODING_ALONE ? of_size_alone : of_size) *
-           pow(slope, of_slope * fmin(1, size - 1));
-}
-
-static double factor_of(RfCoding coding, const Kind *kind, const Sums *own)
-{
-    double n = own->n + kind->weight, twofold = kind->sums.twofold / kind->sums.n,
-           threefold = kind->sums.threefold / kind->sums.n;
-    return rf_coding_noise_factor(coding, (own->twofold + kind->weight * twofold) / n,
-                                  (own->threefold + kind->weight * threefold) / n);
+    static const double drag[RF_CODINGS][2] = {
+        [RF_CODING_UNKNOWN] = {1.55, 2.2},
+        [RF_CODING_ALONE] = {1, 1},
+        [RF_CODING_PAST] = {1.55, 2.2},
+        [RF_CODING_BOTH] = {1.67, 2.7},
+    };
+    double size = fmax(1, excess);
+    return size * (1 + (drag[coding][is_smooth] - 1) * fmin(1, size - 1));
 }
 
 static void widen(RfSpot *spot, double factor)
@@ -121,20 +144,26 @@ static void widen(RfSpot *spot, double factor)
     spot->cov_xy_px2 *= (float)factor;
 }
 
-void rf_coding_noise_apply(RfSightings *sightings)
+static void widen_all(RfSightings *sightings, const Kind kinds[RF_CODINGS], bool is_smooth)
 {
-    Kind kinds[RF_CODINGS] = {0}, all = {.weight = 1};
-    learn(sightings, kinds);
-    for (int k = 0; k < RF_CODINGS; k++) add_sums(&all, &kinds[k].sums);
-    if (all.sums.n < LEAST_SPOTS) return;
     for (unsigned e = 0; e < sightings->exposures->len; e++) {
         const RfExposure *exposure = &g_array_index(sightings->exposures, RfExposure, e);
-        const Kind *kind = &kinds[kind_of(exposure)];
-        Sums own = sums_of(sightings, exposure), none = {0};
-        bool is_known = kind->sums.n >= LEAST_SPOTS;
-        double factor =
-            is_known ? factor_of(kind_of(exposure), kind, &own) : factor_of(kind_of(exposure), &all, &none);
+        const Kind *kind = &kinds[coding_of(exposure)];
+        if (kind->sums.n < LEAST_SPOTS) continue;
+        Sums own = sums_of(sightings, exposure, kind);
+        double common = kind->sums.excess / kind->sums.n;
+        double relative = (own.excess / common + kind->weight) / (own.n + kind->weight);
+        double factor = rf_coding_noise_factor(coding_of(exposure), is_smooth, kind->level * relative);
         for (unsigned i = 0; i < exposure->spots; i++)
             widen(&g_array_index(sightings->spots, RfSpot, exposure->first_spot + i), factor);
     }
+}
+
+void rf_coding_noise_apply(RfSightings *sightings, bool is_smooth)
+{
+    Kind kinds[RF_CODINGS] = {0};
+    for (int k = 0; k < RF_CODINGS; k++) kinds[k].seen = g_array_new(false, false, sizeof(float));
+    learn(sightings, kinds);
+    widen_all(sightings, kinds, is_smooth);
+    for (int k = 0; k < RF_CODINGS; k++) g_array_unref(kinds[k].seen);
 }

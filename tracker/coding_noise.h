@@ -8,9 +8,11 @@
 #include "tracker/frame.h"
 #include "tracker/sightings.h"
 
-/* Variance of a place over that of the fit, for these means of spots' excess (1 each where noise is as modelled). */
-double rf_coding_noise_factor(RfCoding coding, double twofold, double threefold);
+/* Variance of a place over that of the fit.
+ *   excess     mean over spots, 1 where noise is as modelled
+ *   is_smooth  the codec predicts from pictures that it smoothed (H.264 and later), not as decoded (MPEG-2 and earlier) */
+double rf_coding_noise_factor(RfCoding coding, bool is_smooth, double excess);
 
 /* Multiplies the uncertainties of all spots. Means are taken per picture, and drawn towards those of all pictures coded
  * alike as far as the pictures don't differ beyond chance. */
-void rf_coding_noise_apply(RfSightings *sightings);
+void rf_coding_noise_apply(RfSightings *sightings, bool is_smooth);

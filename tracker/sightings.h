@@ -3,8 +3,6 @@
  * Spots of one exposure are contiguous, sorted by y_px then x_px; exposures are sorted by time. */
 #pragma once
 
-#include "tracker/spot_excess.h"
-
 #include <glib.h>
 #include <stdbool.h>
 #include <stddef.h>
@@ -49,7 +47,7 @@ typedef struct {
     float snr;            /* |peak| over the noise sd of one pixel there */
     float width_px;       /* standard deviation of the fitted spot along x, stored pixels */
     uint32_t flags;       /* RfSpotFlags */
-    RfSpotExcess excess;  /* of what the fit left; 0 where not known */
+    float excess;         /* of what the fit left over noise (spot_excess.h); 0 where not known */
 } RfSpot;
 
 typedef struct {

@@ -1,5 +1,6 @@
 #include "tracker/spot_fitter.h"
 
+#include "tracker/spot_excess.h"
 #include "tracker/spot_window.h"
 
 #include <math.h>
@@ -312,11 +313,11 @@ static RfSpot spot_of(const RfFitterSettings *settings, const RfExposureView *vi
 }
 
 /* Only of a spot by itself. */
-static RfSpotExcess excess_of(RfSpotFitter *fitter, const RfFitterSettings *settings, const Group *group,
-                              const RfWindow *window, double offset)
+static double excess_of(RfSpotFitter *fitter, const RfFitterSettings *settings, const Group *group,
+                        const RfWindow *window, double offset)
 {
     const RfSpotFit *fit = &group->members[0].fit;
-    if (group->n != 1 || group->is_crowded) return (RfSpotExcess){0, 0};
+    if (group->n != 1 || group->is_crowded) return 0;
     rf_localise_models(&settings->localiser, fit, 1, fitter->pixels, window->n, fitter->residuals);
     return rf_spot_excess(&settings->localiser, fitter->pixels, fitter->residuals, window->n, fit, offset);
 }
@@ -354,7 +355,7 @@ void rf_spot_fitter_run(RfSpotFitter *fitter, const RfFitterSettings *settings, 
         if (group.n) outcome = add_hidden(fitter, settings, view, &group, &window, outcome);
         for (unsigned k = 0; k < group.n; k++) {
             RfSpot spot = spot_of(settings, view, &group, k, &window);
-            spot.excess = excess_of(fitter, settings, &group, &window, outcome.offset);
+            spot.excess = (float)excess_of(fitter, settings, &group, &window, outcome.offset);
             const RfSpot *before = &g_array_index(spots, RfSpot, first_spot);
             if (is_known(before, spots->len - first_spot, &spot)) continue;
             g_array_append_val(spots, spot);
