@@ -36,7 +36,7 @@ static void warn_of_picture(RfResults *results, const RfWatch *watch, const RfFo
     if (findings->saturated_spot_share > 0.05)
         warn(results, "%.0f %% of the spots are saturated: lower the exposure next time",
              100 * findings->saturated_spot_share);
-    double scale = fmax(follow->paths->noise.scale_x, follow->paths->noise.scale_y);
+    double scale = watch->coding_noise * fmax(1, fmax(follow->paths->noise.scale_x, follow->paths->noise.scale_y));
     if (scale > 1.5)
         warn(results, "positions scatter %.1f times more than the picture's noise explains: strong compression does "
                       "this; record with less next time (the stated uncertainties are widened)", scale);

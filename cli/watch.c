@@ -172,7 +172,7 @@ RfWatch *rf_watch_recording(const RfSettings *settings, const RfWatchHooks *hook
         g_prefix_error(error, "%s: ", (const char *)g_ptr_array_index(settings->videos, 0));
         return NULL;
     }
-    rf_coding_noise_apply(watch->sightings, predicts_from_smoothed(info->codec));
+    watch->coding_noise = rf_coding_noise_apply(watch->sightings, predicts_from_smoothed(info->codec));
     return g_steal_pointer(&watch);
 }
 

@@ -18,6 +18,7 @@ typedef struct {
     RfSightings *sightings;
     RfVideoFaults faults;
     int64_t repeated; /* exposures that only show the picture before once more */
+    double coding_noise; /* what compression multiplied the uncertainties of places by */
 } RfWatch;
 
 typedef struct {

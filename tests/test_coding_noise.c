@@ -102,7 +102,8 @@ static void test_misfits(void)
     g_autoptr(RfSightings) sightings = sight(&picture, 1, 900, 0);
     for (unsigned i = 0; i < sightings->spots->len; i += SPOTS)
         g_array_index(sightings->spots, RfSpot, i).excess = 200;
-    rf_coding_noise_apply(sightings, true);
+    double total = rf_coding_noise_apply(sightings, true);
+    g_assert_cmpfloat_with_epsilon(total * total, widened(sightings, 0, 1), 1e-4);
     double found = widened(sightings, 0, 1), expected = rf_coding_noise_factor(RF_CODING_ALONE, true, 3);
     g_test_message("variance times %.3f, without misfits %.3f", found, expected);
     g_assert_cmpfloat(sqrt(found / expected), <, 1.15);

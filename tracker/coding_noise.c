@@ -144,8 +144,10 @@ static void widen(RfSpot *spot, double factor)
     spot->cov_xy_px2 *= (float)factor;
 }
 
-static void widen_all(RfSightings *sightings, const Kind kinds[RF_CODINGS], bool is_smooth)
+/* Sum of the factors of all spots. */
+static double widen_all(RfSightings *sightings, const Kind kinds[RF_CODINGS], bool is_smooth)
 {
+    double sum = sightings->spots->len;
     for (unsigned e = 0; e < sightings->exposures->len; e++) {
         const RfExposure *exposure = &g_array_index(sightings->exposures, RfExposure, e);
         const Kind *kind = &kinds[coding_of(exposure)];
@@ -156,14 +158,17 @@ static void widen_all(RfSightings *sightings, const Kind kinds[RF_CODINGS], bool
         double factor = rf_coding_noise_factor(coding_of(exposure), is_smooth, kind->level * relative);
         for (unsigned i = 0; i < exposure->spots; i++)
             widen(&g_array_index(sightings->spots, RfSpot, exposure->first_spot + i), factor);
+        sum += exposure->spots * (factor - 1);
     }
+    return sum;
 }
 
-void rf_coding_noise_apply(RfSightings *sightings, bool is_smooth)
+double rf_coding_noise_apply(RfSightings *sightings, bool is_smooth)
 {
     Kind kinds[RF_CODINGS] = {0};
     for (int k = 0; k < RF_CODINGS; k++) kinds[k].seen = g_array_new(false, false, sizeof(float));
     learn(sightings, kinds);
-    widen_all(sightings, kinds, is_smooth);
+    double sum = widen_all(sightings, kinds, is_smooth);
     for (int k = 0; k < RF_CODINGS; k++) g_array_unref(kinds[k].seen);
+    return sightings->spots->len ? sqrt(sum / sightings->spots->len) : 1;
 }

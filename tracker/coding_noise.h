@@ -14,5 +14,6 @@
 double rf_coding_noise_factor(RfCoding coding, bool is_smooth, double excess);
 
 /* Multiplies the uncertainties of all spots. Means are taken per picture, and drawn towards those of all pictures coded
- * alike as far as the pictures don't differ beyond chance. */
-void rf_coding_noise_apply(RfSightings *sightings, bool is_smooth);
+ * alike as far as the pictures don't differ beyond chance. Returns the root mean square of what they were multiplied
+ * by, 1 where nothing is known. */
+double rf_coding_noise_apply(RfSightings *sightings, bool is_smooth);
