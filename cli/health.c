@@ -37,9 +37,9 @@ static void warn_of_picture(RfResults *results, const RfWatch *watch, const RfFo
         warn(results, "%.0f %% of the spots are saturated: lower the exposure next time",
              100 * findings->saturated_spot_share);
     double scale = watch->coding_noise * fmax(1, fmax(follow->paths->noise.scale_x, follow->paths->noise.scale_y));
-    if (scale > 1.5)
-        warn(results, "positions scatter %.1f times more than the picture's noise explains: strong compression does "
-                      "this; record with less next time (the stated uncertainties are widened)", scale);
+    if (scale > 1.5 && !rf_video_file_info(watch->video)->is_lossless)
+        warn(results, "compression scatters positions %.1f times more than the picture's noise does: record with less of it "
+                      "next time (the stated uncertainties are widened)", scale);
 }
 
 static void warn_of_axis(RfResults *results, const RfGravityAxis *axis)

@@ -6,7 +6,7 @@
 #include "physics/physics_error.h"
 
 static const char *const LINE_NAMES[RF_CHARGE_LINES] = {
-    [RF_CHARGE_LINE_PATH] = "paths of this droplet",
+    [RF_CHARGE_LINE_PATH] = "the droplet's own path",
     [RF_CHARGE_LINE_SCALE] = "scale",
     [RF_CHARGE_LINE_GAP] = "plate gap",
     [RF_CHARGE_LINE_VOLTAGE] = "voltage",
