@@ -2,6 +2,7 @@
 
 #include "calib/quantity.h"
 #include "cli/tally.h"
+#include "physics/charge_step.h"
 #include "physics/charge_unit.h"
 #include "physics/constants.h"
 #include "physics/two_radii.h"
@@ -198,6 +199,7 @@ static void add_steps(RfResults *results, unsigned droplet, const GArray *steps)
             .time_s = step->time_s,
             .before_C = step->before_coulomb,
             .after_C = step->after_coulomb,
+            .change_C = step->change_coulomb,
             .whole_multiples_p = -1,
         };
         g_array_append_val(results->steps, row);
@@ -344,6 +346,16 @@ static void keep_unit(RfUnitResult *result, const RfChargeUnit *unit)
     }
 }
 
+/* A change of charge should be a whole multiple of the unit that all charges show. */
+static void test_steps(RfResults *results)
+{
+    for (guint i = 0; results->unit.resolved && i < results->steps->len; i++) {
+        RfStepRow *row = &g_array_index(results->steps, RfStepRow, i);
+        const RfChargeStep step = {.change_coulomb = row->change_C};
+        row->whole_multiples_p = rf_charge_step_whole_multiples_p(&step, results->unit.unit_C.value);
+    }
+}
+
 void rf_assess_unit(RfResults *results)
 {
     g_autoptr(GArray) charges = g_array_new(FALSE, FALSE, sizeof(RfValue));
@@ -359,6 +371,7 @@ void rf_assess_unit(RfResults *results)
     g_autoptr(RfChargeUnit) unit =
         rf_charge_unit_find((const RfValue *)(const void *)charges->data, charges->len, &options);
     keep_unit(&results->unit, unit);
+    test_steps(results);
 }
 
 /* ---- the run ---- */

@@ -47,6 +47,7 @@ typedef struct { /* one row of steps.csv */
     unsigned droplet;
     RfValue time_s;
     RfValue before_C, after_C;
+    RfValue change_C;         /* sigma with the correlation of before and after */
     double whole_multiples_p; /* chance of a step this far from whole multiples of the unit; -1: not tested */
 } RfStepRow;
 
@@ -183,6 +184,9 @@ typedef struct {
     GBytes *view_png;        /* the background with the paths drawn over it, or NULL */
     RfPersonRow person;
     GArray *hand_charges;    /* RfHandChargeRow */
+    bool has_log_clock;      /* a voltage log was lined up with the recording */
+    RfValue log_offset_s;    /* its clock less the recording's, in the middle */
+    RfValue log_drift;       /* relative rate of its clock; 0: none beyond chance */
     GArray *effects;         /* RfEffectRow */
     GArray *certificate;     /* RfCertificateRow; empty without a certificate */
     bool measured;           /* false: ran, but nothing could be measured (exit 3) */
