@@ -6,8 +6,9 @@
 
 #include <math.h>
 
-/* Pixels looked at: enough to know each band's light to a few thousandths, the whole picture's to less than one. */
-enum { MOST_ROWS = 4, MOST_COLUMNS = 48, ROUNDS = 3, ROOM = MOST_ROWS * MOST_COLUMNS };
+/* Pixels looked at: enough to know each band's light to a few thousandths, the whole picture's to less than one.
+ * Some lie side by side, which saves waiting for memory. */
+enum { MOST_ROWS = 4, MOST_COLUMNS = 48, TOGETHER = 4, ROUNDS = 3, ROOM = MOST_ROWS * MOST_COLUMNS };
 
 typedef struct {
     double light_seen, light_light, var_light_light; /* sums: seen * light, light^2, light^2 * var */
@@ -68,7 +69,9 @@ static void take_band(const View *view, int first, int end, int line_step, Band 
 {
     int lines = (end - first + line_step - 1) / line_step, rows = MIN(lines, MOST_ROWS);
     int columns[MOST_COLUMNS], across = MIN(MOST_COLUMNS, view->frame->width);
-    for (int i = 0; i < across; i++) columns[i] = (2 * i + 1) * view->frame->width / (2 * across);
+    int together = across == MOST_COLUMNS ? TOGETHER : 1, groups = across / together;
+    for (int i = 0; i < across; i++)
+        columns[i] = (2 * (i / together) + 1) * view->frame->width / (2 * groups) + i % together;
     band->n = 0;
     for (int i = 0; i < rows; i++)
         add_row(view, first + (2 * i + 1) * lines / (2 * rows) * line_step, columns, across, band);
