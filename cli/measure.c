@@ -244,6 +244,9 @@ bool rf_measure_paths(RfResults *results, const RfChargeInputs *inputs, const Rf
         if (!set)
             return false;
         add_switches(results, set->timeline);
+        results->has_log_clock = set->timeline->has_log && set->timeline->log_offset_s.sigma > 0;
+        results->log_offset_s = set->timeline->log_offset_s;
+        results->log_drift = set->timeline->log_drift;
         add_segments(results, trails, set);
         /* Vertical drift of the air can't be told from falling; as much of it as shows by changing is carried. */
         RfChargeInputs shared = *inputs;

@@ -86,6 +86,10 @@ static void recording(GString *out, const RfResults *results)
                     *axis = fixed_text(results->gravity_axis_deg, 2);
     fact(out, "Used", "%" G_GINT64_FORMAT " frames, %s s", results->frames, duration);
     fact(out, "Gravity in the picture", "%s° from the picture’s upright", axis);
+    if (results->has_log_clock) {
+        g_autofree char *ahead = rf_text_number_concise(results->log_offset_s);
+        fact(out, "Voltage log", "its clock is %s s ahead of the recording’s", ahead);
+    }
     if (scale->found) {
         g_autofree char *x = rf_text_number_concise((RfValue){scale->px_per_mm_x, scale->u_px_per_mm_x});
         g_autofree char *y = rf_text_number_concise((RfValue){scale->px_per_mm_y, scale->u_px_per_mm_y});

@@ -208,6 +208,9 @@ char *rf_write_json_summary(const RfResults *results)
     whole(json, "spells_set_aside", tally.spells - tally.spells_accepted);
     whole(json, "switches", results->switches->len);
     whole(json, "steps", results->steps->len);
+    number_if(json, "log_offset_s", results->has_log_clock, results->log_offset_s.value);
+    number_if(json, "u_log_offset_s", results->has_log_clock, results->log_offset_s.sigma);
+    number_if(json, "log_drift", results->has_log_clock, results->log_drift.value);
     warnings(json, results->warnings);
     certificate(json, results->certificate);
     effects(json, results->effects);
