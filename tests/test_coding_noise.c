@@ -4,7 +4,7 @@
 #include <gsl/gsl_randist.h>
 #include <math.h>
 
-enum { SPOTS = 8 };
+enum { SPOTS = 24 };
 static const float STATED_PX = 0.05f;
 
 /* What a recording's fits leave in one picture. */
@@ -32,7 +32,7 @@ static RfSightings *sight(const Picture *cycle, unsigned kinds, unsigned picture
                            .u_y_px = STATED_PX,
                            .cov_xy_px2 = 1e-4f,
                            .flags = flags,
-                           .excess = (float)gsl_ran_exponential(random, picture->excess)};
+                           .excess = (float)(picture->excess * gsl_ran_chisq(random, 1))};
             g_array_append_val(sightings->spots, spot);
         }
     }
@@ -57,7 +57,7 @@ static void test_lossless(void)
     static const RfCoding codings[] = {RF_CODING_UNKNOWN, RF_CODING_ALONE, RF_CODING_PAST, RF_CODING_BOTH};
     for (unsigned k = 0; k < G_N_ELEMENTS(codings); k++) {
         Picture white = {codings[k], 1};
-        g_autoptr(RfSightings) sightings = sight(&white, 1, 12000, 0);
+        g_autoptr(RfSightings) sightings = sight(&white, 1, 4000, 0);
         rf_coding_noise_apply(sightings, true);
         double factor = widened(sightings, 0, 1);
         g_test_message("coding %d: variance times %.4f", (int)codings[k], factor);
@@ -95,18 +95,19 @@ static void test_pictures_differ(void)
     g_assert_cmpfloat(rough, >, 1.7 * calm);
 }
 
-/* One spot in eight that no droplet's shape fits moves the uncertainties of all by less than 15 %. */
+/* One spot in eight that no droplet's shape fits: the good spots' quantile taken is 4/7 in place of 1/2, which for a
+ * chi-square of one is 1.38 times as much, or 1.17 in u, and a little more by the pictures' own means. */
 static void test_misfits(void)
 {
     const Picture picture = {RF_CODING_ALONE, 3};
     g_autoptr(RfSightings) sightings = sight(&picture, 1, 900, 0);
-    for (unsigned i = 0; i < sightings->spots->len; i += SPOTS)
+    for (unsigned i = 0; i < sightings->spots->len; i += 8)
         g_array_index(sightings->spots, RfSpot, i).excess = 200;
     double total = rf_coding_noise_apply(sightings, true);
     g_assert_cmpfloat_with_epsilon(total * total, widened(sightings, 0, 1), 1e-4);
     double found = widened(sightings, 0, 1), expected = rf_coding_noise_factor(RF_CODING_ALONE, true, 3);
     g_test_message("variance times %.3f, without misfits %.3f", found, expected);
-    g_assert_cmpfloat(sqrt(found / expected), <, 1.15);
+    g_assert_cmpfloat(sqrt(found / expected), <, 1.2);
 }
 
 /* Never below what the fit says; more with more excess; most where pictures were predicted, and from smoothed ones. */
@@ -126,7 +127,7 @@ static void test_law(void)
     double rough = rf_coding_noise_factor(RF_CODING_PAST, false, 5);
     double past = rf_coding_noise_factor(RF_CODING_PAST, true, 5);
     double both = rf_coding_noise_factor(RF_CODING_BOTH, true, 5);
-    g_assert_cmpfloat(alone, ==, 5);
+    g_assert_cmpfloat(alone, >, 5);
     g_assert_cmpfloat(rough, >, alone);
     g_assert_cmpfloat(past, >, rough);
     g_assert_cmpfloat(both, >, past);
@@ -138,7 +139,7 @@ static void test_nothing_known(void)
     g_autoptr(RfSightings) crowded = sight(&rough, 1, 100, RF_SPOT_CROWDED);
     rf_coding_noise_apply(crowded, true);
     g_assert_cmpfloat(widened(crowded, 0, 1), ==, 1);
-    g_autoptr(RfSightings) few = sight(&rough, 1, 3, 0);
+    g_autoptr(RfSightings) few = sight(&rough, 1, 1, 0);
     rf_coding_noise_apply(few, true);
     g_assert_cmpfloat(widened(few, 0, 1), ==, 1);
     g_autoptr(RfSightings) none = rf_sightings_new(64, 48, 1);
