@@ -70,12 +70,19 @@ static void test_lags(void)
     }
 }
 
+static double widening(double scale, double u_scale, double other)
+{
+    RfPathErrors noise = {.scale_x = scale, .u_scale_x = u_scale, .scale_y = other, .u_scale_y = 0.05};
+    return rf_path_noise_widening(&noise, 0);
+}
+
 static void test_widening(void)
 {
-    g_assert_cmpfloat(rf_path_noise_widening(1, 0), ==, 1);
-    g_assert_cmpfloat(rf_path_noise_widening(1.5, 0.3), ==, 1); /* 2.25 - 3 * 0.9 */
-    g_assert_cmpfloat(rf_path_noise_widening(1.5, 0.1), ==, 1.5);
-    g_assert_cmpfloat(rf_path_noise_widening(0.7, 0.01), ==, 1);
+    g_assert_cmpfloat(widening(1, 0, 1.5), ==, 1);
+    g_assert_cmpfloat(widening(1.5, 0.3, 1.5), ==, 1); /* 2.25 - 3 * 0.9 */
+    g_assert_cmpfloat(widening(1.5, 0.1, 1.5), ==, 1.5);
+    g_assert_cmpfloat(widening(0.7, 0.01, 1.5), ==, 1);
+    g_assert_cmpfloat(widening(1.5, 0.1, 1), ==, 1); /* one axis alone is motion */
 }
 
 int main(int argc, char **argv)

@@ -130,8 +130,8 @@ static void mark_seen(RfPathPoint *point, const RfSpot *spot, int index, const R
     point->spot = index;
     point->x_px = (double)spot->x_px;
     point->y_px = (double)spot->y_px;
-    point->u_x_px = (double)spot->u_x_px * rf_path_noise_widening(noise->scale_x, noise->u_scale_x);
-    point->u_y_px = (double)spot->u_y_px * rf_path_noise_widening(noise->scale_y, noise->u_scale_y);
+    point->u_x_px = (double)spot->u_x_px * rf_path_noise_widening(noise, 0);
+    point->u_y_px = (double)spot->u_y_px * rf_path_noise_widening(noise, 1);
 }
 
 /* Density of spots that may be nobody's: short chains are not beyond suspicion themselves. */
@@ -198,8 +198,8 @@ static RfPath *make_path(const RfLinkScene *scene, const RfChain *chain, const R
 
 static void widen_sights(RfLinkScene *scene, const RfPathErrors *noise)
 {
-    double x = rf_path_noise_widening(noise->scale_x, noise->u_scale_x);
-    double y = rf_path_noise_widening(noise->scale_y, noise->u_scale_y);
+    double x = rf_path_noise_widening(noise, 0);
+    double y = rf_path_noise_widening(noise, 1);
     for (unsigned i = 0; i < scene->sightings->spots->len; i++) {
         scene->sights[i].variance_px2[0] *= x * x;
         scene->sights[i].variance_px2[1] *= y * y;

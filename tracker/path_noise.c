@@ -166,8 +166,14 @@ RfPathErrors rf_path_noise_measure(const RfLinkScene *scene, const GPtrArray *ch
     return noise;
 }
 
-double rf_path_noise_widening(double scale, double u_scale)
+static bool is_beyond_doubt(double scale, double u_scale)
 {
-    double u_square = 2 * scale * u_scale;
-    return u_scale > 0 && scale * scale - 3 * u_square > 1 ? scale : 1;
+    return u_scale > 0 && scale * scale - 3 * 2 * scale * u_scale > 1;
+}
+
+double rf_path_noise_widening(const RfPathErrors *noise, int axis)
+{
+    bool is_told = is_beyond_doubt(noise->scale_x, noise->u_scale_x) &&
+                   is_beyond_doubt(noise->scale_y, noise->u_scale_y);
+    return !is_told ? 1 : axis == 0 ? noise->scale_x : noise->scale_y;
 }

@@ -7,5 +7,6 @@
 
 RfPathErrors rf_path_noise_measure(const RfLinkScene *scene, const GPtrArray *chains);
 
-/* What a stated uncertainty is multiplied by: the scale where it is above 1 beyond doubt (three sigma of its square), else 1. */
-double rf_path_noise_widening(double scale, double u_scale);
+/* What stated uncertainties of an axis are multiplied by: its scale where the scales of both axes are above 1 beyond doubt
+ * (three sigma of the square), else 1. On one axis alone it is motion: droplets that reverse, air that moves. */
+double rf_path_noise_widening(const RfPathErrors *noise, int axis);
