@@ -19,6 +19,8 @@ enum {
 };
 static const double TRUSTED_PX =
     0.2; /* less certain, and lines that run one way only have let it slide along them */
+static const double AGREEING = 0.8; /* share of the points: a pose that needs no rival */
+static const double CLEARLY = 0.05; /* so much more of them must agree with a pose further away */
 static const int REDUCTION[LEVELS] = {8, 4, 1};
 
 /* One steep pixel of a reduced reference picture; places from the picture's middle, in full-size stored pixels. */
@@ -341,7 +343,9 @@ static bool solve(Normal *normal, double solution[UNKNOWNS], double variance[2])
 typedef struct {
     RfPose pose;
     double gain, offset;
-    double scale; /* of the residuals, grey levels */
+    double scale;   /* of the residuals, grey levels */
+    double support; /* share of the points that agree with the pose, 0..1 */
+    double u_px;    /* of the shift */
 } Guess;
 
 /* One level's search: which points of which picture. */
@@ -402,7 +406,7 @@ static double residual_scale(const View *view, const Guess *guess)
 typedef enum { LOST, MOVED, SETTLED } Step;
 
 /* One step of Gauss-Newton. The robust scale only shrinks. */
-static Step step_on(const View *view, Guess *guess, double *u_px)
+static Step step_on(const View *view, Guess *guess)
 {
     Normal normal;
     double d[UNKNOWNS] = {0}, variance[2] = {0};
@@ -417,14 +421,15 @@ static Step step_on(const View *view, Guess *guess, double *u_px)
     guess->offset += d[4];
     double floor = view->registration->noise_sd / view->reduction;
     guess->scale = CLAMP(1.3 * sqrt(normal.weighted_square / normal.weight), floor, guess->scale);
-    *u_px = sqrt(MAX(variance[0], variance[1])) * guess->scale;
+    guess->u_px = sqrt(MAX(variance[0], variance[1]) * normal.weighted_square / normal.weight);
+    guess->support = (double)normal.n * view->step / view->level->n;
     bool is_small = fabs(d[0]) + fabs(d[1]) < 1e-3 && fabs(d[2]) * view->registration->width < 2e-3;
     return is_small ? SETTLED : MOVED;
 }
 
 /* At one level: a few of the points find the place, at full size all of them then refine it. */
 static bool refine(const RfRegistration *registration, const RfRegistrationScratch *scratch,
-                   const RfFrame *frame, int which, Guess *guess, double *u_px)
+                   const RfFrame *frame, int which, Guess *guess)
 {
     bool is_full = which == LEVELS - 1;
     View view = {registration,
@@ -436,34 +441,47 @@ static bool refine(const RfRegistration *registration, const RfRegistrationScrat
     if (view.level->n > ROUGH_STEP * 300) view.step = ROUGH_STEP;
     guess->scale = MAX(registration->noise_sd / view.reduction, residual_scale(&view, guess));
     Step last = MOVED;
-    for (int step = 0; step < STEPS && last == MOVED; step++) last = step_on(&view, guess, u_px);
+    for (int step = 0; step < STEPS && last == MOVED; step++) last = step_on(&view, guess);
     if (last != LOST && is_full && view.step > 1) {
         view.step = 1;
-        for (int step = 0; step < LAST_STEPS && last != LOST; step++) last = step_on(&view, guess, u_px);
+        for (int step = 0; step < LAST_STEPS && last != LOST; step++) last = step_on(&view, guess);
     }
-    return last == SETTLED || (last == MOVED && *u_px < TRUSTED_PX);
+    return last == SETTLED || (last == MOVED && guess->u_px < TRUSTED_PX);
 }
 
+/* From a first guess of the shift through the levels, from `coarsest` on. */
+static bool descend(const RfRegistration *registration, const RfRegistrationScratch *scratch,
+                    const RfFrame *frame, int coarsest, Guess *guess)
+{
+    for (int i = coarsest; i < LEVELS; i++) {
+        Guess tried = *guess;
+        bool is_found =
+            registration->levels[i].n >= LEAST_POINTS && refine(registration, scratch, frame, i, &tried);
+        if (is_found)
+            *guess = tried;
+        else if (i == LEVELS - 1)
+            return false;
+    }
+    return guess->gain > 0.3 && guess->gain < 3 && guess->u_px < TRUSTED_PX;
+}
+
+/* A reticle looks the same one spacing on, all but its edges and numerals, so the place nearest to the reference is tried
+ * first and kept if the picture agrees with it; only then is it looked for further away. */
 bool rf_registration_find(const RfRegistration *registration, RfRegistrationScratch *scratch,
                           const RfFrame *frame, RfPose *pose, double *u_px)
 {
     g_assert(frame->width == registration->width && frame->height == registration->height);
-    Guess guess = {.gain = 1};
-    double u = 0;
+    Guess near = {.gain = 1}, far = {.gain = 1};
     *pose = (RfPose){0};
     fill_pictures(registration, scratch, frame);
-    search_coarsely(registration, scratch, &guess.pose);
-    for (int i = 0; i < LEVELS; i++) {
-        Guess tried = guess;
-        bool is_found =
-            registration->levels[i].n >= LEAST_POINTS && refine(registration, scratch, frame, i, &tried, &u);
-        if (is_found)
-            guess = tried;
-        else if (i == LEVELS - 1)
-            return false;
+    bool is_near = descend(registration, scratch, frame, 1, &near);
+    if (!is_near || near.support < AGREEING) {
+        search_coarsely(registration, scratch, &far.pose);
+        bool is_far = descend(registration, scratch, frame, 0, &far);
+        if (!is_near && !is_far) return false;
+        if (!is_near || (is_far && far.support > near.support + CLEARLY)) near = far;
     }
-    if (guess.gain < 0.3 || guess.gain > 3 || u > TRUSTED_PX) return false;
-    *pose = guess.pose;
-    if (u_px) *u_px = u;
+    *pose = near.pose;
+    if (u_px) *u_px = near.u_px;
     return true;
 }
