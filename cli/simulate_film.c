@@ -6,6 +6,7 @@
 enum { MOMENTS = 6 }; /* at which an exposure looks at a droplet */
 
 static const double visible_snr = 3, visible_margin_px = 3;
+static const double faintest_snr = 1.5; /* below it nobody could say that it is still there */
 static const double gone_margin_px = 20, gone_after_s = 1.2; /* then another droplet may enter */
 
 typedef struct {
@@ -221,8 +222,9 @@ static void show_actor(Play *play, Actor *actor, const RfPlace moments[MOMENTS],
                                                flux_of(film, actor->life->body->brightness), width_px);
     at.snr = seen.snr;
     at.bound_px = seen.bound_px;
-    at.is_visible =
-        seen.snr >= visible_snr && rf_simulate_view_contains(film->view, at.px, visible_margin_px);
+    at.is_in_view = seen.snr >= faintest_snr && rf_simulate_view_contains(film->view, at.px, 0);
+    at.is_visible = at.is_in_view && seen.snr >= visible_snr &&
+                    rf_simulate_view_contains(film->view, at.px, visible_margin_px);
     g_array_append_val(actor->life->seen, at);
     mark_outside(play, actor, at.reference_px, at.time_s);
 }

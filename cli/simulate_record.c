@@ -41,14 +41,16 @@ static void cut_life(RfRecord *record, unsigned number)
 {
     const RfLife *life = g_ptr_array_index(record->lives, number);
     RfTrueDroplet droplet = {.life = number};
+    double in_view_s = 0; /* when it was last in view */
     for (unsigned i = 0; i < life->seen->len; i++) {
         const RfSeenAt *at = &g_array_index(life->seen, RfSeenAt, i);
-        if (!at->is_visible) continue;
-        double last_s = g_array_index(life->seen, RfSeenAt, droplet.last).time_s;
-        if (droplet.frames > 0 && at->time_s - last_s > absence_s) {
+        if (!at->is_in_view) continue;
+        if (droplet.frames > 0 && at->time_s - in_view_s > absence_s) {
             g_array_append_val(record->droplets, droplet);
             droplet.frames = 0;
         }
+        in_view_s = at->time_s;
+        if (!at->is_visible) continue;
         if (droplet.frames == 0) droplet.first = i;
         droplet.last = i;
         droplet.frames++;

@@ -12,7 +12,8 @@ typedef struct {
     RfPixel reference_px; /* the same for a camera at rest */
     double snr, bound_px;
     uint8_t field;    /* interlaced: 1 for the second in time */
-    bool is_visible;  /* inside the picture and bright enough to count */
+    bool is_visible;  /* well inside the picture and bright enough to count */
+    bool is_in_view;  /* its middle is inside the picture and it is bright enough to be made out at all */
     bool is_repeated; /* the picture before was shown once more */
 } RfSeenAt;
 

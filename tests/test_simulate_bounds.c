@@ -19,7 +19,12 @@ static RfRecord *record_of(double radius_m, int units, double s_m)
     g_array_append_val(spells, first);
     RfLife *life = rf_simulate_record_add(record, rf_simulate_motion_body_new(0, radius_m, 100, spells));
     for (int i = 0; i < 1200; i++) {
-        RfSeenAt at = {.frame = i, .time_s = i / 30., .is_visible = true, .snr = 10, .bound_px = s_m * 4e5};
+        RfSeenAt at = {.frame = i,
+                       .time_s = i / 30.,
+                       .is_visible = true,
+                       .is_in_view = true,
+                       .snr = 10,
+                       .bound_px = s_m * 4e5};
         g_array_append_val(life->seen, at);
     }
     rf_simulate_record_cut(record);
@@ -83,15 +88,26 @@ static void test_no_field_no_charge(void)
     g_assert_cmpfloat_with_epsilon(bounds->bound_fall_m_s / plain_m_s, 1, 0.01);
 }
 
+static void hide(RfLife *life, int first, int end, bool is_out_of_view)
+{
+    for (int i = first; i < end; i++) {
+        RfSeenAt *at = &g_array_index(life->seen, RfSeenAt, i);
+        at->is_visible = false;
+        at->is_in_view = !is_out_of_view;
+    }
+}
+
 static void test_absence_makes_a_new_droplet(void)
 {
     g_autoptr(RfRecord) record = record_of(0.5e-6, 3, 1e-7);
     RfLife *life = g_ptr_array_index(record->lives, 0);
-    for (int i = 300; i < 329; i++) /* away for less than a second */
-        g_array_index(life->seen, RfSeenAt, i).is_visible = false;
+    hide(life, 300, 329, true); /* away for less than a second */
     rf_simulate_record_cut(record);
     g_assert_cmpint((int)record->droplets->len, ==, 1);
-    for (int i = 300; i < 340; i++) g_array_index(life->seen, RfSeenAt, i).is_visible = false;
+    hide(life, 300, 340, false); /* hardly to be seen near the border for longer, but never out of the view */
+    rf_simulate_record_cut(record);
+    g_assert_cmpint((int)record->droplets->len, ==, 1);
+    hide(life, 300, 340, true);
     rf_simulate_record_cut(record);
     g_assert_cmpint((int)record->droplets->len, ==, 2);
     const RfTrueDroplet *second = &g_array_index(record->droplets, RfTrueDroplet, 1);
