@@ -257,9 +257,57 @@ static bool find_hidden(RfSpotFitter *fitter, const RfFitterSettings *settings, 
     return is_found;
 }
 
+static const double POOR_FIT = 1.3;     /* reduced chi-square: more than noise is left */
+static const double WORTH_A_SPOT = 0.9; /* one more spot must lower the reduced chi-square to this share */
+
 static double reduced_chi_square(const RfLocaliseOutcome *outcome, const RfWindow *window, unsigned n)
 {
     return outcome->chi_square / MAX(1.0, (double)window->n - 4.0 * n);
+}
+
+/* One spot with the centre and the width of all members' light together. */
+static Member as_one(const Group *group, double aspect)
+{
+    double light = 0, x_px = 0, y_px = 0, square = 0;
+    for (unsigned i = 0; i < group->n; i++) {
+        const RfSpotFit *fit = &group->members[i].fit;
+        double part = fit->peak * fit->width_px * fit->width_px;
+        light += part;
+        x_px += part * fit->x_px;
+        y_px += part * fit->y_px;
+    }
+    RfSpotFit one = {.x_px = x_px / light, .y_px = y_px / light};
+    for (unsigned i = 0; i < group->n; i++) {
+        const RfSpotFit *fit = &group->members[i].fit;
+        double away = distance(fit, &one, aspect);
+        square +=
+            fit->peak * fit->width_px * fit->width_px * (fit->width_px * fit->width_px + away * away / 2);
+    }
+    one.width_px = sqrt(square / light);
+    one.peak = light / (one.width_px * one.width_px);
+    return (Member){one, one.x_px, one.y_px, 1.5 * one.width_px + 2};
+}
+
+/* A broad spot (far out of focus even brighter at its rim) may show several peaks, and a fit that begins with a spot for
+ * each may settle there: where one explains them as well, or nearly, it was one. */
+static RfLocaliseOutcome try_as_one(RfSpotFitter *fitter, const RfFitterSettings *settings,
+                                    const RfExposureView *view, Group *group, RfWindow *window,
+                                    RfLocaliseOutcome outcome)
+{
+    double several = reduced_chi_square(&outcome, window, group->n);
+    if (group->n < 2 || group->is_crowded || several < POOR_FIT) return outcome;
+    Group one = {.members = {as_one(group, view->background->pixel_aspect)}, .n = 1};
+    if (one.members[0].fit.width_px > 0.9 * rf_spot_shape_widest_px(settings->localiser.shape))
+        return outcome;
+    RfWindow one_window;
+    RfLocaliseOutcome with = settle(fitter, settings, view, &one, &one_window);
+    if (one.n == 1 && WORTH_A_SPOT * reduced_chi_square(&with, &one_window, 1) < several) {
+        *group = one;
+        *window = one_window;
+        return with;
+    }
+    fit_group(fitter, settings, view, group, window); /* brings its pixels back */
+    return outcome;
 }
 
 /* Looks into what the fit left, while that is more than noise; a wrong addition is taken back. */
@@ -267,7 +315,7 @@ static RfLocaliseOutcome add_hidden(RfSpotFitter *fitter, const RfFitterSettings
                                     const RfExposureView *view, Group *group, RfWindow *window,
                                     RfLocaliseOutcome outcome)
 {
-    while (group->n < RF_LOCALISE_MOST_SPOTS && reduced_chi_square(&outcome, window, group->n) > 1.3) {
+    while (group->n < RF_LOCALISE_MOST_SPOTS && reduced_chi_square(&outcome, window, group->n) > POOR_FIT) {
         Member hidden;
         fill_residuals(fitter, settings, group, window->n, outcome.offset);
         if (!find_hidden(fitter, settings, group, window->n, &hidden)) break;
@@ -275,8 +323,9 @@ static RfLocaliseOutcome add_hidden(RfSpotFitter *fitter, const RfFitterSettings
         RfWindow larger_window;
         larger.members[larger.n++] = hidden;
         RfLocaliseOutcome with = settle(fitter, settings, view, &larger, &larger_window);
-        bool is_better = larger.n > group->n && reduced_chi_square(&with, &larger_window, larger.n) <
-                                                    0.9 * reduced_chi_square(&outcome, window, group->n);
+        bool is_better =
+            larger.n > group->n && reduced_chi_square(&with, &larger_window, larger.n) <
+                                       WORTH_A_SPOT * reduced_chi_square(&outcome, window, group->n);
         if (!is_better) {
             fit_group(fitter, settings, view, group, window); /* brings its pixels back */
             break;
@@ -352,6 +401,7 @@ void rf_spot_fitter_run(RfSpotFitter *fitter, const RfFitterSettings *settings, 
         RfWindow window;
         Group group = next_group(fitter, i, n, view->background->pixel_aspect);
         RfLocaliseOutcome outcome = settle(fitter, settings, view, &group, &window);
+        if (group.n) outcome = try_as_one(fitter, settings, view, &group, &window, outcome);
         if (group.n) outcome = add_hidden(fitter, settings, view, &group, &window, outcome);
         for (unsigned k = 0; k < group.n; k++) {
             RfSpot spot = spot_of(settings, view, &group, k, &window);
