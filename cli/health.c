@@ -20,6 +20,8 @@ static void warn_of_file(RfResults *results, const RfWatch *watch)
         warn(results, "damaged footage: %" G_GINT64_FORMAT " frames concealed, %" G_GINT64_FORMAT
                       " lost, the first at %.2f s",
              faults->damaged, faults->lost, fmax(0, faults->first_fault_s));
+    if (info->missing_s > 0)
+        warn(results, "the recording was cut short: its header promises %.1f s more than there is", info->missing_s);
     int64_t repaired = info->times_missing + info->times_backwards + faults->missing + faults->backwards;
     if (repaired > 0)
         warn(results, "%" G_GINT64_FORMAT " timestamps were missing or ran backwards and were put one mean interval after "

@@ -219,10 +219,11 @@ static void droplet_row(GString *out, const RfDropletRow *row)
     fixed(out, row->start_s, TIME);
     fixed(out, row->end_s, TIME);
     whole(out, row->frames);
-    fixed(out, row->fall_mm_s.value, SPEED);
-    fixed(out, row->fall_mm_s.sigma, SPEED);
-    fixed(out, row->radius_um.value, RADIUS);
-    fixed(out, row->radius_um.sigma, RADIUS);
+    const bool is_fitted = row->radius_um.value > 0;
+    fixed_if(out, is_fitted, row->fall_mm_s.value, SPEED);
+    fixed_if(out, is_fitted, row->fall_mm_s.sigma, SPEED);
+    fixed_if(out, is_fitted, row->radius_um.value, RADIUS);
+    fixed_if(out, is_fitted, row->radius_um.sigma, RADIUS);
     exponent_if(out, row->has_charge, row->charge_C.value);
     exponent_if(out, row->has_charge, row->charge_C.sigma);
     exponent_if(out, row->has_charge, row->u_random_C);

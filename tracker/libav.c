@@ -151,6 +151,13 @@ static double ratio_or_zero(AVRational ratio)
     return ratio.num > 0 && ratio.den > 0 ? av_q2d(ratio) : 0;
 }
 
+/* What libav guesses from size and bit rate where a header says nothing doesn't count. */
+static double promised_s(const AVFormatContext *format)
+{
+    bool is_stated = format->duration > 0 && format->duration_estimation_method == AVFMT_DURATION_FROM_STREAM;
+    return is_stated ? (double)format->duration / AV_TIME_BASE : 0;
+}
+
 static void describe(RfDemuxer *demuxer)
 {
     AVStream *video = demuxer->format->streams[demuxer->number];
@@ -166,6 +173,7 @@ static void describe(RfDemuxer *demuxer)
                    .height = parameters->height,
                    .pixel_aspect = ratio_or_zero(av_guess_sample_aspect_ratio(demuxer->format, video, NULL)),
                    .tick_s = {video->time_base.num, video->time_base.den},
+                   .promised_s = promised_s(demuxer->format),
                    .rates_hz = {{video->avg_frame_rate.num, video->avg_frame_rate.den},
                                 {video->r_frame_rate.num, video->r_frame_rate.den}},
                    .container = g_intern_string(container),

@@ -25,6 +25,7 @@ typedef struct { /* of the video stream */
     int width, height;
     double pixel_aspect;   /* <= 0: not said */
     RfRatio tick_s;        /* of its timestamps */
+    double promised_s;     /* length that the file's header states; 0: it states none */
     RfRatio rates_hz[2];   /* what the container says, the likelier one first */
     const char *container; /* "matroska,webm" */
     const char *codec;     /* "h264"; NULL: unknown to libav */

@@ -64,6 +64,9 @@ static bool preflight_all(RfVideoFile *file, GError **error)
     return true;
 }
 
+/* A sound track may run on a little after the picture; a file cut short lacks more. */
+static const double missing_s_that_counts = 0.5;
+
 /* Where each file begins on the recording's clock. */
 static void join_parts(RfVideoFile *file)
 {
@@ -76,8 +79,10 @@ static void join_parts(RfVideoFile *file)
         int64_t count = (int64_t)part->index->frames;
         part->first_frame = frames;
         part->offset_s = end_s;
-        if (count > 0)
-            end_s += rf_frame_clock_time_s(&part->clock, part->index->pts[count - 1]) + part->last_duration_s;
+        double length_s =
+            count > 0 ? rf_frame_clock_time_s(&part->clock, part->index->pts[count - 1]) + part->last_duration_s : 0;
+        end_s += length_s;
+        if (part->promised_s > length_s + missing_s_that_counts) info->missing_s += part->promised_s - length_s;
         frames += count;
         packets += part->packets;
         info->times_missing += part->index->missing;

@@ -59,6 +59,7 @@ typedef struct {
     int64_t frames_used;   /* of these in [start_s, stop_s): what a progress bar counts to */
     bool is_indexed; /* frame times and indices are known before decoding, and stretches can be decoded alone
                       */
+    double missing_s; /* the files' headers promise that much more: they were cut short */
     int files;
     int64_t packets_damaged; /* marked broken by the container */
     int64_t times_missing; /* frames without a timestamp: placed one mean interval after their predecessor */

@@ -58,6 +58,7 @@ RfVideoPart *rf_video_part_open(const char *path, RfVideoInfo *info, GError **er
     }
     RfVideoPart *part = g_new0(RfVideoPart, 1);
     part->path = g_strdup(path);
+    part->promised_s = stream->promised_s;
     info->container = stream->container;
     info->tick_s = MAX(info->tick_s, (double)stream->tick_s.num / stream->tick_s.den);
     if (info->pixel_aspect <= 0) info->pixel_aspect = stream->pixel_aspect;

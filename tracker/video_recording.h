@@ -17,6 +17,7 @@ typedef struct {
     int64_t packets;     /* of its video stream */
     double offset_s;     /* of its first frame, on the recording's clock */
     double last_duration_s;
+    double promised_s; /* length that the file's header states; 0: it states none */
 } RfVideoPart;
 
 /* Opens it, reads all its packets and closes it again. */
