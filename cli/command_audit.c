@@ -13,7 +13,7 @@ static const GOptionEntry entries[] = {
     {"against", 'a', 0, G_OPTION_ARG_FILENAME, &against,
      "result folder of an earlier run of the same recording", "DIR"},
     {"out", 'o', 0, G_OPTION_ARG_FILENAME, &out,
-     "folder for audit.csv, audit.json and a page; an earlier result there is replaced", "DIR"},
+     "folder for audit.csv, audit.json and a page", "DIR"},
     {0},
 };
 
@@ -71,8 +71,8 @@ const RfCommand rf_command_audit = {
     .arguments = "TIMINGS.csv --against DIR [--out DIR]",
     .purpose = "hand timings against what the recording shows, entry by entry",
     .example = "  risefall audit stopwatch.csv --against morning --out morning-audit\n"
-               "tells which entries can be trusted and what went wrong with the others, and what the "
-               "person's habit costs",
+               "tells which entries can be trusted, what went wrong with the others, and what\n"
+               "the person's habit costs",
     .entries = entries,
     .run = run,
 };

@@ -9,7 +9,7 @@ static int as_json, is_whole; /* GOption writes ints */
 static const GOptionEntry entries[] = {
     {"json", 0, 0, G_OPTION_ARG_NONE, &as_json, "figures and verdicts as JSON", NULL},
     {"whole", 0, 0, G_OPTION_ARG_NONE, &is_whole,
-     "look at every picture (default: at most 1800, from the middle)", NULL},
+     "look at every picture (default: 1800 from the middle)", NULL},
     {0},
 };
 
@@ -33,10 +33,9 @@ const RfCommand rf_command_check = {
     .arguments = "VIDEO",
     .purpose = "is this recording fit for measuring",
     .example = "  risefall check morning.mkv\n"
-               "prints one line a matter (timestamps, gaps, repeats, interlacing, exposure, noise, camera, "
-               "contrast, "
-               "compression ...): ok, care or BAD, with its figure and what to do next time.\n"
-               "Exit status 3: no droplet was seen.",
+               "prints one line a matter (timestamps, gaps, repeats, interlacing, exposure,\n"
+               "noise, camera, contrast, compression ...): ok, care or BAD, with its figure\n"
+               "and what to do next time. Exit status 3: no droplet was seen.",
     .entries = entries,
     .run = run,
 };

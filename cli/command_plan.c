@@ -11,7 +11,7 @@ static char *off_time, *on_time, *frame_rate, *view, *noise, *voltage, *out;
 
 static const GOptionEntry entries[] = {
     {"off-time", 0, 0, G_OPTION_ARG_STRING, &off_time,
-     "time watched with the field off, all stretches together (default: 20 s)", "Q"},
+     "time watched with the field off, in all (default: 20 s)", "Q"},
     {"on-time", 0, 0, G_OPTION_ARG_STRING, &on_time, "the same with the field on (default: 20 s)", "Q"},
     {"frame-rate", 0, 0, G_OPTION_ARG_STRING, &frame_rate, "default: the sheet's, else 30 Hz", "Q"},
     {"view", 0, 0, G_OPTION_ARG_STRING, &view, "height of the field of view (default: 1 mm)", "Q"},
@@ -19,7 +19,7 @@ static const GOptionEntry entries[] = {
      "Q"},
     {"voltage", 0, 0, G_OPTION_ARG_STRING, &voltage, "default: the sheet's", "Q"},
     {"out", 'o', 0, G_OPTION_ARG_FILENAME, &out,
-     "also leave the whole table and a chart there; an earlier result is replaced", "DIR"},
+     "also leave the whole table and a chart there", "DIR"},
     {0},
 };
 
@@ -121,11 +121,11 @@ static RfExit run(char **arguments, GError **error)
 const RfCommand rf_command_plan = {
     .verb = "plan",
     .arguments = "SHEET",
-    .purpose = "before recording: which droplets, how long, what uncertainty to expect",
-    .example = "  risefall plan morning.ini --off-time '20 s' --on-time '20 s' --view '1.2 mm' --out plan\n"
-               "prints what radius and charge make of speed and uncertainty, which droplets to pick, how "
-               "long to watch and at what "
-               "voltage; leaves plan/plan.csv and plan/figures/plan.svg. The recording needn't exist yet.",
+    .purpose = "before recording: which droplets, how long, what uncertainty",
+    .example = "  risefall plan morning.ini --on-time '30 s' --view '1.2 mm' --out plan\n"
+               "prints what radius and charge make of speed and uncertainty, which droplets\n"
+               "to pick, how long to watch and at what voltage; leaves plan/plan.csv and\n"
+               "plan/figures/plan.svg. The recording needn't exist yet.",
     .entries = entries,
     .run = run,
 };

@@ -4,9 +4,9 @@
 #include <locale.h>
 
 static const RfCommand *const commands[] = {
-    &rf_command_run,    &rf_command_calibrate, &rf_command_paths,
-    &rf_command_charge, &rf_command_audit,     &rf_command_simulate,
-    &rf_command_check,  &rf_command_plan,      NULL,
+    &rf_command_run,    &rf_command_check, &rf_command_calibrate, &rf_command_paths,
+    &rf_command_charge, &rf_command_audit, &rf_command_plan,      &rf_command_simulate,
+    NULL,
 };
 
 int main(int argc, char **argv)
