@@ -34,6 +34,7 @@ static const double border_s =
     0.15; /* between last sight and border a droplet is unseen for so long at most */
 static const double tangled_s =
     2.5; /* two droplets in one spot are not out of view: they may stay so for this long */
+static const double outshining = 3; /* times as bright: more than two alike in one spot */
 static const double far_prior = 10; /* in units of what is expected: as good as knowing nothing */
 
 /* Time for which a droplet, last seen there, is still inside the picture though no longer seen; 0 if it isn't leaving. */
@@ -124,20 +125,21 @@ static unsigned first_after(const Stitch *stitch, double time_s)
     return low;
 }
 
-static bool is_spot_near(const RfLinkScene *scene, unsigned e, const double at_px[2], double radius_px)
+static bool is_spot_near(const RfLinkScene *scene, unsigned e, const double at_px[2], double radius_px,
+                         double least_log_peak)
 {
     const RfExposure *exposure = rf_link_scene_exposure(scene, e);
     unsigned end = exposure->first_spot + exposure->spots;
     for (unsigned k = rf_link_scene_first_from(scene, e, at_px[1] - radius_px); k < end; k++) {
         const RfSight *sight = &scene->sights[scene->by_height[k]];
         if (sight->at_px[1] > at_px[1] + radius_px) return false;
-        if (fabs(sight->at_px[0] - at_px[0]) < radius_px) return true;
+        if (fabs(sight->at_px[0] - at_px[0]) < radius_px && sight->log_peak > least_log_peak) return true;
     }
     return false;
 }
 
-/* Longest time between a's end and b's start without any spot near the straight way from one to the other. */
-static double darkest_s(const Stitch *stitch, const Ends *a, const Ends *b)
+/* Longest time between a's end and b's start without any spot so bright near the straight way from one to the other. */
+static double darkest_s(const Stitch *stitch, const Ends *a, const Ends *b, double least_log_peak)
 {
     const RfLinkScene *scene = stitch->scene;
     double radius_px = 2 * scene->merge_px, last_s = a->end_s, darkest = 0;
@@ -146,11 +148,22 @@ static double darkest_s(const Stitch *stitch, const Ends *a, const Ends *b)
         double part = (time_s - a->end_s) / (b->start_s - a->end_s), at_px[2];
         for (int k = 0; k < 2; k++)
             at_px[k] = (1 - part) * a->forward.axis[k].position_px + part * b->backward.axis[k].position_px;
-        if (!is_spot_near(scene, e, at_px, radius_px)) continue;
+        if (!is_spot_near(scene, e, at_px, radius_px, least_log_peak)) continue;
         darkest = fmax(darkest, time_s - last_s);
         last_s = time_s;
     }
-    return darkest;
+    return fmax(darkest, b->start_s - last_s);
+}
+
+/* Whether b may be a, unseen because it was in another's spot. Into one that outshines it, it may go, or come out of it,
+ * unnoticed: seen now and then, not long enough to be anybody. One end must be known to be there. */
+static bool may_be_hidden(const Stitch *stitch, const Ends *a, const Ends *b)
+{
+    double longest_s = stitch->longest_gap_s;
+    if (!(a->is_cut_after || b->is_cut_before) || b->start_s - a->end_s >= tangled_s) return false;
+    bool is_noticed = a->is_cut_after && b->is_cut_before;
+    double least_log_peak = fmax(a->peak_end, b->peak_start) + log(outshining);
+    return darkest_s(stitch, a, b, is_noticed ? -HUGE_VAL : least_log_peak) < longest_s;
 }
 
 /* Whether the time for which nothing of it was seen lets b be a still. */
@@ -158,8 +171,7 @@ static bool is_in_time(const Stitch *stitch, const Ends *a, const Ends *b)
 {
     double longest_s = stitch->longest_gap_s, gap_s = b->start_s - a->end_s;
     double unseen_s = gap_s - stitch->scene->exposure_s / 2 - a->exit_s - b->entry_s;
-    if (unseen_s <= longest_s) return true;
-    return a->is_cut_after && b->is_cut_before && gap_s < tangled_s && darkest_s(stitch, a, b) < longest_s;
+    return unseen_s <= longest_s || may_be_hidden(stitch, a, b);
 }
 
 static void collect_joins(Stitch *stitch)
