@@ -97,8 +97,3 @@ double rf_air_density_kg_m3(double temperature_kelvin, double pressure_pa, doubl
     return pressure_pa * dry_kg_mol / (z * gas_constant_2006 * temperature_kelvin) *
            (1.0 - water * (1.0 - water_kg_mol / dry_kg_mol));
 }
-
-double rf_air_density_relative_u(void)
-{
-    return 22e-6;
-}

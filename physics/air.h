@@ -52,10 +52,6 @@ double rf_air_saturation_pressure_pa(double temperature_kelvin);
 double rf_air_water_mole_fraction(double temperature_kelvin, double pressure_pa, double humidity);
 
 /* Density of moist air, CIPM-2007 with 400 umol/mol of CO2: A. Picard, R. S. Davis, M. Glaser, K. Fujii,
- * Metrologia 45 (2008) 149. Stated for 288..300 K, 60..110 kPa. */
+ * Metrologia 45 (2008) 149. Stated for 288..300 K, 60..110 kPa. The equation's own relative standard
+ * uncertainty is 22e-6 (same paper), which doesn't count: air is 1/750 of oil. */
 double rf_air_density_kg_m3(double temperature_kelvin, double pressure_pa, double humidity);
-
-/* Relative standard uncertainty of that equation itself, 22e-6 in its range (same paper); that of
- * temperature, pressure and humidity comes on top and rules: about 0.34 % per kelvin. Air being 1/750 of oil,
- * it hardly counts. */
-double rf_air_density_relative_u(void);

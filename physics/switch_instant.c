@@ -96,10 +96,9 @@ static bool add_witness(const RfFieldTimeline *timeline, unsigned number, const 
     return fabs(speed) > 3 * u_speed;
 }
 
-/* Mean and spread of the likelihood, and the logarithm of its integral. */
+/* Mean and spread of the likelihood. */
 typedef struct {
     RfValue time_s;
-    double log_evidence;
     unsigned droplets;
 } Instant;
 
@@ -115,7 +114,7 @@ static Instant grid_mean(const InstantGrid *grid)
     }
     double mean = first / weight, variance = second / weight - mean * mean;
     double sigma = sqrt(fmax(variance, grid->step_s * grid->step_s / 12));
-    return (Instant){{grid->first_s + mean, sigma}, top + log(weight * grid->step_s), 0};
+    return (Instant){{grid->first_s + mean, sigma}, 0};
 }
 
 /* Likelihood of a switch over a window about its present place. */
@@ -145,21 +144,20 @@ static void move_switch(RfFieldTimeline *timeline, unsigned number, double time_
     before->end_s = before[1].start_s = time_s;
 }
 
-/* Narrows the window about a switch until it holds the likelihood closely; returns its half width. A flat likelihood,
- * when nobody tells, keeps the window's middle and width. */
-static double home_in(RfFieldTimeline *timeline, unsigned number, const RfSwitchWitness *witnesses, size_t n,
-                      double exposure_s, Instant *found)
+/* Narrows the window about a switch until it holds the likelihood closely. A flat likelihood, when nobody tells,
+ * keeps the window's middle. */
+static void home_in(RfFieldTimeline *timeline, unsigned number, const RfSwitchWitness *witnesses, size_t n,
+                    double exposure_s, Instant *found)
 {
     double half_window_s = 0.4;
     for (int pass = 0; pass < 3; pass++) {
         *found = scan(timeline, number, witnesses, n, half_window_s, exposure_s);
-        if (found->droplets == 0) return half_window_s;
+        if (found->droplets == 0) return;
         move_switch(timeline, number, found->time_s.value);
         double wanted = fmax(6 * found->time_s.sigma, 0.01);
         if (pass > 0 && wanted < 2 * half_window_s && wanted > half_window_s / 4) break;
         half_window_s = fmin(wanted, 1);
     }
-    return half_window_s;
 }
 
 static void set_switch(RfFieldTimeline *timeline, unsigned number, RfValue time_s, unsigned droplets)
@@ -188,41 +186,4 @@ void rf_switch_instant_refine(RfFieldTimeline *timeline, unsigned number, const 
     Instant found;
     home_in(timeline, number, witnesses, n, 0.5 * frame_interval(witnesses, n), &found);
     set_switch(timeline, number, found.time_s, found.droplets);
-}
-
-enum { EXPOSURES = 6 };
-
-/* Mean over the exposures, each by its weight; their disagreement counts into sigma. */
-static RfValue mix(const Instant *instants, const double *weight)
-{
-    double sum = 0, first = 0, second = 0, zero = instants[0].time_s.value;
-    for (int e = 0; e < EXPOSURES; e++) {
-        double t = instants[e].time_s.value - zero, u = instants[e].time_s.sigma;
-        sum += weight[e];
-        first += weight[e] * t;
-        second += weight[e] * (t * t + u * u);
-    }
-    double mean = first / sum;
-    return (RfValue){zero + mean, sqrt(fmax(second / sum - mean * mean, 0))};
-}
-
-void rf_switch_instant_refine_all(RfFieldTimeline *timeline, const RfSwitchWitness *witnesses, size_t n)
-{
-    unsigned switches = timeline->switches->len;
-    double frame_s = frame_interval(witnesses, n), evidence[EXPOSURES] = {0}, weight[EXPOSURES];
-    g_autofree Instant *instants = g_new0(Instant, switches * EXPOSURES + 1);
-    for (unsigned k = 0; k < switches; k++) {
-        Instant found;
-        double half_window_s = home_in(timeline, k, witnesses, n, 0.5 * frame_s, &found);
-        for (int e = 0; e < EXPOSURES; e++) {
-            Instant *one = &instants[k * EXPOSURES + (unsigned)e];
-            *one = scan(timeline, k, witnesses, n, half_window_s, frame_s * e / (EXPOSURES - 1));
-            evidence[e] += one->droplets > 0 ? one->log_evidence : 0;
-        }
-    }
-    double top = evidence[0];
-    for (int e = 1; e < EXPOSURES; e++) top = fmax(top, evidence[e]);
-    for (int e = 0; e < EXPOSURES; e++) weight[e] = exp(evidence[e] - top);
-    for (unsigned k = 0; k < switches; k++)
-        set_switch(timeline, k, mix(&instants[k * EXPOSURES], weight), instants[k * EXPOSURES].droplets);
 }

@@ -8,7 +8,3 @@
  * droplets becomes the number of witnesses that tell. */
 void rf_switch_instant_refine(RfFieldTimeline *timeline, unsigned number, const RfSwitchWitness *witnesses,
                               size_t n);
-
-/* All switches, with the exposure as one unknown of the recording: a switch within an exposure bends the mean position
- * by up to an eighth of it, so exposures from none to a whole frame are weighed by what all switches say. */
-void rf_switch_instant_refine_all(RfFieldTimeline *timeline, const RfSwitchWitness *witnesses, size_t n);

@@ -6,12 +6,6 @@
 #include "physics/drag.h"
 #include "physics/physics_error.h"
 
-double rf_velocity_charge_coulomb(const RfMedium *medium, double settling_m_s, double slope_m_s_V)
-{
-    const double radius_m = rf_drag_radius_m(medium, settling_m_s);
-    return rf_drag_coefficient_kg_s(medium, radius_m) * medium->plate_gap_m * slope_m_s_V;
-}
-
 static bool check_input(const RfFallAtVoltage *falls, size_t n, GError **error)
 {
     if (n == 0) {

@@ -39,6 +39,3 @@ typedef struct {
  * velocity gives a radius. Refuses n = 0 and sigmas that aren't positive. */
 bool rf_velocity_charge_find(const RfMedium *medium, const RfFallAtVoltage *falls, size_t n,
                              RfVelocityCharge *result, GError **error);
-
-/* The bare formula, k d slope, for a radius that belongs to settling_m_s > 0. */
-double rf_velocity_charge_coulomb(const RfMedium *medium, double settling_m_s, double slope_m_s_V);

@@ -76,11 +76,6 @@ void rf_spot_shape_free(RfSpotShape *shape)
     g_free(shape);
 }
 
-double rf_spot_shape_focus_width_px(const RfSpotShape *shape)
-{
-    return shape->focus_width_px;
-}
-
 double rf_spot_shape_widest_px(const RfSpotShape *shape)
 {
     return shape->focus_width_px * sqrt(1 + ROW_STEP * (ROWS - 1) * (ROWS - 1));

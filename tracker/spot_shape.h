@@ -17,7 +17,6 @@ RfSpotShape *rf_spot_shape_resized(const RfSpotShape *shape, double focus_width_
 void rf_spot_shape_free(RfSpotShape *shape);
 G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfSpotShape, rf_spot_shape_free)
 
-double rf_spot_shape_focus_width_px(const RfSpotShape *shape);
 double rf_spot_shape_widest_px(const RfSpotShape *shape); /* wider spots can't be drawn */
 
 /* The spot of one width, prepared for many pixels. */
