@@ -379,11 +379,12 @@ static int by_place(const void *a, const void *b)
 }
 
 /* Two groups may end on the same spot where one was full: the later, fainter one goes. */
-static bool is_known(const RfSpot *spots, unsigned n, const RfSpot *spot)
+static bool is_known(const GArray *spots, unsigned first, const RfSpot *spot)
 {
-    for (unsigned i = 0; i < n; i++) {
-        float dx = spots[i].x_px - spot->x_px, dy = spots[i].y_px - spot->y_px,
-              reach = 0.7f * MIN(spots[i].width_px, spot->width_px);
+    for (unsigned i = first; i < spots->len; i++) {
+        const RfSpot *known = &g_array_index(spots, RfSpot, i);
+        float dx = known->x_px - spot->x_px, dy = known->y_px - spot->y_px,
+              reach = 0.7f * MIN(known->width_px, spot->width_px);
         if (dx * dx + dy * dy < reach * reach) return true;
     }
     return false;
@@ -406,9 +407,7 @@ void rf_spot_fitter_run(RfSpotFitter *fitter, const RfFitterSettings *settings, 
         for (unsigned k = 0; k < group.n; k++) {
             RfSpot spot = spot_of(settings, view, &group, k, &window);
             spot.excess = (float)excess_of(fitter, settings, &group, &window, outcome.offset);
-            const RfSpot *before = &g_array_index(spots, RfSpot, first_spot);
-            if (is_known(before, spots->len - first_spot, &spot)) continue;
-            g_array_append_val(spots, spot);
+            if (!is_known(spots, first_spot, &spot)) g_array_append_val(spots, spot);
         }
     }
     if (spots->len > first_spot)
