@@ -317,6 +317,26 @@ static void refusals(void)
     g_assert_error(error, RF_PHYSICS_ERROR, RF_PHYSICS_ERROR_RANGE);
 }
 
+/* SciPy 1.10.1: curve_fit(lambda V, a, b: a + b*V, V, v, sigma=s, absolute_sigma=True, ftol=xtol=gtol=1e-14) on these six
+ * velocities; estimates, standard deviations, covariance and the sum of squares. Printed to ten figures; its minimiser
+ * stops at a relative 1e-7 or better. */
+static void line_as_scipy_fits_it(void)
+{
+    static const RfFallAtVoltage falls[] = {{0, {4.85e-5, 1.2e-6}},    {0, {5.02e-5, 0.8e-6}},
+                                            {300, {-1.31e-5, 1.5e-6}}, {-300, {1.118e-4, 2.0e-6}},
+                                            {500, {-5.47e-5, 1.1e-6}}, {120, {2.41e-5, 0.9e-6}}};
+    const RfMedium medium = room_air();
+    RfVelocityCharge result;
+    g_assert_true(rf_velocity_charge_find(&medium, falls, G_N_ELEMENTS(falls), &result, NULL));
+    g_assert_cmpfloat_with_epsilon(result.settling_m_s.value, 4.948302671e-05, 1e-12);
+    g_assert_cmpfloat_with_epsilon(result.slope_m_s_V.value, -2.085454300e-07, 1e-14);
+    g_assert_cmpfloat_with_epsilon(result.settling_m_s.sigma, 5.217264271e-07, 1e-13);
+    g_assert_cmpfloat_with_epsilon(result.slope_m_s_V.sigma, 2.180763743e-09, 1e-15);
+    g_assert_cmpfloat_with_epsilon(result.covariance, -5.879711053e-16, 1e-22);
+    g_assert_cmpfloat_with_epsilon(result.chi_squared, 1.654151429, 1e-6);
+    g_assert_cmpuint(result.degrees_of_freedom, ==, 4);
+}
+
 int main(int argc, char **argv)
 {
     gsl_set_error_handler_off();
@@ -330,6 +350,7 @@ int main(int argc, char **argv)
     g_test_add_func("/velocity_charge/published/pang-line-fit", pang_line_fit);
     g_test_add_func("/velocity_charge/find/every-way-of-measuring-is-one-line",
                     every_way_of_measuring_is_one_line);
+    g_test_add_func("/velocity_charge/find/line-as-scipy-fits-it", line_as_scipy_fits_it);
     g_test_add_func("/velocity_charge/find/sigma-is-true", sigma_is_true);
     g_test_add_func("/velocity_charge/find/cannot-be-measured", what_cannot_be_measured_is_an_outcome);
     g_test_add_func("/velocity_charge/find/refusals", refusals);
