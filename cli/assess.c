@@ -155,13 +155,14 @@ static int compare_doubles(const void *a, const void *b)
     return (x > y) - (x < y);
 }
 
-static Seen seen_of(const GArray *paths, unsigned droplet)
+/* Rows are sorted by droplet; `at` is this droplet's first row, and the next one's afterwards. */
+static Seen seen_of(const GArray *paths, unsigned droplet, guint *at)
 {
     g_autoptr(GArray) snr = g_array_new(FALSE, FALSE, sizeof(double));
     Seen seen = {0};
-    for (guint i = 0; i < paths->len; i++) {
-        const RfPathRow *row = &g_array_index(paths, RfPathRow, i);
-        if (row->droplet != droplet || !row->seen)
+    for (; *at < paths->len && g_array_index(paths, RfPathRow, *at).droplet == droplet; (*at)++) {
+        const RfPathRow *row = &g_array_index(paths, RfPathRow, *at);
+        if (!row->seen)
             continue;
         if (seen.frames++ == 0)
             seen.start_s = row->time_s;
@@ -240,9 +241,10 @@ static void add_causes(RfResults *results, guint first_row, const RfTrail *trail
 bool rf_assess_droplets(RfResults *results, const RfTrail *trails, const RfDropletSet *set,
                         const RfChargeInputs *inputs, GError **error)
 {
+    guint next_path_row = 0;
     for (size_t i = 0; i < set->n; i++) {
         const RfDropletResult *result = &set->droplets[i];
-        Seen seen = seen_of(results->paths, trails[i].droplet);
+        Seen seen = seen_of(results->paths, trails[i].droplet, &next_path_row);
         guint first_row = results->droplets->len;
         if (result->fit.state != RF_FIT_DONE)
             add_unfitted(results, trails[i].droplet, &result->fit, &seen);

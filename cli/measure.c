@@ -170,42 +170,32 @@ static void add_segments(RfResults *results, const RfTrailSet *trails, const RfD
 
 /* ---- what a reader should know ---- */
 
-static void warn(RfResults *results, const char *format, ...) G_GNUC_PRINTF(2, 3);
-
-static void warn(RfResults *results, const char *format, ...)
-{
-    va_list arguments;
-    va_start(arguments, format);
-    g_ptr_array_add(results->warnings, g_strdup_vprintf(format, arguments));
-    va_end(arguments);
-}
-
 static void warn_of_log(RfResults *results, const RfLogFinding *finding)
 {
     switch (finding->kind) {
     case RF_LOG_AGREES:
         break;
     case RF_LOG_MISSING:
-        warn(results, "the droplets show a switch at %.2f s that the voltage log doesn't have", finding->time_s);
+        rf_results_warn(results, "the droplets show a switch at %.2f s that the voltage log doesn't have", finding->time_s);
         break;
     case RF_LOG_EXTRA:
-        warn(results, "the voltage log has a switch at %.2f s that the droplets contradict", finding->time_s);
+        rf_results_warn(results, "the voltage log has a switch at %.2f s that the droplets contradict", finding->time_s);
         break;
     case RF_LOG_UNSEEN:
-        warn(results, "the voltage log's switch at %.2f s was seen by no charged droplet", finding->time_s);
+        rf_results_warn(results, "the voltage log's switch at %.2f s was seen by no charged droplet", finding->time_s);
         break;
     case RF_LOG_UNTIED:
-        warn(results,
+        rf_results_warn(results,
              "no droplet moved with the field that the voltage log reports: they carry no charge, or the log is another "
              "recording's; its clock is taken to be %.1f s ahead of the recording's",
              finding->difference.value);
         break;
     case RF_LOG_LATE:
-        warn(results, "the voltage log's switch at %.2f s is %.3f s off what the droplets show (u = %.3f s)",
+        rf_results_warn(results, "the voltage log's switch at %.2f s is %.3f s off what the droplets show (u = %.3f s)",
              finding->time_s, finding->difference.value, finding->difference.sigma);
         break;
     case RF_LOG_VOLTAGE_MISFIT:
-        warn(results, "from %.2f s on the droplets move as under %.1f V more than the log says (u = %.1f V)",
+        rf_results_warn(results, "from %.2f s on the droplets move as under %.1f V more than the log says (u = %.1f V)",
              finding->time_s, finding->difference.value, finding->difference.sigma);
         break;
     }
@@ -219,7 +209,7 @@ static void warn_of_timeline(RfResults *results, const RfFieldTimeline *timeline
         doubtful_s += doubt->end_s - doubt->start_s;
     }
     if (doubtful_s > 0)
-        warn(results,
+        rf_results_warn(results,
              "for %.1f s in all, motion can't settle which field state the recording is in; charges that hang on it are "
              "set aside. A voltage log would tell, or droplets that stay in view across the switches",
              doubtful_s);

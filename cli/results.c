@@ -103,3 +103,11 @@ void rf_results_free(RfResults *results)
     g_free(results->verdict);
     g_free(results);
 }
+
+void rf_results_warn(RfResults *results, const char *format, ...)
+{
+    va_list arguments;
+    va_start(arguments, format);
+    g_ptr_array_add(results->warnings, g_strdup_vprintf(format, arguments));
+    va_end(arguments);
+}

@@ -194,5 +194,9 @@ typedef struct {
 } RfResults;
 
 RfResults *rf_results_new(void);
+
+/* Adds to results->warnings: what a reader should know before using the numbers. */
+void rf_results_warn(RfResults *results, const char *format, ...) G_GNUC_PRINTF(2, 3);
+
 void rf_results_free(RfResults *results);
 G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfResults, rf_results_free)
