@@ -7,18 +7,18 @@
 #include "physics/drag.h"
 #include "physics/droplet_path.h"
 
-enum { BLOCK = 32, COARSE_PLACES = 250 };
-/* Gain in log-likelihood below which a step is chance. The largest of a normalised bridge passes b with probability
- * b exp(-b^2/2)/sqrt(2 pi) (2 ln(1/e) (1 - 1/b^2) + 4/b^2), e the share of either end left out (D. Siegmund, Ann.
- * Stat. 14 (1986) 361, from memory): with b^2/2 = 10.5 and e = 0.002, 6.4e-4 for a droplet. */
-static const double GAIN_MIN = 10.5;
+enum { BLOCK = 32, COARSE_PLACES = 250, PARTS_OF_A_FRAME = 4 };
+/* Gain in log-likelihood below which a step is chance: that of a change by 5 sigma. The largest of a normalised bridge
+ * passes b with probability b exp(-b^2/2)/sqrt(2 pi) (2 ln(1/e) (1 - 1/b^2) + 4/b^2), e the share of either end left
+ * out (D. Siegmund, Ann. Stat. 14 (1986) 361, from memory): with b = 5 and e = 0.002, 9e-5 for a droplet. */
+static const double GAIN_MIN = 12.5;
 /* Either side must be watched under a field for so long: shorter ones can't tell a charge from a stumble. */
 static const double SIDE_ON_MIN_S = 0.2;
 
 typedef struct {
     double time_s;
     bool across_off;
-    double width_s; /* of the off state */
+    double width_s; /* that it stands for: of the off state, or to its neighbours */
     double gain;
 } Place;
 
@@ -81,6 +81,14 @@ static double spell_end_s(const Scan *scan, double time_s)
     size_t k = 0;
     while (k < scan->model->steps && time_s >= scan->model->step_s[k]) k++;
     return k < scan->model->steps ? scan->model->step_s[k] : HUGE_VAL;
+}
+
+static double spell_start_s(const Scan *scan, double time_s)
+{
+    double start_s = -HUGE_VAL;
+    for (size_t k = 0; k < scan->model->steps; k++)
+        if (scan->model->step_s[k] <= time_s) start_s = fmax(start_s, scan->model->step_s[k]);
+    return start_s;
 }
 
 /* What a change of charge at a place adds to the path, per unit of speed per volt. */
@@ -149,23 +157,46 @@ static double on_between(const Scan *scan, double from_s, double to_s)
 static bool is_watched_enough(const Scan *scan, double time_s)
 {
     const RfDropletPath *path = scan->path;
-    double from_s = path->times_s[0], to_s = fmin(path->times_s[path->n - 1], spell_end_s(scan, time_s));
-    for (size_t k = 0; k < scan->model->steps; k++)
-        if (scan->model->step_s[k] <= time_s) from_s = fmax(from_s, scan->model->step_s[k]);
+    double from_s = fmax(path->times_s[0], spell_start_s(scan, time_s));
+    double to_s = fmin(path->times_s[path->n - 1], spell_end_s(scan, time_s));
     return on_between(scan, from_s, time_s) >= SIDE_ON_MIN_S &&
            on_between(scan, time_s, to_s) >= SIDE_ON_MIN_S;
 }
 
-/* Halfway between samples while the field is on, every stride-th, from one instant to another. */
-static void add_on_places(const Scan *scan, double from_s, double to_s, size_t stride, GArray *places)
+static void add_on_place(const Scan *scan, double time_s, double width_s, GArray *places)
 {
-    const RfDropletPath *path = scan->path;
-    for (size_t i = 0; i + 1 < path->n; i += stride) {
-        double t = 0.5 * (path->times_s[i] + path->times_s[i + 1]);
-        if (t < from_s || t > to_s || rf_field_timeline_at(scan->model->timeline, t)->voltage_v == 0)
-            continue;
-        Place place = {.time_s = t};
-        if (is_watched_enough(scan, t)) g_array_append_val(places, place);
+    Place place = {.time_s = time_s, .width_s = width_s};
+    if (rf_field_timeline_at(scan->model->timeline, time_s)->voltage_v != 0 &&
+        is_watched_enough(scan, time_s))
+        g_array_append_val(places, place);
+}
+
+static size_t coarse_stride(const Scan *scan)
+{
+    return MAX(scan->path->n / COARSE_PLACES, 1);
+}
+
+/* Halfway between samples while the field is on, every so many, from one instant to another. */
+static void add_coarse_places(const Scan *scan, double from_s, double to_s, GArray *places)
+{
+    const double *times_s = scan->path->times_s;
+    size_t stride = coarse_stride(scan);
+    for (size_t i = 0; i + 1 < scan->path->n; i += stride) {
+        double t = 0.5 * (times_s[i] + times_s[i + 1]);
+        if (t > from_s && t < to_s)
+            add_on_place(scan, t, (double)stride * scan->path->typical_step_s, places);
+    }
+}
+
+/* Several between any two samples, from one instant to another. */
+static void add_fine_places(const Scan *scan, double from_s, double to_s, GArray *places)
+{
+    const double *times_s = scan->path->times_s;
+    for (size_t i = 0; i + 1 < scan->path->n; i++) {
+        double part_s = (times_s[i + 1] - times_s[i]) / PARTS_OF_A_FRAME;
+        if (times_s[i + 1] < from_s || times_s[i] > to_s) continue;
+        for (int p = 0; p < PARTS_OF_A_FRAME; p++)
+            add_on_place(scan, times_s[i] + (p + 0.5) * part_s, part_s, places);
     }
 }
 
@@ -190,14 +221,14 @@ static Place best_place(const GArray *places)
 
 /* Every instant being as likely beforehand, an off state of some seconds outweighs the few frames beside it that explain
  * the path as well: the best off place, if its share of the chance is the larger one. */
-static Place likeliest_place(const GArray *places, double on_width_s)
+static Place likeliest_place(const GArray *places)
 {
     Place best = best_place(places), off = {0};
     double on_sum = 0;
     for (unsigned i = 0; i < places->len; i++) {
         const Place *p = &g_array_index(places, Place, i);
         if (p->across_off && p->gain > off.gain) off = *p;
-        if (!p->across_off) on_sum += on_width_s * exp(p->gain - best.gain);
+        if (!p->across_off) on_sum += p->width_s * exp(p->gain - best.gain);
     }
     return off.gain > 0 && off.width_s * exp(off.gain - best.gain) > on_sum ? off : best;
 }
@@ -222,43 +253,45 @@ static bool is_rather_a_jump(const Scan *scan, const Place *place)
 }
 
 /* Mean and spread of the instant over the places near the best, each weighted by its likelihood. */
-static RfValue weighted_instant(const GArray *places, const Place *best, double frame_s)
+static RfValue weighted_instant(const GArray *places, const Place *best)
 {
     double weight = 0, first = 0, second = 0;
     for (unsigned i = 0; i < places->len; i++) {
         const Place *p = &g_array_index(places, Place, i);
-        double w = exp(p->gain - best->gain), t = p->time_s - best->time_s;
+        double w = p->width_s * exp(p->gain - best->gain), t = p->time_s - best->time_s;
         weight += w;
         first += w * t;
         second += w * t * t;
     }
     double mean = first / weight, variance = second / weight - mean * mean;
-    return (RfValue){best->time_s + mean, sqrt(fmax(variance, 0) + frame_s * frame_s / 12)};
+    return (RfValue){best->time_s + mean, sqrt(fmax(variance, 0) + best->width_s * best->width_s / 12)};
 }
 
 static Place search_spell(const Scan *scan)
 {
     g_autoptr(GArray) places = g_array_new(FALSE, TRUE, sizeof(Place));
-    size_t stride = MAX(scan->path->n / COARSE_PLACES, 1);
-    add_on_places(scan, -HUGE_VAL, HUGE_VAL, stride, places);
+    add_coarse_places(scan, -HUGE_VAL, HUGE_VAL, places);
     add_off_places(scan, places);
     weigh_places(scan, (Place *)(void *)places->data, places->len);
-    return likeliest_place(places, scan->path->typical_step_s * (double)stride);
+    return likeliest_place(places);
 }
 
-/* Every frame around a coarse place; the instant with its sigma, and the gain there. */
+/* Closely around a coarse place, and coarsely in the rest of its spell, where a small step may have been as well; the
+ * instant with its sigma, and the gain there. */
 static RfValue settle_instant(const Scan *scan, Place *place)
 {
     if (place->across_off) return (RfValue){place->time_s, place->width_s / sqrt(12)};
     g_autoptr(GArray) places = g_array_new(FALSE, TRUE, sizeof(Place));
-    double reach_s =
-        fmax(0.6, 2 * scan->path->typical_step_s * (double)MAX(scan->path->n / COARSE_PLACES, 1));
-    add_on_places(scan, place->time_s - reach_s, place->time_s + reach_s, 1, places);
+    double reach_s = fmax(0.6, 2 * scan->path->typical_step_s * (double)coarse_stride(scan));
+    double from_s = place->time_s - reach_s, to_s = place->time_s + reach_s;
+    add_coarse_places(scan, spell_start_s(scan, place->time_s), from_s, places);
+    add_fine_places(scan, from_s, to_s, places);
+    add_coarse_places(scan, to_s, spell_end_s(scan, place->time_s), places);
     weigh_places(scan, (Place *)(void *)places->data, places->len);
     Place best = best_place(places);
     if (!(best.gain > 0)) return (RfValue){place->time_s, reach_s / sqrt(3)};
     *place = best;
-    return weighted_instant(places, &best, scan->path->typical_step_s);
+    return weighted_instant(places, &best);
 }
 
 typedef struct {
