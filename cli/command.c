@@ -1,5 +1,6 @@
 #include "cli/command.h"
 
+#include "cli/help.h"
 #include "cli/version.h"
 
 #include <inttypes.h>
@@ -10,6 +11,13 @@
 #include <unistd.h>
 
 G_DEFINE_QUARK(rf-command-error, rf_command_error)
+
+const RfCommand *const rf_commands[] = {
+#define RF_COMMAND(verb) &rf_command_##verb,
+#include "cli/commands.inc"
+#undef RF_COMMAND
+    NULL,
+};
 
 static RfCommonOptions common;
 static volatile sig_atomic_t is_cancelled;
@@ -22,6 +30,13 @@ const RfCommonOptions *rf_command_common(void)
 int rf_command_is_cancelled(void)
 {
     return is_cancelled;
+}
+
+const RfCommand *rf_command_find(const char *verb)
+{
+    for (const RfCommand *const *command = rf_commands; *command; command++)
+        if (g_str_equal((*command)->verb, verb)) return *command;
+    return NULL;
 }
 
 static void on_signal(int number)
@@ -91,40 +106,30 @@ void rf_command_progress_end(void)
         fputs("\r\033[K", stderr);
 }
 
-static void print_overview(FILE *to, const RfCommand *const *commands)
-{
-    fputs("usage: risefall COMMAND [OPTIONS]\n\n"
-          "From a recording of a droplet charge cell to charges with their uncertainty.\n\n",
-          to);
-    for (; *commands; commands++)
-        fprintf(to, "  %-10s %s\n", (*commands)->verb, (*commands)->purpose);
-    fputs("\n'risefall COMMAND --help' tells more, with an example.\n"
-          "'risefall --version' names the version.\n",
-          to);
-}
+static const GOptionEntry shared_options[] = {
+    {"quiet", 'q', 0, G_OPTION_ARG_NONE, &common.is_quiet, "no progress, no summary", NULL},
+    {"threads", 0, 0, G_OPTION_ARG_INT, &common.threads, "worker threads (default: one per core)", "N"},
+};
+static const GOptionEntry json_option = {
+    "json", 0, 0, G_OPTION_ARG_NONE, &common.as_json, "the result as JSON on stdout, for scripts", NULL};
 
-static const RfCommand *find_command(const char *verb, const RfCommand *const *commands)
+GOptionEntry *rf_command_options(const RfCommand *command)
 {
-    for (; *commands; commands++)
-        if (g_str_equal((*commands)->verb, verb))
-            return *commands;
-    return NULL;
+    GArray *options = g_array_new(TRUE, FALSE, sizeof(GOptionEntry));
+    for (const GOptionEntry *own = command->entries; own && own->long_name; own++) g_array_append_val(options, *own);
+    if (command->has_json) g_array_append_val(options, json_option);
+    g_array_append_vals(options, shared_options, G_N_ELEMENTS(shared_options));
+    return (GOptionEntry *)(void *)g_array_free(options, FALSE);
 }
 
 static GOptionContext *new_context(const RfCommand *command)
 {
-    const GOptionEntry shared[] = {
-        {"quiet", 'q', 0, G_OPTION_ARG_NONE, &common.is_quiet, "no progress, no summary", NULL},
-        {"threads", 0, 0, G_OPTION_ARG_INT, &common.threads, "worker threads (default: one per core)", "N"},
-        {0},
-    };
     GOptionContext *context = g_option_context_new(command->arguments);
     g_option_context_set_summary(context, command->purpose); /* a line of its own: 80 columns must do */
     g_autofree char *example = g_strdup_printf("Example:\n%s", command->example);
     g_option_context_set_description(context, example);
-    if (command->entries)
-        g_option_context_add_main_entries(context, command->entries, NULL);
-    g_option_context_add_main_entries(context, shared, NULL);
+    g_autofree GOptionEntry *options = rf_command_options(command);
+    g_option_context_add_main_entries(context, options, NULL);
     return context;
 }
 
@@ -165,19 +170,23 @@ static RfExit run_command(const RfCommand *command, int argc, char **argv)
     return report_failure(command, code, error);
 }
 
-int rf_command_main(int argc, char **argv, const RfCommand *const *commands)
+int rf_command_main(int argc, char **argv)
 {
-    if (argc < 2 || g_str_equal(argv[1], "--help") || g_str_equal(argv[1], "-h") || g_str_equal(argv[1], "help")) {
-        print_overview(argc < 2 ? stderr : stdout, commands);
-        return argc < 2 ? RF_EXIT_USAGE : RF_EXIT_DONE;
+    const char *first = argc > 1 ? argv[1] : NULL;
+    if (!first) {
+        rf_help_overview(stderr);
+        return RF_EXIT_USAGE;
     }
-    if (g_str_equal(argv[1], "--version")) {
+    if (g_str_equal(first, "--help") || g_str_equal(first, "-h")) {
+        rf_help_overview(stdout);
+        return RF_EXIT_DONE;
+    }
+    if (g_str_equal(first, "help")) return rf_help_topic(argc > 2 ? argv[2] : NULL, argc - 2);
+    if (g_str_equal(first, "--version")) {
         puts("risefall " RF_VERSION);
         return RF_EXIT_DONE;
     }
-    const RfCommand *command = find_command(argv[1], commands);
-    if (command)
-        return run_command(command, argc - 1, argv + 1);
-    fprintf(stderr, "risefall: no command '%s'\n'risefall --help' lists the commands\n", argv[1]);
-    return RF_EXIT_USAGE;
+    const RfCommand *command = rf_command_find(first);
+    if (command) return run_command(command, argc - 1, argv + 1);
+    return rf_help_no_such("command", first);
 }

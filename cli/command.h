@@ -1,4 +1,4 @@
-/* What every subcommand is to main.c, and what they share: the help page, the common options, progress.
+/* What every subcommand is, and what they share: options, help, manual, completion, progress.
  * Not for the work itself: each command_<verb>.c calls pipeline.c or its own file for that. */
 #pragma once
 
@@ -14,22 +14,42 @@ typedef enum {
 } RfExit;
 
 typedef struct {
+    const char *name, *what;
+} RfCommandFile;
+
+typedef struct {
     const char *verb;
-    const char *arguments; /* "SHEET --out DIR" */
+    const char *arguments; /* "SHEET --out DIR"; SHEET, SCENE, DIR, X.csv before the first option steer completion */
     const char *purpose;   /* one sentence */
-    const char *example;   /* one worked example: a command line and what it leaves behind */
-    const GOptionEntry *entries;
+    const char *details;   /* for the manual: paragraphs with an empty line between; NULL: purpose says it all */
+    const char *example;   /* one worked example: a command line, indented by two, and what it leaves behind */
+    const RfCommandFile *files; /* for the manual: what it leaves behind, to an empty row; or NULL */
+    const GOptionEntry *entries; /* the value's name steers completion: DIR, FILE, or words as in "grid|vertical" */
+    bool has_json; /* takes --json: rf_command_common()->as_json */
     /* Options are parsed; `arguments` are what is left. Errors are left in `error` for main.c to print once. */
     RfExit (*run)(char **arguments, GError **error);
 } RfCommand;
 
-extern const RfCommand rf_command_audit, rf_command_calibrate, rf_command_charge, rf_command_check, rf_command_paths,
-    rf_command_plan, rf_command_run, rf_command_simulate;
+/* Every command of `verbs` in cli/meson.build: rf_command_run and so on. */
+#define RF_COMMAND(verb) extern const RfCommand rf_command_##verb;
+#include "cli/commands.inc"
+#undef RF_COMMAND
 
-/* Options that every command has; filled before `run` is called. */
+/* In the order in which help lists them, to a NULL. */
+extern const RfCommand *const rf_commands[];
+
+/* NULL if there is no such command. */
+const RfCommand *rf_command_find(const char *verb);
+
+/* The command's own options, then those that every command has, to an empty row. Texts are static.
+ * (returns new; g_free) */
+GOptionEntry *rf_command_options(const RfCommand *command);
+
+/* Options that commands share; filled before `run` is called. */
 typedef struct {
-    int is_quiet; /* GOption writes an int */
-    int threads; /* 0: as many as the machine has cores */
+    int is_quiet; /* GOption writes ints */
+    int as_json;  /* the result as JSON on stdout, and nothing else there; only where has_json */
+    int threads;  /* 0: as many as the machine has cores */
 } RfCommonOptions;
 
 const RfCommonOptions *rf_command_common(void);
@@ -54,4 +74,4 @@ void rf_command_progress_end(void);
 /* Set by SIGINT and SIGTERM; long work polls it and ends cleanly. */
 int rf_command_is_cancelled(void);
 
-int rf_command_main(int argc, char **argv, const RfCommand *const *commands);
+int rf_command_main(int argc, char **argv);

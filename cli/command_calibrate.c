@@ -13,7 +13,8 @@ static char *spacing, *lines, *picture_path;
 
 static const GOptionEntry entries[] = {
     {"spacing", 's', 0, G_OPTION_ARG_STRING, &spacing, "between neighbouring lines (needed with an IMAGE)", "Q"},
-    {"lines", 'l', 0, G_OPTION_ARG_STRING, &lines, "grid, horizontal or vertical (default: grid)", "KIND"},
+    {"lines", 'l', 0, G_OPTION_ARG_STRING, &lines, "which lines the reticle has (default: grid)",
+     "grid|horizontal|vertical"},
     {"picture", 'p', 0, G_OPTION_ARG_FILENAME, &picture_path, "PNG of the picture with the lines found", "FILE"},
     {0},
 };

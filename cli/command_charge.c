@@ -25,5 +25,6 @@ const RfCommand rf_command_charge = {
     .example = "  risefall charge morning.ini --paths morning-paths/paths.csv --out morning\n"
                "leaves the same files as run, without watching the recording again",
     .entries = entries,
+    .has_json = true,
     .run = run,
 };

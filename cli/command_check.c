@@ -4,12 +4,11 @@
 #include "cli/examine.h"
 #include "cli/fitness_text.h"
 
-static int as_json, is_whole; /* GOption writes ints */
+static int is_whole; /* GOption writes an int */
 
 static const GOptionEntry entries[] = {
-    {"json", 0, 0, G_OPTION_ARG_NONE, &as_json, "figures and verdicts as JSON", NULL},
-    {"whole", 0, 0, G_OPTION_ARG_NONE, &is_whole,
-     "look at every picture (default: 1800 from the middle)", NULL},
+    {"whole", 0, 0, G_OPTION_ARG_NONE, &is_whole, "look at every picture (default: 1800 from the middle)",
+     NULL},
     {0},
 };
 
@@ -22,9 +21,9 @@ static RfExit run(char **arguments, GError **error)
     if (!rf_examine_recording(path, is_whole, &hooks, &figures, error)) return RF_EXIT_INPUT;
     rf_command_progress_end();
     g_autoptr(GArray) lines = rf_fitness_judge(&figures);
-    g_autofree char *text =
-        as_json ? rf_fitness_json(path, &figures, lines) : rf_fitness_text(path, &figures, lines);
-    if (as_json || !rf_command_common()->is_quiet) fputs(text, stdout);
+    g_autofree char *text = rf_command_common()->as_json ? rf_fitness_json(path, &figures, lines)
+                                                         : rf_fitness_text(path, &figures, lines);
+    if (rf_command_common()->as_json || !rf_command_common()->is_quiet) fputs(text, stdout);
     return figures.droplets > 0 ? RF_EXIT_DONE : RF_EXIT_NOT_MEASURED;
 }
 
@@ -37,5 +36,6 @@ const RfCommand rf_command_check = {
                "noise, camera, contrast, compression ...): ok, care or BAD, with its figure\n"
                "and what to do next time. Exit status 3: no droplet was seen.",
     .entries = entries,
+    .has_json = true,
     .run = run,
 };

@@ -24,5 +24,6 @@ const RfCommand rf_command_paths = {
     .example = "  risefall paths morning.ini --out morning-paths\n"
                "leaves morning-paths/paths.csv, scale.json and summary.json",
     .entries = entries,
+    .has_json = true,
     .run = run,
 };

@@ -24,5 +24,6 @@ const RfCommand rf_command_run = {
     .example = "  risefall run morning.ini --out morning\n"
                "leaves morning/report.html to look at, beside it droplets.csv, summary.json ...",
     .entries = entries,
+    .has_json = true,
     .run = run,
 };

@@ -3,6 +3,7 @@
 #include "cli/pipeline.h"
 #include "cli/result_folder.h"
 #include "cli/screen_summary.h"
+#include "cli/write_json.h"
 #include "cli/write_results.h"
 
 #include <stdio.h>
@@ -35,29 +36,32 @@ static bool write_down(RfResults *results, const char *out, RfDeliverKind kind, 
     return folder && rf_write_results(results, folder, part, error) && rf_result_folder_commit(folder, error);
 }
 
+static char *screen_page(const RfResults *results, const char *out)
+{
+    return rf_screen_summary_new(results, out, SCREEN_LINES, rf_screen_summary_wants_colour(STDOUT_FILENO));
+}
+
 static void tell(const RfResults *results, const char *out)
 {
-    if (rf_command_common()->is_quiet)
-        return;
-    g_autofree char *summary =
-        rf_screen_summary_new(results, out, SCREEN_LINES, rf_screen_summary_wants_colour(STDOUT_FILENO));
+    const RfCommonOptions *common = rf_command_common();
+    if (common->is_quiet && !common->as_json) return;
+    g_autofree char *summary = common->as_json ? rf_write_json_summary(results) : screen_page(results, out);
     fputs(summary, stdout);
+    if (common->is_quiet) return;
     for (guint i = 0; i < results->warnings->len; i++)
         fprintf(stderr, "risefall: note: %s\n", (const char *)g_ptr_array_index(results->warnings, i));
 }
 
-RfExit rf_deliver(const char *sheet, const char *paths_csv, const char *out, RfDeliverKind kind, GError **error)
+RfExit rf_deliver(const char *sheet, const char *paths_csv, const char *out, RfDeliverKind kind,
+                  GError **error)
 {
     /* A target that can't be replaced is said now, not after the work. */
-    if (!rf_result_folder_may_replace(out, error))
-        return RF_EXIT_INPUT;
+    if (!rf_result_folder_may_replace(out, error)) return RF_EXIT_INPUT;
     g_autoptr(RfSettings) settings = rf_settings_load(sheet, error);
-    if (!settings)
-        return RF_EXIT_INPUT;
+    if (!settings) return RF_EXIT_INPUT;
     g_autoptr(RfResults) results = make(settings, paths_csv, kind, error);
     rf_command_progress_end();
-    if (!results || !write_down(results, out, kind, error))
-        return RF_EXIT_INPUT;
+    if (!results || !write_down(results, out, kind, error)) return RF_EXIT_INPUT;
     tell(results, out);
     return results->measured ? RF_EXIT_DONE : RF_EXIT_NOT_MEASURED;
 }

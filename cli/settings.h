@@ -93,6 +93,3 @@ G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfSettings, rf_settings_free)
 /* Magnitude of the voltage in a state: the polarity's own if the sheet gives one, else `voltage`; {0, 0} when off. False: a log must
  * say, the sheet doesn't. */
 bool rf_settings_voltage(const RfSettings *settings, RfFieldState state, RfValue *voltage_V);
-
-/* The sheet's own manual: every group and key with its unit, default and one sentence. (returns new) */
-char *rf_settings_help(void);

@@ -41,7 +41,7 @@ const RfSettingsKey rf_settings_keys[] = {
      "height above the sea, as in 120 m", AT(height_m)},
 
     {"oil", "density", RF_KEY_QUANTITY, "kg m-3", 100, 3e4, NULL, NULL,
-     "as in 886.0(10) kg/m^3", SET(density_kg_m3)},
+     "of the oil, as in 886.0(10) kg/m^3", SET(density_kg_m3)},
     {"oil", "density_at", RF_KEY_MAYBE_QUANTITY, "K", 150, 600, NULL, NULL,
      "temperature at which that density holds, as in 20 degC; needs density_slope", SET(density_at_kelvin)},
     {"oil", "density_slope", RF_KEY_MAYBE_QUANTITY, "kg m-3 K-1", -50, 50, NULL, NULL,
@@ -57,7 +57,7 @@ const RfSettingsKey rf_settings_keys[] = {
     {"air", "resistance", RF_KEY_MAYBE_QUANTITY, "ohm", 1e-3, 1e9, NULL, NULL,
      "of the thermistor in the cell, as in 10.85(1) kohm", SET(resistance_ohm)},
     {"air", "pressure", RF_KEY_QUANTITY, "Pa", 100, 1e6, NULL, NULL,
-     "as in 101.30(5) kPa", SET(pressure_pa)},
+     "of the air in the cell, as in 101.30(5) kPa", SET(pressure_pa)},
     {"air", "humidity", RF_KEY_QUANTITY, "1", 0, 1, "50(29) %", "not stated: anything from 0 to 100 % (rectangular)",
      "relative humidity, as in 45(5) %", SET(humidity)},
 
@@ -103,31 +103,4 @@ const RfSettingsKey *rf_settings_key_find(const char *group, const char *key)
         if (strcmp(rf_settings_keys[i].group, group) == 0 && strcmp(rf_settings_keys[i].key, key) == 0)
             return &rf_settings_keys[i];
     return NULL;
-}
-
-static void add_key_help(GString *help, const RfSettingsKey *key)
-{
-    g_string_append_printf(help, "  %-18s %s", key->key, key->help);
-    if (key->kind == RF_KEY_WORD) g_string_append_printf(help, ": %s", key->form);
-    if (key->fallback) g_string_append_printf(help, " (default: %s)", key->fallback);
-    if (!key->fallback && (key->kind == RF_KEY_QUANTITY || key->kind == RF_KEY_PATHS))
-        g_string_append(help, " (needed)");
-    g_string_append_c(help, '\n');
-}
-
-char *rf_settings_help(void)
-{
-    GString *help = g_string_new(NULL);
-    for (size_t i = 0; i < rf_settings_n_keys; i++) {
-        const char *group = rf_settings_keys[i].group;
-        if (i == 0 || strcmp(group, rf_settings_keys[i - 1].group) != 0)
-            g_string_append_printf(help, "%s[%s]\n", i ? "\n" : "", group);
-        add_key_help(help, &rf_settings_keys[i]);
-    }
-    g_string_append(
-        help,
-        "\n[shared]\n  KEY=NAME           the input KEY is one and the same measurement in all sheets that "
-        "name it so, as in plate_gap=gap-march\n"
-        "\n[notes]\n  any keys           carried into the report word for word\n");
-    return g_string_free(help, false);
 }

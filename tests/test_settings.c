@@ -368,16 +368,6 @@ static void a_sheet_with_a_log_needs_no_voltage(void)
     g_assert_cmpuint(never_on->n_states, ==, 1);
 }
 
-static void help_names_every_key(void)
-{
-    g_autofree char *help = rf_settings_help();
-    for (size_t i = 0; i < rf_settings_n_keys; i++) {
-        g_autofree char *line = g_strdup_printf("\n  %s ", rf_settings_keys[i].key);
-        g_assert_nonnull(strstr(help, line));
-    }
-    g_assert_nonnull(strstr(help, "[notes]"));
-}
-
 /* Each default stands in the form in which a sheet would have it. */
 static void defaults_are_valid_settings(void)
 {
@@ -418,7 +408,6 @@ int main(int argc, char **argv)
     g_test_add_func("/settings/refuse/files-that-are-no-sheets", files_that_are_no_sheets);
     g_test_add_func("/settings/refuse/an-empty-sheet-asks-for-the-recording",
                     an_empty_sheet_asks_for_the_recording);
-    g_test_add_func("/settings/help/names-every-key", help_names_every_key);
     g_test_add_func("/settings/help/defaults-are-valid-settings", defaults_are_valid_settings);
     return g_test_run();
 }
