@@ -287,6 +287,33 @@ static void test_merged_is_bridged(void)
     g_assert_cmpuint(together, >=, 2);
 }
 
+/* Compression held a droplet's picture still, then lets it jump; for one exposure both places show a spot. */
+static void test_seen_twice_after_a_jump(void)
+{
+    for (unsigned long seed = 1; seed <= 10; seed++) {
+        const RfActor held_and_let_go[] = {
+            {.x_px = 200, .y_px = 80, .spread_px = 0.2, .until = 8},
+            {.x_px = 200, .y_px = 84, .vy_px_s = 25, .spread_px = 0.8, .from = 7, .until = 200},
+            {.x_px = 400, .y_px = 60, .vy_px_s = 30, .spread_px = 0.6, .until = 200},
+        };
+        RfPlay play = {.actors = held_and_let_go,
+                       .n_actors = 3,
+                       .frames = 200,
+                       .rate_hz = 30,
+                       .noise_px = 0.2,
+                       .merge_px = 5,
+                       .seed = seed};
+        g_autoptr(RfPaths) paths = NULL;
+        link_play(&play, false, &paths);
+        g_assert_cmpuint(paths->paths->len, ==, 2);
+        for (unsigned i = 0; i < 2; i++) {
+            const RfPath *path = g_ptr_array_index(paths->paths, i);
+            g_assert_cmpuint(path->points->len, ==, 200);
+            g_assert_cmpuint(path->seen, >=, 198);
+        }
+    }
+}
+
 /* Half a second behind an opaque numeral, with the field switched meanwhile. */
 static void test_gap_over_reversal(void)
 {
@@ -584,6 +611,7 @@ int main(int argc, char **argv)
     g_test_add_func("/linker/run/reversal", test_reversal);
     g_test_add_func("/linker/run/crossing", test_crossing);
     g_test_add_func("/linker/run/merged-is-bridged", test_merged_is_bridged);
+    g_test_add_func("/linker/run/seen-twice-after-a-jump", test_seen_twice_after_a_jump);
     g_test_add_func("/linker/run/gap-over-reversal", test_gap_over_reversal);
     g_test_add_func("/linker/run/wrong-course-ends-no-path", test_wrong_course_ends_no_path);
     g_test_add_func("/linker/run/long-absence-is-new-droplet", test_long_absence_is_new_droplet);

@@ -131,6 +131,15 @@ static void tangle_up(Pass *pass, Live *a, Live *b, double time_s)
     g_ptr_array_add(pass->tangles, tangle);
 }
 
+/* Seen beside the other for a while before it was lost. What was first seen as the other was last seen may be that very
+ * droplet, caught up with after a jump. */
+static bool was_beside(const Live *lost, const Live *other)
+{
+    const GArray *before = lost->chain->hits, *hits = other->chain->hits;
+    return g_array_index(hits, RfHit, least_hits - 1).exposure <=
+           g_array_index(before, RfHit, before->len - 1).exposure;
+}
+
 /* A droplet left without a spot beside another that has one: both may be in that spot. */
 static void tangle_merged(Pass *pass, double time_s)
 {
@@ -140,7 +149,7 @@ static void tangle_merged(Pass *pass, double time_s)
         for (unsigned j = 0; j < pass->live->len; j++) {
             Live *other = live_at(pass, (int)j);
             if (j == i || other->is_tangled || !is_established(other) || pass->column_of_row[j] < 0) continue;
-            if (are_near(&lost->motion, &other->motion, pass->scene->merge_px)) {
+            if (was_beside(lost, other) && are_near(&lost->motion, &other->motion, pass->scene->merge_px)) {
                 tangle_up(pass, lost, other, time_s);
                 break;
             }

@@ -4,6 +4,7 @@
 #include "tracker/link_pass.h"
 #include "tracker/path_build.h"
 #include "tracker/stitch.h"
+#include "tracker/twice_seen.h"
 
 G_DEFINE_QUARK(rf - linker - error - quark, rf_linker_error)
 
@@ -48,6 +49,7 @@ RfPaths *rf_linker_run(const RfSightings *sightings, const RfFieldCourse *field,
     if (!check_sightings(sightings, error)) return NULL;
     g_autoptr(RfLinkScene) scene = rf_link_scene_new(sightings, field, options ? options : &defaults);
     g_autoptr(GPtrArray) chains = rf_link_pass_run(scene);
+    rf_twice_seen_release(scene, chains);
     unsigned undecided = rf_stitch_chains(scene, chains);
     rf_fill_gaps(scene, chains);
     rf_fill_gaps(scene, chains); /* what the first round found narrows the rest */
