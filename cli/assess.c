@@ -25,7 +25,8 @@ static const double disagreement_p = 1e-3;
 /* ---- droplets ---- */
 
 /* "; likely: dust (it carries no charge, 0.1 e at most); nothing speaks for: evaporation (...)" */
-static char *causes_text(const RfTrail *trails, const RfDropletSet *set, const RfMedium *medium, size_t droplet)
+static char *causes_text(const RfTrail *trails, const RfDropletSet *set, const RfMedium *medium,
+                         size_t droplet)
 {
     RfCauseEvidence causes[RF_CAUSES];
     GString *text = g_string_new(NULL);
@@ -33,16 +34,16 @@ static char *causes_text(const RfTrail *trails, const RfDropletSet *set, const R
     for (int is_for = 1; is_for >= 0; is_for--) {
         bool is_first = true;
         for (int c = 0; c < RF_CAUSES; c++) {
-            if (causes[c].is_supported != (is_for == 1))
-                continue;
+            if (causes[c].is_supported != (is_for == 1)) continue;
             g_string_append_printf(text, "%s%s (%s)",
-                                   !is_first ? ", " : is_for ? "; likely: " : "; nothing speaks for: ",
+                                   !is_first ? ", "
+                                   : is_for  ? "; likely: "
+                                             : "; nothing speaks for: ",
                                    rf_cause_to_string((RfCause)c), causes[c].evidence);
             is_first = false;
         }
     }
-    for (int c = 0; c < RF_CAUSES; c++)
-        g_free(causes[c].evidence);
+    for (int c = 0; c < RF_CAUSES; c++) g_free(causes[c].evidence);
     return g_string_free(text, FALSE);
 }
 
@@ -52,20 +53,22 @@ static char *why_set_aside(const RfDropletFit *fit, const RfSpellFit *spell, con
     double charge_coulomb = fabs(spell->charge_coulomb.value);
     if (!spell->has_charge && timeline->switches->len == 0 && !timeline->has_log)
         return g_strdup("no field was seen to act: it was off, or nothing in view was charged: radius only");
-    if (!spell->has_charge)
-        return g_strdup("no field was on while it was watched: radius only");
+    if (!spell->has_charge) return g_strdup("no field was on while it was watched: radius only");
     if (rf_field_timeline_is_doubtful(timeline, fit->spell[0].start_s, fit->spell[fit->spells - 1].end_s))
-        return g_strdup("which state the field was in while it was watched can't be told for sure: another reading of the "
+        return g_strdup("which state the field was in while it was watched can't be told for sure: another "
+                        "reading of the "
                         "motion is likelier than 1 in 1000");
     if (fit->radius_agreement_p < disagreement_p) {
         g_autofree char *fall = rf_quantity_format(
             (RfValue){fit->radius_fall_m.value * 1e6, fit->radius_fall_m.sigma * 1e6}, "um");
         g_autofree char *spread = rf_quantity_format(
             (RfValue){fit->radius_spread_m.value * 1e6, fit->radius_spread_m.sigma * 1e6}, "um");
-        return g_strdup_printf("radius from the fall, %s, and from the spread, %s, disagree beyond chance (p = %.1g)",
-                               fall, spread, fit->radius_agreement_p);
+        return g_strdup_printf(
+            "radius from the fall, %s, and from the spread, %s, disagree beyond chance (p = %.1g)", fall,
+            spread, fit->radius_agreement_p);
     }
-    if (u_charge_coulomb > useless_sigma_coulomb && u_charge_coulomb > useless_relative_sigma * charge_coulomb)
+    if (u_charge_coulomb > useless_sigma_coulomb &&
+        u_charge_coulomb > useless_relative_sigma * charge_coulomb)
         return g_strdup_printf("charge too uncertain: u = %.2g C, seen with a field on for %.1f s of %.1f s",
                                u_charge_coulomb, spell->on_s, spell->end_s - spell->start_s);
     return g_strdup("");
@@ -87,27 +90,26 @@ static void name_whole_multiple(RfDropletRow *row)
 
 static RfChargeEstimate estimate_of(const RfDropletFit *fit, const RfSpellFit *spell)
 {
-    return (RfChargeEstimate){fit->radius_m, spell->charge_coulomb, fit->spread_share, spell->fall_leak_per_v};
+    return (RfChargeEstimate){fit->radius_m, spell->charge_coulomb, fit->spread_share,
+                              spell->fall_leak_per_v};
 }
 
 /* Random and common parts in one sigma, first order. */
-static bool charge_with_common(const RfChargeInputs *inputs, const RfChargeEstimate *estimate, RfValue *charge,
-                               GError **error)
+static bool charge_with_common(const RfChargeInputs *inputs, const RfChargeEstimate *estimate,
+                               RfValue *charge, GError **error)
 {
     const RfBudgetOptions first_order = {.coverage = 0.95};
     g_autoptr(RfBudget) budget = rf_charge_budget_new(inputs, estimate, &first_order, NULL, error);
-    if (budget)
-        *charge = (RfValue){estimate->charge_coulomb.value, budget->sigma};
+    if (budget) *charge = (RfValue){estimate->charge_coulomb.value, budget->sigma};
     return budget != NULL;
 }
 
-static bool radius_with_common(const RfChargeInputs *inputs, const RfChargeEstimate *estimate, RfValue *radius,
-                               GError **error)
+static bool radius_with_common(const RfChargeInputs *inputs, const RfChargeEstimate *estimate,
+                               RfValue *radius, GError **error)
 {
     const RfBudgetOptions first_order = {.coverage = 0.95};
     g_autoptr(RfBudget) budget = rf_charge_budget_radius_new(inputs, estimate, &first_order, NULL, error);
-    if (budget)
-        *radius = (RfValue){estimate->radius_m.value, budget->sigma};
+    if (budget) *radius = (RfValue){estimate->radius_m.value, budget->sigma};
     return budget != NULL;
 }
 
@@ -138,8 +140,7 @@ static bool fitted_row(unsigned droplet, const RfDropletFit *fit, size_t s, cons
         .reason = why_set_aside(fit, spell, timeline, charge_coulomb.sigma),
     };
     row->accepted = *row->reason == '\0';
-    if (row->has_charge)
-        name_whole_multiple(row);
+    if (row->has_charge) name_whole_multiple(row);
     return true;
 }
 
@@ -162,10 +163,8 @@ static Seen seen_of(const GArray *paths, unsigned droplet, guint *at)
     Seen seen = {0};
     for (; *at < paths->len && g_array_index(paths, RfPathRow, *at).droplet == droplet; (*at)++) {
         const RfPathRow *row = &g_array_index(paths, RfPathRow, *at);
-        if (!row->seen)
-            continue;
-        if (seen.frames++ == 0)
-            seen.start_s = row->time_s;
+        if (!row->seen) continue;
+        if (seen.frames++ == 0) seen.start_s = row->time_s;
         seen.end_s = row->time_s;
         g_array_append_val(snr, row->snr);
     }
@@ -230,8 +229,7 @@ static void add_causes(RfResults *results, guint first_row, const RfTrail *trail
     g_autofree char *causes = causes_text(trails, set, &medium, droplet);
     for (guint r = first_row; r < results->droplets->len; r++) {
         RfDropletRow *row = &g_array_index(results->droplets, RfDropletRow, r);
-        if (row->accepted || !g_str_has_prefix(row->reason, "radius from the fall"))
-            continue;
+        if (row->accepted || !g_str_has_prefix(row->reason, "radius from the fall")) continue;
         char *longer = g_strconcat(row->reason, causes, NULL);
         g_free(row->reason);
         row->reason = longer;
@@ -248,7 +246,8 @@ bool rf_assess_droplets(RfResults *results, const RfTrail *trails, const RfDropl
         guint first_row = results->droplets->len;
         if (result->fit.state != RF_FIT_DONE)
             add_unfitted(results, trails[i].droplet, &result->fit, &seen);
-        else if (!add_fitted(results, trails[i].droplet, &result->fit, seen.median_snr, set->timeline, inputs, error))
+        else if (!add_fitted(results, trails[i].droplet, &result->fit, seen.median_snr, set->timeline, inputs,
+                             error))
             return false;
         if (result->fit.state == RF_FIT_DONE && result->fit.radius_agreement_p < disagreement_p)
             add_causes(results, first_row, trails, set, inputs, i);
@@ -277,20 +276,19 @@ static GArray *candidates_of(const RfResults *results, const RfTrail *trails, co
     size_t i = 0;
     for (guint r = 0; r < results->droplets->len; r++) {
         const RfDropletRow *row = &g_array_index(results->droplets, RfDropletRow, r);
-        while (trails[i].droplet != row->droplet)
-            i++;
-        if (!row->accepted || fabs(row->charge_C.value) < 2 * row->charge_C.sigma)
-            continue;
+        while (trails[i].droplet != row->droplet) i++;
+        if (!row->accepted || fabs(row->charge_C.value) < 2 * row->charge_C.sigma) continue;
         const RfDropletFit *fit = &set->droplets[i].fit;
-        Candidate candidate = {row->charge_C.sigma / fabs(row->charge_C.value), fit, &fit->spell[row->spell - 1]};
+        Candidate candidate = {row->charge_C.sigma / fabs(row->charge_C.value), fit,
+                               &fit->spell[row->spell - 1]};
         g_array_append_val(candidates, candidate);
     }
     g_array_sort(candidates, compare_candidates);
     return candidates;
 }
 
-static void add_budget_row(RfResults *results, const RfChargeInputs *inputs, int line, const RfBudgetInput *input,
-                           const RfBudgetPart *part, double charge_coulomb)
+static void add_budget_row(RfResults *results, const RfChargeInputs *inputs, int line,
+                           const RfBudgetInput *input, const RfBudgetPart *part, double charge_coulomb)
 {
     RfBudgetRow row = {
         .input = g_strdup(rf_charge_line_to_string((RfChargeLine)line)),
@@ -303,18 +301,16 @@ static void add_budget_row(RfResults *results, const RfChargeInputs *inputs, int
     g_array_append_val(results->budget, row);
 }
 
-bool rf_assess_budget(RfResults *results, const RfTrail *trails, const RfDropletSet *set, const RfChargeInputs *inputs,
-                      GError **error)
+bool rf_assess_budget(RfResults *results, const RfTrail *trails, const RfDropletSet *set,
+                      const RfChargeInputs *inputs, GError **error)
 {
     g_autoptr(GArray) candidates = candidates_of(results, trails, set);
-    if (candidates->len == 0)
-        return true;
+    if (candidates->len == 0) return true;
     const Candidate *typical = &g_array_index(candidates, Candidate, candidates->len / 2);
     const RfChargeEstimate estimate = estimate_of(typical->fit, typical->spell);
     RfBudgetInput lines[RF_CHARGE_LINES];
     g_autoptr(RfBudget) budget = rf_charge_budget_new(inputs, &estimate, &RF_BUDGET_DEFAULTS, lines, error);
-    if (!budget)
-        return false;
+    if (!budget) return false;
     for (int line = 0; line < RF_CHARGE_LINES; line++)
         if (lines[line].sigma > 0)
             add_budget_row(results, inputs, line, &lines[line], &budget->parts[line],
@@ -329,8 +325,7 @@ static double common_relative_u(const RfResults *results)
     double sum2 = 0;
     for (guint i = 0; i < results->budget->len; i++) {
         const RfBudgetRow *row = &g_array_index(results->budget, RfBudgetRow, i);
-        if (row->is_common)
-            sum2 += row->charge_relative_u * row->charge_relative_u;
+        if (row->is_common) sum2 += row->charge_relative_u * row->charge_relative_u;
     }
     return sqrt(sum2);
 }
@@ -364,8 +359,7 @@ void rf_assess_unit(RfResults *results)
     for (guint i = 0; i < results->droplets->len; i++) {
         const RfDropletRow *row = &g_array_index(results->droplets, RfDropletRow, i);
         RfValue charge = {row->charge_C.value, row->u_random_C};
-        if (row->accepted)
-            g_array_append_val(charges, charge);
+        if (row->accepted) g_array_append_val(charges, charge);
     }
     RfChargeUnitOptions options = RF_CHARGE_UNIT_DEFAULTS;
     options.relative_common = common_relative_u(results);
@@ -381,8 +375,7 @@ void rf_assess_unit(RfResults *results)
 static bool has_charged_row(const RfResults *results)
 {
     for (guint i = 0; i < results->droplets->len; i++)
-        if (g_array_index(results->droplets, RfDropletRow, i).has_charge)
-            return true;
+        if (g_array_index(results->droplets, RfDropletRow, i).has_charge) return true;
     return false;
 }
 
@@ -394,17 +387,20 @@ void rf_assess_run(RfResults *results)
     if (tally.droplets == 0)
         results->verdict = g_strdup("Nothing could be measured: no droplet was seen.");
     else if (!has_charged_row(results))
-        results->verdict = g_strdup_printf(
-            "No charge could be measured: no field was seen to act on the %u droplet%s in view. It was off, or none was "
-            "charged: a voltage log would tell. Radii only.",
-            tally.droplets, tally.droplets == 1 ? "" : "s");
+        results->verdict = g_strdup_printf("No charge could be measured: no field was seen to act on the %u "
+                                           "droplet%s in view. It was off, or none was "
+                                           "charged: a voltage log would tell. Radii only.",
+                                           tally.droplets, tally.droplets == 1 ? "" : "s");
     else if (!results->measured)
-        results->verdict = g_strdup_printf("Nothing could be measured: all %u droplets were set aside.", tally.droplets);
+        results->verdict =
+            g_strdup_printf("Nothing could be measured: all %u droplets were set aside.", tally.droplets);
     else if (results->unit.resolved) {
         g_autofree char *unit = rf_quantity_format(results->unit.unit_C, "C");
-        results->verdict = g_strdup_printf("%u of %u droplets carry whole multiples of one unit of charge, %s.",
-                                           tally.droplets_accepted, tally.droplets, unit);
+        results->verdict =
+            g_strdup_printf("%u of %u droplets carry whole multiples of one unit of charge, %s.",
+                            tally.droplets_accepted, tally.droplets, unit);
     } else
-        results->verdict = g_strdup_printf("%u of %u droplets measured; they can't show an elementary unit: %s.",
-                                           tally.droplets_accepted, tally.droplets, results->unit.reason);
+        results->verdict =
+            g_strdup_printf("%u of %u droplets measured; they can't show an elementary unit: %s.",
+                            tally.droplets_accepted, tally.droplets, results->unit.reason);
 }

@@ -27,8 +27,7 @@ static Extremes extremes_of(const RfTrail *trails, const RfDropletSet *set)
     Extremes most = {.smallest_m = HUGE_VAL};
     for (size_t i = 0; i < set->n; i++) {
         const RfDropletFit *fit = &set->droplets[i].fit;
-        if (fit->state != RF_FIT_DONE)
-            continue;
+        if (fit->state != RF_FIT_DONE) continue;
         most.radius_m = fmax(most.radius_m, fit->radius_m.value);
         most.smallest_m = fmin(most.smallest_m, fit->radius_m.value);
         most.longest_s =
@@ -63,14 +62,16 @@ static void state_evaporation(RfResults *results, const RfTrail *trails, const R
     add(results, "evaporation",
         g_strdup_printf("radius squared falls by %s (%u droplets, p = %.2g)", k, found.droplets, found.p),
         is_seen ? g_strdup("radius stated for the middle of the time a droplet was watched")
-                : g_strdup_printf("not beyond chance: taken as none; over %.0f s it could change the smallest radius by "
-                                  "%.2g %% at most",
-                                  most->longest_s, 100 * share));
+                : g_strdup_printf(
+                      "not beyond chance: taken as none; over %.0f s it could change the smallest radius by "
+                      "%.2g %% at most",
+                      most->longest_s, 100 * share));
     if (is_seen)
-        g_ptr_array_add(results->warnings,
-                        g_strdup_printf("droplets slow down as if they evaporated (or the air began to rise): radius "
-                                        "squared falls by %s, p = %.1g; radii are those of the middle of their time",
-                                        k, found.p));
+        g_ptr_array_add(
+            results->warnings,
+            g_strdup_printf("droplets slow down as if they evaporated (or the air began to rise): radius "
+                            "squared falls by %s, p = %.1g; radii are those of the middle of their time",
+                            k, found.p));
 }
 
 static void state_drift(RfResults *results, const RfCommonDrift *drift)
@@ -78,24 +79,28 @@ static void state_drift(RfResults *results, const RfCommonDrift *drift)
     bool falls = drift->fall_rms_m_s > 0, crosses = drift->across_rms_m_s > 0;
     add(results, "drift of the air along gravity",
         g_strdup_printf("changes by %.2g um/s rms (p = %.2g)", 1e6 * drift->fall_rms_m_s, drift->fall_p),
-        g_strdup(falls ? "its changes taken off; as much again carried as an unknown steady part, common to all"
-                       : "none beyond chance: taken as zero; a steady one can't be told from the fall"));
+        g_strdup(falls
+                     ? "its changes taken off; as much again carried as an unknown steady part, common to all"
+                     : "none beyond chance: taken as zero; a steady one can't be told from the fall"));
     add(results, "drift of the air across gravity",
         g_strdup_printf("changes by %.2g um/s rms (p = %.2g)", 1e6 * drift->across_rms_m_s, drift->across_p),
-        g_strdup(crosses ? "taken off, common to all" : "none beyond chance; each droplet has a steady one of its own"));
+        g_strdup(crosses ? "taken off, common to all"
+                         : "none beyond chance; each droplet has a steady one of its own"));
 }
 
 static void state_small(RfResults *results, const RfMedium *medium, const Extremes *most)
 {
-    double middle_m = 0.5 * medium->plate_gap_m, plate = rf_small_effects_plate_drag(most->radius_m, middle_m);
+    double middle_m = 0.5 * medium->plate_gap_m,
+           plate = rf_small_effects_plate_drag(most->radius_m, middle_m);
     add(results, "closeness to a plate",
         g_strdup_printf("%.2g %% of the drag in mid-gap; 0.5 %% at %.2g mm from a plate", 200 * plate,
                         1e3 * 9.0 / 8.0 * most->radius_m / 0.005),
         g_strdup("left out: the picture doesn't show where the plates are"));
     add(results, "image charges in the plates",
-        g_strdup_printf("%.1g of the weight in mid-gap, for %.0f e",
-                        2 * rf_small_effects_image_charge(medium, most->smallest_m, most->charge_coulomb, middle_m),
-                        most->charge_coulomb / RF_ELEMENTARY_CHARGE_COULOMB),
+        g_strdup_printf(
+            "%.1g of the weight in mid-gap, for %.0f e",
+            2 * rf_small_effects_image_charge(medium, most->smallest_m, most->charge_coulomb, middle_m),
+            most->charge_coulomb / RF_ELEMENTARY_CHARGE_COULOMB),
         g_strdup("left out"));
     add(results, "inertia of the air",
         g_strdup_printf("%.1g of the drag at %.2g mm/s",
@@ -114,8 +119,7 @@ void rf_effects_state(RfResults *results, const RfTrail *trails, const RfDroplet
 {
     const RfMedium medium = rf_charge_budget_medium(inputs);
     const Extremes most = extremes_of(trails, set);
-    if (!(most.radius_m > 0))
-        return;
+    if (!(most.radius_m > 0)) return;
     state_evaporation(results, trails, set, &medium, &most);
     state_drift(results, set->drift);
     state_small(results, &medium, &most);

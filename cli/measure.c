@@ -17,12 +17,12 @@ static RfFieldState state_of_sign(int sign)
 static bool read_log(const char *path, RfSupply *supply, GError **error)
 {
     g_autoptr(RfVoltageLog) log = rf_voltage_log_read(path, error);
-    if (!log)
-        return false;
+    if (!log) return false;
     supply->log = g_array_new(FALSE, TRUE, sizeof(RfLogSpan));
     for (guint i = 0; i < log->spells->len; i++) {
         const RfLogSpell *spell = &g_array_index(log->spells, RfLogSpell, i);
-        RfLogSpan span = {spell->start_s, spell->end_s, 0, state_of_sign(spell->sign), spell->voltage_V.value};
+        RfLogSpan span = {spell->start_s, spell->end_s, 0, state_of_sign(spell->sign),
+                          spell->voltage_V.value};
         if (i > 0) {
             const RfLogSwitch *before = &g_array_index(log->switches, RfLogSwitch, i - 1);
             span.start_s = before->time_s.value;
@@ -41,23 +41,18 @@ RfSupply *rf_measure_supply_new(const RfSettings *settings, GError **error)
     g_autoptr(RfSupply) supply = g_new0(RfSupply, 1);
     supply->sheet.states = settings->n_states;
     RfValue voltage = {0};
-    for (unsigned i = 0; i < settings->n_states; i++)
-        supply->sheet.state[i] = settings->states[i];
-    if (rf_settings_voltage(settings, RF_FIELD_TOP_PLUS, &voltage))
-        supply->sheet.top_plus_v = voltage.value;
+    for (unsigned i = 0; i < settings->n_states; i++) supply->sheet.state[i] = settings->states[i];
+    if (rf_settings_voltage(settings, RF_FIELD_TOP_PLUS, &voltage)) supply->sheet.top_plus_v = voltage.value;
     if (rf_settings_voltage(settings, RF_FIELD_TOP_MINUS, &voltage))
         supply->sheet.top_minus_v = -voltage.value;
-    if (settings->log && !read_log(settings->log, supply, error))
-        return NULL;
+    if (settings->log && !read_log(settings->log, supply, error)) return NULL;
     return g_steal_pointer(&supply);
 }
 
 void rf_measure_supply_free(RfSupply *supply)
 {
-    if (!supply)
-        return;
-    if (supply->log)
-        g_array_unref(supply->log);
+    if (!supply) return;
+    if (supply->log) g_array_unref(supply->log);
     g_free(supply);
 }
 
@@ -84,8 +79,7 @@ static void for_each(void *user, size_t n, void (*work)(void *context, size_t i)
             g_thread_pool_push(pool, GSIZE_TO_POINTER(i + 1), NULL);
         else
             work(context, i);
-    if (pool)
-        g_thread_pool_free(pool, FALSE, TRUE);
+    if (pool) g_thread_pool_free(pool, FALSE, TRUE);
 }
 
 /* ---- rows ---- */
@@ -108,8 +102,8 @@ static void add_switches(RfResults *results, const RfFieldTimeline *timeline)
 }
 
 /* Mean velocity of samples [first, end) on one axis, by generalised least squares under the path's own noise. */
-static RfValue velocity_mm_s(const RfTrail *trail, size_t first, size_t end, bool is_fall, double diffusion_m2_s,
-                             double extra_variance_m2)
+static RfValue velocity_mm_s(const RfTrail *trail, size_t first, size_t end, bool is_fall,
+                             double diffusion_m2_s, double extra_variance_m2)
 {
     size_t n = end - first;
     g_autofree double *times_s = g_new(double, n), *u_m = g_new(double, n), *columns = g_new(double, 2 * n);
@@ -137,13 +131,12 @@ static void add_segments_of(RfResults *results, const RfTrail *trail, const RfDr
     unsigned number = 0;
     for (guint k = 0; k < timeline->intervals->len; k++) {
         const RfFieldInterval *interval = &g_array_index(timeline->intervals, RfFieldInterval, k);
-        while (first < trail->n && trail->samples[first].time_s < interval->start_s)
-            first++;
+        while (first < trail->n && trail->samples[first].time_s < interval->start_s) first++;
         size_t end = first;
-        while (end < trail->n && (trail->samples[end].time_s < interval->end_s || k + 1 == timeline->intervals->len))
+        while (end < trail->n &&
+               (trail->samples[end].time_s < interval->end_s || k + 1 == timeline->intervals->len))
             end++;
-        if (end - first < SEGMENT_SAMPLES_MIN)
-            continue;
+        if (end - first < SEGMENT_SAMPLES_MIN) continue;
         RfSegmentRow row = {
             .droplet = trail->droplet,
             .segment = ++number,
@@ -176,27 +169,33 @@ static void warn_of_log(RfResults *results, const RfLogFinding *finding)
     case RF_LOG_AGREES:
         break;
     case RF_LOG_MISSING:
-        rf_results_warn(results, "the droplets show a switch at %.2f s that the voltage log doesn't have", finding->time_s);
+        rf_results_warn(results, "the droplets show a switch at %.2f s that the voltage log doesn't have",
+                        finding->time_s);
         break;
     case RF_LOG_EXTRA:
-        rf_results_warn(results, "the voltage log has a switch at %.2f s that the droplets contradict", finding->time_s);
+        rf_results_warn(results, "the voltage log has a switch at %.2f s that the droplets contradict",
+                        finding->time_s);
         break;
     case RF_LOG_UNSEEN:
-        rf_results_warn(results, "the voltage log's switch at %.2f s was seen by no charged droplet", finding->time_s);
+        rf_results_warn(results, "the voltage log's switch at %.2f s was seen by no charged droplet",
+                        finding->time_s);
         break;
     case RF_LOG_UNTIED:
         rf_results_warn(results,
-             "no droplet moved with the field that the voltage log reports: they carry no charge, or the log is another "
-             "recording's; its clock is taken to be %.1f s ahead of the recording's",
-             finding->difference.value);
+                        "no droplet moved with the field that the voltage log reports: they carry no charge, "
+                        "or the log is another "
+                        "recording's; its clock is taken to be %.1f s ahead of the recording's",
+                        finding->difference.value);
         break;
     case RF_LOG_LATE:
-        rf_results_warn(results, "the voltage log's switch at %.2f s is %.3f s off what the droplets show (u = %.3f s)",
-             finding->time_s, finding->difference.value, finding->difference.sigma);
+        rf_results_warn(
+            results, "the voltage log's switch at %.2f s is %.3f s off what the droplets show (u = %.3f s)",
+            finding->time_s, finding->difference.value, finding->difference.sigma);
         break;
     case RF_LOG_VOLTAGE_MISFIT:
-        rf_results_warn(results, "from %.2f s on the droplets move as under %.1f V more than the log says (u = %.1f V)",
-             finding->time_s, finding->difference.value, finding->difference.sigma);
+        rf_results_warn(
+            results, "from %.2f s on the droplets move as under %.1f V more than the log says (u = %.1f V)",
+            finding->time_s, finding->difference.value, finding->difference.sigma);
         break;
     }
 }
@@ -209,10 +208,12 @@ static void warn_of_timeline(RfResults *results, const RfFieldTimeline *timeline
         doubtful_s += doubt->end_s - doubt->start_s;
     }
     if (doubtful_s > 0)
-        rf_results_warn(results,
-             "for %.1f s in all, motion can't settle which field state the recording is in; charges that hang on it are "
-             "set aside. A voltage log would tell, or droplets that stay in view across the switches",
-             doubtful_s);
+        rf_results_warn(
+            results,
+            "for %.1f s in all, motion can't settle which field state the recording is in; charges that hang "
+            "on it are "
+            "set aside. A voltage log would tell, or droplets that stay in view across the switches",
+            doubtful_s);
     for (guint i = 0; i < timeline->findings->len; i++)
         warn_of_log(results, &g_array_index(timeline->findings, RfLogFinding, i));
 }
@@ -231,8 +232,7 @@ bool rf_measure_paths(RfResults *results, const RfChargeInputs *inputs, const Rf
             .for_each_user = &workers,
         };
         g_autoptr(RfDropletSet) set = rf_droplet_set_measure(trails->trails, trails->n, &how, error);
-        if (!set)
-            return false;
+        if (!set) return false;
         add_switches(results, set->timeline);
         results->has_log_clock = set->timeline->has_log && set->timeline->log_offset_s.sigma > 0;
         results->log_offset_s = set->timeline->log_offset_s;

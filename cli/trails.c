@@ -17,7 +17,8 @@ static size_t count_droplets(const GArray *rows)
 {
     size_t n = 0;
     for (guint i = 0; i < rows->len; i++)
-        n += i == 0 || g_array_index(rows, RfPathRow, i).droplet != g_array_index(rows, RfPathRow, i - 1).droplet;
+        n += i == 0 ||
+             g_array_index(rows, RfPathRow, i).droplet != g_array_index(rows, RfPathRow, i - 1).droplet;
     return n;
 }
 
@@ -31,8 +32,7 @@ RfTrailSet *rf_trails_new(const GArray *rows)
         const RfPathRow *row = &g_array_index(rows, RfPathRow, i);
         if (i == 0 || row->droplet != g_array_index(rows, RfPathRow, i - 1).droplet)
             set->trails[set->n++] = (RfTrail){.droplet = row->droplet, .samples = set->samples + samples};
-        if (!row->seen)
-            continue;
+        if (!row->seen) continue;
         set->samples[samples++] = sample_of(row);
         set->trails[set->n - 1].n++;
     }
@@ -41,8 +41,7 @@ RfTrailSet *rf_trails_new(const GArray *rows)
 
 void rf_trails_free(RfTrailSet *trails)
 {
-    if (!trails)
-        return;
+    if (!trails) return;
     g_free(trails->trails);
     g_free(trails->samples);
     g_free(trails);
