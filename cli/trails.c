@@ -46,3 +46,17 @@ void rf_trails_free(RfTrailSet *trails)
     g_free(trails->samples);
     g_free(trails);
 }
+
+void rf_trails_cut(GArray *rows, unsigned droplet, double time_s, unsigned as)
+{
+    guint first = 0, end;
+    while (first < rows->len && (g_array_index(rows, RfPathRow, first).droplet != droplet ||
+                                 g_array_index(rows, RfPathRow, first).time_s < time_s))
+        first++;
+    for (end = first; end < rows->len && g_array_index(rows, RfPathRow, end).droplet == droplet; end++) {
+        RfPathRow row = g_array_index(rows, RfPathRow, end);
+        row.droplet = as;
+        g_array_append_val(rows, row);
+    }
+    if (end > first) g_array_remove_range(rows, first, end - first);
+}

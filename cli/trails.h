@@ -16,3 +16,6 @@ typedef struct {
 RfTrailSet *rf_trails_new(const GArray *rows);
 void rf_trails_free(RfTrailSet *trails);
 G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfTrailSet, rf_trails_free)
+
+/* A droplet's rows from an instant on become those of droplet `as`, a number larger than all others, behind them. */
+void rf_trails_cut(GArray *rows, unsigned droplet, double time_s, unsigned as);

@@ -54,6 +54,28 @@ static void measure_one(void *context, size_t i)
     if (model.steps > 0) rf_droplet_fit(trail, &model, &result->fit);
 }
 
+/* Each step against another droplet from there on. */
+static void look_for_swap(void *context, size_t i)
+{
+    const Work *work = context;
+    RfDropletResult *result = &work->set->droplets[i];
+    RfDropletModel model = model_of(work);
+    double time_s[RF_DROPLET_SPELLS_MAX];
+    model.step_s = time_s;
+    model.steps = result->fit.state == RF_FIT_DONE ? step_times(result->steps, time_s) : 0;
+    for (size_t k = 0; k < model.steps; k++) {
+        const RfChargeStep *step = &g_array_index(result->steps, RfChargeStep, k);
+        double half_s = step->across_off ? 0.5 * sqrt(12) * step->time_s.sigma : 0;
+        RfDropletSwap swap;
+        if (!rf_droplet_swap_weigh(&work->trails[i], &model, k, time_s[k] - half_s, time_s[k] + half_s,
+                                   &swap))
+            continue;
+        if (!(swap.log_odds > 0) || (result->is_swapped && swap.log_odds < result->swap.log_odds)) continue;
+        result->is_swapped = true;
+        result->swap = swap;
+    }
+}
+
 /* Room for what a witness borrows. */
 typedef struct {
     double end_s[RF_DROPLET_SPELLS_MAX], per_volt[RF_DROPLET_SPELLS_MAX], u_per_volt[RF_DROPLET_SPELLS_MAX];
@@ -171,6 +193,7 @@ RfDropletSet *rf_droplet_set_measure(const RfTrail *trails, size_t n, const RfDr
     estimate_memory(&work);
     for_each(settings, n, measure_one, &work);
     refine_switches(&work);
+    for_each(settings, n, look_for_swap, &work);
     return g_steal_pointer(&set);
 }
 

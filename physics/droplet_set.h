@@ -5,6 +5,7 @@
 #include <glib.h>
 
 #include "physics/charge_step.h"
+#include "physics/droplet_swap.h"
 
 /* Calls work(context, i) for each i below n, in any order, perhaps from several threads; returns when all are done. */
 typedef void (*RfForEach)(void *user, size_t n, void (*work)(void *context, size_t i), void *context);
@@ -19,6 +20,9 @@ typedef struct {
 typedef struct {
     RfDropletFit fit;
     GArray *steps; /* RfChargeStep */
+    bool
+        is_swapped; /* one of the steps is rather another droplet: the fit, which takes it for the same one, won't do */
+    RfDropletSwap swap; /* the surest one, where it is */
 } RfDropletResult;
 
 typedef struct {
