@@ -1,5 +1,6 @@
-/* libav in this room's own types: containers, decoders, encoders, and nothing of what is made of them. libav.c alone
- * includes libav's headers; its versions' differences, its log, its error codes and its pixel layouts end there.
+/* libav in this room's own types: containers, decoders, encoders, and nothing of what is made of them. libav.c
+ * (what is read) and libav_write.c (what is written) alone include libav's headers; its versions' differences, its log,
+ * its error codes and its pixel layouts end there.
  * Not for whole recordings: which packet is which frame, and when, is decided in video_part.c and video_reader.c. */
 #pragma once
 
@@ -13,6 +14,12 @@
 #include "tracker/video_file.h"
 
 #define RF_NO_TICKS INT64_MIN /* a timestamp that isn't there */
+
+/* Before libav on every thread: from here on its log is kept, not printed, and what it said before is forgotten. */
+void rf_libav_listen(void);
+
+/* Sets "PATH: TEXT: words for libav's status (libav's last line on this thread)". Returns false. */
+bool rf_libav_fail(GError **error, RfVideoError code, const char *path, int status, const char *text);
 
 /* Sets "PATH: TEXT: invalid data (libav's last line on this thread)", code DAMAGED. Returns false. */
 bool rf_libav_fail_damaged(GError **error, const char *path, const char *text);
