@@ -596,8 +596,23 @@ static void test_writer_repeats_itself(void)
     check_repeats(RF_CLIP(.codec = RF_VIDEO_CODEC_FFV1), 2);
     check_repeats(RF_CLIP(.codec = RF_VIDEO_CODEC_MJPEG), 2);
     check_repeats(RF_CLIP(.codec = RF_VIDEO_CODEC_MPEG2), 2);
+    check_repeats(RF_CLIP(.codec = RF_VIDEO_CODEC_VP9, .width = 96, .height = 96), 10);
     /* Left to itself, the encoder writes other bytes in one run out of 25 at this size. */
     check_repeats(RF_CLIP(.codec = RF_VIDEO_CODEC_H264, .width = 96, .height = 96), 30);
+}
+
+/* Frames of a film for browsers come back in order, at the times they were given (to the container's millisecond). */
+static void test_writes_for_browsers(void)
+{
+    g_autofree char *path =
+        written("film.webm", RF_CLIP(.codec = RF_VIDEO_CODEC_VP9, .quality = 10, .keyframe_every = 7), 20);
+    g_autoptr(RfVideoFile) file = open_with(path, NULL);
+    g_autoptr(RfVideoReader) reader = reader_of(file, 1);
+    RfFrame frame;
+    int count = 0;
+    for (; next(reader, &frame); count++) g_assert_cmpfloat(fabs(frame.time_s - count / 30.0), <=, 0.0006);
+    g_assert_cmpint(count, ==, 20);
+    g_assert_cmpstr(rf_video_file_info(file)->codec, ==, "vp9");
 }
 
 static void refuse_writing(const char *path, const RfVideoWriterOptions *options, RfVideoError code,
@@ -658,6 +673,7 @@ int main(int argc, char **argv)
     g_test_add_func("/video-file/still/deep-pgm-and-ppm", test_deep_pgm_and_ppm);
     g_test_add_func("/video-file/still/bmp-packed-and-indexed", test_bmp);
     g_test_add_func("/video-file/still/refusals", test_still_refusals);
+    g_test_add_func("/video-file/writer/for-browsers", test_writes_for_browsers);
     g_test_add_func("/video-file/writer/same-input-same-bytes", test_writer_repeats_itself);
     g_test_add_func("/video-file/writer/refusals", test_writer_refusals);
     int status = g_test_run();

@@ -59,10 +59,23 @@ static void set_x264(AVCodecContext *codec, const RfVideoWriterOptions *options)
                options->is_open_gop ? "cpu-independent=1:open-gop=1" : "cpu-independent=1", 0);
 }
 
+/* Speed 8 of "realtime" is a fixed choice of tools: nothing in VP9 follows the clock, so that the same pictures give the
+ * same bytes. */
+static void set_vp9(AVCodecContext *codec, const RfVideoWriterOptions *options)
+{
+    av_opt_set_int(codec->priv_data, "crf", options->quality > 0 ? (int)options->quality : 32, 0);
+    codec->bit_rate = 0; /* by crf alone */
+    av_opt_set(codec->priv_data, "deadline", "realtime", 0);
+    av_opt_set_int(codec->priv_data, "cpu-used", 8, 0);
+    av_opt_set_int(codec->priv_data, "lag-in-frames", 0, 0);
+}
+
 static void set_rate_control(AVCodecContext *codec, const RfVideoWriterOptions *options)
 {
     if (options->codec == RF_VIDEO_CODEC_H264) {
         set_x264(codec, options);
+    } else if (options->codec == RF_VIDEO_CODEC_VP9) {
+        set_vp9(codec, options);
     } else if (options->codec != RF_VIDEO_CODEC_FFV1) {
         codec->flags |= AV_CODEC_FLAG_QSCALE;
         codec->global_quality = (int)(FF_QP2LAMBDA * (options->quality > 0 ? options->quality : 3));
@@ -91,7 +104,8 @@ static bool open_codec(RfEncoder *encoder, GError **error)
 {
     const RfVideoWriterOptions *options = &encoder->options;
     const AVOutputFormat *container = encoder->format->oformat;
-    static const char *const names[] = {"ffv1", "libx264", "mjpeg", "mpeg2video"}; /* by RfVideoCodec */
+    static const char *const names[] = {"ffv1", "libx264", "mjpeg", "mpeg2video",
+                                        "libvpx-vp9"}; /* by RfVideoCodec */
     const AVCodec *kind = avcodec_find_encoder_by_name(names[options->codec]);
     if (kind == NULL) {
         return rf_video_fail(error, RF_VIDEO_ERROR_ENCODER, encoder->path,
@@ -108,7 +122,7 @@ static bool open_codec(RfEncoder *encoder, GError **error)
     codec->color_range = options->is_full_range ? AVCOL_RANGE_JPEG : AVCOL_RANGE_MPEG;
     /* A fixed number: x264's output depends on it, and the same input must give the same bytes on every machine. */
     codec->thread_count =
-        options->codec == RF_VIDEO_CODEC_MPEG2 || options->codec == RF_VIDEO_CODEC_MJPEG ? 1 : 4;
+        options->codec == RF_VIDEO_CODEC_FFV1 || options->codec == RF_VIDEO_CODEC_H264 ? 4 : 1;
     codec->flags |= AV_CODEC_FLAG_BITEXACT;
     if (container->flags & AVFMT_GLOBALHEADER) codec->flags |= AV_CODEC_FLAG_GLOBAL_HEADER;
     set_order(codec, options);

@@ -148,6 +148,7 @@ typedef enum {
     RF_VIDEO_CODEC_H264, /* through libx264 */
     RF_VIDEO_CODEC_MJPEG,
     RF_VIDEO_CODEC_MPEG2,
+    RF_VIDEO_CODEC_VP9, /* what every browser plays, in .webm; the encoder's fast, timing-free settings */
 } RfVideoCodec;
 
 typedef struct {
@@ -164,7 +165,8 @@ typedef struct {
     int keyframe_every; /* 0: the encoder's own choice */
     int b_frames;       /* H.264, MPEG2 */
     bool is_open_gop;   /* H.264, MPEG2: leading B frames may refer to the group before */
-    double quality;     /* H.264: crf > 0 to 51; MJPEG, MPEG2: 1 (best)..31; 0: 18 and 3 */
+    double quality;     /* H.264: crf > 0 to 51; MJPEG, MPEG2: 1 (best)..31; VP9: crf > 0 to 63;
+                           0: 18, 3 and 32 */
     bool is_lossless;   /* H.264: quantiser 0, whatever `quality` says */
     const char *preset; /* H.264: "ultrafast" .. "veryslow"; NULL: "medium" */
     int slices;         /* FFV1: 4, 6, 9, 12, ...; 0: 4 */
@@ -172,7 +174,7 @@ typedef struct {
 
 typedef struct RfVideoWriter RfVideoWriter;
 
-/* The name's ending chooses the container: .mkv, .mp4, .mov, .avi, .mpg. Same input, same bytes. */
+/* The name's ending chooses the container: .mkv, .mp4, .mov, .avi, .mpg, .webm. Same input, same bytes. */
 RfVideoWriter *rf_video_file_create(const char *path, const RfVideoWriterOptions *options, GError **error);
 
 /* One frame: grey rows (uint8_t, or uint16_t if bit_depth > 8), or RGB24 rows. Times must ascend by a tick at
