@@ -5,6 +5,8 @@
 #include <string.h>
 #include <udunits2.h>
 
+#include "calib/quoted_text.h"
+
 GQuark rf_quantity_error_quark(void)
 {
     return g_quark_from_static_string("rf-quantity-error-quark");
@@ -58,9 +60,10 @@ static bool begins_like_unit(const char *unit)
 bool rf_quantity_conversion(const char *unit, const char *si_unit, double *scale, double *offset,
                             GError **error)
 {
+    g_autofree char *seen = rf_quoted_text(unit);
     if (!begins_like_unit(unit)) {
         g_set_error(error, RF_QUANTITY_ERROR, RF_QUANTITY_ERROR_UNIT,
-                    "seen `%s` where a unit was needed, such as %s", unit, si_unit);
+                    "seen `%s` where a unit was needed, such as %s", seen, si_unit);
         return false;
     }
     g_autoptr(GMutexLocker) locker = g_mutex_locker_new(&unit_lock);
@@ -75,14 +78,14 @@ bool rf_quantity_conversion(const char *unit, const char *si_unit, double *scale
     ut_free(to);
     if (!is_known)
         g_set_error(error, RF_QUANTITY_ERROR, RF_QUANTITY_ERROR_UNIT,
-                    "seen the unit `%s`, which is unknown; a unit such as %s would do", unit, si_unit);
+                    "seen the unit `%s`, which is unknown; a unit such as %s would do", seen, si_unit);
     else if (!is_alike)
         g_set_error(error, RF_QUANTITY_ERROR, RF_QUANTITY_ERROR_DIMENSION,
-                    "seen the unit `%s`, which is of another dimension; a unit like %s would do", unit,
+                    "seen the unit `%s`, which is of another dimension; a unit like %s would do", seen,
                     si_unit);
     else if (!is_done)
         g_set_error(error, RF_QUANTITY_ERROR, RF_QUANTITY_ERROR_UNIT,
-                    "seen the unit `%s`, which isn't proportional to %s; a plain unit would do", unit,
+                    "seen the unit `%s`, which isn't proportional to %s; a plain unit would do", seen,
                     si_unit);
     return is_done;
 }
@@ -159,30 +162,32 @@ static RfValue read_pieces(const Pieces *p)
     return (RfValue){g_ascii_strtod(value, NULL), g_ascii_strtod(sigma, NULL)};
 }
 
-static bool refuse_number(const char *seen, const char *rest, GError **error)
+static bool refuse_number(const char *text, const char *rest, GError **error)
 {
+    g_autofree char *seen = rf_quoted_text(text);
     const char *hint = "a number such as 6.000(10), with its uncertainty in the last digits, would do";
     if (rest && *rest == ',')
         hint = "a decimal point is needed, no comma";
-    else if (strstr(seen, "\xc2\xb1") || strstr(seen, "+-") || strstr(seen, "+/-"))
+    else if (strstr(text, "\xc2\xb1") || strstr(text, "+-") || strstr(text, "+/-"))
         hint = "6.000(10) is the form for 6.000 +- 0.010";
-    else if (g_ascii_strncasecmp(seen, "nan", 3) == 0 || strcasestr(seen, "inf"))
+    else if (g_ascii_strncasecmp(text, "nan", 3) == 0 || strcasestr(text, "inf"))
         hint = "a finite number is needed";
     g_set_error(error, RF_QUANTITY_ERROR, RF_QUANTITY_ERROR_NUMBER, "seen `%s`; %s", seen, hint);
     return false;
 }
 
-static bool parse_pieces(const char *seen, RfValue *out, const char **unit, GError **error)
+static bool parse_pieces(const char *text, RfValue *out, const char **unit, GError **error)
 {
     Pieces pieces;
-    if (!take_pieces(seen, &pieces)) return refuse_number(seen, NULL, error);
+    if (!take_pieces(text, &pieces)) return refuse_number(text, NULL, error);
     const char *rest = pieces.rest;
-    if (*rest == ',' || *rest == '(' || *rest == '.' || *rest == '+') return refuse_number(seen, rest, error);
+    if (*rest == ',' || *rest == '(' || *rest == '.' || *rest == '+') return refuse_number(text, rest, error);
     while (g_ascii_isspace(*rest)) rest++;
     if (g_str_has_prefix(rest, "\xc2\xb1") || g_str_has_prefix(rest, "+"))
-        return refuse_number(seen, NULL, error);
+        return refuse_number(text, NULL, error);
     RfValue value = read_pieces(&pieces);
     if (!isfinite(value.value) || !isfinite(value.sigma)) {
+        g_autofree char *seen = rf_quoted_text(text);
         g_set_error(error, RF_QUANTITY_ERROR, RF_QUANTITY_ERROR_NUMBER,
                     "seen `%s`, which is too large; a finite number is needed", seen);
         return false;
@@ -194,11 +199,11 @@ static bool parse_pieces(const char *seen, RfValue *out, const char **unit, GErr
 
 bool rf_quantity_parse(const char *text, const char *si_unit, RfValue *out, GError **error)
 {
-    g_autofree char *seen = g_strstrip(g_strdup(text));
+    g_autofree char *plain = g_strstrip(g_strdup(text)), *seen = rf_quoted_text(plain);
     const char *unit;
     RfValue raw;
     double scale = 1.0, offset = 0.0;
-    if (!parse_pieces(seen, &raw, &unit, error)) return false;
+    if (!parse_pieces(plain, &raw, &unit, error)) return false;
     if (*unit == '\0' && strcmp(si_unit, "1") != 0) {
         g_set_error(error, RF_QUANTITY_ERROR, RF_QUANTITY_ERROR_UNIT,
                     "seen `%s` without a unit; `%s %s` would do, or any other unit of that dimension", seen,
@@ -221,13 +226,14 @@ bool rf_quantity_parse(const char *text, const char *si_unit, RfValue *out, GErr
 
 bool rf_quantity_parse_number(const char *text, RfValue *out, GError **error)
 {
-    g_autofree char *seen = g_strstrip(g_strdup(text));
+    g_autofree char *plain = g_strstrip(g_strdup(text));
     const char *unit;
     RfValue value;
-    if (!parse_pieces(seen, &value, &unit, error)) return false;
+    if (!parse_pieces(plain, &value, &unit, error)) return false;
     if (*unit != '\0') {
+        g_autofree char *seen = rf_quoted_text(plain), *more = rf_quoted_text(unit);
         g_set_error(error, RF_QUANTITY_ERROR, RF_QUANTITY_ERROR_UNIT,
-                    "seen `%s` where a plain number was needed; it goes without `%s`", seen, unit);
+                    "seen `%s` where a plain number was needed; it goes without `%s`", seen, more);
         return false;
     }
     *out = value;

@@ -5,6 +5,7 @@
 #include <string.h>
 
 #include "calib/quantity.h"
+#include "calib/quoted_text.h"
 
 GQuark rf_table_error_quark(void)
 {
@@ -18,13 +19,18 @@ typedef struct {
     bool is_quoted;
 } Cell;
 
+typedef struct {
+    uint32_t first, cells; /* of the table's */
+    uint32_t line;         /* where it begins */
+} Row;
+
 struct RfTable {
     char *name;
     char *text; /* a copy of the file, cells unquoted and terminated in place */
     char delimiter;
     size_t columns;
-    GArray *cells;   /* Cell: header first, then rows, each `columns` long */
-    GArray *lines;   /* uint32_t: line of each row */
+    GArray *cells;   /* Cell: header first, then rows, each as long as it was written */
+    GArray *rows;    /* Row */
     GPtrArray *keys; /* char*: the headers as they are compared */
     uint32_t blank;  /* offset of an empty string */
 };
@@ -35,19 +41,27 @@ void rf_table_free(RfTable *table)
     g_free(table->name);
     g_free(table->text);
     g_array_unref(table->cells);
-    g_array_unref(table->lines);
+    g_array_unref(table->rows);
     g_ptr_array_unref(table->keys);
     g_free(table);
 }
 
-static const Cell *cell_at(const RfTable *table, size_t line, size_t column)
+static const Cell *header_at(const RfTable *table, size_t column)
 {
-    return &g_array_index(table->cells, Cell, line * table->columns + column);
+    return &g_array_index(table->cells, Cell, column);
+}
+
+/* A row that is shorter than the header is blank from its end on. */
+static Cell cell_at(const RfTable *table, size_t row, size_t column)
+{
+    const Row *here = &g_array_index(table->rows, Row, row);
+    return column < here->cells ? g_array_index(table->cells, Cell, here->first + column)
+                                : (Cell){table->blank, false};
 }
 
 size_t rf_table_rows(const RfTable *table)
 {
-    return table->lines->len;
+    return table->rows->len;
 }
 
 size_t rf_table_columns(const RfTable *table)
@@ -57,17 +71,17 @@ size_t rf_table_columns(const RfTable *table)
 
 const char *rf_table_header(const RfTable *table, size_t column)
 {
-    return table->text + cell_at(table, 0, column)->offset;
+    return table->text + header_at(table, column)->offset;
 }
 
 size_t rf_table_line(const RfTable *table, size_t row)
 {
-    return g_array_index(table->lines, uint32_t, row);
+    return g_array_index(table->rows, Row, row).line;
 }
 
 const char *rf_table_text(const RfTable *table, size_t row, size_t column)
 {
-    return table->text + cell_at(table, row + 1, column)->offset;
+    return table->text + cell_at(table, row, column).offset;
 }
 
 bool rf_table_is_blank(const RfTable *table, size_t row, size_t column)
@@ -127,9 +141,11 @@ static bool take_quoted(Reader *r, Cell *cell, GError **error)
     }
     r->at++;
     while (*r->at == ' ' || (*r->at == '\t' && r->delimiter != '\t')) r->at++;
-    if (!is_line_end(*r->at) && *r->at != r->delimiter)
-        return shape_error(r, error, "seen `%.10s` after a closing quote; the separator `%c` is needed",
-                           r->at, r->delimiter);
+    if (!is_line_end(*r->at) && *r->at != r->delimiter) {
+        g_autofree char *line = g_strndup(r->at, strcspn(r->at, "\r\n")), *seen = rf_quoted_text(line);
+        return shape_error(r, error, "seen `%s` after a closing quote; the separator `%c` is needed", seen,
+                           r->delimiter);
+    }
     *to = '\0';
     return true;
 }
@@ -213,6 +229,25 @@ static char *key_of_header(const char *header)
     return g_string_free(key, false);
 }
 
+static bool take_keys(Reader *r, GError **error)
+{
+    RfTable *table = r->table;
+    g_autoptr(GHashTable) columns = g_hash_table_new(g_str_hash, g_str_equal); /* key -> column, from 1 */
+    for (size_t i = 0; i < table->columns; i++) {
+        char *key = key_of_header(rf_table_header(table, i));
+        g_ptr_array_add(table->keys, key);
+        size_t before = GPOINTER_TO_SIZE(g_hash_table_lookup(columns, key));
+        if (before > 0) {
+            g_autofree char *header = rf_quoted_text(rf_table_header(table, i));
+            return shape_error(r, error,
+                               "the columns %zu and %zu are both called `%s`; each name may stand once",
+                               before, i + 1, header);
+        }
+        if (*key) g_hash_table_insert(columns, key, GSIZE_TO_POINTER(i + 1));
+    }
+    return true;
+}
+
 static bool take_header(Reader *r, GError **error)
 {
     RfTable *table = r->table;
@@ -228,17 +263,7 @@ static bool take_header(Reader *r, GError **error)
     table->columns = r->row->len;
     g_array_append_vals(table->cells, r->row->data, r->row->len);
     r->line = line;
-    for (size_t i = 0; i < table->columns; i++) {
-        char *key = key_of_header(rf_table_header(table, i));
-        for (size_t k = 0; k < i && *key; k++)
-            if (strcmp(key, table->keys->pdata[k]) == 0) {
-                g_free(key);
-                return shape_error(r, error,
-                                   "the columns %zu and %zu are both called `%s`; each name may stand once",
-                                   k + 1, i + 1, rf_table_header(table, i));
-            }
-        g_ptr_array_add(table->keys, key);
-    }
+    if (!take_keys(r, error)) return false;
     r->line = line + 1;
     return true;
 }
@@ -255,10 +280,9 @@ static bool add_row(Reader *r, uint32_t line, GError **error)
                            table->delimiter == ',' ? "; decimal commas need semicolons or tabs between cells"
                                                    : "");
     }
-    Cell blank = {table->blank, false};
-    while (r->row->len < table->columns) g_array_append_val(r->row, blank);
+    Row row = {table->cells->len, r->row->len, line};
     g_array_append_vals(table->cells, r->row->data, r->row->len);
-    g_array_append_val(table->lines, line);
+    g_array_append_val(table->rows, row);
     return true;
 }
 
@@ -312,7 +336,7 @@ RfTable *rf_table_parse(const char *text, size_t length, const char *name, GErro
     table->name = g_strdup(name);
     table->text = prepare_text(text, length, &table->blank);
     table->cells = g_array_new(false, false, sizeof(Cell));
-    table->lines = g_array_new(false, false, sizeof(uint32_t));
+    table->rows = g_array_new(false, false, sizeof(Row));
     table->keys = g_ptr_array_new_with_free_func(g_free);
     g_autoptr(GArray) row = g_array_new(false, false, sizeof(Cell));
     Reader reader = {table, table->text, ',', 1, row};
@@ -348,8 +372,10 @@ bool rf_table_require(const RfTable *table, const char *name, size_t *column, GE
         return true;
     }
     g_autoptr(GString) seen = g_string_new(NULL);
-    for (size_t i = 0; i < table->columns && i < 20; i++)
-        g_string_append_printf(seen, "%s%s", i ? ", " : "", rf_table_header(table, i));
+    for (size_t i = 0; i < table->columns && i < 20; i++) {
+        g_autofree char *header = rf_quoted_text(rf_table_header(table, i));
+        g_string_append_printf(seen, "%s%s", i ? ", " : "", header);
+    }
     g_set_error(error, RF_TABLE_ERROR, RF_TABLE_ERROR_COLUMN, "%s: no column `%s`; seen: %s", table->name,
                 name, seen->str);
     return false;
@@ -387,10 +413,10 @@ int rf_table_find_quantity(const RfTable *table, const char *base, const char *u
 
 void rf_table_cell_error(const RfTable *table, size_t row, size_t column, const char *needed, GError **error)
 {
-    const char *seen = rf_table_text(table, row, column);
-    g_set_error(error, RF_TABLE_ERROR, RF_TABLE_ERROR_CELL,
-                "%s: line %zu, column %s: seen `%.60s`, needed %s", table->name, rf_table_line(table, row),
-                rf_table_header(table, column), *seen ? seen : "(blank)", needed);
+    g_autofree char *seen = rf_quoted_text(rf_table_text(table, row, column)),
+                    *header = rf_quoted_text(rf_table_header(table, column));
+    g_set_error(error, RF_TABLE_ERROR, RF_TABLE_ERROR_CELL, "%s: line %zu, column %s: seen `%s`, needed %s",
+                table->name, rf_table_line(table, row), header, *seen ? seen : "(blank)", needed);
 }
 
 /* Into `room` with a decimal point and an ASCII minus. False for both marks in one number (1.234,56 could be thousands), and for
@@ -415,7 +441,7 @@ bool rf_table_number(const RfTable *table, size_t row, size_t column, double *nu
     char room[64], *end = room;
     const char *text = rf_table_text(table, row, column);
     /* g_ascii_strtod also takes hexadecimal, nan and inf */
-    bool is_plain = with_point(table, text, cell_at(table, row + 1, column)->is_quoted, room, sizeof room) &&
+    bool is_plain = with_point(table, text, cell_at(table, row, column).is_quoted, room, sizeof room) &&
                     strspn(room, "+-.0123456789eE") == strlen(room);
     double value = is_plain ? g_ascii_strtod(room, &end) : 0.0;
     if (!is_plain || end == room || *end || !isfinite(value)) {

@@ -2,7 +2,10 @@
 
 #include <string.h>
 
+#include "calib/quoted_text.h"
 #include "cli/settings.h"
+
+enum { MOST_KEYS = 4000 };
 
 typedef struct {
     RfSheetText *sheet;
@@ -53,9 +56,9 @@ static bool refuse(const Scan *scan, GError **error, const char *format, ...)
 static bool take_group(Scan *scan, char *line, GError **error)
 {
     char *end = strchr(line, ']');
+    g_autofree char *seen = rf_quoted_text(line);
     if (!end || end[1] != '\0' || end == line + 1)
-        return refuse(scan, error, "seen `%.60s`; a group's line is its name in brackets, such as [cell]",
-                      line);
+        return refuse(scan, error, "seen `%s`; a group's line is its name in brackets, such as [cell]", seen);
     *end = '\0';
     unsigned before = GPOINTER_TO_UINT(g_hash_table_lookup(scan->sheet->groups, line + 1));
     if (before)
@@ -70,13 +73,16 @@ static bool take_group(Scan *scan, char *line, GError **error)
 static bool take_key(Scan *scan, char *line, GError **error)
 {
     char *equals = strchr(line, '=');
+    g_autofree char *seen = rf_quoted_text(line);
     if (!equals || equals == line)
-        return refuse(scan, error, "seen `%.60s`; a line is [group], key=value, a # comment, or blank", line);
+        return refuse(scan, error, "seen `%s`; a line is [group], key=value, a # comment, or blank", seen);
     *equals = '\0';
     const char *key = g_strchomp(line);
     if (!scan->group)
-        return refuse(scan, error,
-                      "the key `%.60s` stands before the first group; a [group] line is needed above", key);
+        return refuse(scan, error, "`%s` stands before the first group; a [group] line is needed above",
+                      seen);
+    if (scan->sheet->entries->len >= MOST_KEYS)
+        return refuse(scan, error, "more than %d keys; a run sheet is a short text", MOST_KEYS);
     const RfSheetEntry *before = rf_sheet_text_find(scan->sheet, scan->group, key);
     if (before)
         return refuse(scan, error, "[%s] %s: stands here and in line %u; a key may stand once", scan->group,

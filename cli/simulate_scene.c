@@ -441,11 +441,17 @@ static bool check_together(const RfScene *scene, GError **error)
     return true;
 }
 
+enum { MOST_BYTES = 1 << 20 };
+
 static bool load(RfScene *scene, const char *path, GError **error)
 {
     g_autofree char *text = NULL;
     gsize length;
     if (!g_file_get_contents(path, &text, &length, error)) return false;
+    if (length > MOST_BYTES || !g_utf8_validate(text, (gssize)length, NULL))
+        return fail(error, RF_SIMULATE_SCENE_ERROR_SYNTAX,
+                    length > MOST_BYTES ? "larger than 1 MiB; a scene is a short text"
+                                        : "seen bytes that aren't UTF-8; a scene is a text of [group] and key=value lines");
     const char *start = g_str_has_prefix(text, "\xef\xbb\xbf") ? text + 3 : text;
     return check_repeats(start, error) &&
            g_key_file_load_from_data(scene->source, start, strlen(start), G_KEY_FILE_NONE, error) &&

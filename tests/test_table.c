@@ -195,6 +195,23 @@ static void a_file_that_is_not_there(void)
     g_assert_nonnull(strstr(error->message, "/nonexistent/t.csv"));
 }
 
+/* A few hundred kilobytes that would be 400 million cells, if each short row were filled up to the header's width. */
+static void test_wide_header_over_short_rows(void)
+{
+    enum { SIDE = 20000 };
+    g_autoptr(GString) text = g_string_new("c0");
+    for (int i = 1; i < SIDE; i++) g_string_append_printf(text, ",c%d", i);
+    g_string_append_c(text, '\n');
+    for (int i = 0; i < SIDE; i++) g_string_append(text, "1\n");
+    g_autoptr(GError) error = NULL;
+    g_autoptr(RfTable) table = rf_table_parse(text->str, text->len, "wide.csv", &error);
+    g_assert_no_error(error);
+    g_assert_cmpuint(rf_table_rows(table), ==, SIDE);
+    g_assert_cmpuint(rf_table_columns(table), ==, SIDE);
+    g_assert_cmpstr(rf_table_text(table, SIDE - 1, 0), ==, "1");
+    g_assert_true(rf_table_is_blank(table, SIDE - 1, SIDE - 1));
+}
+
 int main(int argc, char **argv)
 {
     gsl_set_error_handler_off();
@@ -212,5 +229,6 @@ int main(int argc, char **argv)
     g_test_add_func("/table/whole/whole-numbers", whole_numbers);
     g_test_add_func("/table/read/a-hundred-thousand-rows", a_hundred_thousand_rows);
     g_test_add_func("/table/read/a-file-that-is-not-there", a_file_that_is_not_there);
+    g_test_add_func("/table/rows/wide-header-over-short-rows", test_wide_header_over_short_rows);
     return g_test_run();
 }
