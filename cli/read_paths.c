@@ -1,8 +1,8 @@
 #include "cli/read_paths.h"
 
 #include "calib/table.h"
+#include "cli/json_cell.h"
 
-#include <json-glib/json-glib.h>
 #include <math.h>
 
 /* Columns in the order of the struct below. Those from `field` on may be missing. */
@@ -141,34 +141,43 @@ static bool read_rows(const RfTable *table, GArray *rows, GError **error)
     return true;
 }
 
-static double member(JsonObject *object, const char *name)
+static bool read_numbers(JsonObject *object, RfScaleRow *scale, GError **error)
 {
-    return json_object_has_member(object, name) ? json_object_get_double_member_with_default(object, name, 0) : 0;
+    double lines_found = 0;
+    const struct {
+        const char *name;
+        double *number;
+    } members[] = {
+        {"px_per_mm_x", &scale->px_per_mm_x},
+        {"px_per_mm_y", &scale->px_per_mm_y},
+        {"u_px_per_mm_x", &scale->u_px_per_mm_x},
+        {"u_px_per_mm_y", &scale->u_px_per_mm_y},
+        {"u_relative_along_gravity", &scale->u_relative_along_gravity},
+        {"rotation_deg", &scale->rotation_deg},
+        {"lines_found", &lines_found},
+        {"residual_px", &scale->residual_px},
+        {"line_offset_mm", &scale->line_offset_mm},
+        {"line_step_mm", &scale->line_step_mm},
+        {"line_slope", &scale->line_slope},
+    };
+    for (size_t i = 0; i < G_N_ELEMENTS(members); i++)
+        if (!rf_json_cell_number(object, members[i].name, members[i].number, error))
+            return false;
+    scale->lines_found = (unsigned)fmax(0, fmin(1e6, lines_found));
+    return true;
 }
 
 static bool read_scale(const char *path, RfScaleRow *scale, GError **error)
 {
-    g_autoptr(JsonParser) parser = json_parser_new();
-    if (!json_parser_load_from_file(parser, path, error))
+    JsonObject *object;
+    g_autoptr(JsonParser) parser = rf_json_cell_load(path, &object, error);
+    if (!parser)
         return false;
-    JsonNode *root = json_parser_get_root(parser);
-    if (!root || !JSON_NODE_HOLDS_OBJECT(root))
-        return true;
-    JsonObject *object = json_node_get_object(root);
-    *scale = (RfScaleRow){
-        .px_per_mm_x = member(object, "px_per_mm_x"),
-        .px_per_mm_y = member(object, "px_per_mm_y"),
-        .u_px_per_mm_x = member(object, "u_px_per_mm_x"),
-        .u_px_per_mm_y = member(object, "u_px_per_mm_y"),
-        .u_relative_along_gravity = member(object, "u_relative_along_gravity"),
-        .rotation_deg = member(object, "rotation_deg"),
-        .lines_found = (unsigned)fmax(0, fmin(1e6, member(object, "lines_found"))),
-        .residual_px = member(object, "residual_px"),
-        .source = g_strdup(path),
-        .line_offset_mm = member(object, "line_offset_mm"),
-        .line_step_mm = member(object, "line_step_mm"),
-        .line_slope = member(object, "line_slope"),
-    };
+    if (!read_numbers(object, scale, error)) {
+        g_prefix_error(error, "%s: ", path);
+        return false;
+    }
+    scale->source = g_strdup(path);
     scale->has_lines = scale->line_step_mm > 0;
     scale->found = scale->px_per_mm_x > 0 && scale->px_per_mm_y > 0;
     return true;
@@ -193,6 +202,6 @@ bool rf_read_paths(const char *path, RfResults *results, double *scale_relative_
     *scale_relative_u = relative_u(&results->scale);
     if (!results->scale.found)
         g_ptr_array_add(results->warnings,
-                        g_strdup("no scale.json lies beside the paths: the scale's uncertainty is missing from u_charge_C"));
+                        g_strdup("no scale.json with a scale lies beside the paths: the scale's uncertainty is missing from u_charge_C"));
     return true;
 }

@@ -2,10 +2,10 @@
 
 #include "calib/table.h"
 #include "cli/conditions.h"
+#include "cli/json_cell.h"
 #include "cli/read_paths.h"
 #include "cli/settings.h"
 
-#include <json-glib/json-glib.h>
 #include <math.h>
 #include <string.h>
 
@@ -101,12 +101,6 @@ static bool read_part(const char *folder, const Part *part, RfResults *results, 
 
 /* ---- summary.json ---- */
 
-static const char *text_member(JsonObject *object, const char *name)
-{
-    JsonNode *node = json_object_get_member(object, name);
-    return node && JSON_NODE_HOLDS_VALUE(node) ? json_node_get_string(node) : NULL;
-}
-
 /* The sheet as it was in force, written out again. (returns new) */
 static char *sheet_text(JsonArray *settings)
 {
@@ -114,24 +108,24 @@ static char *sheet_text(JsonArray *settings)
     for (guint i = 0; i < json_array_get_length(settings); i++) {
         JsonNode *node = json_array_get_element(settings, i);
         JsonObject *one = JSON_NODE_HOLDS_OBJECT(node) ? json_node_get_object(node) : NULL;
-        const char *group = one ? text_member(one, "group") : NULL,
-                   *key = one ? text_member(one, "key") : NULL;
-        const char *value = one ? text_member(one, "value") : NULL;
-        bool is_default = one && json_object_get_boolean_member_with_default(one, "default", FALSE);
+        const char *group = one ? rf_json_cell_text(one, "group") : NULL,
+                   *key = one ? rf_json_cell_text(one, "key") : NULL;
+        const char *value = one ? rf_json_cell_text(one, "value") : NULL;
+        bool is_default = one && rf_json_cell_is_true(one, "default");
         if (group && key && value && !is_default) g_key_file_set_string(sheet, group, key, value);
     }
     return g_key_file_to_data(sheet, NULL, NULL);
 }
 
-static bool medium_of(JsonObject *summary, RfMedium *medium, GError **error)
+static bool medium_of(JsonObject *summary, const char *summary_path, RfMedium *medium, GError **error)
 {
     JsonNode *node = json_object_get_member(summary, "settings");
     if (!node || !JSON_NODE_HOLDS_ARRAY(node)) {
-        g_set_error(error, RF_TABLE_ERROR, RF_TABLE_ERROR_FILE, "no settings in it");
+        g_set_error(error, RF_TABLE_ERROR, RF_TABLE_ERROR_FILE, "%s: no settings in it", summary_path);
         return false;
     }
     g_autofree char *text = sheet_text(json_node_get_array(node));
-    const char *path = text_member(summary, "sheet");
+    const char *path = rf_json_cell_text(summary, "sheet");
     g_autoptr(RfSettings) settings = rf_settings_parse(text, strlen(text), path ? path : "sheet", error);
     if (!settings) return false;
     const RfChargeInputs inputs = rf_conditions_of(settings, 0);
@@ -142,30 +136,23 @@ static bool medium_of(JsonObject *summary, RfMedium *medium, GError **error)
 static void take_recording(JsonObject *summary, RfResults *results)
 {
     JsonNode *node = json_object_get_member(summary, "recording");
-    results->sheet_path = g_strdup(text_member(summary, "sheet"));
+    results->sheet_path = g_strdup(rf_json_cell_text(summary, "sheet"));
     if (!node || !JSON_NODE_HOLDS_OBJECT(node)) return;
     JsonObject *recording = json_node_get_object(node);
-    results->recording_summary = g_strdup(text_member(recording, "summary"));
-    results->gravity_axis_deg = json_object_get_double_member_with_default(recording, "gravity_axis_deg", 0);
-    results->duration_s = json_object_get_double_member_with_default(recording, "duration_s", 0);
+    results->recording_summary = g_strdup(rf_json_cell_text(recording, "summary"));
+    results->gravity_axis_deg = rf_json_cell_number_or_0(recording, "gravity_axis_deg");
+    results->duration_s = rf_json_cell_number_or_0(recording, "duration_s");
 }
 
 static void read_summary(const char *folder, RfResults *results, RfMedium *medium, bool *has_medium)
 {
     g_autofree char *path = g_build_filename(folder, "summary.json", NULL);
-    g_autoptr(JsonParser) parser = json_parser_new();
     g_autoptr(GError) error = NULL;
-    *has_medium = false;
-    if (json_parser_load_from_file(parser, path, &error)) {
-        JsonNode *root = json_parser_get_root(parser);
-        if (root && JSON_NODE_HOLDS_OBJECT(root)) {
-            take_recording(json_node_get_object(root), results);
-            *has_medium = medium_of(json_node_get_object(root), medium, &error);
-        }
-    }
-    if (!*has_medium)
-        g_ptr_array_add(results->warnings, g_strdup_printf("%s: %s: no charges from hand timings", path,
-                                                           error ? error->message : "not a summary"));
+    JsonObject *summary;
+    g_autoptr(JsonParser) parser = rf_json_cell_load(path, &summary, &error);
+    if (parser) take_recording(summary, results);
+    *has_medium = parser && medium_of(summary, path, medium, &error);
+    if (!*has_medium) rf_results_warn(results, "%s; no charges from hand timings", error->message);
 }
 
 RfResults *rf_read_results(const char *folder, RfMedium *medium, bool *has_medium, GError **error)

@@ -70,10 +70,34 @@ static void missing_tables(void)
     rf_folder_tree_remove(root);
 }
 
+/* What json-glib would take for a mistake of ours. */
+static void a_scale_of_another_kind(void)
+{
+    static const char *const broken[] = {"[]",
+                                         "{\"px_per_mm_y\":\"400\"}",
+                                         "{\"line_step_mm\":[0.1]}",
+                                         "{\"px_per_mm_x\":1e999}",
+                                         "{\"px_per_mm_x\":",
+                                         ""};
+    g_autofree char *root = g_dir_make_tmp("risefall-read-XXXXXX", NULL);
+    g_autofree char *folder = write_sample(root);
+    g_autofree char *scale = g_build_filename(folder, "scale.json", NULL);
+    for (size_t i = 0; i < G_N_ELEMENTS(broken); i++) {
+        RfMedium medium;
+        bool has_medium;
+        g_autoptr(GError) error = NULL;
+        g_assert_true(g_file_set_contents(scale, broken[i], -1, NULL));
+        g_assert_null(rf_read_results(folder, &medium, &has_medium, &error));
+        g_assert_true(g_str_has_prefix(error->message, scale));
+    }
+    rf_folder_tree_remove(root);
+}
+
 int main(int argc, char **argv)
 {
     g_test_init(&argc, &argv, NULL);
     g_test_add_func("/read_results/folder/what-was-written", what_was_written);
     g_test_add_func("/read_results/folder/missing-tables", missing_tables);
+    g_test_add_func("/read_results/folder/a-scale-of-another-kind", a_scale_of_another_kind);
     return g_test_run();
 }
