@@ -16,29 +16,63 @@ static int compare_doubles(const void *a, const void *b)
     return (x > y) - (x < y);
 }
 
-/* Median over the spans of one state; 0 where there are none. */
-static double state_voltage(const GArray *spans, RfFieldState state)
+/* Voltages whose difference the motion need not tell: the log does. */
+static const double SAME_LEVEL = 0.1;
+
+static double largest_voltage(const GArray *spans)
 {
-    g_autofree double *v = g_new(double, spans->len);
-    unsigned n = 0;
-    for (unsigned k = 0; k < spans->len; k++)
-        if (span_at(spans, k)->state == state) v[n++] = span_at(spans, k)->voltage_v;
-    if (n == 0 || state == RF_FIELD_OFF) return 0; /* off is off: what the log shows there is its own zero */
-    qsort(v, n, sizeof *v, compare_doubles);
-    return v[n / 2];
+    double largest = 0;
+    for (unsigned k = 0; k < spans->len; k++) largest = fmax(largest, fabs(span_at(spans, k)->voltage_v));
+    return largest;
 }
 
-void rf_field_log_complete_sheet(const GArray *spans, RfFieldSheet *sheet)
+/* Voltages of one state, in order; returns how many. */
+static unsigned voltages_of(const GArray *spans, RfFieldState state, double *voltage_v)
 {
-    double plus = state_voltage(spans, RF_FIELD_TOP_PLUS), minus = state_voltage(spans, RF_FIELD_TOP_MINUS);
-    if (plus > 0) sheet->top_plus_v = plus;
-    if (minus < 0) sheet->top_minus_v = minus;
-    for (unsigned k = 0; k < spans->len; k++) {
-        bool is_known = false;
-        for (unsigned s = 0; s < sheet->states; s++) is_known |= sheet->state[s] == span_at(spans, k)->state;
-        if (!is_known && sheet->states < RF_FIELD_STATES)
-            sheet->state[sheet->states++] = span_at(spans, k)->state;
+    unsigned n = 0;
+    for (unsigned k = 0; k < spans->len; k++)
+        if (span_at(spans, k)->state == state) voltage_v[n++] = span_at(spans, k)->voltage_v;
+    qsort(voltage_v, n, sizeof *voltage_v, compare_doubles);
+    return n;
+}
+
+/* Levels of one state, from the lowest voltage up; the last there is room for takes in all that is left. */
+static size_t add_levels(const double *voltage_v, unsigned n, RfFieldState state, unsigned order,
+                         double same_v, RfFieldLevel *levels, size_t at, size_t room)
+{
+    for (unsigned from = 0, to; from < n; from = to) {
+        double sum = 0;
+        bool is_last = at + 1 == room;
+        for (to = from; to < n && (is_last || voltage_v[to] - voltage_v[from] <= same_v); to++)
+            sum += voltage_v[to];
+        levels[at++] = (RfFieldLevel){state, order, state == RF_FIELD_OFF ? 0 : sum / (to - from)};
     }
+    return at;
+}
+
+size_t rf_field_log_levels(const GArray *spans, RfFieldLevel *levels, size_t n)
+{
+    RfFieldLevel states[RF_FIELD_STATES];
+    g_autofree double *voltage_v = g_new(double, spans->len);
+    double same_v = SAME_LEVEL * largest_voltage(spans);
+    size_t at = 0;
+    for (size_t s = 0; s < n; s++) states[s] = levels[s];
+    for (unsigned k = 0; k < spans->len && n < RF_FIELD_STATES; k++) {
+        bool is_known = false;
+        for (size_t s = 0; s < n; s++) is_known |= states[s].state == span_at(spans, k)->state;
+        if (is_known) continue;
+        states[n] = (RfFieldLevel){span_at(spans, k)->state, (unsigned)n, 0};
+        n++;
+    }
+    for (size_t s = 0; s < n; s++) {
+        size_t room = RF_FIELD_LEVELS - (n - s - 1); /* the others need one each */
+        unsigned count = voltages_of(spans, states[s].state, voltage_v);
+        if (count == 0)
+            levels[at++] = states[s];
+        else
+            at = add_levels(voltage_v, count, states[s].state, (unsigned)s, same_v, levels, at, room);
+    }
+    return at;
 }
 
 static void add_finding(RfFieldTimeline *timeline, RfLogFindingKind kind, double time_s, RfValue difference)
@@ -67,6 +101,12 @@ static void note_pairs(RfFieldTimeline *timeline, const GArray *pairs)
         s->log_time_s = pair->log_s.value;
         s->u_log_time_s = pair->log_s.sigma;
     }
+}
+
+/* Would the labels have told these spans from one another? */
+static bool is_other_level(const RfLogSpan *a, const RfLogSpan *b, double largest_v)
+{
+    return a->state != b->state || fabs(a->voltage_v - b->voltage_v) > SAME_LEVEL * largest_v;
 }
 
 static bool is_paired(const GArray *pairs, unsigned log)
@@ -105,6 +145,7 @@ static void insert_unseen(RfFieldTimeline *timeline, const RfLogSpan *span, cons
     RfFieldSwitch s = {.time_s = {time_s, hypot(span->u_start_s, timeline->log_offset_s.sigma)},
                        .from = span_before->state,
                        .to = span->state,
+                       .change_v = span->voltage_v - span_before->voltage_v,
                        .has_log_time = true,
                        .log_time_s = span->start_s,
                        .u_log_time_s = span->u_start_s};
@@ -115,13 +156,15 @@ static void judge_unpaired(const GArray *spans, const GArray *pairs, const RfLog
                            const RfFieldRuns *runs, const RfStateDroplet *droplets, RfFieldTimeline *timeline)
 {
     static const double plainly_visible = 30;
-    double first_s = runs->edge_s[0], last_s = runs->edge_s[runs->runs];
+    double first_s = runs->edge_s[0], last_s = runs->edge_s[runs->runs], largest_v = largest_voltage(spans);
     for (unsigned k = 1; k < spans->len; k++) {
         double time_s = rf_log_clock_to_recording_s(clock, span_at(spans, k)->start_s);
         if (is_paired(pairs, k) || time_s < first_s + 0.2 || time_s > last_s - 0.2) continue;
         double change_v = span_at(spans, k)->voltage_v - span_at(spans, k - 1)->voltage_v;
-        bool is_denied = power_to_see(runs, droplets, time_s, change_v) > plainly_visible;
-        add_finding(timeline, is_denied ? RF_LOG_EXTRA : RF_LOG_UNSEEN, time_s, (RfValue){0, 0});
+        bool is_plain = is_other_level(span_at(spans, k), span_at(spans, k - 1), largest_v);
+        bool is_denied = is_plain && power_to_see(runs, droplets, time_s, change_v) > plainly_visible;
+        if (is_plain)
+            add_finding(timeline, is_denied ? RF_LOG_EXTRA : RF_LOG_UNSEEN, time_s, (RfValue){0, 0});
         if (!is_denied) insert_unseen(timeline, span_at(spans, k), span_at(spans, k - 1), time_s);
     }
     for (unsigned k = 0; k < timeline->switches->len; k++) {
@@ -138,7 +181,7 @@ static const RfLogSpan *span_at_time(const GArray *spans, double log_s)
 }
 
 /* Name and voltage of an interval between two edges on which log and motion agree come from the log. Where they don't,
- * the motion's name stays, with the log's usual voltage for that name. */
+ * the motion's name stays, with the voltage of the level that it was given. */
 static void name_intervals(const GArray *spans, const RfLogClock *clock, RfFieldTimeline *timeline)
 {
     GArray *intervals = timeline->intervals;
@@ -151,11 +194,14 @@ static void name_intervals(const GArray *spans, const RfLogClock *clock, RfField
             (k + 1 == intervals->len || g_array_index(timeline->switches, RfFieldSwitch, k).has_log_time);
         if (from_log) v->state = span->state;
         bool is_same = v->state == span->state && v->state != RF_FIELD_OFF;
-        v->voltage_v = is_same ? span->voltage_v : state_voltage(spans, v->state);
+        if (is_same)
+            v->voltage_v = span->voltage_v;
+        else if (v->state == RF_FIELD_OFF)
+            v->voltage_v = 0; /* off is off: what the log shows there is its own zero */
     }
 }
 
-/* Neighbours of one name are one interval. */
+/* Neighbours of one name and voltage are one interval. */
 static void merge_intervals(RfFieldTimeline *timeline)
 {
     GArray *intervals = timeline->intervals;
@@ -164,7 +210,8 @@ static void merge_intervals(RfFieldTimeline *timeline)
         RfFieldSwitch *s = &g_array_index(timeline->switches, RfFieldSwitch, k);
         s->from = v[0].state;
         s->to = v[1].state;
-        if (s->from != s->to) {
+        s->change_v = v[1].voltage_v - v[0].voltage_v;
+        if (s->from != s->to || fabs(s->change_v) > 1e-6) {
             k++;
             continue;
         }

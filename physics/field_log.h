@@ -6,9 +6,12 @@
 #include "physics/field_states.h"
 #include "physics/log_clock.h"
 
-/* States and voltages that the sheet leaves open, from the log: states in their order of occurrence, median voltages.
- * Voltages of the log replace those of the sheet. */
-void rf_field_log_complete_sheet(const GArray *spans, RfFieldSheet *sheet);
+/* The levels that the log knows, in place of the sheet's one per state: voltages closer than a tenth of the largest are
+ * one level here, their mean; which of them an interval had is for the log to say. States that the sheet leaves open
+ * come in their order in the log; of a state that the log doesn't have the sheet's level stays.
+ *   levels   RF_FIELD_LEVELS, the first n those of the sheet
+ *   returns  how many there are */
+size_t rf_field_log_levels(const GArray *spans, RfFieldLevel *levels, size_t n);
 
 /* Matches the clocks, renames intervals, sets voltages, adds switches that nobody could see, lists findings.
  * Returns false with error where the log's switches can't be matched with those in the motion. */

@@ -88,15 +88,23 @@ static void hypothesis_copy(Hypothesis *to, const Hypothesis *from, size_t runs,
     to->belief = belief;
 }
 
-static void extend(Hypothesis *h, const RfFieldRuns *runs, size_t run, unsigned state, const double *relative)
+/* The levels to choose from. */
+typedef struct {
+    const RfFieldLevel *level;
+    size_t n;
+    unsigned states;
+    double relative[RF_FIELD_LEVELS]; /* voltages over the largest */
+} Levels;
+
+static void extend(Hypothesis *h, const RfFieldRuns *runs, size_t run, const Levels *levels, unsigned to)
 {
-    if (run > 0 && state != h->last) h->cost += runs->is_blind[run] ? BLIND_SWITCH_COST : SWITCH_COST;
-    if (state == h->used) h->used++;
-    h->last = h->label[run] = state;
+    if (run > 0 && to != h->last) h->cost += runs->is_blind[run] ? BLIND_SWITCH_COST : SWITCH_COST;
+    if (levels->level[to].order == h->used) h->used++;
+    h->last = h->label[run] = to;
     bool is_brief = runs->edge_s[run + 1] - runs->edge_s[run] < 1.5 * runs->bin_s;
     for (size_t j = 0; j < runs->droplets; j++) {
         const RfRunSpeed *seen = &runs->speed[j * runs->runs + run];
-        if (seen->time_s > 0) h->cost += learn_or_wonder(&h->belief[j], relative[state], seen, is_brief);
+        if (seen->time_s > 0) h->cost += learn_or_wonder(&h->belief[j], levels->relative[to], seen, is_brief);
     }
 }
 
@@ -127,7 +135,7 @@ static Belief first_belief(const RfFieldRuns *runs, size_t droplet, const RfMedi
 }
 
 typedef struct {
-    Hypothesis now[BEAM], next[BEAM * RF_FIELD_STATES];
+    Hypothesis now[BEAM], next[BEAM * RF_FIELD_LEVELS];
     size_t n_now, n_next;
 } Beam;
 
@@ -137,17 +145,17 @@ static int compare_costs(const void *a, const void *b)
     return (x->cost > y->cost) - (x->cost < y->cost);
 }
 
-static void advance(Beam *beam, const RfFieldRuns *runs, size_t run, unsigned states, const double *relative)
+static void advance(Beam *beam, const RfFieldRuns *runs, size_t run, const Levels *levels)
 {
     beam->n_next = 0;
     for (size_t i = 0; i < beam->n_now; i++) {
         /* What came first while nobody looked can't be known. */
-        if (runs->is_blind[run]) beam->now[i].used = states;
-        unsigned choices = MIN(beam->now[i].used + 1, states);
-        for (unsigned s = 0; s < choices; s++) {
+        if (runs->is_blind[run]) beam->now[i].used = levels->states;
+        for (unsigned l = 0; l < levels->n; l++) {
+            if (levels->level[l].order > beam->now[i].used) continue;
             Hypothesis *to = &beam->next[beam->n_next++];
             hypothesis_copy(to, &beam->now[i], runs->runs, runs->droplets);
-            extend(to, runs, run, s, relative);
+            extend(to, runs, run, levels, l);
         }
     }
     qsort(beam->next, beam->n_next, sizeof *beam->next, compare_costs);
@@ -185,7 +193,7 @@ static Beam *beam_new(const RfFieldRuns *runs, const RfMedium *medium)
 {
     Beam *beam = g_new0(Beam, 1);
     for (int i = 0; i < BEAM; i++) hypothesis_init(&beam->now[i], runs->runs, runs->droplets);
-    for (int i = 0; i < BEAM * RF_FIELD_STATES; i++)
+    for (int i = 0; i < BEAM * RF_FIELD_LEVELS; i++)
         hypothesis_init(&beam->next[i], runs->runs, runs->droplets);
     for (size_t j = 0; j < runs->droplets; j++) beam->now[0].belief[j] = first_belief(runs, j, medium);
     beam->n_now = 1;
@@ -195,29 +203,40 @@ static Beam *beam_new(const RfFieldRuns *runs, const RfMedium *medium)
 static void beam_free(Beam *beam)
 {
     for (int i = 0; i < BEAM; i++) hypothesis_clear(&beam->now[i]);
-    for (int i = 0; i < BEAM * RF_FIELD_STATES; i++) hypothesis_clear(&beam->next[i]);
+    for (int i = 0; i < BEAM * RF_FIELD_LEVELS; i++) hypothesis_clear(&beam->next[i]);
     g_free(beam);
 }
 
-static Beam *search(const RfFieldRuns *runs, const RfFieldSheet *sheet, const double *relative)
+static Beam *search(const RfFieldRuns *runs, const RfMedium *medium, const Levels *levels)
 {
-    Beam *beam = beam_new(runs, sheet->medium);
-    for (size_t r = 0; r < runs->runs; r++) advance(beam, runs, r, sheet->states, relative);
+    Beam *beam = beam_new(runs, medium);
+    for (size_t r = 0; r < runs->runs; r++) advance(beam, runs, r, levels);
     return beam;
+}
+
+static double levels_init(Levels *levels, const RfFieldLevel *level, size_t n)
+{
+    double largest = 0;
+    *levels = (Levels){.level = level, .n = n};
+    for (size_t l = 0; l < n; l++) {
+        largest = fmax(largest, fabs(level[l].voltage_v));
+        levels->states = MAX(levels->states, level[l].order + 1);
+    }
+    for (size_t l = 0; l < n; l++) levels->relative[l] = largest > 0 ? level[l].voltage_v / largest : 0;
+    return largest;
 }
 
 /* Twice: runs are many, and a beam over them fills up with readings that differ by a bin here or there. Stretches of one
  * label are few, and among their readings are those that differ in earnest. */
-void rf_field_states_label(const RfFieldRuns *runs, const RfFieldSheet *sheet, const double *voltage_v,
-                           unsigned *label, double *doubt, RfStateDroplet *droplet)
+void rf_field_states_label(const RfFieldRuns *runs, const RfFieldLevel *level, size_t n_levels,
+                           const RfMedium *medium, unsigned *label, double *doubt, RfStateDroplet *droplet)
 {
-    double relative[RF_FIELD_STATES], largest = 0;
-    for (unsigned s = 0; s < sheet->states; s++) largest = fmax(largest, fabs(voltage_v[s]));
-    for (unsigned s = 0; s < sheet->states; s++) relative[s] = largest > 0 ? voltage_v[s] / largest : 0;
+    Levels levels;
+    double largest = levels_init(&levels, level, n_levels);
     g_autofree size_t *part = g_new(size_t, runs->runs);
-    Beam *rough = search(runs, sheet, relative);
+    Beam *rough = search(runs, medium, &levels);
     g_autoptr(RfFieldRuns) merged = rf_field_runs_merge(runs, rough->now[0].label, part);
-    Beam *beam = search(merged, sheet, relative);
+    Beam *beam = search(merged, medium, &levels);
     g_autofree double *merged_doubt = g_new(double, merged->runs);
     weigh_doubts(beam, merged->runs, merged_doubt);
     for (size_t r = 0; r < runs->runs; r++) {

@@ -59,9 +59,17 @@ static double sheet_voltage(const RfFieldSheet *sheet, RfFieldState state)
     return state == RF_FIELD_TOP_PLUS ? sheet->top_plus_v : sheet->top_minus_v;
 }
 
+/* One level per state, as the sheet has it. */
+static size_t sheet_levels(const RfFieldSheet *sheet, RfFieldLevel *levels)
+{
+    for (unsigned s = 0; s < sheet->states; s++)
+        levels[s] = (RfFieldLevel){sheet->state[s], s, sheet_voltage(sheet, sheet->state[s])};
+    return sheet->states;
+}
+
 /* Runs of one label become one interval. */
 static void collect_intervals(RfFieldTimeline *timeline, const RfFieldRuns *runs, const unsigned *label,
-                              const RfFieldSheet *sheet, const double *voltage_v)
+                              const RfFieldLevel *levels)
 {
     for (size_t r = 0; r < runs->runs; r++) {
         if (r > 0 && label[r] == label[r - 1]) {
@@ -69,12 +77,14 @@ static void collect_intervals(RfFieldTimeline *timeline, const RfFieldRuns *runs
                 runs->edge_s[r + 1];
             continue;
         }
-        RfFieldInterval interval = {runs->edge_s[r], runs->edge_s[r + 1], sheet->state[label[r]],
-                                    voltage_v[label[r]]};
+        const RfFieldLevel *level = &levels[label[r]];
+        RfFieldInterval interval = {runs->edge_s[r], runs->edge_s[r + 1], level->state, level->voltage_v};
         g_array_append_val(timeline->intervals, interval);
         if (r == 0) continue;
-        RfFieldSwitch s = {
-            .time_s = {runs->edge_s[r], 0.1}, .from = sheet->state[label[r - 1]], .to = interval.state};
+        RfFieldSwitch s = {.time_s = {runs->edge_s[r], 0.1},
+                           .from = levels[label[r - 1]].state,
+                           .to = level->state,
+                           .change_v = level->voltage_v - levels[label[r - 1]].voltage_v};
         g_array_append_val(timeline->switches, s);
     }
 }
@@ -168,24 +178,23 @@ RfFieldTimeline *rf_field_timeline_find(const RfTrail *fragments, size_t n_fragm
     const RfTrail *trails = joined->trails;
     size_t n = joined->n;
     g_autoptr(GArray) spans = NULL;
-    RfFieldSheet states = *sheet;
+    RfFieldLevel levels[RF_FIELD_LEVELS];
+    size_t n_levels = sheet_levels(sheet, levels);
     if (sheet->log_spans > 0) {
         spans = g_array_new(FALSE, TRUE, sizeof(RfLogSpan));
         g_array_append_vals(spans, sheet->log, (unsigned)sheet->log_spans);
-        rf_field_log_complete_sheet(spans, &states);
+        n_levels = rf_field_log_levels(spans, levels, n_levels);
     }
-    double voltage_v[RF_FIELD_STATES] = {0};
-    for (unsigned s = 0; s < states.states; s++) voltage_v[s] = sheet_voltage(&states, states.state[s]);
     g_autoptr(RfFieldRuns) runs = rf_field_runs_new(trails, n);
     g_autofree unsigned *label = g_new0(unsigned, runs->runs);
     g_autofree RfStateDroplet *droplets = g_new0(RfStateDroplet, n);
     g_autofree double *doubt = g_new(double, runs->runs);
-    rf_field_states_label(runs, &states, voltage_v, label, doubt, droplets);
+    rf_field_states_label(runs, levels, n_levels, sheet->medium, label, doubt, droplets);
     heal_labels(runs, label);
     if (!spans) collect_doubts(timeline, runs, doubt);
-    collect_intervals(timeline, runs, label, &states, voltage_v);
+    collect_intervals(timeline, runs, label, levels);
     for (unsigned k = 0; k < timeline->switches->len; k++) refine_roughly(timeline, k, trails, runs);
-    if (spans && !rf_field_log_apply(spans, &states, runs, droplets, timeline, error)) return NULL;
+    if (spans && !rf_field_log_apply(spans, sheet, runs, droplets, timeline, error)) return NULL;
     return g_steal_pointer(&timeline);
 }
 

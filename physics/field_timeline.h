@@ -26,8 +26,9 @@ typedef struct {
 
 typedef struct {
     RfValue time_s;
-    RfFieldState from, to;
-    unsigned droplets; /* how many tell of it */
+    RfFieldState from, to; /* the same where one level of a state gave way to another */
+    double change_v;       /* of the voltage, signed */
+    unsigned droplets;     /* how many tell of it */
     bool has_log_time;
     double log_time_s;   /* on the log's own clock */
     double u_log_time_s; /* its sampling interval over sqrt(12) */

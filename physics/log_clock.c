@@ -18,7 +18,14 @@ static const RfFieldSwitch *switch_at(const GArray *switches, unsigned k)
     return &g_array_index(switches, RfFieldSwitch, k);
 }
 
-/* Pairs under an offset: each switch of the recording with the nearest of the log that leads to the same state. */
+/* To the same state, and the voltage changes the same way. */
+static bool is_alike(const GArray *spans, unsigned j, const RfFieldSwitch *s)
+{
+    double change_v = span_at(spans, j)->voltage_v - span_at(spans, j - 1)->voltage_v;
+    return span_at(spans, j)->state == s->to && change_v * s->change_v >= 0;
+}
+
+/* Pairs under an offset: each switch of the recording with the nearest of the log that is like it. */
 static double pair_up(const GArray *spans, const GArray *switches, double offset_s, GArray *pairs)
 {
     double score = 0;
@@ -29,7 +36,7 @@ static double pair_up(const GArray *spans, const GArray *switches, double offset
         double closest = SAME_S;
         for (unsigned j = 1; j < spans->len; j++) {
             double apart = fabs(span_at(spans, j)->start_s - offset_s - s->time_s.value);
-            if (apart >= closest || span_at(spans, j)->state != s->to) continue;
+            if (apart >= closest || !is_alike(spans, j, s)) continue;
             closest = apart;
             nearest = j;
         }

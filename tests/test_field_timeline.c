@@ -4,6 +4,7 @@
 #include <gsl/gsl_randist.h>
 #include <math.h>
 
+#include "physics/charge_step.h"
 #include "physics/constants.h"
 #include "physics/log_clock.h"
 #include "tests/support/droplet_walk.h"
@@ -371,6 +372,45 @@ static void test_log_audited(void)
     cell_clear(&cell);
 }
 
+/* One polarity at two voltages: each is its own, a change between them is a switch of the state to itself, and no droplet
+ * has a step of charge there. The last change, by 4 %, is too small for the motion: the log's word is taken. */
+static void test_log_levels(void)
+{
+    static const double voltage_v[] = {0, 300, 0, 500, 300, 0, 480, 500};
+    static const double times_s[] = {3.33, 7.01, 9.456, 13.912, 18.3, 21.1, 25.3};
+    enum { INTERVALS = G_N_ELEMENTS(voltage_v) };
+    Cell cell = {.random = gsl_rng_alloc(gsl_rng_mt19937), .truth = rf_field_timeline_new()};
+    for (unsigned k = 0; k < INTERVALS; k++) {
+        RfFieldInterval v = {k == 0 ? 0 : times_s[k - 1], k + 1 == INTERVALS ? 32 : times_s[k],
+                             voltage_v[k] > 0 ? RF_FIELD_TOP_PLUS : RF_FIELD_OFF, voltage_v[k]};
+        g_array_append_val(cell.truth->intervals, v);
+    }
+    cell_fill(&cell, 32);
+    g_autoptr(GArray) log = log_new(cell.truth, 2.9, -5, 36, cell.random);
+    g_autoptr(RfFieldTimeline) found = find_with_log(&cell, log, NULL);
+    g_assert_nonnull(found);
+    g_assert_cmpuint(found->intervals->len, ==, INTERVALS);
+    g_assert_cmpuint(found->findings->len, ==, 0);
+    for (unsigned k = 0; k < INTERVALS; k++) {
+        const RfFieldInterval *v = &g_array_index(found->intervals, RfFieldInterval, k);
+        g_assert_cmpint(v->state, ==, voltage_v[k] > 0 ? RF_FIELD_TOP_PLUS : RF_FIELD_OFF);
+        g_assert_cmpfloat_with_epsilon(v->voltage_v, voltage_v[k], 0.5);
+        if (k == 0) continue;
+        g_assert_cmpfloat_with_epsilon(switch_of(found, k - 1)->time_s.value, times_s[k - 1], 0.15);
+        g_assert_cmpfloat_with_epsilon(switch_of(found, k - 1)->change_v, voltage_v[k] - voltage_v[k - 1], 1);
+    }
+    for (unsigned i = 0; i < DROPLETS; i++) {
+        const RfDropletModel model = {.medium = &WALK_MEDIUM, .timeline = found};
+        RfDropletFit fit;
+        rf_droplet_fit(&cell.trails[i], &model, &fit);
+        g_autoptr(GArray) steps = rf_charge_step_find(&cell.trails[i], &model, &fit);
+        g_assert_cmpuint(steps->len, ==, 0);
+        g_assert_cmpfloat(fabs(fit.spell[0].charge_coulomb.value - E * ((int)(i % 5) - 2)), <,
+                          4 * fit.spell[0].charge_coulomb.sigma);
+    }
+    cell_clear(&cell);
+}
+
 static void test_log_of_another_recording_refused(void)
 {
     Cell cell = cell_new(SWITCHES_S, 1, 20, 6);
@@ -428,6 +468,7 @@ int main(int argc, char **argv)
     g_test_add_func("/field-timeline/clock/drifts", test_clock_drifts);
     g_test_add_func("/field-timeline/log/offset", test_log_offset);
     g_test_add_func("/field-timeline/log/audited", test_log_audited);
+    g_test_add_func("/field-timeline/log/levels", test_log_levels);
     g_test_add_func("/field-timeline/log/of-another-recording-refused",
                     test_log_of_another_recording_refused);
     g_test_add_func("/field-timeline/log/beside-neutral-droplets", test_log_beside_neutral_droplets);
