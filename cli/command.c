@@ -1,6 +1,7 @@
 #include "cli/command.h"
 
 #include "cli/help.h"
+#include "cli/likeness.h"
 #include "cli/version.h"
 
 #include <inttypes.h>
@@ -10,7 +11,7 @@
 #include <string.h>
 #include <unistd.h>
 
-G_DEFINE_QUARK(rf-command-error, rf_command_error)
+G_DEFINE_QUARK(rf - command - error, rf_command_error)
 
 const RfCommand *const rf_commands[] = {
 #define RF_COMMAND(verb) &rf_command_##verb,
@@ -61,14 +62,14 @@ bool rf_command_one_argument(char **arguments, const char *what, const char **ar
     if (n == 0)
         g_set_error(error, RF_COMMAND_ERROR, RF_COMMAND_ERROR_USAGE, "missing argument: %s", what);
     else
-        g_set_error(error, RF_COMMAND_ERROR, RF_COMMAND_ERROR_USAGE, "%u arguments given, one expected: %s", n, what);
+        g_set_error(error, RF_COMMAND_ERROR, RF_COMMAND_ERROR_USAGE, "%u arguments given, one expected: %s",
+                    n, what);
     return false;
 }
 
 bool rf_command_required(const char *value, const char *option, const char *what, GError **error)
 {
-    if (value && *value)
-        return true;
+    if (value && *value) return true;
     g_set_error(error, RF_COMMAND_ERROR, RF_COMMAND_ERROR_USAGE, "missing option: %s %s", option, what);
     return false;
 }
@@ -82,28 +83,24 @@ static void draw_progress(const char *label, int64_t done, int64_t total, double
     double share = MIN(1.0, (double)done / (double)total);
     int left_s = share > 0 ? (int)(elapsed_s * (1 - share) / share + 0.5) : 0;
     int bar = (int)(share * 30);
-    fprintf(stderr, "\r%s  [%.*s%*s] %3.0f %%  %d:%02d left\033[K", label, bar, "##############################",
-            30 - bar, "", 100 * share, left_s / 60, left_s % 60);
+    fprintf(stderr, "\r%s  [%.*s%*s] %3.0f %%  %d:%02d left\033[K", label, bar,
+            "##############################", 30 - bar, "", 100 * share, left_s / 60, left_s % 60);
 }
 
 void rf_command_progress(const char *label, int64_t done, int64_t total)
 {
     static _Atomic int64_t last_us, start_us; /* drawing may be asked for from any worker */
-    if (common.is_quiet || !isatty(STDERR_FILENO))
-        return;
+    if (common.is_quiet || !isatty(STDERR_FILENO)) return;
     int64_t now_us = g_get_monotonic_time();
-    if (done == 0 || start_us == 0)
-        start_us = now_us;
-    if (now_us - last_us < 100000 && done < total)
-        return;
+    if (done == 0 || start_us == 0) start_us = now_us;
+    if (now_us - last_us < 100000 && done < total) return;
     last_us = now_us;
     draw_progress(label, done, total, (double)(now_us - start_us) / 1e6);
 }
 
 void rf_command_progress_end(void)
 {
-    if (!common.is_quiet && isatty(STDERR_FILENO))
-        fputs("\r\033[K", stderr);
+    if (!common.is_quiet && isatty(STDERR_FILENO)) fputs("\r\033[K", stderr);
 }
 
 static const GOptionEntry shared_options[] = {
@@ -116,21 +113,42 @@ static const GOptionEntry json_option = {
 GOptionEntry *rf_command_options(const RfCommand *command)
 {
     GArray *options = g_array_new(TRUE, FALSE, sizeof(GOptionEntry));
-    for (const GOptionEntry *own = command->entries; own && own->long_name; own++) g_array_append_val(options, *own);
+    for (const GOptionEntry *own = command->entries; own && own->long_name; own++)
+        g_array_append_val(options, *own);
     if (command->has_json) g_array_append_val(options, json_option);
     g_array_append_vals(options, shared_options, G_N_ELEMENTS(shared_options));
     return (GOptionEntry *)(void *)g_array_free(options, FALSE);
 }
 
+static const char *like_option(const RfCommand *command, const char *word)
+{
+    g_autofree GOptionEntry *options = rf_command_options(command);
+    g_autoptr(GPtrArray) names = g_ptr_array_new();
+    for (const GOptionEntry *option = options; option->long_name; option++)
+        g_ptr_array_add(names, (char *)option->long_name);
+    return rf_likeness_nearest(word, (const char *const *)names->pdata, names->len);
+}
+
 static GOptionContext *new_context(const RfCommand *command)
 {
-    GOptionContext *context = g_option_context_new(command->arguments);
-    g_option_context_set_summary(context, command->purpose); /* a line of its own: 80 columns must do */
-    g_autofree char *example = g_strdup_printf("Example:\n%s", command->example);
-    g_option_context_set_description(context, example);
+    GOptionContext *context = g_option_context_new(NULL);
+    g_option_context_set_help_enabled(context, FALSE); /* help.c knows what fits a page */
     g_autofree GOptionEntry *options = rf_command_options(command);
     g_option_context_add_main_entries(context, options, NULL);
     return context;
+}
+
+/* GOption's word, begun as our own messages begin; for an option that there isn't, the one that may have been meant. */
+static void refuse_options(const RfCommand *command, const GError *complaint, GError **error)
+{
+    g_autoptr(GString) text = g_string_new(complaint->message);
+    text->str[0] = (char)g_ascii_tolower(text->str[0]);
+    const char *word = strstr(text->str, " --");
+    const char *like = g_error_matches(complaint, G_OPTION_ERROR, G_OPTION_ERROR_UNKNOWN_OPTION) && word
+                           ? like_option(command, word + 3)
+                           : NULL;
+    if (like) g_string_append_printf(text, "; did you mean --%s?", like);
+    g_set_error_literal(error, RF_COMMAND_ERROR, RF_COMMAND_ERROR_USAGE, text->str);
 }
 
 static bool parse_options(const RfCommand *command, int *argc, char ***argv, GError **error)
@@ -138,32 +156,43 @@ static bool parse_options(const RfCommand *command, int *argc, char ***argv, GEr
     g_autofree char *program = g_strdup_printf("risefall %s", command->verb);
     g_set_prgname(program);
     g_autoptr(GOptionContext) context = new_context(command);
-    if (!g_option_context_parse(context, argc, argv, error))
+    g_autoptr(GError) complaint = NULL;
+    if (!g_option_context_parse(context, argc, argv, &complaint)) {
+        refuse_options(command, complaint, error);
         return false;
-    if (common.threads >= 0 && common.threads <= 512)
-        return true;
-    g_set_error(error, RF_COMMAND_ERROR, RF_COMMAND_ERROR_USAGE, "--threads=%d: a number from 1 to 512 is needed",
-                common.threads);
+    }
+    if (common.threads >= 0 && common.threads <= 512) return true;
+    g_set_error(error, RF_COMMAND_ERROR, RF_COMMAND_ERROR_USAGE,
+                "--threads=%d: a number from 1 to 512 is needed", common.threads);
     return false;
 }
 
 static RfExit report_failure(const RfCommand *command, RfExit code, const GError *error)
 {
-    if (!error)
-        return code;
+    if (!error) return code;
     fprintf(stderr, "risefall: %s\n", error->message);
     bool is_usage = error->domain == G_OPTION_ERROR || error->domain == RF_COMMAND_ERROR;
-    if (is_usage)
-        fprintf(stderr, "'risefall %s --help' shows how it is called\n", command->verb);
+    if (is_usage) fprintf(stderr, "'risefall %s --help' shows how it is called\n", command->verb);
     return is_usage ? RF_EXIT_USAGE : code;
+}
+
+static bool asks_for_help(char **arguments)
+{
+    for (; *arguments && !g_str_equal(*arguments, "--"); arguments++)
+        if (g_str_equal(*arguments, "--help") || g_str_equal(*arguments, "-h")) return true;
+    return false;
 }
 
 static RfExit run_command(const RfCommand *command, int argc, char **argv)
 {
     g_autoptr(GError) error = NULL;
-    g_autofree char **rest = g_memdup2(argv, sizeof(char *) * (size_t)(argc + 1)); /* GOption reorders in place */
-    if (!parse_options(command, &argc, &rest, &error))
-        return report_failure(command, RF_EXIT_USAGE, error);
+    g_autofree char **rest =
+        g_memdup2(argv, sizeof(char *) * (size_t)(argc + 1)); /* GOption reorders in place */
+    if (asks_for_help(rest)) {
+        rf_help_command(command);
+        return RF_EXIT_DONE;
+    }
+    if (!parse_options(command, &argc, &rest, &error)) return report_failure(command, RF_EXIT_USAGE, error);
     catch_signals();
     RfExit code = command->run(rest + 1, &error);
     rf_command_progress_end();

@@ -12,8 +12,7 @@ static char *against, *out;
 static const GOptionEntry entries[] = {
     {"against", 'a', 0, G_OPTION_ARG_FILENAME, &against,
      "result folder of an earlier run of the same recording", "DIR"},
-    {"out", 'o', 0, G_OPTION_ARG_FILENAME, &out,
-     "folder for audit.csv, audit.json and a page", "DIR"},
+    {"out", 'o', 0, G_OPTION_ARG_FILENAME, &out, "folder for audit.csv, audit.json and a page", "DIR"},
     {0},
 };
 
@@ -26,9 +25,12 @@ static bool write_down(const RfResults *results, GError **error)
 
 static void tell(const RfResults *results)
 {
-    if (rf_command_common()->is_quiet) return;
-    g_autofree char *summary = rf_write_audit_summary(results, out);
+    const RfCommonOptions *common = rf_command_common();
+    if (common->is_quiet && !common->as_json) return;
+    g_autofree char *summary =
+        common->as_json ? rf_write_audit_json(results) : rf_write_audit_summary(results, out);
     fputs(summary, stdout);
+    if (common->is_quiet) return;
     for (guint i = 0; i < results->warnings->len; i++)
         fprintf(stderr, "risefall: note: %s\n", (const char *)g_ptr_array_index(results->warnings, i));
 }
@@ -66,13 +68,31 @@ static RfExit run(char **arguments, GError **error)
     return RF_EXIT_DONE;
 }
 
+static const RfCommandFile files[] = {
+    {"audit.csv", "a row for each entry: its droplet, both times, their difference, the finding"},
+    {"audit.json", "the same rows, the person's habit, charges from hand timings alone"},
+    {"report.html", "the audit as a page"},
+    {0},
+};
+
 const RfCommand rf_command_audit = {
     .verb = "audit",
     .arguments = "TIMINGS.csv --against DIR [--out DIR]",
     .purpose = "hand timings against what the recording shows, entry by entry",
+    .details = "Compares a table of hand timings, entry by entry, with the passages of the same "
+               "droplets over the reticle's lines in an earlier result. Each entry gets a finding: "
+               "agrees, disagrees, other droplet, line miscount, digit slip, field switched inside, or "
+               "unmatched, with what speaks for it and where to look. From the sound entries follow the "
+               "person's bias and spread, and what they do to a velocity and a charge.\n\n"
+               "The table has a header and the columns entry, label, motion (fall or rise), divisions "
+               "or distance_mm, time_s, voltage_V, and start_s where the clock was noted; semicolons, "
+               "decimal commas and byte-order marks are read. With --json the text of audit.json goes "
+               "to standard output.",
     .example = "  risefall audit stopwatch.csv --against morning --out morning-audit\n"
                "tells which entries can be trusted, what went wrong with the others, and what\n"
                "the person's habit costs",
+    .files = files,
     .entries = entries,
+    .has_json = true,
     .run = run,
 };

@@ -31,6 +31,10 @@ const RfCommand rf_command_check = {
     .verb = "check",
     .arguments = "VIDEO",
     .purpose = "is this recording fit for measuring",
+    .details = "Looks at the file and at up to 1800 pictures from its middle, without a run sheet. Each "
+               "matter gets a line with a figure: ok, care (usable, with wider uncertainties), or BAD "
+               "(what it would spoil), and what to do about it at the next recording.\n\n"
+               "With --json every figure goes to standard output, with its unit in its name.",
     .example = "  risefall check morning.mkv\n"
                "prints one line a matter (timestamps, gaps, repeats, interlacing, exposure,\n"
                "noise, camera, contrast, compression ...): ok, care or BAD, with its figure\n"

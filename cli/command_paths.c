@@ -21,8 +21,12 @@ const RfCommand rf_command_paths = {
     .verb = "paths",
     .arguments = "SHEET --out DIR",
     .purpose = "every droplet's path and the scale, nothing measured from them yet",
+    .details = "The first half of run: finds and follows the droplets and reads the scale. 'risefall "
+               "charge' takes it from there, as often as air, voltage or laws in the sheet change, "
+               "without watching the recording again.",
     .example = "  risefall paths morning.ini --out morning-paths\n"
                "leaves morning-paths/paths.csv, scale.json and summary.json",
+    .files = rf_deliver_paths_files,
     .entries = entries,
     .has_json = true,
     .run = run,

@@ -13,13 +13,14 @@ static const GOptionEntry entries[] = {
     {"off-time", 0, 0, G_OPTION_ARG_STRING, &off_time,
      "time watched with the field off, in all (default: 20 s)", "Q"},
     {"on-time", 0, 0, G_OPTION_ARG_STRING, &on_time, "the same with the field on (default: 20 s)", "Q"},
-    {"frame-rate", 0, 0, G_OPTION_ARG_STRING, &frame_rate, "default: the sheet's, else 30 Hz", "Q"},
+    {"frame-rate", 0, 0, G_OPTION_ARG_STRING, &frame_rate,
+     "frames per second (default: the sheet's, else 30 Hz)", "Q"},
     {"view", 0, 0, G_OPTION_ARG_STRING, &view, "height of the field of view (default: 1 mm)", "Q"},
     {"noise", 0, 0, G_OPTION_ARG_STRING, &noise, "uncertainty of one position in the cell (default: 0.5 um)",
      "Q"},
-    {"voltage", 0, 0, G_OPTION_ARG_STRING, &voltage, "default: the sheet's", "Q"},
-    {"out", 'o', 0, G_OPTION_ARG_FILENAME, &out,
-     "also leave the whole table and a chart there", "DIR"},
+    {"voltage", 0, 0, G_OPTION_ARG_STRING, &voltage,
+     "between the plates while the field is on (default: the sheet's)", "Q"},
+    {"out", 'o', 0, G_OPTION_ARG_FILENAME, &out, "also leave the whole table and a chart there", "DIR"},
     {0},
 };
 
@@ -104,7 +105,11 @@ static bool plan(const RfSettings *settings, GError **error)
     g_autoptr(GArray) rows = rf_plan_rows(&conditions);
     g_autofree char *text = rf_plan_text(&conditions, rows, &common), *warning = NULL;
     if (out && !rf_plan_write(out, &conditions, rows, text, &warning, error)) return false;
-    if (!rf_command_common()->is_quiet) fputs(text, stdout);
+    g_autofree char *json = rf_command_common()->as_json ? rf_plan_json(&conditions, rows, &common) : NULL;
+    if (json)
+        fputs(json, stdout);
+    else if (!rf_command_common()->is_quiet)
+        fputs(text, stdout);
     if (warning) fprintf(stderr, "risefall: note: %s\n", warning);
     return true;
 }
@@ -118,14 +123,31 @@ static RfExit run(char **arguments, GError **error)
     return settings && plan(settings, error) ? RF_EXIT_DONE : RF_EXIT_INPUT;
 }
 
+static const RfCommandFile files[] = {
+    {"plan.csv", "the whole table"},
+    {"plan.txt", "what stands on the screen"},
+    {"figures/plan.svg, plan.pdf",
+     "attainable uncertainty of the charge against radius; data and script beside them"},
+    {0},
+};
+
 const RfCommand rf_command_plan = {
     .verb = "plan",
     .arguments = "SHEET",
     .purpose = "before recording: which droplets, how long, what uncertainty",
+    .details = "Needs the sheet's cell, oil, air and voltage, not the recording. For radii and charges "
+               "that are usual it lists the speeds, how long a droplet stays in view, and the best "
+               "uncertainty of its charge that any estimator can reach in the time given; and from "
+               "that, which droplets to pick, how long to watch, and what voltage makes most of them "
+               "worth it.\n\n"
+               "Times, rates and lengths are quantities with their unit, as in '30 s'. With --json "
+               "conditions and table go to standard output.",
     .example = "  risefall plan morning.ini --on-time '30 s' --view '1.2 mm' --out plan\n"
                "prints what radius and charge make of speed and uncertainty, which droplets\n"
                "to pick, how long to watch and at what voltage; leaves plan/plan.csv and\n"
                "plan/figures/plan.svg. The recording needn't exist yet.",
+    .files = files,
     .entries = entries,
+    .has_json = true,
     .run = run,
 };

@@ -21,8 +21,18 @@ const RfCommand rf_command_run = {
     .verb = "run",
     .arguments = "SHEET --out DIR",
     .purpose = "the whole job: paths, scale, switches, charges, unit, report",
+    .details = "Watches the recording that the sheet names, finds and follows every droplet, reads the "
+               "scale off the reticle, finds the instants at which the field was switched, and "
+               "estimates each droplet's radius and charge from its whole path: fall, response to the "
+               "field and Brownian spread together. Hand timings that the sheet names are audited "
+               "against the paths.\n\n"
+               "The verdict, the unit of charge and the first droplets go to standard output; "
+               "report.html shows where they come from. Where the droplets can't show a common unit, or "
+               "a droplet's charge can't be defended, that is said with its reason instead of a number.\n\n"
+               "With --json the text of summary.json goes to standard output instead.",
     .example = "  risefall run morning.ini --out morning\n"
                "leaves morning/report.html to look at, beside it droplets.csv, summary.json ...",
+    .files = rf_deliver_files,
     .entries = entries,
     .has_json = true,
     .run = run,

@@ -11,6 +11,28 @@
 
 enum { SCREEN_LINES = 24 };
 
+const RfCommandFile rf_deliver_files[] = {
+    {"report.html", "the page to look at; opens from disk in any browser"},
+    {"droplets.csv", "radius and charge, a row for each spell of constant charge"},
+    {"segments.csv", "velocities, a row for each droplet and field state"},
+    {"switches.csv", "when the field was switched"},
+    {"steps.csv", "when a droplet changed its charge"},
+    {"paths.csv", "every droplet in every frame: place, its uncertainty, measured or bridged"},
+    {"budget.csv", "what each input adds to the uncertainty of a charge"},
+    {"audit.csv, audit.json", "verdicts on hand timings, where the sheet names them"},
+    {"scale.json", "pixels per millimetre"},
+    {"summary.json", "verdict, unit, warnings, every setting and default, digests of all inputs"},
+    {"figures/", "each figure as SVG and PDF, its data and its plotting script"},
+    {0},
+};
+
+const RfCommandFile rf_deliver_paths_files[] = {
+    {"paths.csv", "every droplet in every frame: place, its uncertainty, measured or bridged"},
+    {"scale.json", "pixels per millimetre"},
+    {"summary.json", "warnings, every setting and default, digests of all inputs"},
+    {0},
+};
+
 static RfResults *make(const RfSettings *settings, const char *paths_csv, RfDeliverKind kind, GError **error)
 {
     const RfWatchHooks hooks = {

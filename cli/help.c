@@ -14,10 +14,19 @@ void rf_help_overview(FILE *to)
           to);
     for (const RfCommand *const *command = rf_commands; *command; command++)
         fprintf(to, "  %-10s %s\n", (*command)->verb, (*command)->purpose);
-    fputs("\n'risefall COMMAND --help' shows a command's options with an example,\n"
-          "'risefall help COMMAND' tells all, 'risefall help sheet' lists a run sheet's keys,\n"
+    fputs("\n'risefall COMMAND --help' shows options with an example, 'risefall help COMMAND'\n"
+          "tells all, 'risefall help sheet' lists what a run sheet may hold.\n"
           "'risefall --version' names the version.\n",
           to);
+}
+
+void rf_help_command(const RfCommand *command)
+{
+    g_autoptr(RfManual) options = rf_manual_options(command);
+    g_autofree char *title = g_strdup_printf("usage: risefall %s [OPTION...] %s", command->verb,
+                                             command->arguments),
+                    *list = rf_manual_parts_text(options, 80);
+    printf("%s\n\n%s\n\n%s\nExample:\n%s\n", title, command->purpose, list, command->example);
 }
 
 static RfManual *page_of(const char *topic)

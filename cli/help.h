@@ -1,4 +1,4 @@
-/* What `risefall --help` and `risefall help TOPIC` show. Not for --help of a command: GOption prints that. */
+/* What `risefall --help` and `risefall help TOPIC` show. Each --help fits a page of 24 lines. */
 #pragma once
 
 #include <stdio.h>
@@ -6,6 +6,9 @@
 #include "cli/command.h"
 
 void rf_help_overview(FILE *to);
+
+/* `risefall VERB --help` on stdout: options and an example. */
+void rf_help_command(const RfCommand *command);
 
 /* `topic`: NULL for the overview, a command's verb, or "sheet"; shown with a pager on a terminal that is too short.
  * More than one topic, or one that there isn't, is a usage error. */

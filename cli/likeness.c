@@ -1,6 +1,7 @@
 #include "cli/likeness.h"
 
 #include <glib.h>
+#include <stdbool.h>
 #include <string.h>
 
 enum { LONGEST = 40 };
@@ -25,6 +26,12 @@ static int steps_between(const char *a, const char *b)
     return steps[n][m];
 }
 
+static bool is_begun_alike(const char *one, const char *other)
+{
+    const size_t shorter = MIN(strlen(one), strlen(other));
+    return shorter >= 3 && strncmp(one, other, shorter) == 0;
+}
+
 const char *rf_likeness_nearest(const char *word, const char *const *known, size_t n_known)
 {
     const char *nearest = NULL;
@@ -35,5 +42,7 @@ const char *rf_likeness_nearest(const char *word, const char *const *known, size
         fewest = steps;
         nearest = known[i];
     }
+    for (size_t i = 0; i < n_known && !nearest; i++)
+        if (is_begun_alike(word, known[i])) nearest = known[i];
     return nearest;
 }

@@ -63,10 +63,17 @@ static void add_option(RfManual *manual, const GOptionEntry *option)
 
 static void add_options(RfManual *manual, const GOptionEntry *options)
 {
-    heading(manual, "Options");
     for (; options->long_name; options++)
         if (!(options->flags & G_OPTION_FLAG_HIDDEN)) add_option(manual, options);
     item(manual, "-h, --help", "how the command is called, with an example");
+}
+
+RfManual *rf_manual_options(const RfCommand *command)
+{
+    RfManual *manual = rf_manual_new(command->verb, command->verb, 1, command->purpose);
+    g_autofree GOptionEntry *options = rf_command_options(command);
+    add_options(manual, options);
+    return manual;
 }
 
 /* The lines indented by two are the command; what follows tells what it does. */
@@ -113,6 +120,7 @@ RfManual *rf_manual_command(const RfCommand *command)
         rf_manual_add_paragraphs(manual, command->details);
     }
     g_autofree GOptionEntry *options = rf_command_options(command);
+    heading(manual, "Options");
     add_options(manual, options);
     if (command->files) add_files(manual, command->files);
     add_statuses(manual);

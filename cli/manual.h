@@ -28,6 +28,7 @@ typedef struct {
 
 RfManual *rf_manual_overview(void);                    /* (returns new) */
 RfManual *rf_manual_command(const RfCommand *command); /* (returns new) */
+RfManual *rf_manual_options(const RfCommand *command); /* only the options' items; (returns new) */
 RfManual *rf_manual_sheet(void);                       /* the run sheet's keys; (returns new) */
 void rf_manual_free(RfManual *manual);
 G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfManual, rf_manual_free)
@@ -36,8 +37,9 @@ RfManual *rf_manual_new(const char *name, const char *called, int section, const
 void rf_manual_add(RfManual *manual, RfManualKind kind, const char *term, const char *text); /* copies */
 void rf_manual_add_paragraphs(RfManual *manual, const char *text); /* with an empty line between them */
 
-char *rf_manual_text(const RfManual *manual, int columns); /* (returns new) */
-char *rf_manual_roff(const RfManual *manual);              /* for the man macros, ASCII; (returns new) */
+char *rf_manual_text(const RfManual *manual, int columns);       /* (returns new) */
+char *rf_manual_parts_text(const RfManual *manual, int columns); /* without the title; (returns new) */
+char *rf_manual_roff(const RfManual *manual); /* for the man macros, ASCII; (returns new) */
 
 /* A run sheet with the commonest keys, as the manual shows it; rf_settings_parse takes it. */
 extern const char rf_manual_sheet_example[];

@@ -3,7 +3,7 @@
 #include "cli/manual.h"
 #include "cli/text_wrap.h"
 
-enum { INDENT = 2, BESIDE = 22 }; /* columns: of text, and of an item's text beside its term */
+enum { INDENT = 2, BESIDE = 24 }; /* columns: of text, and of an item's text beside its term */
 
 static void append_lines(GString *out, const char *text)
 {
@@ -50,9 +50,16 @@ static bool are_paragraphs(const GArray *parts, guint i)
 
 char *rf_manual_text(const RfManual *manual, int columns)
 {
+    g_autoptr(GString) title = g_string_new(NULL);
+    g_autofree char *line = g_strdup_printf("%s: %s", manual->called, manual->purpose),
+                    *parts = rf_manual_parts_text(manual, columns);
+    rf_text_wrap_append(title, line, 0, columns, false);
+    return g_strconcat(title->str, parts, NULL);
+}
+
+char *rf_manual_parts_text(const RfManual *manual, int columns)
+{
     GString *out = g_string_new(NULL);
-    g_autofree char *title = g_strdup_printf("%s: %s", manual->called, manual->purpose);
-    rf_text_wrap_append(out, title, 0, columns, false);
     for (guint i = 0; i < manual->parts->len; i++) {
         if (are_paragraphs(manual->parts, i)) g_string_append_c(out, '\n');
         append_part(out, &g_array_index(manual->parts, RfManualPart, i), columns);

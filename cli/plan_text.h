@@ -19,3 +19,5 @@ bool rf_plan_common(const RfChargeInputs *inputs, RfPlanCommon *common, GError *
 /* Both (returns new). `common` may be NULL. */
 char *rf_plan_text(const RfPlanConditions *conditions, const GArray *rows, const RfPlanCommon *common);
 char *rf_plan_csv(const GArray *rows);
+/* Conditions, what is shared, and the rows of the table with the same keys. (returns new) */
+char *rf_plan_json(const RfPlanConditions *conditions, const GArray *rows, const RfPlanCommon *common);

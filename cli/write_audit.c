@@ -1,5 +1,6 @@
 #include "cli/write_audit.h"
 
+#include "cli/json_rows.h"
 #include "cli/report_html.h"
 #include "cli/text_number.h"
 #include "cli/write_csv.h"
@@ -40,20 +41,6 @@ static void end_object(GString *out)
     g_string_append(out, "\n  }");
 }
 
-static void append_quoted(GString *out, const char *text)
-{
-    g_string_append_c(out, '"');
-    for (const char *c = text; c && *c; c++) {
-        if ((unsigned char)*c < 0x20)
-            g_string_append_printf(out, "\\u%04x", (unsigned)*c);
-        else {
-            if (*c == '"' || *c == '\\') g_string_append_c(out, '\\');
-            g_string_append_c(out, *c);
-        }
-    }
-    g_string_append_c(out, '"');
-}
-
 static void person_object(GString *out, const RfPersonRow *person)
 {
     g_string_append(out, "{\n  \"person\": {\n");
@@ -88,7 +75,7 @@ static void person_object(GString *out, const RfPersonRow *person)
 static void charge_object(GString *out, const RfHandChargeRow *row)
 {
     g_string_append(out, "\n  {\n    \"label\": ");
-    append_quoted(out, row->label);
+    rf_json_rows_append_string(out, row->label);
     g_string_append(out, ",\n");
     count(out, "droplet", row->droplet);
     count(out, "spell", row->spell);
@@ -109,7 +96,10 @@ char *rf_write_audit_json(const RfResults *results)
         g_string_append(out, i ? "," : "");
         charge_object(out, &g_array_index(results->hand_charges, RfHandChargeRow, i));
     }
-    g_string_append(out, "]\n}\n");
+    g_string_append(out, "],\n  \"entries\": ");
+    g_autoptr(GString) table = rf_write_csv_audit(results);
+    rf_json_rows_append(out, table->str, 2);
+    g_string_append(out, "\n}\n");
     return g_string_free(out, FALSE);
 }
 

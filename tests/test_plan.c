@@ -1,6 +1,7 @@
 #include "cli/plan_text.h"
 
 #include <gsl/gsl_errno.h>
+#include <json-glib/json-glib.h>
 #include <math.h>
 #include <string.h>
 
@@ -149,6 +150,25 @@ static void csv_has_a_row_for_each(void)
     }
 }
 
+static void json_holds_the_table(void)
+{
+    const RfPlanConditions conditions = usual();
+    const RfPlanCommon common = {0.0123, "plate gap"};
+    g_autoptr(GArray) rows = rf_plan_rows(&conditions);
+    g_autofree char *text = rf_plan_json(&conditions, rows, &common);
+    g_autoptr(JsonParser) parser = json_parser_new();
+    g_autoptr(GError) error = NULL;
+    json_parser_load_from_data(parser, text, -1, &error);
+    g_assert_no_error(error);
+    JsonObject *plan = json_node_get_object(json_parser_get_root(parser));
+    JsonObject *shared = json_object_get_object_member(plan, "conditions");
+    g_assert_cmpfloat(json_object_get_double_member(shared, "voltage_V"), ==, 500);
+    g_assert_cmpfloat(json_object_get_double_member(shared, "common_relative_u"), ==, 0.0123);
+    g_assert_cmpstr(json_object_get_string_member(shared, "common_largest"), ==, "plate gap");
+    g_assert_cmpuint(json_array_get_length(json_object_get_array_member(plan, "droplets")), ==, rows->len);
+    g_assert_cmpuint(json_array_get_length(json_object_get_array_member(plan, "voltages")), ==, RF_PLAN_VOLTAGES);
+}
+
 int main(int argc, char **argv)
 {
     gsl_set_error_handler_off();
@@ -159,6 +179,7 @@ int main(int argc, char **argv)
     g_test_add_func("/plan/row/advice-names-the-obstacle", advice_names_the_obstacle);
     g_test_add_func("/plan/voltages/best-has-the-most-picks", best_voltage_has_the_most_picks);
     g_test_add_func("/plan/text/table-fits-the-terminal", table_fits_the_terminal);
+    g_test_add_func("/plan/json/holds-the-table", json_holds_the_table);
     g_test_add_func("/plan/csv/has-a-row-for-each", csv_has_a_row_for_each);
     return g_test_run();
 }
