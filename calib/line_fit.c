@@ -135,6 +135,7 @@ static bool improve(Fit *fit, double *change)
  * factor (>= 1) on variances, from chi-square over its degrees of freedom. Pieces come line by line. */
 static double line_scatter(const Fit *fit, double piece_variance)
 {
+    if (!(piece_variance > 0.0)) return 1.0; /* a drawn picture without any noise: every piece fits exactly */
     double chi2 = 0.0, sum = 0.0, weights = 0.0;
     int lines = 0, list[PARAMETERS],
         fitted = list_free(fit, list) - 1; /* the angle isn't of the line means */
