@@ -21,7 +21,7 @@ const RfCommand *const rf_commands[] = {
 };
 
 static RfCommonOptions common;
-static volatile sig_atomic_t is_cancelled;
+static volatile sig_atomic_t is_cancelled, is_held;
 
 const RfCommonOptions *rf_command_common(void)
 {
@@ -40,9 +40,32 @@ const RfCommand *rf_command_find(const char *verb)
     return NULL;
 }
 
+static void stop(void)
+{
+    static const char clear[] = "\r\033[K", text[] = "risefall: stopped on request\n";
+    if (isatty(STDERR_FILENO) && write(STDERR_FILENO, clear, sizeof clear - 1) < 0)
+        _exit(RF_EXIT_INPUT);
+    ssize_t written = write(STDERR_FILENO, text, sizeof text - 1);
+    _exit(written < 0 ? RF_EXIT_USAGE : RF_EXIT_INPUT);
+}
+
 static void on_signal(int number)
 {
     is_cancelled = number;
+    if (!is_held)
+        stop();
+}
+
+void rf_command_hold_signals(void)
+{
+    is_held = 1;
+}
+
+void rf_command_release_signals(void)
+{
+    is_held = 0;
+    if (is_cancelled)
+        stop();
 }
 
 static void catch_signals(void)

@@ -71,7 +71,10 @@ bool rf_command_required(const char *value, const char *option, const char *what
 void rf_command_progress(const char *label, int64_t done, int64_t total);
 void rf_command_progress_end(void);
 
-/* Set by SIGINT and SIGTERM; long work polls it and ends cleanly. */
+/* SIGINT and SIGTERM end the program at once, whatever it computes; but between these two, where a temporary folder has to be
+ * taken away first: there they only set rf_command_is_cancelled(), and release ends the program. result_folder.c calls both. */
+void rf_command_hold_signals(void);
+void rf_command_release_signals(void);
 int rf_command_is_cancelled(void);
 
 int rf_command_main(int argc, char **argv);

@@ -16,7 +16,7 @@ static RfExit run(char **arguments, GError **error)
 {
     const char *path;
     if (!rf_command_one_argument(arguments, "a recording", &path, error)) return RF_EXIT_USAGE;
-    const RfWatchHooks hooks = {rf_command_common()->threads, rf_command_progress, rf_command_is_cancelled};
+    const RfWatchHooks hooks = {rf_command_common()->threads, rf_command_progress};
     RfFitnessFigures figures;
     if (!rf_examine_recording(path, is_whole, &hooks, &figures, error)) return RF_EXIT_INPUT;
     rf_command_progress_end();

@@ -10,6 +10,7 @@
 #include <sys/stat.h>
 #include <unistd.h>
 
+#include "cli/command.h"
 #include "cli/folder_tree.h"
 
 G_DEFINE_QUARK(rf - result - folder - error - quark, rf_result_folder_error)
@@ -108,12 +109,6 @@ static char *resolve(const char *target)
     return g_steal_pointer(&found);
 }
 
-bool rf_result_folder_may_replace(const char *target, GError **error)
-{
-    g_autofree char *resolved = resolve(target);
-    return may_replace(resolved, error);
-}
-
 /* ---- leftovers of runs that died ---- */
 
 /* Opens and locks a folder; -1 when somebody else holds it. Process numbers would not do: they are used again, and differ
@@ -184,6 +179,7 @@ static bool make_part(RfResultFolder *folder, GError **error)
 
 RfResultFolder *rf_result_folder_open(const char *target, GError **error)
 {
+    rf_command_hold_signals();
     g_autoptr(RfResultFolder) folder = g_new0(RfResultFolder, 1);
     folder->lock = -1;
     folder->target = resolve(target);
@@ -193,6 +189,12 @@ RfResultFolder *rf_result_folder_open(const char *target, GError **error)
     if (!may_replace(folder->target, error) || !make_parents(folder, error) || !make_part(folder, error))
         return NULL;
     return g_steal_pointer(&folder);
+}
+
+bool rf_result_folder_may_replace(const char *target, GError **error)
+{
+    g_autoptr(RfResultFolder) trial = rf_result_folder_open(target, error);
+    return trial != NULL;
 }
 
 const char *rf_result_folder_path(const RfResultFolder *folder)
@@ -217,6 +219,8 @@ static bool write_all(int fd, const char *bytes, size_t length)
 bool rf_result_folder_add(RfResultFolder *folder, const char *name, const void *bytes, size_t length,
                           GError **error)
 {
+    if (rf_command_is_cancelled())
+        return fail(error, RF_RESULT_FOLDER_ERROR_WRITE, "%s: stopped on request", folder->target);
     g_autofree char *path = g_build_filename(folder->path, name, NULL);
     g_autofree char *shown = g_build_filename(folder->target, name, NULL);
     g_autofree char *inside = g_path_get_dirname(path);
@@ -345,4 +349,5 @@ void rf_result_folder_free(RfResultFolder *folder)
     g_free(folder->parent);
     g_free(folder->name);
     g_free(folder);
+    rf_command_release_signals();
 }

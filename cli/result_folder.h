@@ -1,6 +1,7 @@
 /* A result folder that appears whole or not at all. Everything is written aside, in one temporary folder of the same
  * parent (`.NAME.part-PID`), flushed to disk, and swapped in with one rename; only then is the earlier folder removed.
  * A run that dies leaves at most that temporary folder behind, and the next run on the same target clears it.
+ * Ctrl-C while the temporary folder exists takes it away and ends the program.
  * Not for deciding what is written: see write_results.h. */
 #pragma once
 
@@ -23,7 +24,8 @@ typedef struct RfResultFolder RfResultFolder;
  * A target that is the working folder or one above it is refused. */
 RfResultFolder *rf_result_folder_open(const char *target, GError **error);
 
-/* Only the check: for a command that wants to refuse before hours of work. */
+/* Opens it and gives up again, which shows what no look at permissions does (/proc, a full or read-only disk): for a command
+ * that wants to refuse before hours of work. */
 bool rf_result_folder_may_replace(const char *target, GError **error);
 
 /* Where the files are before commit, absolute; for programs that write a file themselves. (borrowed) */

@@ -141,7 +141,6 @@ static bool look_at_all(RfWatch *watch, const RfWatchHooks *hooks, GError **erro
         .worker_new = worker_new,
         .worker_free = worker_free,
         .progress = on_progress,
-        .is_cancelled = hooks->is_cancelled,
         .user = &pass,
     };
     RfFrameFeedOptions options = {.threads = hooks->threads};

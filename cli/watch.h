@@ -24,7 +24,6 @@ typedef struct {
 typedef struct {
     int threads; /* 0: one per core */
     void (*progress)(const char *label, int64_t done, int64_t total); /* may be NULL */
-    int (*is_cancelled)(void);                                       /* may be NULL */
 } RfWatchHooks;
 
 /* Opens the sheet's recording. (returns new) */
