@@ -132,6 +132,9 @@ static const GOptionEntry shared_options[] = {
 };
 static const GOptionEntry json_option = {
     "json", 0, 0, G_OPTION_ARG_NONE, &common.as_json, "the result as JSON on stdout, for scripts", NULL};
+static const GOptionEntry ledger_option = {
+    "ledger", 0, 0, G_OPTION_ARG_FILENAME, &common.ledger,
+    "the ledger (default: $RISEFALL_LEDGER, or one in your data folder; '' for none)", "FILE"};
 
 GOptionEntry *rf_command_options(const RfCommand *command)
 {
@@ -139,6 +142,7 @@ GOptionEntry *rf_command_options(const RfCommand *command)
     for (const GOptionEntry *own = command->entries; own && own->long_name; own++)
         g_array_append_val(options, *own);
     if (command->has_json) g_array_append_val(options, json_option);
+    if (command->has_ledger) g_array_append_val(options, ledger_option);
     g_array_append_vals(options, shared_options, G_N_ELEMENTS(shared_options));
     return (GOptionEntry *)(void *)g_array_free(options, FALSE);
 }

@@ -26,6 +26,7 @@ typedef struct {
     const RfCommandFile *files; /* for the manual: what it leaves behind, to an empty row; or NULL */
     const GOptionEntry *entries; /* the value's name steers completion: DIR, FILE, or words as in "grid|vertical" */
     bool has_json; /* takes --json: rf_command_common()->as_json */
+    bool has_ledger; /* takes --ledger: rf_command_common()->ledger */
     /* Options are parsed; `arguments` are what is left. Errors are left in `error` for main.c to print once. */
     RfExit (*run)(char **arguments, GError **error);
 } RfCommand;
@@ -50,6 +51,7 @@ typedef struct {
     int is_quiet; /* GOption writes ints */
     int as_json;  /* the result as JSON on stdout, and nothing else there; only where has_json */
     int threads;  /* 0: as many as the machine has cores */
+    char *ledger; /* NULL: where it usually is (ledger.h); only where has_ledger */
 } RfCommonOptions;
 
 const RfCommonOptions *rf_command_common(void);

@@ -137,6 +137,7 @@ static bool measure(Road *road, const RfSettings *settings, const RfWatchHooks *
     if (!rf_measure_paths(road->results, &inputs, road->supply, hooks->threads, error) ||
         !rf_certificate_check(road->results, settings, &inputs, error))
         return false;
+    road->results->air_temperature_kelvin = inputs.temperature_kelvin;
     const RfMedium medium = rf_charge_budget_medium(&inputs);
     audit(road->results, settings, &medium);
     return true;

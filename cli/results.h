@@ -170,6 +170,7 @@ typedef struct {
     int64_t frames;
     double duration_s;
     char *recording_summary; /* "640 x 480, H.264, 30 frames/s, 60.0 s" */
+    RfValue air_temperature_kelvin; /* in the cell; value 0: not known */
     double gravity_axis_deg; /* from the picture's +y towards its -x: camera roll found */
 
     GArray *paths;           /* RfPathRow, by droplet, then time */
