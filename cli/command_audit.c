@@ -1,5 +1,7 @@
 #include "cli/audit.h"
 #include "cli/command.h"
+#include "cli/digest.h"
+#include "cli/ledger_keep.h"
 #include "cli/read_results.h"
 #include "cli/result_folder.h"
 #include "cli/write_audit.h"
@@ -35,6 +37,21 @@ static void tell(const RfResults *results)
         fprintf(stderr, "risefall: note: %s\n", (const char *)g_ptr_array_index(results->warnings, i));
 }
 
+static void add_input(RfLedgerEntry *entry, const char *role, const char *path)
+{
+    g_autofree char *sha256 = rf_digest_file(path, NULL);
+    if (sha256) rf_ledger_entry_add_input(entry, role, path, sha256);
+}
+
+static void enter(const RfResults *results, const char *timings)
+{
+    g_autoptr(RfLedgerEntry) entry = rf_ledger_entry_from_results("audit", results, out);
+    g_autofree char *summary = g_build_filename(against, "summary.json", NULL);
+    add_input(entry, "hand timings", timings);
+    add_input(entry, "results", summary);
+    rf_ledger_keep(entry);
+}
+
 /* The results would be replaced by their audit. */
 static bool is_elsewhere(GError **error)
 {
@@ -65,6 +82,7 @@ static RfExit run(char **arguments, GError **error)
         !write_down(results, error))
         return RF_EXIT_INPUT;
     tell(results);
+    enter(results, timings);
     return RF_EXIT_DONE;
 }
 
@@ -94,5 +112,6 @@ const RfCommand rf_command_audit = {
     .files = files,
     .entries = entries,
     .has_json = true,
+    .has_ledger = true,
     .run = run,
 };

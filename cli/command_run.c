@@ -34,6 +34,7 @@ const RfCommand rf_command_run = {
                "leaves morning/report.html to look at, beside it droplets.csv, summary.json ...",
     .files = rf_deliver_files,
     .entries = entries,
+    .has_ledger = true,
     .has_json = true,
     .run = run,
 };

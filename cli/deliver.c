@@ -1,5 +1,6 @@
 #include "cli/deliver.h"
 
+#include "cli/ledger_keep.h"
 #include "cli/pipeline.h"
 #include "cli/result_folder.h"
 #include "cli/screen_summary.h"
@@ -73,6 +74,12 @@ static void tell(const RfResults *results, const char *out)
         fprintf(stderr, "risefall: note: %s\n", (const char *)g_ptr_array_index(results->warnings, i));
 }
 
+static void enter(const RfResults *results, const char *out)
+{
+    g_autoptr(RfLedgerEntry) entry = rf_ledger_entry_from_results("run", results, out);
+    rf_ledger_keep(entry);
+}
+
 RfExit rf_deliver(const char *sheet, const char *paths_csv, const char *out, RfDeliverKind kind,
                   GError **error)
 {
@@ -84,5 +91,6 @@ RfExit rf_deliver(const char *sheet, const char *paths_csv, const char *out, RfD
     rf_command_progress_end();
     if (!results || !write_down(results, out, kind, error)) return RF_EXIT_INPUT;
     tell(results, out);
+    if (kind == RF_DELIVER_RUN) enter(results, out);
     return results->measured ? RF_EXIT_DONE : RF_EXIT_NOT_MEASURED;
 }

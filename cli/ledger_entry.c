@@ -134,7 +134,7 @@ static void add_drift(RfLedgerEntry *entry, const GArray *segments)
         rf_ledger_entry_add_figure(entry, "drift_mm_s", (RfValue){sum / weights, 1 / sqrt(weights)});
 }
 
-static void add_figures(RfLedgerEntry *entry, const RfResults *results)
+static void add_bench_figures(RfLedgerEntry *entry, const RfResults *results)
 {
     const RfScaleRow *scale = &results->scale;
     if (results->unit.resolved) rf_ledger_entry_add_figure(entry, "unit_charge_C", results->unit.unit_C);
@@ -146,6 +146,12 @@ static void add_figures(RfLedgerEntry *entry, const RfResults *results)
         rf_ledger_entry_add_figure(
             entry, "temperature_degC",
             (RfValue){results->air_temperature_kelvin.value - 273.15, results->air_temperature_kelvin.sigma});
+}
+
+/* An audit tells of the person alone: what it read of the bench has been entered with its run. */
+static void add_figures(RfLedgerEntry *entry, const RfResults *results)
+{
+    if (!g_str_equal(entry->kind, "audit")) add_bench_figures(entry, results);
     if (results->person.is_known) rf_ledger_entry_add_figure(entry, "timing_bias_s", results->person.bias_s);
 }
 
