@@ -134,7 +134,7 @@ static const GOptionEntry json_option = {
     "json", 0, 0, G_OPTION_ARG_NONE, &common.as_json, "the result as JSON on stdout, for scripts", NULL};
 static const GOptionEntry ledger_option = {
     "ledger", 0, 0, G_OPTION_ARG_FILENAME, &common.ledger,
-    "the ledger (default: $RISEFALL_LEDGER, or one in your data folder; '' for none)", "FILE"};
+    "the ledger ('' for none; see risefall help ledger)", "FILE"};
 
 GOptionEntry *rf_command_options(const RfCommand *command)
 {

@@ -7,20 +7,19 @@
 
 static char *kind, *since, *until, *input, *export_to;
 static char **with;
-static int latest, number;
+static int number;
 
 static const GOptionEntry entries[] = {
     {"show", 0, 0, G_OPTION_ARG_INT, &number, "everything about one entry", "NUMBER"},
     {"kind", 0, 0, G_OPTION_ARG_STRING, &kind, "only these", "run|audit|pool"},
     {"since", 0, 0, G_OPTION_ARG_STRING, &since, "measured on that day or later, as in 2026-03-14", "DATE"},
     {"until", 0, 0, G_OPTION_ARG_STRING, &until, "measured on that day or before", "DATE"},
-    {"input", 0, 0, G_OPTION_ARG_STRING, &input,
-     "made from that file: the end of its path, or the beginning of its SHA-256", "FILE"},
-    {"with", 0, 0, G_OPTION_ARG_STRING_ARRAY, &with, "with that setting or note; may be given several times",
+    {"input", 0, 0, G_OPTION_ARG_STRING, &input, "made from that file: end of its path, or its SHA-256",
+     "FILE"},
+    {"with", 0, 0, G_OPTION_ARG_STRING_ARRAY, &with, "with that setting or note; several may be given",
      "KEY=VALUE"},
-    {"latest", 0, 0, G_OPTION_ARG_INT, &latest, "only so many, the latest", "N"},
-    {"export", 0, 0, G_OPTION_ARG_FILENAME, &export_to,
-     "write the entries there: a table (.csv) or all of them (.json)", "FILE"},
+    {"export", 0, 0, G_OPTION_ARG_FILENAME, &export_to, "write them there: a table (.csv), or all (.json)",
+     "FILE"},
     {0},
 };
 
@@ -75,7 +74,7 @@ static char *as_json(RfLedger *ledger, const GPtrArray *listed, GError **error)
 
 static RfExit list(RfLedger *ledger, GError **error)
 {
-    const RfLedgerFilter filter = {kind, since, until, input, (const char *const *)with, latest};
+    const RfLedgerFilter filter = {kind, since, until, input, (const char *const *)with};
     g_autoptr(GPtrArray) found = rf_ledger_list(ledger, &filter, error);
     if (!found) return RF_EXIT_INPUT;
     const bool is_json = export_to ? g_str_has_suffix(export_to, ".json") : rf_command_common()->as_json;
@@ -137,7 +136,7 @@ const RfCommand rf_command_ledger = {
                "without one, to the day on "
                "which it was entered.",
     .example = "  risefall ledger --since 2026-03 --with bench=A\n"
-               "lists what was measured on bench A since March, if the sheets' notes say bench=A",
+               "lists the runs since March whose sheets say bench=A in their notes",
     .entries = entries,
     .has_json = true,
     .has_ledger = true,

@@ -415,8 +415,7 @@ static char *list_query(const RfLedgerFilter *filter)
         g_string_append_printf(
             sql, " AND EXISTS(SELECT 1 FROM setting WHERE entry = number AND key || '=' || value = ?%d)",
             5 + i);
-    g_string_append(sql, " ORDER BY measured_on DESC, number DESC");
-    if (filter->latest > 0) g_string_append_printf(sql, " LIMIT %d", filter->latest);
+    g_string_append(sql, " ORDER BY measured_on, number");
     return g_string_free(sql, FALSE);
 }
 
@@ -436,11 +435,6 @@ GPtrArray *rf_ledger_list(RfLedger *ledger, const RfLedgerFilter *filter, GError
     if (status != SQLITE_DONE) {
         fail(ledger, status, error);
         return NULL;
-    }
-    for (guint i = 0; i < entries->len / 2; i++) { /* asked for latest first, because of the limit */
-        gpointer other = entries->pdata[i];
-        entries->pdata[i] = entries->pdata[entries->len - 1 - i];
-        entries->pdata[entries->len - 1 - i] = other;
     }
     return fill_parts(ledger, entries, true, error) ? g_steal_pointer(&entries) : NULL;
 }

@@ -41,7 +41,6 @@ typedef struct {
     const char *since, *until; /* of measured_on, both included */
     const char *input;         /* the beginning of a SHA-256, or the end of a path */
     const char *const *with;   /* "KEY=VALUE" of a setting or note, all of them; ends with NULL */
-    int latest;                /* only so many, the latest; 0: all */
 } RfLedgerFilter;
 
 /* RfLedgerEntry in the order of measured_on, then number, with inputs, figures and [notes] but no other settings and no remarks.

@@ -144,13 +144,37 @@ static void take_recording(JsonObject *summary, RfResults *results)
     results->duration_s = rf_json_cell_number_or_0(recording, "duration_s");
 }
 
+/* Every setting of one of summary.json's lists. */
+static void take_settings(JsonObject *summary, const char *name, GArray *rows)
+{
+    JsonNode *node = json_object_get_member(summary, name);
+    if (!node || !JSON_NODE_HOLDS_ARRAY(node)) return;
+    JsonArray *list = json_node_get_array(node);
+    for (guint i = 0; i < json_array_get_length(list); i++) {
+        JsonNode *item = json_array_get_element(list, i);
+        if (!JSON_NODE_HOLDS_OBJECT(item)) continue;
+        JsonObject *one = json_node_get_object(item);
+        const char *group = rf_json_cell_text(one, "group"), *key = rf_json_cell_text(one, "key"),
+                   *value = rf_json_cell_text(one, "value");
+        if (!group || !key || !value) continue;
+        RfUsedSetting row = {g_strdup(group), g_strdup(key), g_strdup(value),
+                             rf_json_cell_is_true(one, "default"),
+                             g_strdup(rf_json_cell_text(one, "remark"))};
+        g_array_append_val(rows, row);
+    }
+}
+
 static void read_summary(const char *folder, RfResults *results, RfMedium *medium, bool *has_medium)
 {
     g_autofree char *path = g_build_filename(folder, "summary.json", NULL);
     g_autoptr(GError) error = NULL;
     JsonObject *summary;
     g_autoptr(JsonParser) parser = rf_json_cell_load(path, &summary, &error);
-    if (parser) take_recording(summary, results);
+    if (parser) {
+        take_recording(summary, results);
+        take_settings(summary, "settings", results->settings);
+        take_settings(summary, "notes", results->notes);
+    }
     *has_medium = parser && medium_of(summary, path, medium, &error);
     if (!*has_medium) rf_results_warn(results, "%s; no charges from hand timings", error->message);
 }
