@@ -4,10 +4,12 @@
 #include "cli/ledger_keep.h"
 #include "cli/read_results.h"
 #include "cli/result_folder.h"
+#include "cli/text_wrap.h"
 #include "cli/write_audit.h"
 
 #include <glib/gstdio.h>
 #include <stdio.h>
+#include <unistd.h>
 
 static char *against, *out;
 
@@ -29,8 +31,9 @@ static void tell(const RfResults *results)
 {
     const RfCommonOptions *common = rf_command_common();
     if (common->is_quiet && !common->as_json) return;
+    const int columns = isatty(STDOUT_FILENO) ? rf_text_wrap_terminal_columns(STDOUT_FILENO) : G_MAXINT;
     g_autofree char *summary =
-        common->as_json ? rf_write_audit_json(results) : rf_write_audit_summary(results, out);
+        common->as_json ? rf_write_audit_json(results) : rf_write_audit_summary(results, out, columns);
     fputs(summary, stdout);
     if (common->is_quiet) return;
     for (guint i = 0; i < results->warnings->len; i++)

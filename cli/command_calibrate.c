@@ -2,6 +2,7 @@
 #include "cli/command.h"
 #include "cli/ruler.h"
 #include "cli/settings.h"
+#include "cli/text_number.h"
 #include "cli/view.h"
 #include "cli/watch.h"
 #include "cli/write_json.h"
@@ -118,8 +119,8 @@ static bool measure_sheet(const char *path, Calibration *calibration, GError **e
 
 static void print_line(const char *label, RfValue value, const char *unit)
 {
-    g_autofree char *text = rf_quantity_format(value, unit);
-    printf("  %-12s %s\n", label, text);
+    g_autofree char *text = rf_text_number_concise(value);
+    printf("  %-12s %s %s\n", label, text, unit);
 }
 
 static void print_scale(const RfLengthScale *scale)

@@ -3,12 +3,13 @@
 #include "cli/json_rows.h"
 #include "cli/report_html.h"
 #include "cli/text_number.h"
+#include "cli/text_wrap.h"
 #include "cli/write_csv.h"
 
 #include <math.h>
 #include <string.h>
 
-enum { MOST_SHOWN = 40 };
+enum { MOST_SHOWN = 40, ENTRY = 11 };
 
 static void number(GString *out, const char *name, double value, int decimals, bool is_exponent)
 {
@@ -146,7 +147,21 @@ static bool is_sound(const RfAuditRow *row)
     return strcmp(row->finding, "agrees") == 0;
 }
 
-char *rf_write_audit_summary(const RfResults *results, const char *out_folder)
+static void append_entry(GString *out, const RfAuditRow *row, int columns)
+{
+    g_autoptr(GString) text = g_string_new(NULL);
+    if (*row->label) {
+        g_string_append(text, "(");
+        append_plain(text, row->label);
+        g_string_append(text, "): ");
+    }
+    g_string_append_printf(text, "%s: ", row->finding);
+    append_plain(text, row->evidence);
+    g_string_append_printf(out, "entry %-4u ", row->entry);
+    rf_text_wrap_append(out, text->str, ENTRY, columns, true);
+}
+
+char *rf_write_audit_summary(const RfResults *results, const char *out_folder, int columns)
 {
     GString *out = g_string_new(NULL);
     const RfPersonRow *person = &results->person;
@@ -157,12 +172,8 @@ char *rf_write_audit_summary(const RfResults *results, const char *out_folder)
     for (guint i = 0; i < results->audit->len; i++) {
         const RfAuditRow *row = &g_array_index(results->audit, RfAuditRow, i);
         if (is_sound(row) || ++unsound > MOST_SHOWN) continue;
-        g_string_append_printf(out, "%sentry %u", shown++ ? "" : "\n", row->entry);
-        g_string_append(out, *row->label ? " (" : "");
-        append_plain(out, row->label);
-        g_string_append_printf(out, "%s: %s: ", *row->label ? ")" : "", row->finding);
-        append_plain(out, row->evidence);
-        g_string_append_c(out, '\n');
+        if (shown++ == 0) g_string_append_c(out, '\n');
+        append_entry(out, row, columns);
     }
     if (unsound > MOST_SHOWN) g_string_append_printf(out, "and %u more\n", unsound - MOST_SHOWN);
     if (out_folder) g_string_append_printf(out, "\nreport           %s/report.html\n", out_folder);

@@ -11,5 +11,6 @@
 bool rf_write_audit(const RfResults *results, RfResultFolder *folder, GError **error);
 /* The person, the hand charges, and the rows of audit.csv. (returns new) */
 char *rf_write_audit_json(const RfResults *results);
-/* The person in a few lines, then every entry that isn't sound. `out` NULL: nothing was written. (returns new) */
-char *rf_write_audit_summary(const RfResults *results, const char *out);
+/* The person in a few lines, then every entry that isn't sound, wrapped at `columns`. `out` NULL: nothing was written.
+ * (returns new) */
+char *rf_write_audit_summary(const RfResults *results, const char *out, int columns);

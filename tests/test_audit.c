@@ -509,7 +509,7 @@ static void a_bad_cell_and_harmful_label(void)
     g_autoptr(GString) page = rf_report_html_audit_new(results);
     g_assert_null(strstr(page->str, "<script>alert"));
     g_assert_nonnull(strstr(page->str, "&lt;script&gt;alert(1)"));
-    g_autofree char *screen = rf_write_audit_summary(results, NULL);
+    g_autofree char *screen = rf_write_audit_summary(results, NULL, 80);
     g_assert_nonnull(strstr(screen, "of 21 entries agree"));
 }
 
