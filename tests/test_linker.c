@@ -293,14 +293,14 @@ static void test_seen_twice_after_a_jump(void)
     for (unsigned long seed = 1; seed <= 10; seed++) {
         const RfActor held_and_let_go[] = {
             {.x_px = 200, .y_px = 80, .spread_px = 0.2, .until = 8},
-            {.x_px = 200, .y_px = 84, .vy_px_s = 25, .spread_px = 0.8, .from = 7, .until = 200},
-            {.x_px = 400, .y_px = 60, .vy_px_s = 30, .spread_px = 0.6, .until = 200},
+            {.x_px = 200, .y_px = 85, .vy_px_s = 25, .spread_px = 0.8, .from = 7, .until = 200},
+            {.x_px = 400, .y_px = 60, .vy_px_s = 30, .spread_px = 0.8, .until = 200},
         };
         RfPlay play = {.actors = held_and_let_go,
                        .n_actors = 3,
                        .frames = 200,
                        .rate_hz = 30,
-                       .noise_px = 0.2,
+                       .noise_px = 0.3,
                        .merge_px = 5,
                        .seed = seed};
         g_autoptr(RfPaths) paths = NULL;

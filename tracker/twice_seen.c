@@ -27,10 +27,10 @@ static unsigned hits_from(const RfChain *chain, unsigned exposure)
 static bool are_near(const RfLinkScene *scene, const RfHit *a, const RfHit *b)
 {
     const RfSight *p = &scene->sights[a->spot], *q = &scene->sights[b->spot];
-    return hypot(p->at_px[0] - q->at_px[0], p->at_px[1] - q->at_px[1]) < scene->merge_px;
+    return hypot(p->at_px[0] - q->at_px[0], p->at_px[1] - q->at_px[1]) < 2 * scene->merge_px;
 }
 
-/* `a` ends as `b` begins, and while there are both, they lie where one droplet's light could fall. */
+/* `a` ends as `b` begins, and while there are both, they lie no further apart than a droplet may jump. */
 static bool may_be_one(const RfLinkScene *scene, const RfChain *a, const RfChain *b)
 {
     if (a->is_cut_after || b->is_cut_before) return false;
