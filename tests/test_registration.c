@@ -137,14 +137,29 @@ static void test_sigma_is_honest(void)
     bench_free(bench);
 }
 
-/* Lines that run one way leave the picture free to slide along them. */
-static void test_lines_one_way_refused(void)
+/* Lines that run one way leave the picture free to slide along them: the shift is the one across. */
+static void test_lines_one_way(void)
 {
     const Scene scene = {.transmission = 0.35, .noise_sd = 1.5, .is_horizontal_only = true};
     Bench *bench = bench_new(&scene);
-    RfPose pose;
-    g_assert_false(find(bench, &scene, &(RfPose){0}, &pose, NULL));
-    g_assert_cmpfloat(pose.shift_x_px, ==, 0);
+    g_assert_true(rf_registration_is_one_way(bench->registration));
+    for (double shift_px = -3; shift_px <= 3; shift_px += 1.5) {
+        RfPose pose;
+        double u_px;
+        g_assert_true(find(bench, &scene, &(RfPose){.shift_x_px = 2, .shift_y_px = shift_px}, &pose, &u_px));
+        g_assert_cmpfloat(fabs(pose.shift_x_px), <, 0.01);
+        g_assert_cmpfloat(fabs(pose.shift_y_px - shift_px), <, 0.05);
+        g_assert_cmpfloat(u_px, <, 0.05);
+    }
+    bench_free(bench);
+}
+
+/* Lines both ways, faint as they may be, hold the picture both ways. */
+static void test_faint_grid_is_not_one_way(void)
+{
+    const Scene scene = {.transmission = 0.8, .noise_sd = 1.5};
+    Bench *bench = bench_new(&scene);
+    g_assert_false(rf_registration_is_one_way(bench->registration));
     bench_free(bench);
 }
 
@@ -164,7 +179,8 @@ int main(int argc, char **argv)
     g_test_add_func("/registration/find/no-slip-by-a-spacing", test_no_slip_by_a_spacing);
     g_test_add_func("/registration/find/shift-and-turn", test_shift_and_turn);
     g_test_add_func("/registration/find/sigma-is-honest", test_sigma_is_honest);
-    g_test_add_func("/registration/find/lines-one-way-refused", test_lines_one_way_refused);
+    g_test_add_func("/registration/find/lines-one-way", test_lines_one_way);
+    g_test_add_func("/registration/new/faint-grid-is-not-one-way", test_faint_grid_is_not_one_way);
     g_test_add_func("/registration/find/empty-picture-refused", test_empty_picture_refused);
     return g_test_run();
 }

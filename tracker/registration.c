@@ -17,8 +17,10 @@ enum {
     LAST_STEPS = 2,
     REACH_CELLS = 10, /* coarse search: this many pixels of the smallest picture either way */
 };
-static const double TRUSTED_PX =
-    0.2; /* less certain, and lines that run one way only have let it slide along them */
+static const double TRUSTED_PX = 0.2;
+static const double BLURRED_SLOPE =
+    0.2;                            /* sd of a slope after the finest level's blur, per noise sd of a pixel */
+static const double CROSSED = 0.02; /* share of the points that lines across the others have, at least */
 static const double AGREEING = 0.8; /* share of the points: a pose that needs no rival */
 static const double CLEARLY = 0.05; /* so much more of them must agree with a pose further away */
 static const int REDUCTION[LEVELS] = {8, 4, 1};
@@ -41,6 +43,7 @@ struct RfRegistration {
     int width, height;
     double pixel_aspect;
     double noise_sd;
+    double along_x, along_y; /* unit vector along lines that run one way only; zero where they don't */
     Level levels[LEVELS];
     RfBlur blur;
 };
@@ -199,6 +202,34 @@ static void blur_points(Level *level, const float *image, const RfRegistration *
     }
 }
 
+/* Share of the points whose slope along a direction is more than noise makes of it. */
+static double share_steep(const Level *level, double x, double y, double noise_sd)
+{
+    unsigned steep = 0;
+    for (unsigned i = 0; i < level->n; i++) {
+        const SteepPixel *p = &level->points[i];
+        steep += fabs((double)p->slope_x * x + (double)p->slope_y * y) > 4 * BLURRED_SLOPE * noise_sd;
+    }
+    return level->n ? (double)steep / level->n : 0;
+}
+
+/* The direction in which the finest level's slopes have least to say: along lines, where there is hardly a slope. */
+static void find_lone_direction(RfRegistration *registration)
+{
+    const Level *level = &registration->levels[LEVELS - 1];
+    double xx = 0, xy = 0, yy = 0;
+    for (unsigned i = 0; i < level->n; i++) {
+        const SteepPixel *p = &level->points[i];
+        xx += (double)(p->slope_x * p->slope_x);
+        xy += (double)(p->slope_x * p->slope_y);
+        yy += (double)(p->slope_y * p->slope_y);
+    }
+    double across_rad = 0.5 * atan2(2 * xy, xx - yy), x = -sin(across_rad), y = cos(across_rad);
+    if (level->n < LEAST_POINTS || share_steep(level, x, y, registration->noise_sd) > CROSSED) return;
+    registration->along_x = x;
+    registration->along_y = y;
+}
+
 RfRegistration *rf_registration_new(const float *image, int width, int height, double pixel_aspect,
                                     double noise_sd)
 {
@@ -219,7 +250,13 @@ RfRegistration *rf_registration_new(const float *image, int width, int height, d
         choose_points(level, small, REDUCTION[i], registration);
         if (REDUCTION[i] == 1) blur_points(level, image, registration);
     }
+    find_lone_direction(registration);
     return registration;
+}
+
+bool rf_registration_is_one_way(const RfRegistration *registration)
+{
+    return registration->along_x != 0 || registration->along_y != 0;
 }
 
 void rf_registration_free(RfRegistration *registration)
@@ -305,6 +342,16 @@ static void add_equation(Normal *normal, const double row[UNKNOWNS], double resi
     normal->weighted_square += weight * residual * residual;
     normal->weight += weight;
     normal->n++;
+}
+
+/* No step along lines that run one way. */
+static void hold(const RfRegistration *registration, Normal *normal)
+{
+    double(*a)[UNKNOWNS] = normal->matrix;
+    double stiff = 1e4 * (a[0][0] + a[1][1]), x = registration->along_x, y = registration->along_y;
+    a[0][0] += stiff * x * x;
+    a[1][0] += stiff * x * y;
+    a[1][1] += stiff * y * y;
 }
 
 /* Cholesky; false where the picture doesn't fix all unknowns. The inverse's first two diagonal elements come along. */
@@ -411,6 +458,7 @@ static Step step_on(const View *view, Guess *guess)
     Normal normal;
     double d[UNKNOWNS] = {0}, variance[2] = {0};
     gather(view, guess, &normal);
+    hold(view->registration, &normal);
     if (normal.n * view->step < LEAST_POINTS || normal.n * view->step < view->level->n / 4 ||
         !solve(&normal, d, variance))
         return LOST;
@@ -465,6 +513,13 @@ static bool descend(const RfRegistration *registration, const RfRegistrationScra
     return guess->gain > 0.3 && guess->gain < 3 && guess->u_px < TRUSTED_PX;
 }
 
+static void stay_across(const RfRegistration *registration, RfPose *pose)
+{
+    double along = pose->shift_x_px * registration->along_x + pose->shift_y_px * registration->along_y;
+    pose->shift_x_px -= along * registration->along_x;
+    pose->shift_y_px -= along * registration->along_y;
+}
+
 /* A reticle looks the same one spacing on, all but its edges and numerals, so the place nearest to the reference is tried
  * first and kept if the picture agrees with it; only then is it looked for further away. */
 bool rf_registration_find(const RfRegistration *registration, RfRegistrationScratch *scratch,
@@ -477,6 +532,7 @@ bool rf_registration_find(const RfRegistration *registration, RfRegistrationScra
     bool is_near = descend(registration, scratch, frame, 1, &near);
     if (!is_near || near.support < AGREEING) {
         search_coarsely(registration, scratch, &far.pose);
+        stay_across(registration, &far.pose);
         bool is_far = descend(registration, scratch, frame, 0, &far);
         if (!is_near && !is_far) return false;
         if (!is_near || (is_far && far.support > near.support + CLEARLY)) near = far;

@@ -22,7 +22,11 @@ RfRegistrationScratch *rf_registration_scratch_new(const RfRegistration *registr
 void rf_registration_scratch_free(RfRegistrationScratch *scratch);
 G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfRegistrationScratch, rf_registration_scratch_free)
 
-/* False where the picture has too little structure, or where the frame doesn't match it (another scene, a cut): the
+/* Lines run one way only: the picture is free to slide along them, and nobody would notice. */
+bool rf_registration_is_one_way(const RfRegistration *registration);
+
+/* Where lines run one way only, the shift is the one across them.
+ * False where the picture has too little structure, or where the frame doesn't match it (another scene, a cut): the
  * pose is zero then. The frame's size is the reference picture's.
  *   u_px  one standard uncertainty of the shift, from the fit's own scatter; NULL if not wanted */
 bool rf_registration_find(const RfRegistration *registration, RfRegistrationScratch *scratch,

@@ -86,7 +86,8 @@ const RfSpotFinderFindings *rf_spot_finder_findings(const RfSpotFinder *finder)
 static bool find_pose(const RfSpotFinder *finder, RfSpotScratch *scratch, const RfFrame *frame, RfPose *pose)
 {
     *pose = (RfPose){0};
-    return !finder->registration ||
+    if (!finder->registration) return true;
+    return !rf_registration_is_one_way(finder->registration) &&
            rf_registration_find(finder->registration, scratch->registration, frame, pose, NULL);
 }
 
