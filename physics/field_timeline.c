@@ -2,6 +2,7 @@
 
 #include <math.h>
 
+#include "physics/end_switch.h"
 #include "physics/field_log.h"
 #include "physics/field_runs.h"
 #include "physics/field_states.h"
@@ -194,6 +195,7 @@ RfFieldTimeline *rf_field_timeline_find(const RfTrail *fragments, size_t n_fragm
     if (!spans) collect_doubts(timeline, runs, doubt);
     collect_intervals(timeline, runs, label, levels);
     for (unsigned k = 0; k < timeline->switches->len; k++) refine_roughly(timeline, k, trails, runs);
+    rf_end_switch_settle(timeline, trails, runs, droplets, levels, n_levels);
     if (spans && !rf_field_log_apply(spans, sheet, runs, droplets, timeline, error)) return NULL;
     return g_steal_pointer(&timeline);
 }

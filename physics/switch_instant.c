@@ -10,7 +10,9 @@ typedef struct {
     double first_s, step_s;
     size_t n;
     double exposure_s;      /* a position is the mean over this long about its time */
-    double *log_likelihood; /* n, summed over witnesses */
+    double *log_likelihood; /* n, summed over witnesses, each bounded */
+    double *gain;           /* n or NULL: against the instant `edge`, summed, each bounded below only */
+    size_t edge;
 } InstantGrid;
 
 /* Mean over the exposure of the time since a switch, nothing before it. */
@@ -64,6 +66,10 @@ static void add_bounded(const double *columns, size_t n, InstantGrid *grid)
             own[g] -= 0.5 * columns[i * grid->n + g] * columns[i * grid->n + g];
     for (size_t g = 0; g < grid->n; g++) top = fmax(top, own[g]);
     for (size_t g = 0; g < grid->n; g++) grid->log_likelihood[g] += top + log(exp(own[g] - top) + 1e-3);
+    for (size_t g = 0; grid->gain && g < grid->n; g++) {
+        double more = own[g] - own[grid->edge];
+        grid->gain[g] += more > 30 ? more : log(exp(more) + 1e-3);
+    }
 }
 
 /* One column per instant of the grid: the path less what the droplet would do if the switch were then. */
@@ -117,22 +123,36 @@ static Instant grid_mean(const InstantGrid *grid)
     return (Instant){{grid->first_s + mean, sigma}, 0};
 }
 
-/* Likelihood of a switch over a window about its present place. */
+enum { POINTS = 129 };
+
+/* Fills the grid over a window; returns how many droplets tell. */
+static unsigned fill_grid(const RfFieldTimeline *timeline, unsigned number, const RfSwitchWitness *witnesses,
+                          size_t n, double from_s, double to_s, InstantGrid *grid)
+{
+    const RfFieldInterval *before = &g_array_index(timeline->intervals, RfFieldInterval, number);
+    unsigned droplets = 0;
+    grid->first_s = from_s;
+    grid->step_s = (to_s - from_s) / (double)(grid->n - 1);
+    for (size_t j = 0; j < n; j++)
+        if (add_witness(timeline, number, &witnesses[j], grid, fmax(from_s - MARGIN_S, before->start_s),
+                        fmin(to_s + MARGIN_S, before[1].end_s)))
+            droplets++;
+    return droplets;
+}
+
+/* Likelihood of a switch over a window about its present place, up to the middle of the intervals beside it; at the ends
+ * of the recording, where no other switch is near, up to these. */
 static Instant scan(const RfFieldTimeline *timeline, unsigned number, const RfSwitchWitness *witnesses,
                     size_t n, double half_window_s, double exposure_s)
 {
-    enum { POINTS = 129 };
     const RfFieldInterval *before = &g_array_index(timeline->intervals, RfFieldInterval, number);
-    double now_s = before->end_s, middle_before = 0.5 * (before->start_s + now_s);
-    double middle_after = 0.5 * (now_s + before[1].end_s), log_likelihood[POINTS] = {0};
-    double from_s = fmax(now_s - half_window_s, middle_before),
-           to_s = fmin(now_s + half_window_s, middle_after);
-    InstantGrid grid = {from_s, (to_s - from_s) / (POINTS - 1), POINTS, exposure_s, log_likelihood};
-    unsigned droplets = 0;
-    for (size_t j = 0; j < n; j++)
-        if (add_witness(timeline, number, &witnesses[j], &grid, fmax(from_s - MARGIN_S, before->start_s),
-                        fmin(to_s + MARGIN_S, before[1].end_s)))
-            droplets++;
+    double now_s = before->end_s, log_likelihood[POINTS] = {0};
+    double earliest_s = number == 0 ? before->start_s : 0.5 * (before->start_s + now_s);
+    double latest_s =
+        number + 2 == timeline->intervals->len ? before[1].end_s : 0.5 * (now_s + before[1].end_s);
+    InstantGrid grid = {.n = POINTS, .exposure_s = exposure_s, .log_likelihood = log_likelihood};
+    unsigned droplets = fill_grid(timeline, number, witnesses, n, fmax(now_s - half_window_s, earliest_s),
+                                  fmin(now_s + half_window_s, latest_s), &grid);
     Instant found = grid_mean(&grid);
     found.droplets = droplets;
     return found;
@@ -186,4 +206,26 @@ void rf_switch_instant_refine(RfFieldTimeline *timeline, unsigned number, const 
     Instant found;
     home_in(timeline, number, witnesses, n, 0.5 * frame_interval(witnesses, n), &found);
     set_switch(timeline, number, found.time_s, found.droplets);
+}
+
+RfSwitchGain rf_switch_instant_gain(const RfFieldTimeline *timeline, unsigned number,
+                                    const RfSwitchWitness *witnesses, size_t n, bool is_first)
+{
+    static const double reach_s = 0.5;
+    const RfFieldInterval *v = &g_array_index(timeline->intervals, RfFieldInterval, number);
+    double log_likelihood[POINTS] = {0}, gain[POINTS] = {0};
+    RfSwitchGain found = {0, 0};
+    double from_s = is_first ? v->start_s : fmax(v[1].end_s - reach_s, v->start_s);
+    double to_s = is_first ? fmin(v->start_s + reach_s, v[1].end_s) : v[1].end_s;
+    InstantGrid grid = {.n = POINTS,
+                        .exposure_s = 0.5 * frame_interval(witnesses, n),
+                        .log_likelihood = log_likelihood,
+                        .gain = gain,
+                        .edge = is_first ? 0 : POINTS - 1};
+    if (fill_grid(timeline, number, witnesses, n, from_s, to_s, &grid) == 0) return found;
+    for (size_t g = 0; g < POINTS; g++) {
+        found.bounded = fmax(found.bounded, log_likelihood[g] - log_likelihood[grid.edge]);
+        found.open = fmax(found.open, gain[g]);
+    }
+    return found;
 }

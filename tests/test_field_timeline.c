@@ -114,6 +114,70 @@ static void test_pulls(void)
     g_assert_cmpfloat_with_epsilon(sqrt(squares / n), 1, 0.3);
 }
 
+static Walk lone_walk(const RfFieldTimeline *truth, double start_s, double end_s, int units)
+{
+    return (Walk){.medium = &WALK_MEDIUM,
+                  .timeline = truth,
+                  .radius_m = 0.5e-6,
+                  .charge_coulomb = units * E,
+                  .start_s = start_s,
+                  .end_s = end_s,
+                  .frame_s = 1.0 / 30,
+                  .exposure = 0.5,
+                  .noise_m = 0.1e-6};
+}
+
+/* One more switch just before the end or just after the start: found with its right names, and its sigma true. Below three
+ * frames of the new state too little is seen. */
+static void test_switch_at_an_end(void)
+{
+    double squares = 0;
+    int n = 0, missed = 0, misnamed = 0, beyond_3 = 0;
+    for (unsigned long seed = 0; seed < 60; seed++) {
+        double times_s[] = {0, 4.1, 8.7, 12.2, 0};
+        bool is_start = seed % 2;
+        size_t first = is_start ? 0 : 1;
+        double apart_s = 0.1 + 0.003 * (double)seed;
+        times_s[0] = apart_s;
+        times_s[4] = 16 - apart_s;
+        Cell cell = {.random = gsl_rng_alloc(gsl_rng_mt19937)};
+        gsl_rng_set(cell.random, 300 + seed);
+        cell.truth = walk_timeline_new(times_s + first, 4, RF_FIELD_TOP_PLUS, 400, 16);
+        if (seed % 4 == 2) { /* straight from one polarity to the other */
+            RfFieldInterval *last = &g_array_index(cell.truth->intervals, RfFieldInterval, 4);
+            last->voltage_v = -400;
+            g_array_index(cell.truth->switches, RfFieldSwitch, 3).to = last->state = RF_FIELD_TOP_MINUS;
+        }
+        for (unsigned i = 0; i < DROPLETS; i++) {
+            Walk walk = lone_walk(cell.truth, 0, 16, (int)(i % 5) - 2);
+            walk.radius_m = (0.4 + 0.05 * i) * 1e-6;
+            cell.trails[i] = walk_trail_new(&walk, i + 1, cell.random);
+        }
+        static const RfFieldSheet sheet = {.states = 3,
+                                           .state = {RF_FIELD_OFF, RF_FIELD_TOP_PLUS, RF_FIELD_TOP_MINUS},
+                                           .top_plus_v = 400,
+                                           .top_minus_v = -400};
+        g_autoptr(RfFieldTimeline) found = rf_field_timeline_find(cell.trails, DROPLETS, &sheet, NULL);
+        unsigned k = is_start ? 0 : 3;
+        n++;
+        if (found->switches->len != 4) {
+            missed++;
+        } else {
+            const RfFieldSwitch *is = switch_of(found, k), *was = switch_of(cell.truth, k);
+            double z = (is->time_s.value - was->time_s.value) / is->time_s.sigma;
+            misnamed += is->from != was->from || is->to != was->to;
+            beyond_3 += fabs(z) > 3;
+            squares += z * z;
+        }
+        cell_clear(&cell);
+    }
+    g_test_message("%d switches at an end: %d missed, %d misnamed, pull %.2f, %d beyond 3 sigma", n, missed,
+                   misnamed, sqrt(squares / (n - missed)), beyond_3);
+    g_assert_cmpint(missed, ==, 0);
+    g_assert_cmpint(misnamed, ==, 0);
+    g_assert_cmpfloat_with_epsilon(sqrt(squares / n), 1, 0.3);
+}
+
 /* off, top+, off, top-, straight to top+, off: the third state is told from the first two, and a switch from one
  * polarity to the other is one switch. */
 static void test_three_states(void)
@@ -138,19 +202,6 @@ static void test_three_states(void)
     assert_switches(found, cell.truth);
     g_assert_cmpuint(found->doubts->len, ==, 0);
     cell_clear(&cell);
-}
-
-static Walk lone_walk(const RfFieldTimeline *truth, double start_s, double end_s, int units)
-{
-    return (Walk){.medium = &WALK_MEDIUM,
-                  .timeline = truth,
-                  .radius_m = 0.5e-6,
-                  .charge_coulomb = units * E,
-                  .start_s = start_s,
-                  .end_s = end_s,
-                  .frame_s = 1.0 / 30,
-                  .exposure = 0.5,
-                  .noise_m = 0.1e-6};
 }
 
 /* One droplet leaves, another comes: between two polarities nothing tells which one the second droplet meets first, and
@@ -459,6 +510,7 @@ int main(int argc, char **argv)
     g_test_add_func("/field-timeline/find/no-switch-none-found", test_no_switch_none_found);
     g_test_add_func("/field-timeline/find/two-states", test_two_states);
     g_test_add_func("/field-timeline/find/pulls", test_pulls);
+    g_test_add_func("/field-timeline/find/switch-at-an-end", test_switch_at_an_end);
     g_test_add_func("/field-timeline/find/three-states", test_three_states);
     g_test_add_func("/field-timeline/find/lone-droplets-leave-doubt", test_lone_droplets_leave_doubt);
     g_test_add_func("/field-timeline/find/unseen-switch-hides-no-other", test_unseen_switch_hides_no_other);
