@@ -94,14 +94,17 @@ static RfChargeEstimate estimate_of(const RfDropletFit *fit, const RfSpellFit *s
                               spell->fall_leak_per_v};
 }
 
-/* Random and common parts in one sigma, first order. */
+/* Random and common parts in one sigma, first order; and what each line does. */
 static bool charge_with_common(const RfChargeInputs *inputs, const RfChargeEstimate *estimate,
-                               RfValue *charge, GError **error)
+                               RfValue *charge, double *influences_coulomb, GError **error)
 {
     const RfBudgetOptions first_order = {.coverage = 0.95};
     g_autoptr(RfBudget) budget = rf_charge_budget_new(inputs, estimate, &first_order, NULL, error);
-    if (budget) *charge = (RfValue){estimate->charge_coulomb.value, budget->sigma};
-    return budget != NULL;
+    if (!budget) return false;
+    *charge = (RfValue){estimate->charge_coulomb.value, budget->sigma};
+    for (int line = 0; line < RF_CHARGE_LINES; line++)
+        influences_coulomb[line] = budget->parts[line].contribution;
+    return true;
 }
 
 static bool radius_with_common(const RfChargeInputs *inputs, const RfChargeEstimate *estimate,
@@ -114,13 +117,15 @@ static bool radius_with_common(const RfChargeInputs *inputs, const RfChargeEstim
 }
 
 static bool fitted_row(unsigned droplet, const RfDropletFit *fit, size_t s, const RfFieldTimeline *timeline,
-                       const RfChargeInputs *inputs, RfDropletRow *row, GError **error)
+                       const RfChargeInputs *inputs, RfDropletRow *row, RfInfluenceRow *influence,
+                       GError **error)
 {
     const RfSpellFit *spell = &fit->spell[s];
     const RfChargeEstimate estimate = estimate_of(fit, spell);
     RfValue radius_m, charge_coulomb = {0};
     if (!radius_with_common(inputs, &estimate, &radius_m, error) ||
-        (spell->has_charge && !charge_with_common(inputs, &estimate, &charge_coulomb, error)))
+        (spell->has_charge &&
+         !charge_with_common(inputs, &estimate, &charge_coulomb, influence->charge_C, error)))
         return false;
     *row = (RfDropletRow){
         .droplet = droplet,
@@ -211,12 +216,14 @@ static bool add_fitted(RfResults *results, unsigned droplet, const RfDropletFit 
 {
     for (size_t s = 0; s < fit->spells; s++) {
         RfDropletRow row;
-        if (!fitted_row(droplet, fit, s, timeline, inputs, &row, error)) {
+        RfInfluenceRow influence = {.droplet = droplet, .spell = (unsigned)s + 1};
+        if (!fitted_row(droplet, fit, s, timeline, inputs, &row, &influence, error)) {
             g_prefix_error(error, "droplet %u, spell %zu: ", droplet, s + 1);
             return false;
         }
         row.median_snr = median_snr;
         g_array_append_val(results->droplets, row);
+        if (row.has_charge) g_array_append_val(results->influences, influence);
     }
     return true;
 }

@@ -20,6 +20,7 @@ const RfCommandFile rf_deliver_files[] = {
     {"steps.csv", "when a droplet changed its charge"},
     {"paths.csv", "every droplet in every frame: place, its uncertainty, measured or bridged"},
     {"budget.csv", "what each input adds to the uncertainty of a charge"},
+    {"influences.csv", "what one standard uncertainty of each input does to each charge; for pooling"},
     {"audit.csv, audit.json", "verdicts on hand timings, where the sheet names them"},
     {"scale.json", "pixels per millimetre"},
     {"summary.json", "verdict, unit, warnings, every setting and default, digests of all inputs"},

@@ -35,6 +35,8 @@ static char *whole_script(const RfFigureScript *what, const char *body)
 static bool add_figure(RfFigureSet *set, const RfFigureScript *what, const RfResults *results,
                        RfResultFolder *folder, GError **error)
 {
+    const RfFigureOf wanted = results->recordings->len > 0 ? RF_FIGURE_OF_POOL : RF_FIGURE_OF_RUN;
+    if (!(what->of & wanted)) return true;
     g_autoptr(GString) data = g_string_new(NULL), body = g_string_new(NULL), alt = g_string_new(NULL);
     if (!what->write(results, data, body, alt)) return true;
     g_autofree char *script = whole_script(what, body->str);

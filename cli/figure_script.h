@@ -7,9 +7,16 @@
 
 #include "cli/results.h"
 
+typedef enum {
+    RF_FIGURE_OF_RUN = 1,
+    RF_FIGURE_OF_POOL = 2,
+    RF_FIGURE_OF_BOTH = RF_FIGURE_OF_RUN | RF_FIGURE_OF_POOL,
+} RfFigureOf;
+
 typedef struct {
     const char *name;
     const char *title;
+    RfFigureOf of;
     /* Fills data and script, and says in `alt` what is to be seen. False: nothing to draw. */
     bool (*write)(const RfResults *results, GString *data, GString *script, GString *alt);
 } RfFigureScript;
@@ -26,3 +33,7 @@ bool rf_figure_velocities_write(const RfResults *results, GString *data, GString
 bool rf_figure_unit_write(const RfResults *results, GString *data, GString *script, GString *alt);
 bool rf_figure_radius_write(const RfResults *results, GString *data, GString *script, GString *alt);
 bool rf_figure_budget_write(const RfResults *results, GString *data, GString *script, GString *alt);
+bool rf_figure_recordings_write(const RfResults *results, GString *data, GString *script,
+                                GString *alt); /* figure_pool.c */
+bool rf_figure_residues_write(const RfResults *results, GString *data, GString *script,
+                              GString *alt); /* figure_pool.c */

@@ -2,6 +2,7 @@
 
 #include "cli/audit.h"
 #include "cli/certificate.h"
+#include "cli/common_inputs.h"
 #include "cli/conditions.h"
 #include "cli/digest.h"
 #include "cli/follow.h"
@@ -134,6 +135,7 @@ static void audit(RfResults *results, const RfSettings *settings, const RfMedium
 static bool measure(Road *road, const RfSettings *settings, const RfWatchHooks *hooks, GError **error)
 {
     const RfChargeInputs inputs = rf_conditions_of(settings, road->scale_relative_u);
+    rf_common_inputs_state(road->results, settings, &inputs);
     if (!rf_measure_paths(road->results, &inputs, road->supply, hooks->threads, error) ||
         !rf_certificate_check(road->results, settings, &inputs, error))
         return false;

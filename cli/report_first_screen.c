@@ -42,24 +42,49 @@ static void droplets_fact(GString *out, const RfResults *results)
         switches, switches == 1 ? "" : "es", steps, many(steps));
 }
 
+static void recordings_fact(GString *out, const RfResults *results)
+{
+    const RfTally tally = rf_tally_droplets(results);
+    const unsigned failed = rf_tally_recordings(results, RF_RECORDING_FAILED),
+                   pooled = rf_tally_recordings(results, RF_RECORDING_POOLED);
+    g_string_append_printf(
+        out,
+        "<div><dt>Recordings</dt><dd class=\"big\">%u pooled, <span class=\"nowrap\">%u without a "
+        "result</span></dd>"
+        "<dd class=\"note\">%u tell nothing of the unit. %u droplet%s accepted, %u set aside.</dd></div>\n",
+        pooled, failed, results->recordings->len - pooled - failed, tally.droplets_accepted,
+        many(tally.droplets_accepted), tally.droplets - tally.droplets_accepted);
+}
+
 static void limit_fact(GString *out, const RfResults *results)
 {
     const RfBudgetRow *limit = rf_tally_limiting_input(results);
-    g_string_append(out, "<div><dt>What limits the charges</dt><dd class=\"big\">");
+    const bool is_pool = results->recordings->len > 0;
+    g_string_append_printf(out, "<div><dt>What limits the %s</dt><dd class=\"big\">",
+                           is_pool ? "unit" : "charges");
     if (!limit) {
-        g_string_append(out, "no charges</dd><dd class=\"note\">There is nothing to budget.</dd></div>\n");
+        g_string_append(
+            out, is_pool ? "no unit</dd><dd class=\"note\">There is nothing to budget.</dd></div>\n"
+                         : "no charges</dd><dd class=\"note\">There is nothing to budget.</dd></div>\n");
         return;
     }
     rf_report_text(out, limit->input);
     g_string_append(out, "</dd><dd class=\"note\">Adds ");
     rf_report_text_percent(out, limit->charge_relative_u);
-    g_string_append(out, " to a typical charge");
+    g_string_append(out, is_pool ? " to the unit" : " to a typical charge");
     if (limit->is_common && limit->stated && *limit->stated) {
         g_string_append(out, "; used: ");
         rf_report_text(out, limit->stated);
     }
-    g_string_append(out, limit->is_common ? ". Shared by all droplets, so more of them don’t average it out."
-                                          : ". Longer watching or more droplets reduce it.");
+    if (is_pool)
+        g_string_append(out,
+                        limit->is_common
+                            ? ". Shared by the recordings that name it, so more of them don’t average it out."
+                            : ". More recordings reduce it.");
+    else
+        g_string_append(out, limit->is_common
+                                 ? ". Shared by all droplets, so more of them don’t average it out."
+                                 : ". Longer watching or more droplets reduce it.");
     g_string_append(out, "</dd></div>\n");
 }
 
@@ -84,7 +109,10 @@ void rf_report_first_screen(GString *out, const RfResults *results)
     rf_report_text(out, results->verdict ? results->verdict : "No verdict was reached");
     g_string_append(out, "</h1>\n<dl class=\"facts\">\n");
     unit_fact(out, &results->unit);
-    droplets_fact(out, results);
+    if (results->recordings->len > 0)
+        recordings_fact(out, results);
+    else
+        droplets_fact(out, results);
     limit_fact(out, results);
     g_string_append(out, "</dl>\n");
     warnings(out, results->warnings);

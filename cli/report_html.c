@@ -40,7 +40,9 @@ static void head(GString *out, const RfResults *results, const char *script)
         "<meta http-equiv=\"Content-Security-Policy\" content=\"default-src 'none'; img-src data:; "
         "style-src 'unsafe-inline'; script-src 'sha256-%s'\">\n<title>",
         digest);
-    rf_report_text(out, results->sheet_path ? results->sheet_path : "report");
+    rf_report_text(out, results->sheet_path            ? results->sheet_path
+                        : results->recordings->len > 0 ? "pool of recordings"
+                                                       : "report");
     g_string_append_printf(out, " · risefall</title>\n<style>\n%s</style>\n</head>\n", style);
 }
 
@@ -60,16 +62,19 @@ static void banner(GString *out, const RfResults *results)
 
 static void contents(GString *out, const RfResults *results, const RfFigureSet *figures)
 {
+    const bool is_pool = results->recordings->len > 0;
     const struct {
         const char *id, *name;
         bool is_there;
     } parts[] = {
         {"view", "View", results->width > 0 && results->height > 0},
+        {"recordings", "Recordings", is_pool},
+        {"residues", "Charges", rf_figure_find(figures, "residues") != NULL},
         {"charges", "Charges", rf_figure_find(figures, "charges") != NULL},
         {"velocities", "Velocities", rf_figure_find(figures, "velocities") != NULL},
-        {"droplets", "Droplets", true},
-        {"aside", "Set aside", true},
-        {"events", "Switches and steps", true},
+        {"droplets", "Droplets", !is_pool},
+        {"aside", "Set aside", !is_pool},
+        {"events", "Switches and steps", !is_pool},
         {"unit", "Unit", true},
         {"radius", "Radius twice", rf_figure_find(figures, "radius") != NULL},
         {"budget", "Uncertainty", results->budget->len > 0},
@@ -161,6 +166,26 @@ GString *rf_report_html_new(const RfResults *results, const RfFigureSet *figures
     rf_report_budget(out, results, figures);
     rf_report_audit(out, results);
     rf_report_sources(out, results);
+    foot(out, script);
+    return out;
+}
+
+GString *rf_report_html_pool_new(const RfResults *results, const RfFigureSet *figures)
+{
+    g_autofree char *script = joined(SCRIPT, G_N_ELEMENTS(SCRIPT));
+    GString *out = g_string_sized_new(1 << 17);
+    head(out, results, script);
+    banner(out, results);
+    rf_report_first_screen(out, results);
+    contents(out, results, figures);
+    rf_report_recordings(out, results, figures);
+    figure_section(out, figures, "residues", "Charges against whole multiples",
+                   "Every accepted charge: how far it lies from the nearest whole multiple of the pooled "
+                   "unit. Bars are the "
+                   "droplet’s own standard uncertainty.");
+    unit_section(out, results, figures);
+    rf_report_budget(out, results, figures);
+    rf_report_pool_sources(out, results);
     foot(out, script);
     return out;
 }

@@ -11,5 +11,8 @@
 /* `figures` may be NULL: the page then says that there are none. (returns new) */
 GString *rf_report_html_new(const RfResults *results, const RfFigureSet *figures);
 
+/* The page of a pool: results->recordings holds its recordings. (returns new) */
+GString *rf_report_html_pool_new(const RfResults *results, const RfFigureSet *figures);
+
 /* Only the section on hand timings, as a page of its own. (returns new) */
 GString *rf_report_html_audit_new(const RfResults *results);

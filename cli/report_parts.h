@@ -40,3 +40,8 @@ void rf_report_events(GString *out, const RfResults *results);
 void rf_report_audit(GString *out, const RfResults *results);
 void rf_report_budget(GString *out, const RfResults *results, const RfFigureSet *figures);
 void rf_report_sources(GString *out, const RfResults *results);
+void rf_report_files(GString *out, const RfResults *results); /* report_sources.c: input files and program */
+void rf_report_cautions(GString *out);                        /* report_sources.c */
+void rf_report_recordings(GString *out, const RfResults *results,
+                          const RfFigureSet *figures);               /* report_pool.c */
+void rf_report_pool_sources(GString *out, const RfResults *results); /* report_pool.c */

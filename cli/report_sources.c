@@ -19,7 +19,7 @@ static bool has_monte_carlo(const GArray *rows)
     return false;
 }
 
-static void budget_row(GString *out, const RfBudgetRow *row, bool with_mc)
+static void budget_row(GString *out, const RfBudgetRow *row, bool with_mc, bool is_pool)
 {
     g_string_append(out, "<tr><th scope=\"row\">");
     rf_report_text(out, row->input);
@@ -28,7 +28,10 @@ static void budget_row(GString *out, const RfBudgetRow *row, bool with_mc)
     percent_cell(out, row->relative_u > 0, row->relative_u);
     percent_cell(out, true, row->charge_relative_u);
     if (with_mc) percent_cell(out, row->charge_relative_u_mc >= 0, row->charge_relative_u_mc);
-    rf_report_text_cell(out, false, row->is_common ? "all droplets" : "each droplet");
+    const char *shared_by = is_pool          ? row->is_common ? "recordings that name it" : "none"
+                            : row->is_common ? "all droplets"
+                                             : "each droplet";
+    rf_report_text_cell(out, false, shared_by);
     g_string_append(out, "</tr>\n");
 }
 
@@ -36,22 +39,28 @@ void rf_report_budget(GString *out, const RfResults *results, const RfFigureSet 
 {
     if (results->budget->len == 0) return;
     rf_report_text_open(out, "budget", "What the uncertainty is made of");
-    g_string_append(out, "<p>For a typical accepted droplet. Parts shared by all droplets don’t average out "
-                         "over them; a droplet’s own "
-                         "part does.</p>\n");
+    const bool is_pool = results->recordings->len > 0;
+    g_string_append(
+        out,
+        is_pool
+            ? "<p>For the pooled unit. A measurement that recordings share doesn’t average out over them; "
+              "what each has of its own does.</p>\n"
+            : "<p>For a typical accepted droplet. Parts shared by all droplets don’t average out "
+              "over them; a droplet’s own part does.</p>\n");
     const bool with_mc = has_monte_carlo(results->budget);
     rf_report_text_figure(out, figures, "budget",
                           with_mc ? "Bars: analytic propagation (JCGM 100). Diamonds: Monte Carlo (JCGM 101)."
                                   : "Bars: analytic propagation (JCGM 100).");
     g_autofree char *head =
         g_strconcat("<th scope=\"col\">Input</th><th scope=\"col\">Value used</th>"
-                    "<th scope=\"col\" class=\"number\">u of the input</th>"
-                    "<th scope=\"col\" class=\"number\">u in the charge</th>",
+                    "<th scope=\"col\" class=\"number\">u of the input</th>",
+                    is_pool ? "<th scope=\"col\" class=\"number\">u in the unit</th>"
+                            : "<th scope=\"col\" class=\"number\">u in the charge</th>",
                     with_mc ? "<th scope=\"col\" class=\"number\">by Monte Carlo</th>" : "",
                     "<th scope=\"col\">Shared by</th>", NULL);
     rf_report_text_table(out, "Table of the uncertainty budget", head);
     for (guint i = 0; i < results->budget->len; i++)
-        budget_row(out, &g_array_index(results->budget, RfBudgetRow, i), with_mc);
+        budget_row(out, &g_array_index(results->budget, RfBudgetRow, i), with_mc, is_pool);
     rf_report_text_table_end(out);
     rf_report_text_close(out);
 }
@@ -107,8 +116,9 @@ static void recording(GString *out, const RfResults *results)
 static void certificate(GString *out, const GArray *rows)
 {
     if (rows->len == 0) return;
-    g_string_append(out, "<h3>Against the certificate</h3>\n"
-                         "<p>E<sub>n</sub> between -1 and 1: they agree within expanded uncertainties.</p>\n");
+    g_string_append(out,
+                    "<h3>Against the certificate</h3>\n"
+                    "<p>E<sub>n</sub> between -1 and 1: they agree within expanded uncertainties.</p>\n");
     rf_report_text_table(out, "Table of certified against found",
                          "<th scope=\"col\">Quantity</th><th scope=\"col\">Certified</th><th "
                          "scope=\"col\">Found</th><th scope=\"col\" class=\"number\">E<sub>n</sub></th><th "
@@ -185,7 +195,7 @@ static void notes(GString *out, const GArray *rows)
     rf_report_text_table_end(out);
 }
 
-static void files(GString *out, const RfResults *results)
+void rf_report_files(GString *out, const RfResults *results)
 {
     g_string_append(out, "<h3>Input files and program</h3>\n");
     rf_report_text_table(
@@ -206,7 +216,7 @@ static void files(GString *out, const RfResults *results)
     rf_report_text_table_end(out);
 }
 
-static void cautions(GString *out)
+void rf_report_cautions(GString *out)
 {
     g_string_append(out, "<section id=\"cautions\" aria-labelledby=\"cautions-heading\"><h2 "
                          "id=\"cautions-heading\">Cautions</h2>\n"
@@ -229,7 +239,7 @@ void rf_report_sources(GString *out, const RfResults *results)
     effects(out, results->effects);
     settings(out, results->settings);
     notes(out, results->notes);
-    files(out, results);
+    rf_report_files(out, results);
     rf_report_text_close(out);
-    cautions(out);
+    rf_report_cautions(out);
 }

@@ -29,6 +29,26 @@ static void budget_clear(void *item)
     g_free(row->stated);
 }
 
+static void recording_clear(void *item)
+{
+    RfRecordingRow *row = item;
+    g_free(row->name);
+    g_free(row->sheet);
+    g_free(row->reason);
+}
+
+static void measurement_clear(void *item)
+{
+    RfMeasurementRow *row = item;
+    g_free(row->input);
+    g_free(row->name);
+}
+
+static void common_clear(void *item)
+{
+    g_free(((RfCommonRow *)item)->shared);
+}
+
 static void audit_clear(void *item)
 {
     RfAuditRow *row = item;
@@ -70,6 +90,10 @@ RfResults *rf_results_new(void)
     results->steps = rows(sizeof(RfStepRow), NULL);
     results->droplets = rows(sizeof(RfDropletRow), droplet_clear);
     results->budget = rows(sizeof(RfBudgetRow), budget_clear);
+    results->common = rows(sizeof(RfCommonRow), common_clear);
+    results->recordings = rows(sizeof(RfRecordingRow), recording_clear);
+    results->measurements = rows(sizeof(RfMeasurementRow), measurement_clear);
+    results->influences = rows(sizeof(RfInfluenceRow), NULL);
     results->audit = rows(sizeof(RfAuditRow), audit_clear);
     results->hand_charges = rows(sizeof(RfHandChargeRow), hand_charge_clear);
     results->effects = rows(sizeof(RfEffectRow), effect_clear);
@@ -92,7 +116,8 @@ void rf_results_free(RfResults *results)
                         results->paths,  results->segments,          results->switches,
                         results->steps,  results->droplets,          results->budget,
                         results->audit,  results->unit.curve_unit_C, results->unit.curve_log_likelihood,
-                        results->hand_charges, results->effects, results->certificate};
+                        results->hand_charges, results->effects, results->certificate,
+                        results->common, results->influences, results->recordings, results->measurements};
     for (size_t i = 0; i < G_N_ELEMENTS(arrays); i++) free_array(arrays[i]);
     if (results->warnings) g_ptr_array_unref(results->warnings);
     if (results->view_png) g_bytes_unref(results->view_png);

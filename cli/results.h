@@ -9,6 +9,7 @@
 
 #include "calib/units.h"
 #include "physics/agreement.h"
+#include "physics/charge_budget.h"
 #include "physics/trail.h"
 
 typedef struct { /* one row of paths.csv */
@@ -52,6 +53,8 @@ typedef struct { /* one row of steps.csv */
 } RfStepRow;
 
 typedef struct { /* one row of droplets.csv: one spell of constant charge */
+    unsigned recording;      /* in a pool: index of its recording; there `droplet` counts through all of them ... */
+    unsigned droplet_there;  /* ... and this is its number in its recording */
     unsigned droplet, spell;
     double start_s, end_s;
     unsigned frames;
@@ -148,6 +151,54 @@ typedef struct { /* spheres of known size: what was found against their certific
     unsigned droplets;           /* that found is the mean of; 0: of none in particular */
 } RfCertificateRow;
 
+typedef struct { /* one measured input that all droplets of the recording share: a part of a line of the budget */
+    const char *input;       /* static: the sheet's key, or "air_drift" */
+    RfChargeLine line;
+    double line_share;       /* of the line's variance, 0..1 */
+    RfValue value;           /* in `unit`; of a law and of what has no value of its own: 1, or 0, with its sigma */
+    const char *unit;        /* static, SI */
+    char *shared;            /* name of the one measurement, from [shared]; or of the law; NULL: this recording's own */
+    bool is_law;             /* the same for all recordings that use it */
+} RfCommonRow;
+
+typedef struct { /* what one standard uncertainty of each line does to one spell's charge, signed */
+    unsigned droplet, spell;
+    double charge_C[RF_CHARGE_LINES];
+} RfInfluenceRow;
+
+typedef enum {
+    RF_RECORDING_POOLED,
+    RF_RECORDING_SILENT, /* measured, but it tells nothing of the unit */
+    RF_RECORDING_EMPTY,  /* ran, but nothing could be measured */
+    RF_RECORDING_FAILED, /* no result */
+} RfRecordingState;
+
+typedef struct { /* one recording of a pool */
+    char *name, *sheet;
+    RfRecordingState state;
+    char *reason;            /* why it isn't pooled; "" if it is */
+    unsigned droplets_accepted, droplets_set_aside;
+    bool stands_alone;       /* its own charges settle its unit */
+    RfValue unit_C;          /* its own; sigma with its common part */
+    double u_random_C, weight;
+    RfValue offset;          /* relative: its unit less what the others let expect; sigma 0: no others */
+    double deviate, deviate_p;
+    RfValue without_C;       /* pooled unit without it; sigma 0: no others */
+} RfRecordingRow;
+
+typedef struct { /* one measurement in the pooled unit; or what is each recording's own, together */
+    char *input, *name;      /* name NULL: not shared */
+    unsigned recordings;
+    double unit_relative_u;
+} RfMeasurementRow;
+
+typedef struct { /* do the recordings of a pool agree? */
+    unsigned used;           /* recordings that tell something of the unit */
+    double chi_squared, p;   /* used - 1 degrees of freedom */
+    unsigned most_off;       /* index of the recording with the largest deviate */
+    double most_off_p;       /* for as many looks as recordings */
+} RfAgreementOfRecordings;
+
 typedef struct { /* a setting as it was used, for report and summary.json */
     char *group, *key, *value;
     bool is_default;
@@ -179,6 +230,8 @@ typedef struct {
     GArray *steps;           /* RfStepRow */
     GArray *droplets;        /* RfDropletRow */
     GArray *budget;          /* RfBudgetRow */
+    GArray *common;          /* RfCommonRow */
+    GArray *influences;      /* RfInfluenceRow: of spells with a charge, in the order of droplets */
     GArray *audit;           /* RfAuditRow; empty when no timings were given */
     RfScaleRow scale;
     RfUnitResult unit;
@@ -188,6 +241,9 @@ typedef struct {
     bool has_log_clock;      /* a voltage log was lined up with the recording */
     RfValue log_offset_s;    /* its clock less the recording's, in the middle */
     RfValue log_drift;       /* relative rate of its clock; 0: none beyond chance */
+    GArray *recordings;      /* RfRecordingRow; empty but for a pool */
+    GArray *measurements;    /* RfMeasurementRow, largest first; of a pool */
+    RfAgreementOfRecordings agreement;
     GArray *effects;         /* RfEffectRow */
     GArray *certificate;     /* RfCertificateRow; empty without a certificate */
     bool measured;           /* false: ran, but nothing could be measured (exit 3) */

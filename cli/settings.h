@@ -62,6 +62,7 @@ typedef struct {
     /* [air]: the temperature is that of the thermistor where the sheet gives a resistance */
     RfValue temperature_kelvin;
     RfMaybeValue resistance_ohm; /* of the thermistor, where it serves */
+    double thermistor_u_kelvin;  /* of its law: a part of the temperature's sigma */
     RfValue pressure_pa;
     RfValue humidity; /* unitless, 0..1 */
 

@@ -162,6 +162,7 @@ static bool apply_thermistor(const RfSheetText *sheet, RfSheetValues *v, GError 
         return refuse(sheet, v->thermistor_table ? "thermistor" : "air",
                       v->thermistor_table ? "table" : "resistance", RF_SETTINGS_ERROR_VALUE, error, "%s",
                       why->message);
+    s->thermistor_u_kelvin = law.u_law_kelvin;
     RfValue celsius = {s->temperature_kelvin.value - 273.15, s->temperature_kelvin.sigma};
     g_autofree char *text = rf_quantity_format(celsius, "degC");
     rf_settings_add_used(s->used, "air", "temperature", text, "from the thermistor's resistance");

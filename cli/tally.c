@@ -42,3 +42,17 @@ const char *rf_tally_field_to_string(RfFieldState field)
     }
     return "off";
 }
+
+const char *rf_tally_recording_to_string(RfRecordingState state)
+{
+    static const char *const names[] = {"pooled", "silent", "empty", "failed"};
+    return names[state];
+}
+
+unsigned rf_tally_recordings(const RfResults *results, RfRecordingState state)
+{
+    unsigned n = 0;
+    for (guint i = 0; i < results->recordings->len; i++)
+        n += g_array_index(results->recordings, RfRecordingRow, i).state == state;
+    return n;
+}

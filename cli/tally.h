@@ -14,3 +14,6 @@ RfTally rf_tally_droplets(const RfResults *results);
 const RfBudgetRow *rf_tally_limiting_input(const RfResults *results);
 
 const char *rf_tally_field_to_string(RfFieldState field); /* off, top+, top- */
+const char *rf_tally_recording_to_string(RfRecordingState state); /* pooled, silent, empty, failed */
+/* Recordings of a pool in that state. */
+unsigned rf_tally_recordings(const RfResults *results, RfRecordingState state);

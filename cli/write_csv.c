@@ -138,8 +138,7 @@ static void settle_row(RfPathRow *row)
 
 void rf_write_csv_settle_paths(GArray *rows)
 {
-    for (guint i = 0; i < rows->len; i++)
-        settle_row(&g_array_index(rows, RfPathRow, i));
+    for (guint i = 0; i < rows->len; i++) settle_row(&g_array_index(rows, RfPathRow, i));
 }
 
 GString *rf_write_csv_paths(const RfResults *results)
@@ -284,6 +283,30 @@ GString *rf_write_csv_audit(const RfResults *results)
     return out;
 }
 
+/* One input after the other under each spell; those without effect are left out. */
+static void influence_rows(GString *out, const RfInfluenceRow *row, const GArray *common)
+{
+    for (guint k = 0; k < common->len; k++) {
+        const RfCommonRow *input = &g_array_index(common, RfCommonRow, k);
+        const double charge_C = sqrt(input->line_share) * row->charge_C[input->line];
+        if (fabs(charge_C) == 0) continue;
+        whole(out, row->droplet);
+        whole(out, row->spell);
+        words(out, input->input);
+        exponent(out, charge_C);
+        end_row(out);
+    }
+}
+
+GString *rf_write_csv_influences(const RfResults *results)
+{
+    GString *out =
+        table("droplet,spell,input,charge_C\n", results->influences->len * results->common->len, 40);
+    for (guint i = 0; i < results->influences->len; i++)
+        influence_rows(out, &g_array_index(results->influences, RfInfluenceRow, i), results->common);
+    return out;
+}
+
 GString *rf_write_csv_budget(const RfResults *results)
 {
     GString *out = table("input,stated,relative_u,charge_relative_u,charge_relative_u_mc,common\n",
@@ -297,6 +320,88 @@ GString *rf_write_csv_budget(const RfResults *results)
         exponent_if(out, row->charge_relative_u_mc >= 0, row->charge_relative_u_mc);
         whole(out, row->is_common);
         end_row(out);
+    }
+    return out;
+}
+
+static void value_if(GString *out, bool is_there, RfValue value)
+{
+    exponent_if(out, is_there, value.value);
+    exponent_if(out, is_there, value.sigma);
+}
+
+static void recording_row(GString *out, const RfRecordingRow *row)
+{
+    const bool is_pooled = row->state == RF_RECORDING_POOLED, has_others = is_pooled && row->offset.sigma > 0;
+    words(out, row->name);
+    words(out, rf_tally_recording_to_string(row->state));
+    whole(out, row->droplets_accepted);
+    whole(out, row->droplets_set_aside);
+    words(out, !is_pooled ? "" : row->stands_alone ? "alone" : "together");
+    value_if(out, is_pooled, row->unit_C);
+    exponent_if(out, is_pooled, row->u_random_C);
+    fixed_if(out, is_pooled, row->weight, CHANCE);
+    value_if(out, has_others, row->offset);
+    fixed_if(out, has_others, row->deviate, RATIO);
+    exponent_if(out, has_others, row->deviate_p);
+    value_if(out, has_others, row->without_C);
+    words(out, row->reason);
+    words(out, row->sheet);
+    end_row(out);
+}
+
+GString *rf_write_csv_recordings(const RfResults *results)
+{
+    GString *out =
+        table("recording,state,droplets_accepted,droplets_set_aside,integers,unit_C,u_unit_C,u_random_unit_C,"
+              "weight,offset_relative,u_offset_relative,deviate,deviate_p,unit_without_C,u_unit_without_C,"
+              "reason,sheet\n",
+              results->recordings->len, 200);
+    for (guint i = 0; i < results->recordings->len; i++)
+        recording_row(out, &g_array_index(results->recordings, RfRecordingRow, i));
+    return out;
+}
+
+GString *rf_write_csv_measurements(const RfResults *results)
+{
+    GString *out = table("input,shared,recordings,unit_relative_u\n", results->measurements->len, 60);
+    for (guint i = 0; i < results->measurements->len; i++) {
+        const RfMeasurementRow *row = &g_array_index(results->measurements, RfMeasurementRow, i);
+        words(out, row->input);
+        words(out, row->name);
+        whole(out, row->recordings);
+        exponent(out, row->unit_relative_u);
+        end_row(out);
+    }
+    return out;
+}
+
+static void pooled_droplet_row(GString *out, const RfDropletRow *row, const char *recording)
+{
+    words(out, recording);
+    whole(out, row->droplet_there);
+    whole(out, row->spell);
+    fixed(out, row->start_s, TIME);
+    fixed(out, row->end_s, TIME);
+    const bool is_fitted = row->radius_um.value > 0;
+    fixed_if(out, is_fitted, row->radius_um.value, RADIUS);
+    fixed_if(out, is_fitted, row->radius_um.sigma, RADIUS);
+    value_if(out, row->has_charge, row->charge_C);
+    exponent_if(out, row->has_charge, row->u_random_C);
+    words(out, row->accepted ? "accepted" : "set aside");
+    words(out, row->reason);
+    end_row(out);
+}
+
+GString *rf_write_csv_pooled_droplets(const RfResults *results)
+{
+    GString *out =
+        table("recording,droplet,spell,start_s,end_s,radius_um,u_radius_um,charge_C,u_charge_C,u_random_C,"
+              "verdict,reason\n",
+              results->droplets->len, 140);
+    for (guint i = 0; i < results->droplets->len; i++) {
+        const RfDropletRow *row = &g_array_index(results->droplets, RfDropletRow, i);
+        pooled_droplet_row(out, row, g_array_index(results->recordings, RfRecordingRow, row->recording).name);
     }
     return out;
 }

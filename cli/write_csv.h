@@ -18,3 +18,13 @@ GString *rf_write_csv_droplets(const RfResults *results);
 GString *rf_write_csv_audit(const RfResults *results);
 /* input, stated, relative_u, charge_relative_u, charge_relative_u_mc, common (1 shared by all droplets, 0 not) */
 GString *rf_write_csv_budget(const RfResults *results);
+/* droplet, spell, input, charge_C: what one standard uncertainty of a common input does to a charge, signed */
+GString *rf_write_csv_influences(const RfResults *results);
+
+/* ---- of a pool ---- */
+
+/* One row per recording, those without a result too. Offset: its unit less what the others let expect. */
+GString *rf_write_csv_recordings(const RfResults *results);
+/* What each measurement adds to the pooled unit, largest first; an empty name: each recording's own, together. */
+GString *rf_write_csv_measurements(const RfResults *results);
+GString *rf_write_csv_pooled_droplets(const RfResults *results);

@@ -86,7 +86,8 @@ char *rf_write_json_scale(const RfResults *results)
     whole(json, "lines_found", scale->lines_found);
     number_if(json, "residual_px", scale->found, scale->residual_px);
     words(json, "source", scale->source);
-    number_if(json, "u_relative_along_gravity", scale->u_relative_along_gravity > 0, scale->u_relative_along_gravity);
+    number_if(json, "u_relative_along_gravity", scale->u_relative_along_gravity > 0,
+              scale->u_relative_along_gravity);
     number_if(json, "line_offset_mm", scale->has_lines, scale->line_offset_mm);
     number_if(json, "line_step_mm", scale->has_lines, scale->line_step_mm);
     number_if(json, "line_slope", scale->has_lines, scale->line_slope);
@@ -192,6 +193,26 @@ static void certificate(JsonBuilder *json, const GArray *rows)
     json_builder_end_array(json);
 }
 
+/* Which measurement each input is: what pooling with other recordings needs. */
+static void common_inputs(JsonBuilder *json, const GArray *rows)
+{
+    json_builder_set_member_name(json, "common_inputs");
+    json_builder_begin_array(json);
+    for (guint i = 0; i < rows->len; i++) {
+        const RfCommonRow *row = &g_array_index(rows, RfCommonRow, i);
+        json_builder_begin_object(json);
+        words(json, "input", row->input);
+        words(json, "line", rf_charge_line_to_string(row->line));
+        number(json, "value", row->value.value);
+        number(json, "u", row->value.sigma);
+        words(json, "unit", row->unit);
+        words(json, "shared", row->shared);
+        truth(json, "law", row->is_law);
+        json_builder_end_object(json);
+    }
+    json_builder_end_array(json);
+}
+
 char *rf_write_json_summary(const RfResults *results)
 {
     const RfTally tally = rf_tally_droplets(results);
@@ -219,5 +240,83 @@ char *rf_write_json_summary(const RfResults *results)
     inputs(json, results->inputs);
     settings(json, "settings", results->settings);
     settings(json, "notes", results->notes);
+    common_inputs(json, results->common);
+    return finish(json);
+}
+
+/* ---- of a pool ---- */
+
+static void recordings(JsonBuilder *json, const GArray *rows)
+{
+    json_builder_set_member_name(json, "recordings");
+    json_builder_begin_array(json);
+    for (guint i = 0; i < rows->len; i++) {
+        const RfRecordingRow *row = &g_array_index(rows, RfRecordingRow, i);
+        const bool is_pooled = row->state == RF_RECORDING_POOLED,
+                   has_others = is_pooled && row->offset.sigma > 0;
+        json_builder_begin_object(json);
+        words(json, "recording", row->name);
+        words(json, "state", rf_tally_recording_to_string(row->state));
+        words(json, "reason", row->reason);
+        whole(json, "droplets_accepted", row->droplets_accepted);
+        number_if(json, "unit_charge_C", is_pooled, row->unit_C.value);
+        number_if(json, "u_unit_charge_C", is_pooled, row->unit_C.sigma);
+        number_if(json, "weight", is_pooled, row->weight);
+        number_if(json, "deviate", has_others, row->deviate);
+        number_if(json, "unit_charge_without_C", has_others, row->without_C.value);
+        number_if(json, "u_unit_charge_without_C", has_others, row->without_C.sigma);
+        json_builder_end_object(json);
+    }
+    json_builder_end_array(json);
+}
+
+static void measurements(JsonBuilder *json, const GArray *rows)
+{
+    json_builder_set_member_name(json, "measurements");
+    json_builder_begin_array(json);
+    for (guint i = 0; i < rows->len; i++) {
+        const RfMeasurementRow *row = &g_array_index(rows, RfMeasurementRow, i);
+        json_builder_begin_object(json);
+        words(json, "input", row->input);
+        words(json, "shared", row->name);
+        whole(json, "recordings", row->recordings);
+        number(json, "unit_relative_u", row->unit_relative_u);
+        json_builder_end_object(json);
+    }
+    json_builder_end_array(json);
+}
+
+static void agreement(JsonBuilder *json, const RfResults *results)
+{
+    const RfAgreementOfRecordings *found = &results->agreement;
+    const bool is_tested = found->used > 1;
+    const char *most_off =
+        is_tested ? g_array_index(results->recordings, RfRecordingRow, found->most_off).name : NULL;
+    number_if(json, "chi_squared", is_tested, found->chi_squared);
+    whole(json, "degrees_of_freedom", found->used > 0 ? found->used - 1 : 0);
+    number_if(json, "chi_squared_p", is_tested, found->p);
+    words(json, "most_off", most_off);
+    number_if(json, "most_off_p", is_tested, found->most_off_p);
+}
+
+char *rf_write_json_pool(const RfResults *results)
+{
+    const RfTally tally = rf_tally_droplets(results);
+    g_autoptr(JsonBuilder) json = json_builder_new_immutable();
+    json_builder_begin_object(json);
+    words(json, "program", "risefall");
+    words(json, "program_version", RF_VERSION);
+    truth(json, "measured", results->measured);
+    words(json, "verdict", results->verdict);
+    unit(json, &results->unit);
+    whole(json, "droplets_accepted", tally.droplets_accepted);
+    whole(json, "droplets_set_aside", tally.droplets - tally.droplets_accepted);
+    whole(json, "recordings_pooled", rf_tally_recordings(results, RF_RECORDING_POOLED));
+    whole(json, "recordings_failed", rf_tally_recordings(results, RF_RECORDING_FAILED));
+    agreement(json, results);
+    warnings(json, results->warnings);
+    recordings(json, results->recordings);
+    measurements(json, results->measurements);
+    inputs(json, results->inputs);
     return finish(json);
 }

@@ -16,7 +16,7 @@ static const Table TABLES[] = {
     {"paths.csv", rf_write_csv_paths, true},        {"segments.csv", rf_write_csv_segments, false},
     {"switches.csv", rf_write_csv_switches, false}, {"steps.csv", rf_write_csv_steps, false},
     {"droplets.csv", rf_write_csv_droplets, false}, {"audit.csv", rf_write_csv_audit, false},
-    {"budget.csv", rf_write_csv_budget, false},
+    {"budget.csv", rf_write_csv_budget, false},     {"influences.csv", rf_write_csv_influences, false},
 };
 
 static bool tables(const RfResults *results, RfResultFolder *folder, RfWriteResultsPart part, GError **error)

@@ -52,3 +52,28 @@ radii_without_charges() {
              $(at["radius_um"]) <= 0 || $(at["u_radius_um"]) <= 0 || $(at["charge_C"]) != "" || $(at["reason"]) == "" { bad = 1 }
              END { exit bad || NR < 2 }' "$1"
 }
+
+# A result folder as a run leaves it, as far as pooling reads it: 24 accepted charges on multiples of `unit` (in e) with
+# 0.03 e of their own, a gap of 6.00(2) mm by the name `gap` (null: not shared), made from a recording with digest `name`.
+invented_result() { # name, unit (default 1), gap (default null), further settings (JSON objects, each with a comma behind)
+    mkdir "$1"
+    printf '%s\n' '{ "program": "risefall", "program_version": "0.1.0", "measured": true, "verdict": "Fine.",' \
+        "\"sheet\": \"$1.ini\", \"inputs\": [{\"role\": \"recording\", \"path\": \"$1.mkv\", \"sha256\": \"$1\"}]," \
+        "\"settings\": [${4:-} {\"group\": \"analysis\", \"key\": \"slip\", \"value\": \"kim-2005\"}]," \
+        '"common_inputs": [' \
+        "{\"input\": \"plate_gap\", \"value\": 0.006, \"u\": 2e-05, \"unit\": \"m\", \"shared\": ${3:-null}, \"law\": false}," \
+        '{"input": "slip", "value": 1.0, "u": 0.02, "unit": "1", "shared": "kim-2005", "law": true}] }' >"$1/summary.json"
+    awk -v unit="${2:-1}" -v droplets="$1/droplets.csv" -v influences="$1/influences.csv" 'BEGIN {
+        print "droplet,spell,start_s,end_s,radius_um,u_radius_um,charge_C,u_charge_C,u_random_C,verdict,reason" >droplets
+        print "droplet,spell,input,charge_C" >influences
+        for (i = 1; i <= 24; i++) {
+            multiple = (i % 7 + 1) * (i % 2 ? 1 : -1)
+            charge = 1.602176634e-19 * (multiple * unit + 0.03 * sin(37 * i + 100 * unit))
+            printf "%d,1,0,20,0.6,0.01,%.9e,9e-21,4.8e-21,accepted,\n", i, charge >droplets
+            printf "%d,1,plate_gap,%.6e\n%d,1,slip,%.6e\n", i, charge / 300, i, charge / 500 >influences
+        }
+    }'
+}
+
+# The value of a key of a JSON file, one key a line.
+value_in() { sed -n "s/^ *\"$2\" *: *\"\{0,1\}\([^\",]*\)\"\{0,1\},*$/\1/p" "$1" | head -n 1; }
