@@ -64,7 +64,7 @@ static char *why_set_aside(const RfDropletFit *fit, const RfSpellFit *spell, con
         g_autofree char *spread = rf_quantity_format(
             (RfValue){fit->radius_spread_m.value * 1e6, fit->radius_spread_m.sigma * 1e6}, "um");
         return g_strdup_printf(
-            "radius from the fall, %s, and from the spread, %s, disagree beyond chance (p = %.1g)", fall,
+            "the two radii disagree beyond chance: %s from the fall, %s from the spread (p = %.1g)", fall,
             spread, fit->radius_agreement_p);
     }
     if (u_charge_coulomb > useless_sigma_coulomb &&
@@ -236,7 +236,7 @@ static void add_causes(RfResults *results, guint first_row, const RfTrail *trail
     g_autofree char *causes = causes_text(trails, set, &medium, droplet);
     for (guint r = first_row; r < results->droplets->len; r++) {
         RfDropletRow *row = &g_array_index(results->droplets, RfDropletRow, r);
-        if (row->accepted || !g_str_has_prefix(row->reason, "radius from the fall")) continue;
+        if (row->accepted || !g_str_has_prefix(row->reason, "the two radii disagree")) continue;
         char *longer = g_strconcat(row->reason, causes, NULL);
         g_free(row->reason);
         row->reason = longer;

@@ -4,13 +4,12 @@
 #include "cli/pipeline.h"
 #include "cli/result_folder.h"
 #include "cli/screen_summary.h"
+#include "cli/text_wrap.h"
 #include "cli/write_json.h"
 #include "cli/write_results.h"
 
 #include <stdio.h>
 #include <unistd.h>
-
-enum { SCREEN_LINES = 24 };
 
 const RfCommandFile rf_deliver_files[] = {
     {"report.html", "the page to look at; opens from disk in any browser"},
@@ -59,20 +58,31 @@ static bool write_down(RfResults *results, const char *out, RfDeliverKind kind, 
     return folder && rf_write_results(results, folder, part, error) && rf_result_folder_commit(folder, error);
 }
 
-static char *screen_page(const RfResults *results, const char *out)
+static void note(const char *text)
 {
-    return rf_screen_summary_new(results, out, SCREEN_LINES, rf_screen_summary_wants_colour(STDOUT_FILENO));
+    g_autofree char *line = g_strdup_printf("risefall: note: %s", text);
+    g_autoptr(GString) wrapped = g_string_new(NULL);
+    const int columns = isatty(STDERR_FILENO) ? rf_text_wrap_terminal_columns(STDERR_FILENO) : G_MAXINT;
+    rf_text_wrap_append(wrapped, line, 0, columns, false);
+    fputs(wrapped->str, stderr);
 }
 
-static void tell(const RfResults *results, const char *out)
+static char *page(const RfResults *results, const char *out, RfDeliverKind kind)
+{
+    const RfScreen screen = rf_screen_on(STDOUT_FILENO);
+    return kind == RF_DELIVER_PATHS ? rf_screen_summary_paths_new(results, out, &screen)
+                                    : rf_screen_summary_new(results, out, &screen);
+}
+
+/* Notes first: the page is to stay on the screen as a whole. */
+static void tell(const RfResults *results, const char *out, RfDeliverKind kind)
 {
     const RfCommonOptions *common = rf_command_common();
+    for (guint i = 0; i < results->warnings->len && !common->is_quiet; i++)
+        note(g_ptr_array_index(results->warnings, i));
     if (common->is_quiet && !common->as_json) return;
-    g_autofree char *summary = common->as_json ? rf_write_json_summary(results) : screen_page(results, out);
+    g_autofree char *summary = common->as_json ? rf_write_json_summary(results) : page(results, out, kind);
     fputs(summary, stdout);
-    if (common->is_quiet) return;
-    for (guint i = 0; i < results->warnings->len; i++)
-        fprintf(stderr, "risefall: note: %s\n", (const char *)g_ptr_array_index(results->warnings, i));
 }
 
 static void enter(const RfResults *results, const char *out)
@@ -91,7 +101,7 @@ RfExit rf_deliver(const char *sheet, const char *paths_csv, const char *out, RfD
     g_autoptr(RfResults) results = make(settings, paths_csv, kind, error);
     rf_command_progress_end();
     if (!results || !write_down(results, out, kind, error)) return RF_EXIT_INPUT;
-    tell(results, out);
+    tell(results, out, kind);
     if (kind == RF_DELIVER_RUN) enter(results, out);
     return results->measured ? RF_EXIT_DONE : RF_EXIT_NOT_MEASURED;
 }
