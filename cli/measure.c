@@ -273,8 +273,7 @@ static bool measure_droplets(RfResults *results, const RfChargeInputs *inputs, c
     RfDropletSetSettings how = {
         .medium = &medium,
         .sheet = &supply->sheet,
-        .for_each = for_each,
-        .for_each_user = &workers,
+        .side_by_side = {for_each, &workers},
     };
     g_autoptr(RfTrailSet) trails = NULL;
     g_autoptr(RfDropletSet) set = measure_whole_paths(results, &how, &trails, error);

@@ -10,19 +10,6 @@ typedef struct {
     RfDropletSet *set;
 } Work;
 
-static void one_after_another(void *user, size_t n, void (*work)(void *context, size_t i), void *context)
-{
-    (void)user;
-    for (size_t i = 0; i < n; i++) work(context, i);
-}
-
-static void for_each(const RfDropletSetSettings *settings, size_t n, void (*work)(void *, size_t),
-                     void *context)
-{
-    RfForEach each = settings->for_each ? settings->for_each : one_after_another;
-    each(settings->for_each_user, n, work, context);
-}
-
 static size_t step_times(const GArray *steps, double *time_s)
 {
     for (unsigned k = 0; k < steps->len; k++) time_s[k] = g_array_index(steps, RfChargeStep, k).time_s.value;
@@ -170,8 +157,8 @@ static void estimate_memory(const Work *work)
     RfDropletModel model = model_of(work);
     g_autofree RfDropletFit *fits = g_new(RfDropletFit, n);
     for (size_t i = 0; i < n; i++) fits[i] = work->set->droplets[i].fit;
-    rf_noise_memory_estimate(work->trails, fits, n, &model, &work->set->fall_memory,
-                             &work->set->across_memory);
+    rf_noise_memory_estimate(work->trails, fits, n, &model, &work->settings->side_by_side,
+                             &work->set->fall_memory, &work->set->across_memory);
 }
 
 RfDropletSet *rf_droplet_set_measure(const RfTrail *trails, size_t n, const RfDropletSetSettings *settings,
@@ -187,13 +174,13 @@ RfDropletSet *rf_droplet_set_measure(const RfTrail *trails, size_t n, const RfDr
     if (!set->timeline) return NULL;
     set->drift = rf_common_drift_new();
     Work work = {trails, settings, set};
-    for_each(settings, n, measure_one, &work);
+    rf_for_each(&settings->side_by_side, n, measure_one, &work);
     refine_switches(&work);
     fit_common_drift(&work);
     estimate_memory(&work);
-    for_each(settings, n, measure_one, &work);
+    rf_for_each(&settings->side_by_side, n, measure_one, &work);
     refine_switches(&work);
-    for_each(settings, n, look_for_swap, &work);
+    rf_for_each(&settings->side_by_side, n, look_for_swap, &work);
     return g_steal_pointer(&set);
 }
 

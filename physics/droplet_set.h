@@ -6,15 +6,12 @@
 
 #include "physics/charge_step.h"
 #include "physics/droplet_swap.h"
-
-/* Calls work(context, i) for each i below n, in any order, perhaps from several threads; returns when all are done. */
-typedef void (*RfForEach)(void *user, size_t n, void (*work)(void *context, size_t i), void *context);
+#include "physics/for_each.h"
 
 typedef struct {
     const RfMedium *medium;    /* (borrowed) */
     const RfFieldSheet *sheet; /* (borrowed) */
-    RfForEach for_each;        /* or NULL: one after another */
-    void *for_each_user;
+    RfSideBySide side_by_side; /* all 0: one after another */
 } RfDropletSetSettings;
 
 typedef struct {

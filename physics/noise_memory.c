@@ -18,13 +18,16 @@ typedef struct {
     RfDropletPath *path;
     RfSearch search;
     RfSearchPoint summit; /* found last; the next climb starts there */
+    RfSearchPoint point;  /* of the climb under way */
+    bool is_there;        /* the climb came to a summit */
 } Member;
 
 typedef struct {
     Member member[TRAILS_MAX];
     size_t n;
+    const RfSideBySide *how;
     double frame_s;
-    Memories best;
+    Memories tried, best;
     double best_value;
 } Pool;
 
@@ -67,19 +70,27 @@ static void pool_clear(Pool *pool)
     for (size_t i = 0; i < pool->n; i++) rf_droplet_path_free(pool->member[i].path);
 }
 
+static void climb(void *context, size_t i)
+{
+    Pool *pool = context;
+    Member *m = &pool->member[i];
+    m->point = m->summit;
+    m->search.fall_memory = pool->tried.fall;
+    m->search.across_memory = pool->tried.across;
+    m->is_there = rf_search_climb(&m->search, &m->point);
+}
+
 /* Sum over droplets of the log-likelihood, each at its own best radius and noise. */
 static double pooled(Pool *pool, const Memories *memories)
 {
     double sum = 0;
+    pool->tried = *memories;
+    rf_for_each(pool->how, pool->n, climb, pool);
     for (size_t i = 0; i < pool->n; i++) {
         Member *m = &pool->member[i];
-        RfSearchPoint point = m->summit;
-        m->search.fall_memory = memories->fall;
-        m->search.across_memory = memories->across;
-        if (!rf_search_climb(&m->search, &point))
-            return -HUGE_VAL; /* such memory is impossible for one of them */
-        m->summit = point;
-        sum += point.log_likelihood;
+        if (!m->is_there) return -HUGE_VAL; /* such memory is impossible for one of them */
+        m->summit = m->point;
+        sum += m->point.log_likelihood;
     }
     return sum;
 }
@@ -120,12 +131,13 @@ static void polish(Pool *pool)
 }
 
 void rf_noise_memory_estimate(const RfTrail *trails, const RfDropletFit *fits, size_t n,
-                              const RfDropletModel *model, RfNoiseMemory *fall, RfNoiseMemory *across)
+                              const RfDropletModel *model, const RfSideBySide *how, RfNoiseMemory *fall,
+                              RfNoiseMemory *across)
 {
     static const double shares[] = {0.3, 1, 3, 10}, smears[] = {0.05, 0.15, 0.4}, lengths[] = {0.5, 2.4};
     const Memories white = {0};
     RfDropletModel plain = *model;
-    Pool pool = {0};
+    Pool pool = {.how = how};
     plain.steps = 0;
     plain.fall_memory = plain.across_memory = white.fall;
     pool_fill(&pool, trails, fits, n, &plain);

@@ -7,8 +7,11 @@
 #pragma once
 
 #include "physics/droplet_fit.h"
+#include "physics/for_each.h"
 
 /* model: as used for the fits, its steps and memories are ignored; fits: one per trail.
+ *   how           droplets side by side; NULL: one after another. The outcome is the same
  *   fall, across  white where memory doesn't improve the likelihood beyond chance (p < 0.001) */
 void rf_noise_memory_estimate(const RfTrail *trails, const RfDropletFit *fits, size_t n,
-                              const RfDropletModel *model, RfNoiseMemory *fall, RfNoiseMemory *across);
+                              const RfDropletModel *model, const RfSideBySide *how, RfNoiseMemory *fall,
+                              RfNoiseMemory *across);

@@ -86,7 +86,7 @@ static void test_order_does_not_matter(void)
     record(trails);
     RfDropletSetSettings settings = {.medium = &WALK_MEDIUM, .sheet = &SHEET};
     g_autoptr(RfDropletSet) forth = rf_droplet_set_measure(trails, DROPLETS, &settings, NULL);
-    settings.for_each = last_one_first;
+    settings.side_by_side.for_each = last_one_first;
     g_autoptr(RfDropletSet) back = rf_droplet_set_measure(trails, DROPLETS, &settings, NULL);
     for (int i = 0; i < DROPLETS; i++) {
         const RfDropletFit *a = &forth->droplets[i].fit, *b = &back->droplets[i].fit;

@@ -65,7 +65,7 @@ static void test_white_stays_white(void)
     Recording r;
     RfNoiseMemory fall, across;
     record(&r, 0.4e-6, 0);
-    rf_noise_memory_estimate(r.trails, r.fits, DROPLETS, &r.model, &fall, &across);
+    rf_noise_memory_estimate(r.trails, r.fits, DROPLETS, &r.model, NULL, &fall, &across);
     g_assert_cmpfloat(fall.share, ==, 0);
     g_assert_cmpfloat(across.share, ==, 0);
     record_clear(&r);
@@ -78,7 +78,7 @@ static void test_memory_found_and_bias_gone(void)
     Recording r;
     record(&r, 0.5e-6, 0.5);
     RfDropletModel with = r.model;
-    rf_noise_memory_estimate(r.trails, r.fits, DROPLETS, &r.model, &with.fall_memory, &with.across_memory);
+    rf_noise_memory_estimate(r.trails, r.fits, DROPLETS, &r.model, NULL, &with.fall_memory, &with.across_memory);
     double before = spread_bias(&r, &r.model), after = spread_bias(&r, &with);
     g_test_message("share %.2f, memory %.3f s; bias %.3f before, %.3f after", with.fall_memory.share,
                    with.fall_memory.memory_s, before, after);
@@ -124,7 +124,7 @@ static void test_running_mean_found_and_bias_gone(void)
     }
     gsl_rng_free(random);
     RfDropletModel with = r.model;
-    rf_noise_memory_estimate(r.trails, r.fits, DROPLETS, &r.model, &with.fall_memory, &with.across_memory);
+    rf_noise_memory_estimate(r.trails, r.fits, DROPLETS, &r.model, NULL, &with.fall_memory, &with.across_memory);
     double before = spread_bias(&r, &r.model), after = spread_bias(&r, &with);
     g_test_message("smear %.4f s, memory %.3f s; bias %.3f before, %.3f after", with.fall_memory.smear_s,
                    with.fall_memory.memory_s, before, after);
@@ -139,7 +139,7 @@ static void test_no_droplets(void)
 {
     RfNoiseMemory fall, across;
     RfDropletModel model = {.medium = &WALK_MEDIUM};
-    rf_noise_memory_estimate(NULL, NULL, 0, &model, &fall, &across);
+    rf_noise_memory_estimate(NULL, NULL, 0, &model, NULL, &fall, &across);
     g_assert_cmpfloat(fall.share, ==, 0);
 }
 
