@@ -52,16 +52,44 @@ static bool add_figure(RfFigureSet *set, const RfFigureScript *what, const RfRes
     return true;
 }
 
+static char *script_of(const RfFigure *figure)
+{
+    return g_strconcat(figure->name, ".gp", NULL);
+}
+
+static bool fetch(RfFigure *figure, const char *inside)
+{
+    g_autofree char *picture = g_strconcat(inside, "/", figure->name, ".svg", NULL);
+    return g_file_get_contents(picture, &figure->svg, NULL, NULL);
+}
+
 static void draw_one(RfFigureSet *set, RfFigure *figure, const char *program, const char *inside)
 {
-    g_autofree char *script = g_strconcat(figure->name, ".gp", NULL);
-    g_autofree char *picture = g_strconcat(inside, "/", figure->name, ".svg", NULL);
+    g_autofree char *script = script_of(figure);
     g_autofree char *complaint = NULL;
-    const bool is_done = rf_plotter_run(program, inside, script, &complaint);
-    if (is_done && g_file_get_contents(picture, &figure->svg, NULL, NULL)) return;
+    const char *const scripts[] = {script, NULL};
+    if (rf_plotter_run(program, inside, scripts, &complaint) && fetch(figure, inside)) return;
     if (set->warning) return;
     set->warning = g_strdup_printf("figures: gnuplot failed on %s; data and scripts are in figures/",
-                                   complaint ? complaint : picture);
+                                   complaint ? complaint : figure->name);
+}
+
+/* All at once; where that fails one by one, so that one bad figure doesn't take the others along. */
+static void draw_all(RfFigureSet *set, const char *program, const char *inside)
+{
+    g_autoptr(GPtrArray) scripts = g_ptr_array_new_with_free_func(g_free);
+    g_autofree char *complaint = NULL;
+    for (guint i = 0; i < set->figures->len; i++) g_ptr_array_add(scripts, script_of(set->figures->pdata[i]));
+    g_ptr_array_add(scripts, NULL);
+    bool is_well =
+        rf_plotter_run(program, inside, (const char *const *)(const void *)scripts->pdata, &complaint);
+    for (guint i = 0; is_well && i < set->figures->len; i++) is_well = fetch(set->figures->pdata[i], inside);
+    if (is_well) return;
+    for (guint i = 0; i < set->figures->len; i++) {
+        RfFigure *figure = set->figures->pdata[i];
+        g_clear_pointer(&figure->svg, g_free);
+        draw_one(set, figure, program, inside);
+    }
 }
 
 RfFigureSet *rf_figure_draw_with(const RfResults *results, RfResultFolder *folder, const char *plotter,
@@ -80,7 +108,7 @@ RfFigureSet *rf_figure_draw_with(const RfResults *results, RfResultFolder *folde
         return g_steal_pointer(&set);
     }
     g_autofree char *inside = g_build_filename(rf_result_folder_path(folder), "figures", NULL);
-    for (guint i = 0; i < set->figures->len; i++) draw_one(set, set->figures->pdata[i], program, inside);
+    draw_all(set, program, inside);
     return g_steal_pointer(&set);
 }
 

@@ -63,7 +63,7 @@ static void draw(const RfResultFolder *folder, char **warning)
     }
     g_autofree char *inside = g_build_filename(rf_result_folder_path(folder), "figures", NULL);
     g_autofree char *complaint = NULL;
-    if (!rf_plotter_run(program, inside, "plan.gp", &complaint))
+    if (!rf_plotter_run(program, inside, (const char *const[]){"plan.gp", NULL}, &complaint))
         *warning = g_strdup_printf("gnuplot failed on %s; data and script are in figures/", complaint);
 }
 

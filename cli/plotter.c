@@ -1,6 +1,7 @@
 #include "cli/plotter.h"
 
 #include <glib.h>
+#include <stdint.h>
 
 char *rf_plotter_script(const char *name, const char *title, const RfPlotterSize *size, const char *body)
 {
@@ -17,20 +18,25 @@ char *rf_plotter_script(const char *name, const char *title, const RfPlotterSize
 }
 
 /* Fixed surroundings: nobody's start-up file, locale or clock in the picture. */
-bool rf_plotter_run(const char *program, const char *inside, const char *script, char **complaint)
+bool rf_plotter_run(const char *program, const char *inside, const char *const *scripts, char **complaint)
 {
-    const char *const arguments[] = {program, "-d", script, NULL};
     const char *const surroundings[] = {"PATH=/usr/local/bin:/usr/bin:/bin", "LC_ALL=C.UTF-8",
                                         "HOME=/nonexistent", "SOURCE_DATE_EPOCH=0", NULL};
+    g_autoptr(GPtrArray) arguments = g_ptr_array_new();
     g_autoptr(GError) error = NULL;
     g_autofree char *talk = NULL;
     int status = 0;
-    bool is_done = g_spawn_sync(inside, (char **)arguments, (char **)surroundings,
+    g_ptr_array_add(arguments, (void *)(uintptr_t)program);
+    g_ptr_array_add(arguments, (void *)(uintptr_t) "-d");
+    for (size_t i = 0; scripts[i]; i++) g_ptr_array_add(arguments, (void *)(uintptr_t)scripts[i]);
+    g_ptr_array_add(arguments, NULL);
+    bool is_done = g_spawn_sync(inside, (char **)arguments->pdata, (char **)surroundings,
                                 G_SPAWN_STDOUT_TO_DEV_NULL | G_SPAWN_CLOEXEC_PIPES, NULL, NULL, NULL, &talk,
                                 &status, &error) &&
                    g_spawn_check_wait_status(status, &error);
     if (!is_done)
-        *complaint = g_strdup_printf("%s: %s%s%s", script, error->message, talk && *talk ? "; it said: " : "",
-                                     talk && *talk ? g_strstrip(talk) : "");
+        *complaint =
+            g_strdup_printf("%s: %s%s%s", scripts[0], error->message, talk && *talk ? "; it said: " : "",
+                            talk && *talk ? g_strstrip(talk) : "");
     return is_done;
 }

@@ -13,5 +13,7 @@ typedef struct {
  * its own. Works with gnuplot 5.2 and later. (returns new) */
 char *rf_plotter_script(const char *name, const char *title, const RfPlotterSize *size, const char *body);
 
-/* Runs `script` in the folder `inside`; false with what went wrong in `complaint` (returns new). */
-bool rf_plotter_run(const char *program, const char *inside, const char *script, char **complaint);
+/* Runs `scripts` (names, ending with NULL) one after the other in the folder `inside`, by one process: starting one costs
+ * more than a figure. false with what went wrong in `complaint` (returns new): which script it was, only where it was the
+ * only one. */
+bool rf_plotter_run(const char *program, const char *inside, const char *const *scripts, char **complaint);
