@@ -99,7 +99,7 @@ static bool measure_recording(const RfSettings *settings, const RfLengthScaleOpt
                               Calibration *calibration, GError **error)
 {
     g_autoptr(RfVideoFile) video = rf_watch_open(settings, error);
-    g_autoptr(RfSpotFinder) finder = video ? rf_watch_learn(video, error) : NULL;
+    g_autoptr(RfSpotFinder) finder = video ? rf_watch_learn(video, rf_command_common()->threads, error) : NULL;
     if (!finder) return false;
     const RfBackground *background = rf_spot_finder_background(finder);
     RfLengthScaleOptions options = *given;

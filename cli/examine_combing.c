@@ -31,8 +31,9 @@ static RfFrame as_fields(const RfFrame *frame)
     return fields;
 }
 
-static bool learn(const RfFrame *frame, void *user)
+static bool learn(const RfFrame *frame, int slot, void *user)
 {
+    (void)slot; /* they come in order */
     Comb *comb = user;
     const RfFrame fields = as_fields(frame);
     return rf_picture_sample_add(comb->sample, &fields, &comb->error) &&
@@ -66,8 +67,9 @@ static void add_pair(Comb *comb, const Mover *mover, const RfSpot *first, const 
     comb->pairs++;
 }
 
-static bool look_apart(const RfFrame *frame, void *user)
+static bool look_apart(const RfFrame *frame, int slot, void *user)
 {
+    (void)slot;
     Comb *comb = user;
     const GArray *movers = g_hash_table_lookup(comb->movers, &frame->index);
     if (!movers) return true;
@@ -110,10 +112,11 @@ static void add_path(GHashTable *movers, const RfSightings *sightings, const RfP
     }
 }
 
-static bool show(Comb *comb, const RfVideoFile *video, bool (*take)(const RfFrame *, void *), GError **error)
+static bool show(Comb *comb, const RfVideoFile *video, bool (*take)(const RfFrame *, int, void *),
+                 GError **error)
 {
-    const bool is_shown =
-        rf_frame_feed_sample(video, SAMPLE_FRAMES, SAMPLE_SPACING_FRAMES, take, comb, error);
+    const RfSampling how = {SAMPLE_FRAMES, SAMPLE_SPACING_FRAMES, .threads = 1, .take = take, .user = comb};
+    const bool is_shown = rf_frame_feed_sample(video, &how, error);
     if (!comb->error) return is_shown;
     g_propagate_error(error, g_steal_pointer(&comb->error));
     return false;

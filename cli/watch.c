@@ -19,31 +19,26 @@ RfVideoFile *rf_watch_open(const RfSettings *settings, GError **error)
     return rf_video_file_open((const char *const *)paths->pdata, &options, error);
 }
 
-typedef struct {
-    RfPictureSample *sample;
-    GError *error;
-} Sampling;
-
-static bool take_sample(const RfFrame *frame, void *user)
+static bool take_sample(const RfFrame *frame, int slot, void *user)
 {
-    Sampling *sampling = user;
-    if (!rf_picture_sample_add(sampling->sample, frame, &sampling->error))
-        return false;
-    return rf_picture_sample_frames(sampling->sample) < rf_picture_sample_capacity(frame);
+    rf_picture_sample_put(user, (unsigned)slot, frame);
+    return true;
 }
 
-RfSpotFinder *rf_watch_learn(const RfVideoFile *video, GError **error)
+RfSpotFinder *rf_watch_learn(const RfVideoFile *video, int threads, GError **error)
 {
     const RfVideoInfo *info = rf_video_file_info(video);
+    const RfFrame like = {.width = info->width, .height = info->height, .bit_depth = info->bit_depth};
     g_autoptr(RfPictureSample) sample = rf_picture_sample_new(info->pixel_aspect);
-    Sampling sampling = {.sample = sample};
-    bool is_sampled =
-        rf_frame_feed_sample(video, SAMPLE_FRAMES, SAMPLE_SPACING_FRAMES, take_sample, &sampling, error);
-    if (sampling.error) {
-        g_propagate_error(error, sampling.error);
-        return NULL;
-    }
-    return is_sampled ? rf_spot_finder_learn(sample, NULL, error) : NULL;
+    RfSampling how = {.frames = MIN(SAMPLE_FRAMES, (int)rf_picture_sample_capacity(&like)),
+                      .spacing_frames = SAMPLE_SPACING_FRAMES,
+                      .threads = threads,
+                      .take = take_sample,
+                      .user = sample};
+    if (!rf_frame_feed_sample(video, &how, error) || !rf_picture_sample_settle(sample, error)) return NULL;
+    RfSpotFinderOptions options = RF_SPOT_FINDER_DEFAULTS;
+    options.threads = threads;
+    return rf_spot_finder_learn(sample, &options, error);
 }
 
 /* One pass: what the workers share, and what the ordered consumer keeps. */
@@ -126,8 +121,7 @@ static bool consume(const RfFrame *frame, void *data, void *user, GError **error
 static void on_progress(int64_t done, int64_t total, void *user)
 {
     const Pass *pass = user;
-    if (pass->hooks->progress)
-        pass->hooks->progress("watching", done, total);
+    if (pass->hooks->progress) pass->hooks->progress("watching", done, total);
 }
 
 static bool look_at_all(RfWatch *watch, const RfWatchHooks *hooks, GError **error)
@@ -145,8 +139,7 @@ static bool look_at_all(RfWatch *watch, const RfWatchHooks *hooks, GError **erro
     };
     RfFrameFeedOptions options = {.threads = hooks->threads};
     bool is_done = rf_frame_feed_run(watch->video, &how, &options, &watch->faults, error);
-    if (pass.previous)
-        rf_look_clear(pass.previous);
+    if (pass.previous) rf_look_clear(pass.previous);
     g_free(pass.previous);
     return is_done;
 }
@@ -162,11 +155,10 @@ RfWatch *rf_watch_recording(const RfSettings *settings, const RfWatchHooks *hook
 {
     g_autoptr(RfWatch) watch = g_new0(RfWatch, 1);
     watch->video = rf_watch_open(settings, error);
-    if (!watch->video)
-        return NULL;
+    if (!watch->video) return NULL;
     const RfVideoInfo *info = rf_video_file_info(watch->video);
     watch->sightings = rf_sightings_new(info->width, info->height, info->pixel_aspect);
-    watch->finder = rf_watch_learn(watch->video, error);
+    watch->finder = rf_watch_learn(watch->video, hooks->threads, error);
     if (!watch->finder || !look_at_all(watch, hooks, error)) {
         g_prefix_error(error, "%s: ", (const char *)g_ptr_array_index(settings->videos, 0));
         return NULL;
@@ -177,8 +169,7 @@ RfWatch *rf_watch_recording(const RfSettings *settings, const RfWatchHooks *hook
 
 void rf_watch_free(RfWatch *watch)
 {
-    if (!watch)
-        return;
+    if (!watch) return;
     rf_sightings_free(watch->sightings);
     rf_spot_finder_free(watch->finder);
     rf_video_file_free(watch->video);

@@ -34,5 +34,5 @@ RfWatch *rf_watch_recording(const RfSettings *settings, const RfWatchHooks *hook
 void rf_watch_free(RfWatch *watch);
 G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfWatch, rf_watch_free)
 
-/* Learns the finder from frames spread over the recording. (returns new) */
-RfSpotFinder *rf_watch_learn(const RfVideoFile *video, GError **error);
+/* Learns the finder from frames spread over the recording, the same with any number of threads. (returns new) */
+RfSpotFinder *rf_watch_learn(const RfVideoFile *video, int threads, GError **error);

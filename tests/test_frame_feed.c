@@ -241,12 +241,45 @@ static void test_error_comes_in_order(void)
     }
 }
 
-static bool take(const RfFrame *frame, void *user)
+static bool take(const RfFrame *frame, int slot, void *user)
 {
+    (void)slot;
     GArray *taken = user;
     Row row = {frame->index, frame->time_s, rf_clip_hash(frame), false};
     g_array_append_val(taken, row);
     return taken->len < 30;
+}
+
+typedef struct {
+    GMutex lock;
+    uint64_t hash[256]; /* by slot; 0: none */
+} Slots;
+
+static bool take_slot(const RfFrame *frame, int slot, void *user)
+{
+    Slots *slots = user;
+    g_assert_cmpint(slot, >=, 0);
+    g_assert_cmpint(slot, <, (int)G_N_ELEMENTS(slots->hash));
+    g_mutex_lock(&slots->lock);
+    g_assert_cmpuint(slots->hash[slot], ==, 0);
+    slots->hash[slot] = rf_clip_hash(frame);
+    g_mutex_unlock(&slots->lock);
+    return true;
+}
+
+/* Which frame goes where hangs on the file alone. */
+static void check_slots(const RfVideoFile *file, int frames, int spacing)
+{
+    g_autofree Slots *one = g_new0(Slots, 1), *many = g_new0(Slots, 1);
+    RfSampling how = {frames, spacing, .threads = 1, .take = take_slot, .user = one};
+    g_mutex_init(&one->lock);
+    g_mutex_init(&many->lock);
+    g_assert_true(rf_frame_feed_sample(file, &how, NULL));
+    how.threads = 3, how.user = many;
+    g_assert_true(rf_frame_feed_sample(file, &how, NULL));
+    g_assert_cmpmem(one->hash, sizeof one->hash, many->hash, sizeof many->hash);
+    g_mutex_clear(&one->lock);
+    g_mutex_clear(&many->lock);
 }
 
 static void check_samples(const RfVideoFile *file, int frames, int spacing, unsigned least, unsigned most,
@@ -256,8 +289,11 @@ static void check_samples(const RfVideoFile *file, int frames, int spacing, unsi
     g_autoptr(GArray) taken = g_array_new(FALSE, TRUE, sizeof(Row)),
                       again = g_array_new(FALSE, TRUE, sizeof(Row));
     g_autoptr(GArray) all = rows_with(file, 2, 0, NULL);
-    g_assert_true(rf_frame_feed_sample(file, frames, spacing, take, taken, &error));
-    g_assert_true(rf_frame_feed_sample(file, frames, spacing, take, again, &error));
+    RfSampling how = {frames, spacing, .threads = 1, .take = take, .user = taken};
+    g_assert_true(rf_frame_feed_sample(file, &how, &error));
+    how.user = again;
+    g_assert_true(rf_frame_feed_sample(file, &how, &error));
+    check_slots(file, frames, spacing);
     check_same("samples", taken, again);
     g_assert_cmpuint(taken->len, >=, least);
     g_assert_cmpuint(taken->len, <=, most);

@@ -5,7 +5,7 @@
 #include "tracker/luma.h"
 #include "tracker/registration.h"
 #include "tracker/reticle_shade.h"
-#include "tracker/row_threads.h"
+#include "tracker/work_shares.h"
 
 #include <math.h>
 #include <string.h>
@@ -13,11 +13,12 @@
 static const double MOVEMENT_PX = 0.1; /* less than this, rms over the sample, is a camera at rest */
 static const double FLICKER = 0.002;   /* a lamp steadier than this needs no second look */
 
-enum { FIRST_FRAMES = 15 };
+enum { FIRST_FRAMES = 15, ROWS_AT_A_TIME = 16, FRAMES_AT_A_TIME = 4 };
 
 /* Everything known about the sampled frames while learning. */
 typedef struct {
     const RfPictureSample *sample;
+    int threads;
     unsigned n;
     RfPose *poses;
     bool *is_usable; /* registration found its place; all true for a camera at rest */
@@ -140,7 +141,7 @@ static void learn_levels(Learning *learning, RfBackground *background, unsigned 
 {
     g_autofree int16_t *kept = g_new0(int16_t, (size_t)background->width * (size_t)background->height);
     LevelJob job = {learning, background, every, !background->is_moving && !is_any_lamp_off(learning), kept};
-    rf_row_threads_run(background->height, learn_rows, &job);
+    rf_work_shares_run(learning->threads, background->height, ROWS_AT_A_TIME, learn_rows, &job);
     for (int y = 0; y < background->height; y++) fill_gaps(learning, background, kept, y);
 }
 
@@ -194,12 +195,38 @@ static double flicker(const Learning *learning)
     return most;
 }
 
+/* For the frames of the sample, each by itself. */
+typedef struct {
+    Learning *learning;
+    const RfBackground *background;
+    const RfRegistration *registration;
+} FrameJob;
+
+static void measure_lamps_of(int first, int end, void *user)
+{
+    const FrameJob *job = user;
+    const RfBackground *background = job->background;
+    for (int i = first; i < end; i++)
+        rf_lamp_measure(background->level, &background->noise, background->pixel_aspect,
+                        rf_picture_sample_frame(job->learning->sample, (unsigned)i), &job->learning->poses[i],
+                        0, 1, &job->learning->lamps[i]);
+}
+
 static void measure_lamps(Learning *learning, const RfBackground *background)
 {
-    for (unsigned i = 0; i < learning->n; i++)
-        rf_lamp_measure(background->level, &background->noise, background->pixel_aspect,
-                        rf_picture_sample_frame(learning->sample, i), &learning->poses[i], 0, 1,
-                        &learning->lamps[i]);
+    FrameJob job = {learning, background, NULL};
+    rf_work_shares_run(learning->threads, (int)learning->n, FRAMES_AT_A_TIME, measure_lamps_of, &job);
+}
+
+static void register_those(int first, int end, void *user)
+{
+    const FrameJob *job = user;
+    Learning *learning = job->learning;
+    g_autoptr(RfRegistrationScratch) scratch = rf_registration_scratch_new(job->registration);
+    for (int i = first; i < end; i++)
+        learning->is_usable[i] = rf_registration_find(job->registration, scratch,
+                                                      rf_picture_sample_frame(learning->sample, (unsigned)i),
+                                                      &learning->poses[i], NULL);
 }
 
 /* Poses of all sampled frames against `level`; false where hardly any frame finds its place. */
@@ -208,14 +235,10 @@ static bool register_frames(Learning *learning, const RfBackground *background, 
 {
     g_autoptr(RfRegistration) registration =
         rf_registration_new(level, background->width, background->height, background->pixel_aspect, noise_sd);
-    g_autoptr(RfRegistrationScratch) scratch = rf_registration_scratch_new(registration);
+    FrameJob job = {learning, background, registration};
+    rf_work_shares_run(learning->threads, (int)learning->n, FRAMES_AT_A_TIME, register_those, &job);
     unsigned found = 0;
-    for (unsigned i = 0; i < learning->n; i++) {
-        const RfFrame *frame = rf_picture_sample_frame(learning->sample, i);
-        learning->is_usable[i] =
-            rf_registration_find(registration, scratch, frame, &learning->poses[i], NULL);
-        found += learning->is_usable[i];
-    }
+    for (unsigned i = 0; i < learning->n; i++) found += learning->is_usable[i];
     return found >= MAX(3u, learning->n / 2);
 }
 
@@ -269,11 +292,14 @@ static void settle_movement(Learning *learning, RfBackground *background)
 }
 
 /* Pixels of the sensor that show the same excess wherever the camera points: at rest they are in `level` instead. */
-static void find_sensor_pixels(const Learning *learning, RfBackground *background)
+static void find_sensor_pixels(int first, int end, void *user)
 {
+    const LevelJob *job = user;
+    const Learning *learning = job->learning;
+    RfBackground *background = job->background;
     int width = background->width, height = background->height;
     g_autofree float *off = g_new(float, learning->n);
-    for (int y = 2; y < height - 2; y++)
+    for (int y = MAX(first, 2); y < MIN(end, height - 2); y++)
         for (int x = 2; x < width - 2; x++) {
             unsigned kept = 0;
             for (unsigned i = 0; i < learning->n; i++) {
@@ -307,8 +333,9 @@ static void find_bad_pixels(const Learning *learning, RfBackground *background)
             if (sticks_out || flickers || (double)p[0] >= background->saturation_level)
                 background->flags[i] |= RF_PIXEL_BAD;
         }
+    LevelJob job = {.learning = learning, .background = background};
     if (background->is_moving)
-        find_sensor_pixels(learning, background);
+        rf_work_shares_run(learning->threads, height, ROWS_AT_A_TIME, find_sensor_pixels, &job);
     else
         memcpy(background->sensor_flags, background->flags, (size_t)width * (size_t)height);
 }
@@ -377,7 +404,7 @@ static void learn(Learning *learning, RfBackground *background)
     find_bad_pixels(learning, background);
 }
 
-RfBackground *rf_background_learn(const RfPictureSample *sample, GError **error)
+RfBackground *rf_background_learn(const RfPictureSample *sample, int threads, GError **error)
 {
     unsigned n = rf_picture_sample_frames(sample);
     if (n < 8) {
@@ -391,7 +418,7 @@ RfBackground *rf_background_learn(const RfPictureSample *sample, GError **error)
     g_autofree bool *is_usable = g_new0(bool, n);
     g_autofree RfLamp *lamps = g_new0(RfLamp, n);
     g_autofree float *variance = g_new0(float, pixels);
-    Learning learning = {sample, n, poses, is_usable, lamps, variance, 0};
+    Learning learning = {sample, threads, n, poses, is_usable, lamps, variance, 0};
     learn(&learning, background);
     return background;
 }

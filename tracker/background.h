@@ -35,8 +35,8 @@ typedef struct {
                               moves */
 } RfBackground;
 
-/* Needs 8 frames or more. The reference picture of a moving camera is that of the sample's middle frame. */
-RfBackground *rf_background_learn(const RfPictureSample *sample, GError **error);
+/* Needs 8 frames or more; the same with any number of threads (0: one per core). The reference picture of a moving camera is that of the sample's middle frame. */
+RfBackground *rf_background_learn(const RfPictureSample *sample, int threads, GError **error);
 void rf_background_free(RfBackground *background);
 G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfBackground, rf_background_free)
 double rf_pixel_noise_var(const RfPixelNoise *noise, double level);

@@ -315,50 +315,95 @@ bool rf_frame_feed_run(const RfVideoFile *file, const RfFrameLook *look, const R
 /* ---- samples ---- */
 
 typedef struct {
-    RfVideoReader *reader;
-    bool (*take)(const RfFrame *frame, void *user);
-    void *user;
-    bool is_enough;
+    const RfVideoFile *file;
+    const RfSampling *how;
+    int groups, each; /* keyframes taken, and samples from each on */
+    int next;         /* group; atomic */
+    int is_enough;    /* atomic */
+    GMutex lock;      /* guards the two below */
+    int failed_group;
+    GError *error; /* of the first group that failed, whoever met it first */
 } Sampling;
 
-/* Up to `samples` frames, `spacing` apart, from where the reader stands; none at or after frame `end`. */
-static bool sample_run(Sampling *sampling, int samples, int spacing, int64_t end, GError **error)
+/* Up to `samples` frames, `spacing` apart, from where the reader stands, into slots from `slot` on; none at or after
+ * frame `end`. */
+static bool sample_run(Sampling *sampling, RfVideoReader *reader, int slot, int samples, int64_t end,
+                       GError **error)
 {
-    for (int64_t n = 0, taken = 0; taken < samples; n++) {
+    int taken = 0;
+    for (int64_t n = 0; taken < samples && !g_atomic_int_get(&sampling->is_enough); n++) {
         RfFrame frame;
-        RfVideoStep step = rf_video_file_next(sampling->reader, &frame, error);
+        RfVideoStep step = rf_video_file_next(reader, &frame, error);
         if (step != RF_VIDEO_FRAME) return step == RF_VIDEO_END;
         if (frame.index >= end) return true;
-        if (n % spacing != 0) continue;
+        if (n % sampling->how->spacing_frames != 0) continue;
+        if (!sampling->how->take(&frame, slot + taken, sampling->how->user))
+            g_atomic_int_set(&sampling->is_enough, 1);
         taken++;
-        sampling->is_enough = !sampling->take(&frame, sampling->user);
-        if (sampling->is_enough) return true;
     }
     return true;
 }
 
-static bool sample_keyframes(Sampling *sampling, const RfVideoFile *file, int frames, int spacing,
-                             GError **error)
+static bool sample_group(Sampling *sampling, RfVideoReader *reader, int group, GError **error)
 {
+    const RfVideoFile *file = sampling->file;
     int keyframes = rf_video_file_keyframes(file);
-    int groups = MIN(frames, keyframes), each = (frames + groups - 1) / groups;
-    for (int g = 0; g < groups && !sampling->is_enough; g++) {
-        int k = (int)((2 * (int64_t)g + 1) * keyframes / (2 * (int64_t)groups));
-        int64_t end = k + 1 < keyframes ? rf_video_file_keyframe(file, k + 1) : INT64_MAX;
-        if (!rf_video_file_go_to(sampling->reader, rf_video_file_keyframe(file, k), error)) return false;
-        if (!sample_run(sampling, each, spacing, end, error)) return false;
-    }
-    return true;
+    int k = (int)((2 * (int64_t)group + 1) * keyframes / (2 * (int64_t)sampling->groups));
+    int64_t end = k + 1 < keyframes ? rf_video_file_keyframe(file, k + 1) : INT64_MAX;
+    return rf_video_file_go_to(reader, rf_video_file_keyframe(file, k), error) &&
+           sample_run(sampling, reader, group * sampling->each, sampling->each, end, error);
 }
 
-bool rf_frame_feed_sample(const RfVideoFile *file, int frames, int spacing_frames,
-                          bool (*take)(const RfFrame *frame, void *user), void *user, GError **error)
+static void keep_error(Sampling *sampling, int group, GError *error)
 {
-    g_return_val_if_fail(frames >= 1 && spacing_frames >= 1, false);
+    g_mutex_lock(&sampling->lock);
+    if (!sampling->error || group < sampling->failed_group) {
+        g_clear_error(&sampling->error);
+        sampling->error = g_steal_pointer(&error);
+        sampling->failed_group = group;
+    }
+    g_mutex_unlock(&sampling->lock);
+    g_clear_error(&error);
+}
+
+static void *sample_groups(void *data)
+{
+    Sampling *sampling = data;
+    g_autoptr(RfVideoReader) reader = NULL;
+    int group;
+    while ((group = g_atomic_int_add(&sampling->next, 1)) < sampling->groups &&
+           !g_atomic_int_get(&sampling->is_enough)) {
+        GError *error = NULL;
+        if (!reader) reader = rf_video_file_reader_new(sampling->file, 1, &error);
+        if (!reader || !sample_group(sampling, reader, group, &error)) keep_error(sampling, group, error);
+    }
+    return NULL;
+}
+
+static bool sample_side_by_side(Sampling *sampling, GError **error)
+{
+    enum { MOST_HELPERS = 63 };
+    GThread *helpers[MOST_HELPERS];
+    int threads = sampling->how->threads > 0 ? sampling->how->threads : (int)g_get_num_processors();
+    int n = CLAMP(MIN(threads, sampling->groups) - 1, 0, MOST_HELPERS);
+    g_mutex_init(&sampling->lock);
+    for (int i = 0; i < n; i++) helpers[i] = g_thread_new("rf-sample", sample_groups, sampling);
+    sample_groups(sampling);
+    for (int i = 0; i < n; i++) g_thread_join(helpers[i]);
+    g_mutex_clear(&sampling->lock);
+    if (!sampling->error) return true;
+    g_propagate_error(error, sampling->error);
+    return false;
+}
+
+bool rf_frame_feed_sample(const RfVideoFile *file, const RfSampling *how, GError **error)
+{
+    g_return_val_if_fail(how->frames >= 1 && how->spacing_frames >= 1, false);
+    Sampling sampling = {.file = file, .how = how, .groups = MIN(how->frames, rf_video_file_keyframes(file))};
+    if (sampling.groups > 0) {
+        sampling.each = (how->frames + sampling.groups - 1) / sampling.groups;
+        return sample_side_by_side(&sampling, error);
+    }
     g_autoptr(RfVideoReader) reader = rf_video_file_reader_new(file, 1, error);
-    if (reader == NULL) return false;
-    Sampling sampling = {reader, take, user, false};
-    if (rf_video_file_keyframes(file) > 0)
-        return sample_keyframes(&sampling, file, frames, spacing_frames, error);
-    return sample_run(&sampling, frames, spacing_frames, INT64_MAX, error);
+    return reader && sample_run(&sampling, reader, 0, how->frames, INT64_MAX, error);
 }

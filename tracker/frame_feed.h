@@ -39,10 +39,18 @@ typedef struct {
 bool rf_frame_feed_run(const RfVideoFile *file, const RfFrameLook *look, const RfFrameFeedOptions *options,
                        RfVideoFaults *faults, GError **error);
 
-/* About `frames` frames spread evenly over the part in use, in ascending order, for learning the background. Where
- * keyframes suffice, only these are decoded. Where they don't, every keyframe is followed by further samples
- * `spacing_frames` (>= 1) apart, as far as its group reaches. Where frames can't be reached on their own (not indexed, or
- * no keyframe in the part), samples are `spacing_frames` apart from the start on. Deterministic. take() returns false to
- * stop early (not an error). */
-bool rf_frame_feed_sample(const RfVideoFile *file, int frames, int spacing_frames,
-                          bool (*take)(const RfFrame *frame, void *user), void *user, GError **error);
+typedef struct {
+    int frames;         /* >= 1: about as many are taken */
+    int spacing_frames; /* >= 1: between samples from the same keyframe on */
+    int threads; /* 0: as many as the machine has cores. With 1 on the caller's thread, in the order of slots */
+    /* Any thread. The frame is lent for this call only. `slot` counts samples in the order of frames from 0 on, with gaps
+     * where a group of frames was short, and goes a little beyond `frames`. false: stop early (not an error). */
+    bool (*take)(const RfFrame *frame, int slot, void *user);
+    void *user;
+} RfSampling;
+
+/* Frames spread evenly over the part in use, for learning the background. Where keyframes suffice, only these are decoded.
+ * Where they don't, every keyframe is followed by further samples `spacing_frames` apart, as far as its group reaches.
+ * Where frames can't be reached on their own (not indexed, or no keyframe in the part), samples are `spacing_frames` apart
+ * from the start on. Deterministic: which frame has which slot depends on the file alone. */
+bool rf_frame_feed_sample(const RfVideoFile *file, const RfSampling *how, GError **error);

@@ -16,6 +16,12 @@ G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfPictureSample, rf_picture_sample_free)
 unsigned rf_picture_sample_capacity(const RfFrame *frame);
 /* Copies the frame. Fails where its size, bit depth or interlacing differs from the first one's. */
 bool rf_picture_sample_add(RfPictureSample *sample, const RfFrame *frame, GError **error);
+
+/* Copies a frame from any thread; rf_picture_sample_settle() then adds what was put, in the order of slots, as far as the
+ * capacity goes. */
+void rf_picture_sample_put(RfPictureSample *sample, unsigned slot, const RfFrame *frame);
+bool rf_picture_sample_settle(RfPictureSample *sample, GError **error);
+
 unsigned rf_picture_sample_frames(const RfPictureSample *sample);
 /* (borrowed until the sample is freed) frame `i` in the order of adding */
 const RfFrame *rf_picture_sample_frame(const RfPictureSample *sample, unsigned i);

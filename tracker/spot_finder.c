@@ -8,6 +8,7 @@
 #include "tracker/spot_detector.h"
 #include "tracker/spot_fitter.h"
 #include "tracker/spot_statistics.h"
+#include "tracker/work_shares.h"
 
 #include <gsl/gsl_cdf.h>
 #include <math.h>
@@ -231,41 +232,78 @@ void rf_look_append(const RfLook *look, RfSightings *sightings)
 
 /* Learning */
 
+/* One exposure of the sample. */
+typedef struct {
+    RfExposureView view;
+    bool is_posed; /* the rest means nothing without */
+    RfSpotStatistics *statistics;
+    GArray *spots; /* of RfSpot, found in the last search */
+} Shown;
+
 typedef struct {
     const RfPictureSample *sample;
     RfSpotFinder *finder;
-    RfSpotScratch *scratch;
     const RfSpotFinderOptions *options;
+    int fields;
+    Shown *shown; /* `fields` of each frame */
 } Lesson;
 
-typedef void (*ViewVisitor)(const Lesson *lesson, const RfExposureView *view, void *data);
-
-static void for_each_exposure(const Lesson *lesson, ViewVisitor visit, void *data)
+static void measure_noise(const Lesson *lesson, RfSpotScratch *scratch, Shown *shown)
 {
-    unsigned fields = lesson->finder->background->is_interlaced ? 2 : 1;
-    for (unsigned i = 0; i < rf_picture_sample_frames(lesson->sample); i++) {
-        const RfFrame *frame = rf_picture_sample_frame(lesson->sample, i);
+    const RfContrast *contrast = lesson->finder->contrast;
+    rf_contrast_fill(contrast, &shown->view, 1, rf_spot_detector_picture(scratch->detector));
+    if (!rf_spot_detector_filter(scratch->detector)) return;
+    for (int size = 0; size < RF_SPOT_DETECTOR_SIZES; size++) {
+        int width, height;
+        const float *filtered = rf_spot_detector_filtered(scratch->detector, size, &width, &height);
+        rf_spot_statistics_add(shown->statistics, size, filtered, width * height, rf_contrast_width(contrast),
+                               rf_spot_detector_picture(scratch->detector));
+    }
+    rf_spot_statistics_add_lamp(shown->statistics, shown->view.lamp.gain);
+}
+
+static void view_those(int first, int end, void *user)
+{
+    const Lesson *lesson = user;
+    g_autoptr(RfSpotScratch) scratch = rf_spot_scratch_new(lesson->finder);
+    for (int i = first; i < end; i++) {
+        const RfFrame *frame = rf_picture_sample_frame(lesson->sample, (unsigned)i);
         RfPose pose;
-        if (!find_pose(lesson->finder, lesson->scratch, frame, &pose)) continue;
-        for (unsigned field = 0; field < fields; field++) {
-            RfExposureView view = view_exposure(lesson->finder, frame, &pose, field);
-            visit(lesson, &view, data);
+        bool is_posed = find_pose(lesson->finder, scratch, frame, &pose);
+        for (int field = 0; field < lesson->fields; field++) {
+            Shown *shown = &lesson->shown[i * lesson->fields + field];
+            shown->is_posed = is_posed;
+            shown->spots = g_array_new(false, false, sizeof(RfSpot));
+            shown->statistics = rf_spot_statistics_new();
+            if (!is_posed) continue;
+            shown->view = view_exposure(lesson->finder, frame, &pose, (unsigned)field);
+            measure_noise(lesson, scratch, shown);
         }
     }
 }
 
-static void measure_noise(const Lesson *lesson, const RfExposureView *view, void *data)
+static void search_those(int first, int end, void *user)
 {
-    rf_contrast_fill(lesson->finder->contrast, view, 1, rf_spot_detector_picture(lesson->scratch->detector));
-    if (!rf_spot_detector_filter(lesson->scratch->detector)) return;
-    for (int size = 0; size < RF_SPOT_DETECTOR_SIZES; size++) {
-        int width, height;
-        const float *filtered = rf_spot_detector_filtered(lesson->scratch->detector, size, &width, &height);
-        rf_spot_statistics_add((RfSpotStatistics *)data, size, filtered, width * height,
-                               rf_contrast_width(lesson->finder->contrast),
-                               rf_spot_detector_picture(lesson->scratch->detector));
+    const Lesson *lesson = user;
+    g_autoptr(RfSpotScratch) scratch = rf_spot_scratch_new(lesson->finder);
+    for (int i = first * lesson->fields; i < end * lesson->fields; i++) {
+        Shown *shown = &lesson->shown[i];
+        g_array_set_size(shown->spots, 0);
+        if (shown->is_posed) search(lesson->finder, scratch, &shown->view, shown->spots);
     }
-    rf_spot_statistics_add_lamp((RfSpotStatistics *)data, view->lamp.gain);
+}
+
+enum { FRAMES_AT_A_TIME = 4 };
+
+static void share_out(Lesson *lesson, RfShareJob job)
+{
+    rf_work_shares_run(lesson->options->threads, (int)rf_picture_sample_frames(lesson->sample),
+                       FRAMES_AT_A_TIME, job, lesson);
+}
+
+static int exposures(const Lesson *lesson)
+{
+    return (int)rf_picture_sample_frames(lesson->sample) * lesson->fields;
 }
 
 /* So high that pure noise crosses it `false_per_exposure` times per exposure, all sizes together. */
@@ -290,21 +328,20 @@ static void settle_polarity(const Lesson *lesson, const RfSpotStatistics *statis
     lesson->finder->findings.is_dark = is_dark;
 }
 
-typedef struct {
-    GArray *spots;
-    RfSpotCalibration *calibration;
-    unsigned exposures;
-} Harvest;
-
-static void harvest_spots(const Lesson *lesson, const RfExposureView *view, void *data)
+/* All spots of the last search, in order. (returns new) */
+static GArray *gather_spots(const Lesson *lesson, RfSpotCalibration *calibration, unsigned *posed)
 {
-    Harvest *harvest = data;
-    unsigned first = harvest->spots->len;
-    search(lesson->finder, lesson->scratch, view, harvest->spots);
-    if (harvest->spots->len > first)
-        rf_spot_calibration_add(harvest->calibration, view, &g_array_index(harvest->spots, RfSpot, first),
-                                harvest->spots->len - first);
-    harvest->exposures++;
+    GArray *spots = g_array_new(false, false, sizeof(RfSpot));
+    *posed = 0;
+    for (int i = 0; i < exposures(lesson); i++) {
+        const Shown *shown = &lesson->shown[i];
+        *posed += shown->is_posed;
+        if (!shown->spots->len) continue;
+        g_array_append_vals(spots, shown->spots->data, shown->spots->len);
+        rf_spot_calibration_add(calibration, &shown->view, &g_array_index(shown->spots, RfSpot, 0),
+                                shown->spots->len);
+    }
+    return spots;
 }
 
 static void use_shape(RfSpotFinder *finder, double focus_width_px, double expected_width_px)
@@ -331,17 +368,17 @@ static void heed(RfSpotFinder *finder, const RfSpotLesson *lesson)
 
 /* Twice: fits of the sampled exposures tell the droplets' widths, and these make the fits better, which then tell what
  * noise and lines do to a spot. */
-static void learn_spots(const Lesson *lesson)
+static void learn_spots(Lesson *lesson)
 {
     RfSpotFinder *finder = lesson->finder;
     for (int round = 0; round < 2; round++) {
-        g_autoptr(GArray) spots = g_array_new(false, false, sizeof(RfSpot));
         g_autoptr(RfSpotCalibration) calibration = rf_spot_calibration_new();
-        Harvest harvest = {spots, calibration, 0};
-        for_each_exposure(lesson, harvest_spots, &harvest);
+        unsigned posed;
+        share_out(lesson, search_those);
+        g_autoptr(GArray) spots = gather_spots(lesson, calibration, &posed);
         RfSpotWidths widths = rf_spot_statistics_widths(spots, finder->background->pixel_aspect);
         if (widths.n) use_shape(finder, widths.sharpest_px, widths.typical_px);
-        rf_spot_statistics_describe(spots, harvest.exposures, &finder->findings);
+        rf_spot_statistics_describe(spots, posed, &finder->findings);
         if (round == 1) {
             RfSpotLesson learned = rf_spot_calibration_learn(calibration, &finder->fitting.localiser);
             heed(finder, &learned);
@@ -367,21 +404,33 @@ static RfSpotFinder *finder_on(RfBackground *background)
     return finder;
 }
 
+/* What all exposures say together of noise and polarity. */
+static void learn_noise(const Lesson *lesson)
+{
+    g_autoptr(RfSpotStatistics) statistics = rf_spot_statistics_new();
+    for (int i = 0; i < exposures(lesson); i++)
+        rf_spot_statistics_join(statistics, lesson->shown[i].statistics);
+    rf_spot_statistics_describe_noise(statistics, lesson->finder->background, &lesson->finder->findings);
+    settle_polarity(lesson, statistics);
+    set_thresholds(lesson, statistics);
+}
+
 RfSpotFinder *rf_spot_finder_learn(const RfPictureSample *sample, const RfSpotFinderOptions *options,
                                    GError **error)
 {
     static const RfSpotFinderOptions defaults = RF_SPOT_FINDER_DEFAULTS;
-    RfBackground *background = rf_background_learn(sample, error);
+    const RfSpotFinderOptions *how = options ? options : &defaults;
+    RfBackground *background = rf_background_learn(sample, how->threads, error);
     if (!background) return NULL;
-    RfSpotFinder *finder = finder_on(background);
-    RfSpotScratch *scratch = rf_spot_scratch_new(finder);
-    Lesson lesson = {sample, finder, scratch, options ? options : &defaults};
-    g_autoptr(RfSpotStatistics) statistics = rf_spot_statistics_new();
-    for_each_exposure(&lesson, measure_noise, statistics);
-    rf_spot_statistics_describe_noise(statistics, background, &finder->findings);
-    settle_polarity(&lesson, statistics);
-    set_thresholds(&lesson, statistics);
+    Lesson lesson = {sample, finder_on(background), how, background->is_interlaced ? 2 : 1, NULL};
+    lesson.shown = g_new0(Shown, exposures(&lesson));
+    share_out(&lesson, view_those);
+    learn_noise(&lesson);
     learn_spots(&lesson);
-    rf_spot_scratch_free(scratch);
-    return finder;
+    for (int i = 0; i < exposures(&lesson); i++) {
+        rf_spot_statistics_free(lesson.shown[i].statistics);
+        g_array_unref(lesson.shown[i].spots);
+    }
+    g_free(lesson.shown);
+    return lesson.finder;
 }

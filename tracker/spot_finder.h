@@ -23,11 +23,12 @@ typedef enum {
 typedef struct {
     double false_per_exposure; /* (0, 1]: false spots that noise alone may give in one exposure */
     RfPolarity polarity;
+    int threads; /* 0: one per core; they don't alter what is learned */
 } RfSpotFinderOptions;
 
 #define RF_SPOT_FINDER_DEFAULTS                                                                              \
     {                                                                                                        \
-        .false_per_exposure = 0.02, .polarity = RF_POLARITY_FIND                                             \
+        .false_per_exposure = 0.02, .polarity = RF_POLARITY_FIND, .threads = 1                               \
     }
 
 /* (returns new) NULL with an error where the sample is too small. Deterministic.

@@ -66,6 +66,21 @@ void rf_spot_statistics_add_lamp(RfSpotStatistics *statistics, double gain)
     g_array_append_val(statistics->gains, gain);
 }
 
+static void join(GArray *values, const GArray *others)
+{
+    if (others->len) g_array_append_vals(values, others->data, others->len);
+}
+
+void rf_spot_statistics_join(RfSpotStatistics *statistics, const RfSpotStatistics *others)
+{
+    for (int i = 0; i < RF_SPOT_DETECTOR_SIZES; i++) join(statistics->absolute[i], others->absolute[i]);
+    join(statistics->gains, others->gains);
+    statistics->far_above += others->far_above;
+    statistics->far_below += others->far_below;
+    statistics->product += others->product;
+    statistics->square += others->square;
+}
+
 static int by_float(const void *a, const void *b)
 {
     float p = *(const float *)a, q = *(const float *)b;

@@ -13,6 +13,8 @@ G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfSpotStatistics, rf_spot_statistics_free)
 void rf_spot_statistics_add(RfSpotStatistics *statistics, int size, const float *filtered, int n, int width,
                             const float *picture);
 void rf_spot_statistics_add_lamp(RfSpotStatistics *statistics, double gain);
+/* Adds what other exposures gave, so that these may be gathered side by side. */
+void rf_spot_statistics_join(RfSpotStatistics *statistics, const RfSpotStatistics *others);
 
 /* Robust sd of the filtered pictures (1.4826 times the median absolute value); 0 where nothing was added. */
 double rf_spot_statistics_noise_sd(const RfSpotStatistics *statistics, int size);

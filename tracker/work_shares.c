@@ -1,32 +1,32 @@
-#include "tracker/row_threads.h"
+#include "tracker/work_shares.h"
 
 #include <glib.h>
 
-enum { ROWS_AT_A_TIME = 16, MOST_THREADS = 16 };
+enum { MOST_THREADS = 64 };
 
 typedef struct {
-    int rows;
+    int items, at_a_time;
     int next; /* atomic */
-    RfRowJob job;
+    RfShareJob job;
     void *user;
-} Rows;
+} Shares;
 
 static void *work(void *data)
 {
-    Rows *rows = data;
+    Shares *shares = data;
     int first;
-    while ((first = g_atomic_int_add(&rows->next, ROWS_AT_A_TIME)) < rows->rows)
-        rows->job(first, MIN(first + ROWS_AT_A_TIME, rows->rows), rows->user);
+    while ((first = g_atomic_int_add(&shares->next, shares->at_a_time)) < shares->items)
+        shares->job(first, MIN(first + shares->at_a_time, shares->items), shares->user);
     return NULL;
 }
 
-void rf_row_threads_run(int rows, RfRowJob job, void *user)
+void rf_work_shares_run(int threads, int items, int at_a_time, RfShareJob job, void *user)
 {
-    Rows shared = {rows, 0, job, user};
+    Shares shares = {items, at_a_time, 0, job, user};
     GThread *helpers[MOST_THREADS];
-    int n = CLAMP((int)g_get_num_processors() - 1, 0, MOST_THREADS);
-    n = MIN(n, rows / ROWS_AT_A_TIME);
-    for (int i = 0; i < n; i++) helpers[i] = g_thread_new("rf-rows", work, &shared);
-    work(&shared);
+    int wanted = threads > 0 ? threads : (int)g_get_num_processors();
+    int n = CLAMP(MIN(wanted, (items + at_a_time - 1) / at_a_time) - 1, 0, MOST_THREADS);
+    for (int i = 0; i < n; i++) helpers[i] = g_thread_new("rf-shares", work, &shares);
+    work(&shares);
     for (int i = 0; i < n; i++) g_thread_join(helpers[i]);
 }

@@ -1,8 +1,11 @@
-/* Rows of a picture shared out among the machine's cores, for work whose result at a row depends on nothing that another
- * row's work writes: the outcome is the same with any number of threads. Not for frames of a recording. */
+/* Rows of a picture, or pictures of a sample, shared out among threads: for work whose result at one item depends on
+ * nothing that another item's work writes, so that the outcome is the same with any number of threads. Not for the frames
+ * of a recording: frame_feed.h. */
 #pragma once
 
-/* Works on rows first .. end - 1; any thread, several at once. */
-typedef void (*RfRowJob)(int first, int end, void *user);
+/* Works on items first .. end - 1; any thread, several at once. */
+typedef void (*RfShareJob)(int first, int end, void *user);
 
-void rf_row_threads_run(int rows, RfRowJob job, void *user);
+/*   threads    0: as many as the machine has cores
+ *   at_a_time  >= 1: a thread takes so many items, then the next */
+void rf_work_shares_run(int threads, int items, int at_a_time, RfShareJob job, void *user);
