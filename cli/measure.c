@@ -3,6 +3,7 @@
 #include "calib/voltage_log.h"
 #include "cli/assess.h"
 #include "cli/effects.h"
+#include "cli/review_verdicts.h"
 #include "cli/trails.h"
 
 #include <math.h>
@@ -220,20 +221,20 @@ static void warn_of_timeline(RfResults *results, const RfFieldTimeline *timeline
 
 /* ---- paths that passed from one droplet to another ---- */
 
-static void warn_of_swap(RfResults *results, const RfTrailSet *trails, size_t i, const RfDropletSwap *swap,
-                         unsigned as)
+static void note_cut(RfResults *results, const RfTrailSet *trails, size_t i, const RfDropletSwap *swap,
+                     unsigned as)
 {
     size_t partner = 0;
     bool is_merged = rf_droplet_swap_kind(trails->trails, trails->n, i, swap, &partner) == RF_SWAP_MERGED;
     g_autofree char *where = is_merged ? g_strdup_printf(", where droplet %u ends: they may have merged",
                                                          trails->trails[partner].droplet)
                                        : g_strdup("");
-    rf_results_warn(
-        results,
+    char *cut = g_strdup_printf(
         "droplet %u is another one from %.2f s on%s: not only its charge but its radius changes there, by "
         "%.0f %% (u = %.0f %%); what follows is droplet %u",
         trails->trails[i].droplet, swap->time_s, where, 100 * expm1(swap->log_radius_change.value),
         100 * exp(swap->log_radius_change.value) * swap->log_radius_change.sigma, as);
+    g_ptr_array_add(results->cuts, cut);
 }
 
 /* Cuts each such path in two. Returns false where there was none. */
@@ -243,13 +244,14 @@ static bool cut_swapped(RfResults *results, const RfTrailSet *trails, const RfDr
     for (size_t i = 0; i < set->n; i++) {
         const RfDropletResult *result = &set->droplets[i];
         if (!result->is_swapped) continue;
-        warn_of_swap(results, trails, i, &result->swap, ++as);
+        note_cut(results, trails, i, &result->swap, ++as);
         rf_trails_cut(results->paths, trails->trails[i].droplet, result->swap.time_s, as);
     }
     return as > last;
 }
 
-/* Measured, and measured again while paths had to be cut: what all droplets share hangs on each of them. */
+/* Measured, and measured again while paths had to be cut: what all droplets share hangs on each of them. Paths that a
+ * person has reviewed are final. */
 static RfDropletSet *measure_whole_paths(RfResults *results, const RfDropletSetSettings *how,
                                          RfTrailSet **trails, GError **error)
 {
@@ -258,7 +260,7 @@ static RfDropletSet *measure_whole_paths(RfResults *results, const RfDropletSetS
     for (int round = 0; round < ROUNDS; round++) {
         *trails = rf_trails_new(results->paths);
         set = rf_droplet_set_measure((*trails)->trails, (*trails)->n, how, error);
-        if (!set || round + 1 == ROUNDS || !cut_swapped(results, *trails, set)) break;
+        if (!set || round + 1 == ROUNDS || results->without || !cut_swapped(results, *trails, set)) break;
         rf_droplet_set_free(set);
         rf_trails_free(*trails);
     }
@@ -278,6 +280,8 @@ static bool measure_droplets(RfResults *results, const RfChargeInputs *inputs, c
     g_autoptr(RfTrailSet) trails = NULL;
     g_autoptr(RfDropletSet) set = measure_whole_paths(results, &how, &trails, error);
     if (!set) return false;
+    for (guint i = 0; i < results->cuts->len; i++)
+        rf_results_warn(results, "%s", (char *)results->cuts->pdata[i]);
     add_switches(results, set->timeline);
     results->has_log_clock = set->timeline->has_log && set->timeline->log_offset_s.sigma > 0;
     results->log_offset_s = set->timeline->log_offset_s;
@@ -286,9 +290,9 @@ static bool measure_droplets(RfResults *results, const RfChargeInputs *inputs, c
     /* Vertical drift of the air can't be told from falling; as much of it as shows by changing is carried. */
     RfChargeInputs shared = *inputs;
     shared.air_drift_u_m_s = set->drift->fall_rms_m_s;
-    if (!rf_assess_droplets(results, trails->trails, set, &shared, error) ||
-        !rf_assess_budget(results, trails->trails, set, &shared, error))
-        return false;
+    if (!rf_assess_droplets(results, trails->trails, set, &shared, error)) return false;
+    rf_review_verdicts_apply(results);
+    if (!rf_assess_budget(results, trails->trails, set, &shared, error)) return false;
     warn_of_timeline(results, set->timeline);
     rf_effects_state(results, trails->trails, set, &shared);
     return true;

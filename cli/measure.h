@@ -20,7 +20,9 @@ RfSupply *rf_measure_supply_new(const RfSettings *settings, GError **error);
 void rf_measure_supply_free(RfSupply *supply);
 G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfSupply, rf_measure_supply_free)
 
-/* Reads results->paths and fills segments, switches, steps, droplets, unit, budget, warnings, measured and verdict.
+/* Reads results->paths and fills segments, switches, steps, droplets, unit, budget, warnings, measured and verdict. Cuts
+ * paths that passed from one droplet to another and says so in results->cuts, unless results->without says that a person
+ * has settled them; verdicts in results->review are honoured.
  * `threads` 0: one per core. */
 bool rf_measure_paths(RfResults *results, const RfChargeInputs *inputs, const RfSupply *supply, int threads,
                       GError **error);

@@ -8,7 +8,9 @@
 #include "cli/follow.h"
 #include "cli/health.h"
 #include "cli/measure.h"
+#include "cli/overrule.h"
 #include "cli/read_paths.h"
+#include "cli/review.h"
 #include "cli/ruler.h"
 #include "cli/view.h"
 #include "cli/write_csv.h"
@@ -121,7 +123,8 @@ static bool set_out(Road *road, const RfSettings *settings, GError **error)
     road->results = new_results(settings, error);
     road->supply = road->results ? rf_measure_supply_new(settings, error) : NULL;
     /* A table that is none is said now, not after the work. */
-    return road->supply != NULL && (!settings->timings || rf_audit_can_read(settings->timings, error));
+    return road->supply != NULL && (!settings->timings || rf_audit_can_read(settings->timings, error)) &&
+           (!settings->review || rf_review_read(settings->review, road->results, error));
 }
 
 /* A record that can't be audited is no reason to lose the run. */
@@ -136,7 +139,7 @@ static bool measure(Road *road, const RfSettings *settings, const RfWatchHooks *
 {
     const RfChargeInputs inputs = rf_conditions_of(settings, road->scale_relative_u);
     rf_common_inputs_state(road->results, settings, &inputs);
-    if (!rf_measure_paths(road->results, &inputs, road->supply, hooks->threads, error) ||
+    if (!rf_overrule_measure(road->results, &inputs, road->supply, hooks->threads, error) ||
         !rf_certificate_check(road->results, settings, &inputs, error))
         return false;
     road->results->air_temperature_kelvin = inputs.temperature_kelvin;
@@ -166,6 +169,7 @@ RfResults *rf_pipeline_paths(const RfSettings *settings, const RfWatchHooks *hoo
     Road road = {0};
     if (!set_out(&road, settings, error) || !follow_recording(&road, settings, hooks, error))
         return arrive(&road, false);
+    g_array_set_size(road.results->review, 0); /* paths as they were followed: charge honours the review */
     road.results->measured = road.results->paths->len > 0;
     road.results->verdict = g_strdup(road.results->measured ? "Paths only: nothing was measured from them."
                                                             : "Nothing could be measured: no droplet was seen.");

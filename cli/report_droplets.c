@@ -60,8 +60,8 @@ static void droplet_row(GString *out, const RfDropletRow *row, bool is_first)
         g_string_append(out, "<td class=\"number\">–</td><td class=\"number\">–</td>");
     }
     multiple_cell(out, row);
-    rf_report_text_cell(out, false, row->accepted ? "accepted" : "set aside");
-    g_string_append(out, "</tr>\n");
+    g_string_append_printf(out, "<td>%s%s</td></tr>\n", row->accepted ? "accepted" : "set aside",
+                           row->is_overruled ? " <small class=\"soft\">by a person</small>" : "");
 }
 
 void rf_report_droplets(GString *out, const RfResults *results)

@@ -115,6 +115,7 @@ void rf_report_first_screen(GString *out, const RfResults *results)
         droplets_fact(out, results);
     limit_fact(out, results);
     g_string_append(out, "</dl>\n");
+    rf_report_review_notice(out, results);
     warnings(out, results->warnings);
     rf_report_text_close(out);
 }

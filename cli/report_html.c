@@ -5,10 +5,12 @@
 
 static const char *const STYLE[] = {
 #include "cli/report_style.inc"
+#include "cli/report_review_style.inc"
 };
 
 static const char *const SCRIPT[] = {
 #include "cli/report_script.inc"
+#include "cli/report_review_script.inc"
 };
 
 static char *joined(const char *const *lines, size_t n)
@@ -74,6 +76,7 @@ static void contents(GString *out, const RfResults *results, const RfFigureSet *
         {"velocities", "Velocities", rf_figure_find(figures, "velocities") != NULL},
         {"droplets", "Droplets", !is_pool},
         {"aside", "Set aside", !is_pool},
+        {"review", results->without ? "Overruled" : "Overrule", !is_pool},
         {"events", "Switches and steps", !is_pool},
         {"unit", "Unit", true},
         {"radius", "Radius twice", rf_figure_find(figures, "radius") != NULL},
@@ -158,6 +161,7 @@ GString *rf_report_html_new(const RfResults *results, const RfFigureSet *figures
                    "triangles charge steps.");
     rf_report_droplets(out, results);
     rf_report_set_aside(out, results);
+    rf_report_review(out, results);
     rf_report_events(out, results);
     unit_section(out, results, figures);
     figure_section(out, figures, "radius", "The radius, seen twice",

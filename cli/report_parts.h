@@ -36,6 +36,9 @@ void rf_report_first_screen(GString *out, const RfResults *results);
 void rf_report_view(GString *out, const RfResults *results);
 void rf_report_droplets(GString *out, const RfResults *results);
 void rf_report_set_aside(GString *out, const RfResults *results);
+void rf_report_review(GString *out, const RfResults *results);
+void rf_report_review_form(GString *out, const RfResults *results);   /* within the review's section */
+void rf_report_review_notice(GString *out, const RfResults *results); /* within the first screen */
 void rf_report_events(GString *out, const RfResults *results);
 void rf_report_audit(GString *out, const RfResults *results);
 void rf_report_budget(GString *out, const RfResults *results, const RfFigureSet *figures);

@@ -47,9 +47,53 @@ static bool fail_write(GError **error, const char *path, int failure)
                 "%s: can't be written: %s%s; earlier results are untouched", path, g_strerror(failure), hint);
 }
 
+/* ---- what people keep in it ---- */
+
+/* A review is saved from the report, often right beside it, and browsers call the next one `review (1).csv`. No file of
+ * ours is called like that. */
+static bool is_kept(const char *name)
+{
+    return g_str_has_prefix(name, "review") && g_str_has_suffix(name, ".csv") && !strchr(name, '/');
+}
+
+/* Another name for the same file where the file system can do that, else a copy. */
+static bool keep_one(RfResultFolder *folder, const char *name, GError **error)
+{
+    g_autofree char *from = g_build_filename(folder->target, name, NULL);
+    g_autofree char *to = g_build_filename(folder->path, name, NULL);
+    g_autofree char *bytes = NULL;
+    g_autoptr(GError) why = NULL;
+    size_t length;
+    if (link(from, to) == 0) return true;
+    if (!g_file_get_contents(from, &bytes, &length, &why))
+        return fail(error, RF_RESULT_FOLDER_ERROR_WRITE,
+                    "%s: can't be taken over into the new result: %s; move it away", from, why->message);
+    return rf_result_folder_add(folder, name, bytes, length, error);
+}
+
+static bool keep_reviews(RfResultFolder *folder, GError **error)
+{
+    g_autoptr(GPtrArray) present = rf_folder_tree_files(folder->target);
+    for (guint i = 0; i < present->len; i++)
+        if (is_kept(present->pdata[i]) && !keep_one(folder, present->pdata[i], error)) return false;
+    return true;
+}
+
+/* What was saved while the swap was made ready: as it stands in the earlier folder is how it stays. */
+static void rescue_reviews(const char *earlier, const char *target)
+{
+    g_autoptr(GPtrArray) present = rf_folder_tree_files(earlier);
+    for (guint i = 0; i < present->len; i++) {
+        if (!is_kept(present->pdata[i])) continue;
+        g_autofree char *from = g_build_filename(earlier, present->pdata[i], NULL);
+        g_autofree char *to = g_build_filename(target, present->pdata[i], NULL);
+        rename(from, to); /* of two names for one file, nothing happens */
+    }
+}
+
 /* ---- what may be replaced ---- */
 
-/* Name of an entry that is not on the marker's list (returns new), or NULL when all are. */
+/* Name of an entry that is neither on the marker's list nor taken over (returns new), or NULL when there is none. */
 static char *foreign_entry(const char *folder)
 {
     g_autofree char *marker = g_build_filename(folder, MARKER, NULL);
@@ -63,7 +107,8 @@ static char *foreign_entry(const char *folder)
     }
     g_autoptr(GPtrArray) present = rf_folder_tree_files(folder);
     for (guint i = 0; i < present->len; i++)
-        if (!g_hash_table_contains(ours, present->pdata[i])) return g_strdup(present->pdata[i]);
+        if (!g_hash_table_contains(ours, present->pdata[i]) && !is_kept(present->pdata[i]))
+            return g_strdup(present->pdata[i]);
     return NULL;
 }
 
@@ -244,7 +289,8 @@ static bool add_marker(RfResultFolder *folder, GError **error)
 {
     g_autoptr(GPtrArray) present = rf_folder_tree_files(folder->path);
     g_autoptr(GString) text = g_string_new(NULL);
-    for (guint i = 0; i < present->len; i++) g_string_append_printf(text, "%s\n", (char *)present->pdata[i]);
+    for (guint i = 0; i < present->len; i++)
+        if (!is_kept(present->pdata[i])) g_string_append_printf(text, "%s\n", (char *)present->pdata[i]);
     return rf_result_folder_add(folder, MARKER, text->str, text->len, error);
 }
 
@@ -271,6 +317,7 @@ static bool move_in(RfResultFolder *folder, const char *aside, GError **error)
         return fail_write(error, folder->target, failure);
     }
     folder->is_committed = true;
+    if (has_earlier) rescue_reviews(aside, folder->target);
     flush_parent(folder);
     if (has_earlier) rf_folder_tree_remove(aside);
     return true;
@@ -298,6 +345,7 @@ static bool swap(RfResultFolder *folder, GError **error)
     if (errno == EEXIST &&
         renameat2(AT_FDCWD, folder->path, AT_FDCWD, folder->target, RENAME_EXCHANGE) == 0) {
         folder->is_committed = true;
+        rescue_reviews(folder->path, folder->target);
         flush_parent(folder);
         rf_folder_tree_remove(folder->path);
         return true;
@@ -309,7 +357,7 @@ static bool swap(RfResultFolder *folder, GError **error)
 static bool prepare(RfResultFolder *folder, GError **error)
 {
     g_return_val_if_fail(!folder->is_committed, false);
-    if (!add_marker(folder, error)) return false;
+    if (!add_marker(folder, error) || !keep_reviews(folder, error)) return false;
     if (!rf_folder_tree_flush(folder->path)) return fail_write(error, folder->target, errno);
     return may_replace(folder->target, error); /* again: the run may have taken hours */
 }

@@ -1,5 +1,6 @@
 /* A result folder that appears whole or not at all. Everything is written aside, in one temporary folder of the same
  * parent (`.NAME.part-PID`), flushed to disk, and swapped in with one rename; only then is the earlier folder removed.
+ * Review files that people saved into the earlier folder (`review*.csv`) are taken over into the new one.
  * A run that dies leaves at most that temporary folder behind, and the next run on the same target clears it.
  * Ctrl-C while the temporary folder exists takes it away and ends the program.
  * Not for deciding what is written: see write_results.h. */
@@ -19,7 +20,7 @@ typedef enum {
 
 typedef struct RfResultFolder RfResultFolder;
 
-/* Checks that `target` may be replaced (missing, empty, or holding nothing but an earlier result), clears what dead
+/* Checks that `target` may be replaced (missing, empty, or holding nothing but an earlier result and reviews), clears what dead
  * runs left beside it and makes the temporary folder. Missing parents are made. Nothing at `target` changes yet.
  * A target that is the working folder or one above it is refused. */
 RfResultFolder *rf_result_folder_open(const char *target, GError **error);

@@ -69,6 +69,15 @@ static void effect_clear(void *item)
     g_free(row->done);
 }
 
+static void review_clear(void *item)
+{
+    RfReviewRow *row = item;
+    g_free(row->reason);
+    g_free(row->name);
+    g_free(row->date);
+    g_free(row->detail);
+}
+
 static GArray *rows(size_t size, GDestroyNotify clear)
 {
     GArray *array = g_array_new(FALSE, TRUE, (guint)size);
@@ -83,6 +92,7 @@ RfResults *rf_results_new(void)
     results->settings = rows(sizeof(RfUsedSetting), setting_clear);
     results->notes = rows(sizeof(RfUsedSetting), setting_clear);
     results->warnings = g_ptr_array_new_with_free_func(g_free);
+    results->cuts = g_ptr_array_new_with_free_func(g_free);
     results->pixel_aspect = 1;
     results->paths = rows(sizeof(RfPathRow), NULL);
     results->segments = rows(sizeof(RfSegmentRow), NULL);
@@ -98,6 +108,7 @@ RfResults *rf_results_new(void)
     results->hand_charges = rows(sizeof(RfHandChargeRow), hand_charge_clear);
     results->effects = rows(sizeof(RfEffectRow), effect_clear);
     results->certificate = rows(sizeof(RfCertificateRow), NULL);
+    results->review = rows(sizeof(RfReviewRow), review_clear);
     results->unit.curve_unit_C = rows(sizeof(double), NULL);
     results->unit.curve_log_likelihood = rows(sizeof(double), NULL);
     return results;
@@ -117,9 +128,11 @@ void rf_results_free(RfResults *results)
                         results->steps,  results->droplets,          results->budget,
                         results->audit,  results->unit.curve_unit_C, results->unit.curve_log_likelihood,
                         results->hand_charges, results->effects, results->certificate,
-                        results->common, results->influences, results->recordings, results->measurements};
+                        results->common, results->influences, results->recordings, results->measurements, results->review};
     for (size_t i = 0; i < G_N_ELEMENTS(arrays); i++) free_array(arrays[i]);
+    rf_results_free(results->without);
     if (results->warnings) g_ptr_array_unref(results->warnings);
+    if (results->cuts) g_ptr_array_unref(results->cuts);
     if (results->view_png) g_bytes_unref(results->view_png);
     g_free(results->sheet_path);
     g_free(results->recording_summary);

@@ -69,8 +69,9 @@ typedef struct { /* one row of droplets.csv: one spell of constant charge */
     bool has_units;          /* probability >= 0.95 */
     double units_probability;
     bool accepted;
-    char *reason;            /* why set aside; "" if accepted */
+    char *reason;            /* why set aside; "" if accepted by the program, who restored it and why if by a person */
     double median_snr;
+    bool is_overruled;       /* a person decided otherwise than the program did */
 } RfDropletRow;
 
 typedef struct {
@@ -199,6 +200,38 @@ typedef struct { /* do the recordings of a pool agree? */
     double most_off_p;       /* for as many looks as recordings */
 } RfAgreementOfRecordings;
 
+typedef enum {
+    RF_REVIEW_SET_ASIDE,
+    RF_REVIEW_RESTORE,
+    RF_REVIEW_CUT,
+    RF_REVIEW_JOIN,
+} RfReviewAction;
+
+typedef enum {
+    RF_REVIEW_NOT_FOUND,    /* no droplet, or more than one, where the entry points */
+    RF_REVIEW_NOT_POSSIBLE, /* found, but what is asked for can't be done */
+    RF_REVIEW_ALREADY,      /* as asked for without doing anything */
+    RF_REVIEW_HONOURED,
+} RfReviewOutcome;
+
+typedef struct { /* a droplet as a person points at it: its number then, and one place where it was */
+    unsigned droplet;
+    double time_s, x_px, y_px;
+} RfReviewPlace;
+
+typedef struct { /* one entry of a review file, and what came of it */
+    unsigned line;           /* of the file */
+    RfReviewAction action;
+    RfReviewPlace place;
+    RfReviewPlace other;     /* the second droplet of a join */
+    double cut_s;            /* when to cut */
+    char *reason, *name, *date; /* as written; date may be "" */
+    RfReviewOutcome outcome;
+    char *detail;            /* what came of it, in words */
+    unsigned found, other_found; /* the droplets there as they were followed; 0: none */
+    unsigned now, other_now; /* the droplets that it is about now: of a cut, both parts; 0: none */
+} RfReviewRow;
+
 typedef struct { /* a setting as it was used, for report and summary.json */
     char *group, *key, *value;
     bool is_default;
@@ -209,7 +242,8 @@ typedef struct { /* an input file and its digest */
     char *role, *path, *sha256;
 } RfInputFile;
 
-typedef struct {
+typedef struct RfResults RfResults;
+struct RfResults {
     char *sheet_path;
     GArray *inputs;          /* RfInputFile */
     GArray *settings;        /* RfUsedSetting */
@@ -248,7 +282,10 @@ typedef struct {
     GArray *certificate;     /* RfCertificateRow; empty without a certificate */
     bool measured;           /* false: ran, but nothing could be measured (exit 3) */
     char *verdict;           /* one sentence */
-} RfResults;
+    GPtrArray *cuts;         /* char*: what is said of paths that passed to another droplet and were cut there */
+    GArray *review;          /* RfReviewRow, in the order of the file; empty without a review */
+    RfResults *without;      /* (owned) measured without the review, paths left out; NULL without one */
+};
 
 RfResults *rf_results_new(void);
 

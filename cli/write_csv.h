@@ -15,6 +15,8 @@ GString *rf_write_csv_segments(const RfResults *results);
 GString *rf_write_csv_switches(const RfResults *results);
 GString *rf_write_csv_steps(const RfResults *results);
 GString *rf_write_csv_droplets(const RfResults *results);
+/* The same, of results->without, which must be there. */
+GString *rf_write_csv_droplets_without_review(const RfResults *results);
 GString *rf_write_csv_audit(const RfResults *results);
 /* input, stated, relative_u, charge_relative_u, charge_relative_u_mc, common (1 shared by all droplets, 0 not) */
 GString *rf_write_csv_budget(const RfResults *results);

@@ -4,6 +4,7 @@
 #include <math.h>
 #include <string.h>
 
+#include "cli/review.h"
 #include "cli/tally.h"
 #include "cli/version.h"
 
@@ -213,6 +214,72 @@ static void common_inputs(JsonBuilder *json, const GArray *rows)
     json_builder_end_array(json);
 }
 
+static void droplet_if(JsonBuilder *json, const char *key, unsigned droplet)
+{
+    if (droplet) {
+        whole(json, key, droplet);
+    } else {
+        json_builder_set_member_name(json, key);
+        json_builder_add_null_value(json);
+    }
+}
+
+static void review_entry(JsonBuilder *json, const RfReviewRow *row)
+{
+    const bool is_join = row->action == RF_REVIEW_JOIN;
+    json_builder_begin_object(json);
+    whole(json, "line", row->line);
+    words(json, "action", rf_review_action_to_string(row->action));
+    whole(json, "droplet", row->place.droplet);
+    number(json, "time_s", row->place.time_s);
+    number(json, "x_px", row->place.x_px);
+    number(json, "y_px", row->place.y_px);
+    number_if(json, "cut_s", row->action == RF_REVIEW_CUT, row->cut_s);
+    droplet_if(json, "other_droplet", is_join ? row->other.droplet : 0);
+    words(json, "reason", row->reason);
+    words(json, "name", row->name);
+    words(json, "date", row->date);
+    words(json, "outcome", rf_review_outcome_to_string(row->outcome));
+    words(json, "detail", row->detail);
+    droplet_if(json, "droplet_now", row->now);
+    droplet_if(json, "other_droplet_now", row->other_now);
+    droplet_if(json, "droplet_without", row->found);
+    droplet_if(json, "other_droplet_without", row->other_found);
+    json_builder_end_object(json);
+}
+
+static void without_review(JsonBuilder *json, const RfResults *without)
+{
+    const RfTally tally = rf_tally_droplets(without);
+    json_builder_set_member_name(json, "without");
+    json_builder_begin_object(json);
+    truth(json, "measured", without->measured);
+    words(json, "verdict", without->verdict);
+    unit(json, &without->unit);
+    whole(json, "droplets_accepted", tally.droplets_accepted);
+    whole(json, "droplets_set_aside", tally.droplets - tally.droplets_accepted);
+    whole(json, "spells_accepted", tally.spells_accepted);
+    whole(json, "spells_set_aside", tally.spells - tally.spells_accepted);
+    json_builder_end_object(json);
+}
+
+static void review(JsonBuilder *json, const RfResults *results)
+{
+    json_builder_set_member_name(json, "review");
+    if (!results->without) {
+        json_builder_add_null_value(json);
+        return;
+    }
+    json_builder_begin_object(json);
+    json_builder_set_member_name(json, "entries");
+    json_builder_begin_array(json);
+    for (guint i = 0; i < results->review->len; i++)
+        review_entry(json, &g_array_index(results->review, RfReviewRow, i));
+    json_builder_end_array(json);
+    without_review(json, results->without);
+    json_builder_end_object(json);
+}
+
 char *rf_write_json_summary(const RfResults *results)
 {
     const RfTally tally = rf_tally_droplets(results);
@@ -241,6 +308,7 @@ char *rf_write_json_summary(const RfResults *results)
     settings(json, "settings", results->settings);
     settings(json, "notes", results->notes);
     common_inputs(json, results->common);
+    review(json, results);
     return finish(json);
 }
 

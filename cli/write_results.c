@@ -13,10 +13,15 @@ typedef struct {
 } Table;
 
 static const Table TABLES[] = {
-    {"paths.csv", rf_write_csv_paths, true},        {"segments.csv", rf_write_csv_segments, false},
-    {"switches.csv", rf_write_csv_switches, false}, {"steps.csv", rf_write_csv_steps, false},
-    {"droplets.csv", rf_write_csv_droplets, false}, {"audit.csv", rf_write_csv_audit, false},
-    {"budget.csv", rf_write_csv_budget, false},     {"influences.csv", rf_write_csv_influences, false},
+    {"paths.csv", rf_write_csv_paths, true},
+    {"segments.csv", rf_write_csv_segments, false},
+    {"switches.csv", rf_write_csv_switches, false},
+    {"steps.csv", rf_write_csv_steps, false},
+    {"droplets.csv", rf_write_csv_droplets, false},
+    {"audit.csv", rf_write_csv_audit, false},
+    {"budget.csv", rf_write_csv_budget, false},
+    {"influences.csv", rf_write_csv_influences, false},
+    {"droplets-without-review.csv", rf_write_csv_droplets_without_review, false},
 };
 
 static bool tables(const RfResults *results, RfResultFolder *folder, RfWriteResultsPart part, GError **error)
@@ -24,6 +29,7 @@ static bool tables(const RfResults *results, RfResultFolder *folder, RfWriteResu
     for (size_t i = 0; i < G_N_ELEMENTS(TABLES); i++) {
         if (part == RF_WRITE_RESULTS_PATHS && !TABLES[i].is_for_paths) continue;
         if (TABLES[i].write == rf_write_csv_audit && results->audit->len == 0) continue;
+        if (TABLES[i].write == rf_write_csv_droplets_without_review && !results->without) continue;
         g_autoptr(GString) text = TABLES[i].write(results);
         if (!rf_result_folder_add(folder, TABLES[i].name, text->str, text->len, error)) return false;
     }

@@ -118,9 +118,53 @@ static void audit_by_weight(void)
     g_assert_true(slip < lost && lost < good);
 }
 
+/* What a person decided stands on the first screen, and with name, date and reason in its own section. */
+static void overruled_with_a_trail(void)
+{
+    g_autoptr(RfResults) results = sample_results_reviewed_new();
+    g_autoptr(GString) page = page_with(results, SVG);
+    assert_has(page, "<strong>Reviewed by a person.</strong> 2 of 3 decisions changed something");
+    assert_has(page, "Without them: unit <span class=\"nowrap\">1.6049(13) ×");
+    assert_has(page, "6 droplets accepted, 1 set aside.</p>");
+    assert_has(page, "<tr data-droplet=\"2\"><th scope=\"row\">set aside 2</th><td>B. Example</td><td>2026-05-04 10:12 UTC</td>");
+    assert_has(page, "<td>not dated</td>");
+    assert_has(page, "droplet not found</span>: no droplet was within 3 px");
+    assert_has(page, "set aside <small class=\"soft\">by a person</small></td>");
+    assert_has(page, "<div class=\"nowrap\">2: -11.2");
+    assert_has(page, "<th scope=\"row\">Droplets accepted</th><td>5 of 7</td><td>6 of 7</td>");
+    g_assert_cmpuint((gsize)(strstr(page->str, "Reviewed by a person") - page->str), <,
+                     (gsize)(strstr(page->str, "id=\"view\"") - page->str));
+}
+
+static void reasons_and_names_are_never_markup(void)
+{
+    g_autoptr(RfResults) results = sample_results_reviewed_new();
+    g_autoptr(GString) page = page_with(results, SVG);
+    assert_lacks(page, "<img");
+    assert_lacks(page, "<script>alert");
+    assert_lacks(page, "data-reason=\"\"");
+    assert_has(page, "&lt;script&gt;alert(1)&lt;/script&gt;");
+    assert_has(page, " data-reason=\"&quot;&gt;&lt;img src=x onerror=alert(1)&gt;\"");
+}
+
+/* The next file saved must hold what the one before held, to the last digit of a cut. */
+static void form_starts_from_the_review(void)
+{
+    g_autoptr(RfResults) plain = sample_results_new(), results = sample_results_reviewed_new();
+    g_autoptr(GString) page = page_with(results, SVG), first = page_with(plain, SVG);
+    assert_has(page, "<li data-action=\"cut\" data-number=\"4\" data-time-s=\"3.25\" data-x-px=\"415.1\" "
+                     "data-y-px=\"300.5\" data-cut-s=\"41.033333\"");
+    assert_has(page, "data-file=\"by-hand.csv\"");
+    assert_has(page, "in place of <code>lab/by-hand.csv</code>");
+    assert_has(first, "<ul id=\"review-given\" hidden>\n</ul>");
+    assert_has(first, "beside the run sheet <code>run.sheet</code>");
+    assert_has(first, "<option value=\"5\" data-number=\"5\"");
+    assert_has(first, "Nothing: every verdict in this report is the program’s own.");
+}
+
 static bool is_void(const char *name)
 {
-    const char *const names[] = {"meta", "!DOCTYPE", "br", "hr"};
+    const char *const names[] = {"meta", "!DOCTYPE", "br", "hr", "input"};
     for (size_t i = 0; i < G_N_ELEMENTS(names); i++)
         if (strcmp(name, names[i]) == 0) return true;
     return false;
@@ -129,7 +173,7 @@ static bool is_void(const char *name)
 /* Each element closes in the order in which it opened; style and script are skipped over. */
 static void elements_nest(void)
 {
-    g_autoptr(RfResults) results = sample_results_new();
+    g_autoptr(RfResults) results = sample_results_reviewed_new();
     g_autoptr(GString) page = page_with(results, SVG);
     g_autoptr(GPtrArray) open = g_ptr_array_new_with_free_func(g_free);
     for (const char *at = page->str; (at = strchr(at, '<'));) {
@@ -206,6 +250,9 @@ static void cautions_defer(void)
 int main(int argc, char **argv)
 {
     g_test_init(&argc, &argv, NULL);
+    g_test_add_func("/report/review/overruled-with-a-trail", overruled_with_a_trail);
+    g_test_add_func("/report/review/never-markup", reasons_and_names_are_never_markup);
+    g_test_add_func("/report/review/form-starts-from-it", form_starts_from_the_review);
     g_test_add_func("/report_html/first-screen/says-it", first_screen_says_it);
     g_test_add_func("/report_html/first-screen/unresolved-says-why", unresolved_says_why);
     g_test_add_func("/report_html/text/never-markup", text_is_never_markup);

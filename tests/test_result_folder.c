@@ -216,11 +216,27 @@ static void two_runs_at_once(Place *place, const void *unused)
     g_assert_cmpuint(entries(place->root), ==, 1);
 }
 
-/* Whatever the moment of the kill, the target is the old folder or the new one, whole. */
+/* ---- what people save into it ---- */
+
+static void save(const Place *place, const char *name, const char *text)
+{
+    g_autofree char *path = g_build_filename(place->target, name, NULL);
+    g_assert_true(g_file_set_contents(path, text, -1, NULL));
+}
+
+static void assert_saved(const Place *place, const char *name, const char *text)
+{
+    g_autofree char *path = g_build_filename(place->target, name, NULL), *seen = NULL;
+    g_assert_true(g_file_get_contents(path, &seen, NULL, NULL));
+    g_assert_cmpstr(seen, ==, text);
+}
+
+/* Whatever the moment of the kill, the target is the old folder or the new one, whole, and what people saved is in it. */
 static void kill_at_any_moment(Place *place, const void *unused)
 {
     (void)unused;
     write_result(place, "0");
+    save(place, "review.csv", "mine");
     unsigned replaced = 0;
     for (int i = 1; i <= 60; i++) {
         const pid_t child = fork();
@@ -236,6 +252,7 @@ static void kill_at_any_moment(Place *place, const void *unused)
         g_autofree char *summary = g_build_filename(place->target, "summary.json", NULL), *text = NULL;
         g_assert_true(g_file_get_contents(summary, &text, NULL, NULL));
         assert_holds(place, text);
+        assert_saved(place, "review.csv", "mine");
         replaced += strcmp(text, "0") != 0;
     }
     g_test_message("60 kills, %u of them after a replacement", replaced);
@@ -297,6 +314,63 @@ static void add(const char *path, void (*test)(Place *, const void *))
     g_test_add(path, Place, NULL, set_up, test, tear_down);
 }
 
+/* Saved beside the report, under the names that browsers give: there after every further run, whatever was written. */
+static void reviews_are_taken_over(Place *place, const void *unused)
+{
+    (void)unused;
+    write_result(place, "first");
+    save(place, "review.csv", "mine");
+    save(place, "review (1).csv", "mine too");
+    write_result(place, "second");
+    write_result(place, "third");
+    assert_saved(place, "summary.json", "third");
+    assert_saved(place, "review.csv", "mine");
+    assert_saved(place, "review (1).csv", "mine too");
+}
+
+static void reviews_are_taken_over_by_plain_renames(Place *place, const void *unused)
+{
+    (void)unused;
+    write_result(place, "first");
+    save(place, "review.csv", "mine");
+    g_autoptr(RfResultFolder) folder = begin(place, "second");
+    g_autoptr(GError) error = NULL;
+    save(place, "review.csv", "changed while it ran");
+    g_assert_true(rf_result_folder_commit_plain(folder, &error));
+    g_assert_no_error(error);
+    assert_saved(place, "summary.json", "second");
+    assert_saved(place, "review.csv", "changed while it ran");
+}
+
+/* Given up or refused, a run leaves the review where it was. */
+static void reviews_stay_without_a_commit(Place *place, const void *unused)
+{
+    (void)unused;
+    write_result(place, "first");
+    save(place, "review.csv", "mine");
+    RfResultFolder *folder = begin(place, "second");
+    rf_result_folder_free(folder);
+    assert_saved(place, "summary.json", "first");
+    assert_saved(place, "review.csv", "mine");
+}
+
+/* Only files at the top, and only of that name. */
+static void other_files_are_refused_still(Place *place, const void *unused)
+{
+    (void)unused;
+    write_result(place, "first");
+    const char *const names[] = {"preview.csv", "review.txt", "figures/review.csv", "my review.csv"};
+    for (size_t i = 0; i < G_N_ELEMENTS(names); i++) {
+        g_autoptr(GError) error = NULL;
+        save(place, names[i], "mine");
+        g_assert_false(rf_result_folder_may_replace(place->target, &error));
+        g_assert_error(error, RF_RESULT_FOLDER_ERROR, RF_RESULT_FOLDER_ERROR_FOREIGN);
+        g_assert_nonnull(strstr(error->message, names[i]));
+        g_autofree char *path = g_build_filename(place->target, names[i], NULL);
+        g_assert_cmpint(g_remove(path), ==, 0);
+    }
+}
+
 int main(int argc, char **argv)
 {
     g_test_init(&argc, &argv, NULL);
@@ -306,6 +380,10 @@ int main(int argc, char **argv)
     add("/result_folder/commit/two-runs-at-once", two_runs_at_once);
     add("/result_folder/commit/kill-at-any-moment", kill_at_any_moment);
     add("/result_folder/commit/link-stays-a-link", link_to_a_folder_stays_a_link);
+    add("/result_folder/reviews/taken-over", reviews_are_taken_over);
+    add("/result_folder/reviews/plain-renames-too", reviews_are_taken_over_by_plain_renames);
+    add("/result_folder/reviews/stay-without-commit", reviews_stay_without_a_commit);
+    add("/result_folder/reviews/other-files-refused", other_files_are_refused_still);
     add("/result_folder/free/abort-leaves-nothing", abort_leaves_nothing);
     add("/result_folder/free/parents-come-and-go", parents_come_and_go);
     add("/result_folder/open/empty-folder-is-fine", empty_folder_is_fine);

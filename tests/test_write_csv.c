@@ -111,7 +111,7 @@ static void absent_is_empty(void)
     g_autofree char *first = line(droplets, 1), *second = line(switches, 1);
     g_assert_cmpstr(
         first, ==,
-        "1,1,0.000000,0.000000,0,0.000000,0.000000,0.50000,0.01000,,,,,set aside,no field,,,,,,,0.000");
+        "1,1,0.000000,0.000000,0,0.000000,0.000000,0.50000,0.01000,,,,,set aside,no field,,,,,,,0.000,");
     g_assert_cmpstr(second, ==, "1,2.000000,0.010000,off,top-,4,");
 }
 

@@ -77,3 +77,24 @@ invented_result() { # name, unit (default 1), gap (default null), further settin
 
 # The value of a key of a JSON file, one key a line.
 value_in() { sed -n "s/^ *\"$2\" *: *\"\{0,1\}\([^\",]*\)\"\{0,1\},*$/\1/p" "$1" | head -n 1; }
+
+# A review of the footage of `recording`, from its first report: lines of `ACTION DROPLET [CUT_S | OTHER]`. Droplets are pointed
+# at as the report's own form points at them.
+place_of() { # report, droplet
+    sed -n "s/.*<option value=\"$2\" data-number=\"[0-9]*\" data-time-s=\"\([^\"]*\)\" data-x-px=\"\([^\"]*\)\" data-y-px=\"\([^\"]*\)\".*/\1,\2,\3/p" "$1/report.html"
+}
+review() { # result folder, action, droplet, [cut_s]
+    [ -s review.csv ] || echo 'action,droplet,time_s,x_px,y_px,cut_s,reason,name,date' >review.csv
+    printf '%s,%s,%s,%s,"it looked, well, odd",A. Example,2026-05-04\n' "$2" "$3" "$(place_of "$1" "$3")" "${4:-}" >>review.csv
+}
+
+# Footage, measured once; its sheet then names review.csv.
+measured_recording() {
+    recording && { [ -d "$work/measured" ] || "$program" run sheet.ini --out "$work/measured" --quiet; } &&
+        cp -r "$work/measured" first && sed 's/^video=.*/&\nreview=review.csv/' sheet.ini >reviewed.ini
+}
+
+# One cell of a table: file, droplet, column.
+cell() {
+    awk -F, -v droplet="$2" -v column="$3" 'NR == 1 { for (i = 1; i <= NF; i++) at[$i] = i; next } $1 == droplet { print $(at[column]) }' "$1"
+}

@@ -302,6 +302,53 @@ RfResults *sample_results_new(void)
     return results;
 }
 
+static void add_decision(RfResults *results, RfReviewRow row, const char *reason, const char *name,
+                         const char *date, const char *detail)
+{
+    row.line = results->review->len + 2;
+    row.reason = g_strdup(reason);
+    row.name = g_strdup(name);
+    row.date = g_strdup(date);
+    row.detail = g_strdup(detail);
+    g_array_append_val(results->review, row);
+}
+
+static void overrule(RfDropletRow *row)
+{
+    row->accepted = false;
+    row->is_overruled = true;
+    g_free(row->reason);
+    row->reason = g_strdup("set aside by B. Example: touched its neighbour");
+}
+
+RfResults *sample_results_reviewed_new(void)
+{
+    RfResults *results = sample_results_new();
+    results->without = sample_results_new();
+    overrule(&g_array_index(results->droplets, RfDropletRow, 1));
+    add_decision(results,
+                 (RfReviewRow){.action = RF_REVIEW_SET_ASIDE,
+                               .place = {2, 30.2, 250.5, 260.25},
+                               .outcome = RF_REVIEW_HONOURED,
+                               .found = 2,
+                               .now = 2},
+                 "touched its neighbour", "B. Example", "2026-05-04 10:12 UTC", "droplet 2 was set aside");
+    add_decision(results,
+                 (RfReviewRow){.action = RF_REVIEW_CUT,
+                               .place = {4, 3.25, 415.1, 300.5},
+                               .cut_s = 41.033333,
+                               .outcome = RF_REVIEW_HONOURED,
+                               .found = 4,
+                               .now = 4},
+                 "\"><img src=x onerror=alert(1)>", "<script>alert(1)</script>", "",
+                 "droplet 4 was cut at 41.03 s; from then on it is droplet 8");
+    add_decision(results, (RfReviewRow){.action = RF_REVIEW_RESTORE, .place = {9, 3, 1, 1}}, "it is round",
+                 "B. Example", "today", "no droplet was within 3 px of x = 1.0, y = 1.0 px at 3.00 s");
+    const RfInputFile file = {g_strdup("review"), g_strdup("lab/by-hand.csv"), g_strdup("00ff")};
+    g_array_append_val(results->inputs, file);
+    return results;
+}
+
 RfResults *sample_results_empty_new(void)
 {
     RfResults *results = rf_results_new();

@@ -8,5 +8,8 @@
  * that would do harm if a page ran them. (returns new) */
 RfResults *sample_results_new(void);
 
+/* The same, reviewed: droplet 2 set aside, droplet 4 cut, one that isn't found; reasons and names that would do harm. (returns new) */
+RfResults *sample_results_reviewed_new(void);
+
 /* A run in which nothing could be measured: no paths, no scale, no unit. (returns new) */
 RfResults *sample_results_empty_new(void);
