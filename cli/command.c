@@ -244,5 +244,10 @@ int rf_command_main(int argc, char **argv)
     }
     const RfCommand *command = rf_command_find(first);
     if (command) return run_command(command, argc - 1, argv + 1);
+    if (*first == '-') {
+        fprintf(stderr, "risefall: %s: a command comes first, as in 'risefall run %s'\n'risefall --help' lists the commands\n",
+                first, first);
+        return RF_EXIT_USAGE;
+    }
     return rf_help_no_such("command", first);
 }

@@ -70,6 +70,15 @@ static bool is_elsewhere(GError **error)
     return !is_same;
 }
 
+static bool is_result(GError **error)
+{
+    g_autofree char *paths = g_build_filename(against, "paths.csv", NULL);
+    if (g_file_test(paths, G_FILE_TEST_EXISTS)) return true;
+    g_set_error(error, G_FILE_ERROR, G_FILE_ERROR_NOENT,
+                "--against %s: no paths.csv there; the result folder of an earlier run is needed", against);
+    return false;
+}
+
 static RfExit run(char **arguments, GError **error)
 {
     const char *timings;
@@ -77,6 +86,7 @@ static RfExit run(char **arguments, GError **error)
         !rf_command_required(against, "--against", "DIR", error))
         return RF_EXIT_USAGE;
     if (!is_elsewhere(error)) return RF_EXIT_USAGE;
+    if (!is_result(error)) return RF_EXIT_INPUT;
     if (out && !rf_result_folder_may_replace(out, error)) return RF_EXIT_INPUT;
     RfMedium medium;
     bool has_medium;

@@ -82,9 +82,10 @@ static bool measure_still(const char *path, const RfLengthScaleOptions *given, C
 static bool measure_image(const char *path, Calibration *calibration, GError **error)
 {
     RfLengthScaleOptions options = {.plane_ratio = {1, 0}, .pixel_aspect = 1};
+    g_autoptr(GError) reason = NULL;
     if (!lines_of(lines, &options.lines, error)) return false;
-    if (!rf_quantity_parse(spacing, "m", &options.spacing_m, error)) {
-        g_prefix_error(error, "--spacing: ");
+    if (!rf_quantity_parse(spacing, "m", &options.spacing_m, &reason)) {
+        g_set_error(error, RF_COMMAND_ERROR, RF_COMMAND_ERROR_USAGE, "--spacing: %s", reason->message);
         return false;
     }
     if (!(options.spacing_m.value > 0)) {

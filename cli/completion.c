@@ -58,10 +58,10 @@ static void append_verbs(GString *out)
         g_string_append_printf(out, "%s ", (*command)->verb);
 }
 
-/* What completes a value of this name: DIR, FILE, SHEET, X.csv, or words with a bar between. Nothing for quantities. */
+/* What completes a value of this name: DIR or what ends with it, FILE, SHEET, X.csv, or words with a bar between. Nothing for quantities. */
 static char *action_for(const char *name)
 {
-    if (strcmp(name, "DIR") == 0) return g_strdup("_risefall_folders");
+    if (g_str_has_suffix(name, "DIR")) return g_strdup("_risefall_folders");
     if (strcmp(name, "SHEET") == 0) return g_strdup("_risefall_files '*.ini'");
     if (strcmp(name, "SCENE") == 0) return g_strdup("_risefall_files '*.scene'");
     const char *suffix = strrchr(name, '.');

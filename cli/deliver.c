@@ -9,6 +9,8 @@
 #include "cli/write_results.h"
 
 #include <stdio.h>
+#include <stdlib.h>
+#include <string.h>
 #include <unistd.h>
 
 const RfCommandFile rf_deliver_files[] = {
@@ -91,13 +93,42 @@ static void enter(const RfResults *results, const char *out)
     rf_ledger_keep(entry);
 }
 
+static bool is_inside(const char *folder, const char *path)
+{
+    char *outer = realpath(folder, NULL), *inner = path ? realpath(path, NULL) : NULL;
+    const size_t length = outer ? strlen(outer) : 0;
+    const bool is = outer && inner && strncmp(inner, outer, length) == 0 && inner[length] == '/';
+    free(outer);
+    free(inner);
+    return is;
+}
+
+/* The folder of --out is replaced as a whole, and what lay in it is lost: footage that simulate made, say. */
+static bool spares(const char *out, const char *input, GError **error)
+{
+    if (!is_inside(out, input)) return true;
+    g_set_error(error, RF_RESULT_FOLDER_ERROR, RF_RESULT_FOLDER_ERROR_FOREIGN,
+                "%s: holds %s, which this run reads, and would be replaced as a whole; name another --out",
+                out, input);
+    return false;
+}
+
+static bool spares_inputs(const char *out, const RfSettings *settings, GError **error)
+{
+    for (guint i = 0; i < settings->videos->len; i++)
+        if (!spares(out, settings->videos->pdata[i], error)) return false;
+    return spares(out, settings->path, error) && spares(out, settings->reticle_image, error) &&
+           spares(out, settings->log, error) && spares(out, settings->timings, error) &&
+           spares(out, settings->review, error);
+}
+
 RfExit rf_deliver(const char *sheet, const char *paths_csv, const char *out, RfDeliverKind kind,
                   GError **error)
 {
     /* A target that can't be replaced is said now, not after the work. */
     if (!rf_result_folder_may_replace(out, error)) return RF_EXIT_INPUT;
     g_autoptr(RfSettings) settings = rf_settings_load(sheet, error);
-    if (!settings) return RF_EXIT_INPUT;
+    if (!settings || !spares_inputs(out, settings, error)) return RF_EXIT_INPUT;
     g_autoptr(RfResults) results = make(settings, paths_csv, kind, error);
     rf_command_progress_end();
     if (!results || !write_down(results, out, kind, error)) return RF_EXIT_INPUT;

@@ -93,10 +93,10 @@ static bool read_quantity(const Place *place, RfValue *out, GError **error)
     RfValue value;
     if (!rf_quantity_parse(place->value, key->form, &value, &why))
         return refuse_value(error, "%s", why->message);
-    const char *unit = strcmp(key->form, "1") == 0 ? "" : key->form;
+    const bool is_pure = strcmp(key->form, "1") == 0;
     if (value.value < key->least || value.value > key->most)
-        return refuse_value(error, "seen `%s`; possible is %g to %g %s", place->value, key->least, key->most,
-                            unit);
+        return refuse_value(error, "seen `%s`; possible is %g to %g%s%s", place->value, key->least, key->most,
+                            is_pure ? "" : " ", is_pure ? "" : key->form);
     if (key->least > 0.0 && value.sigma >= value.value)
         return refuse_value(error,
                             "seen `%s`, whose uncertainty is as large as the value; a smaller one is needed",

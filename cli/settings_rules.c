@@ -201,7 +201,7 @@ static bool apply_supply(const RfSheetText *sheet, RfSheetValues *v, GError **er
     for (unsigned i = 0; i < s->n_states; i++)
         if (!rf_settings_voltage(s, s->states[i], &voltage_V))
             return refuse(sheet, "supply", "voltage", RF_SETTINGS_ERROR_MISSING, error,
-                          "missing, but needed: 500.0(5) V, or %s=, or a log", keys[s->states[i]]);
+                          "missing, but needed: as in 500.0(5) V; or %s=, or a log", keys[s->states[i]]);
     return true;
 }
 

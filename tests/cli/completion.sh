@@ -39,7 +39,7 @@ offers "$(echo "help|$verbs|--help|--version" | tr '|' '\n' | LC_ALL=C sort | pa
 offers "evening run.ini|morning.ini|other result|result" risefall run ""
 offers "evening run.ini" risefall run e
 offers "notes.txt" risefall run n
-offers "--help|--json|--out|--quiet|--threads" risefall run morning.ini --
+offers "--json" risefall run morning.ini --js
 offers "other result|result" risefall run morning.ini --out ""
 offers "result" risefall run morning.ini --out = r
 offers "other result|result" risefall run morning.ini --out =
