@@ -34,6 +34,19 @@ static void warn_of_picture(RfResults *results, const RfWatch *watch, const RfFo
                       "next time (the stated uncertainties are widened)", scale);
 }
 
+/* Where the camera moves, a frame in which the fixed picture isn't found again has no place. */
+static void warn_of_lost_frames(RfResults *results, const RfSightings *sightings)
+{
+    guint lost = 0, all = sightings->exposures->len;
+    for (guint i = 0; i < all; i++)
+        lost += (g_array_index(sightings->exposures, RfExposure, i).flags & RF_EXPOSURE_UNPOSED) != 0;
+    if (lost > 0)
+        rf_results_warn(results,
+                        "the camera moves, and in %u of %u pictures the reticle was not found again: they were left out "
+                        "(lines that run one way only can't hold a moving camera: fix the camera, or use crossed lines)",
+                        lost, all);
+}
+
 static void warn_of_axis(RfResults *results, const RfGravityAxis *axis)
 {
     if (axis->legs > 0 && !axis->is_found)
@@ -55,6 +68,7 @@ void rf_health_describe(RfResults *results, const RfWatch *watch, const RfFollow
     results->gravity_axis_deg = follow->frame.gravity_rad * 180 / G_PI;
     warn_of_file(results, watch);
     warn_of_picture(results, watch, follow);
+    warn_of_lost_frames(results, watch->sightings);
     warn_of_axis(results, &follow->axis);
     if (follow->paths->cuts > 0)
         rf_results_warn(results, "%u times it could not be decided which droplet was which: the paths were cut there",
