@@ -103,7 +103,8 @@ static bool is_inside(const char *folder, const char *path)
     return is;
 }
 
-/* The folder of --out is replaced as a whole, and what lay in it is lost: footage that simulate made, say. */
+/* The folder of --out is replaced as a whole, and what lay in it is lost: footage that simulate made, say. Reviews aren't:
+ * result_folder takes them over, or refuses. */
 static bool spares(const char *out, const char *input, GError **error)
 {
     if (!is_inside(out, input)) return true;
@@ -118,8 +119,7 @@ static bool spares_inputs(const char *out, const RfSettings *settings, GError **
     for (guint i = 0; i < settings->videos->len; i++)
         if (!spares(out, settings->videos->pdata[i], error)) return false;
     return spares(out, settings->path, error) && spares(out, settings->reticle_image, error) &&
-           spares(out, settings->log, error) && spares(out, settings->timings, error) &&
-           spares(out, settings->review, error);
+           spares(out, settings->log, error) && spares(out, settings->timings, error);
 }
 
 RfExit rf_deliver(const char *sheet, const char *paths_csv, const char *out, RfDeliverKind kind,
