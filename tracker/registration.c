@@ -282,15 +282,13 @@ void rf_registration_scratch_free(RfRegistrationScratch *scratch)
     g_free(scratch);
 }
 
-static void fill_pictures(const RfRegistration *registration, RfRegistrationScratch *scratch,
-                          const RfFrame *frame)
+static void fill_picture(const RfRegistration *registration, RfRegistrationScratch *scratch,
+                         const RfFrame *frame, int which)
 {
-    for (int i = 0; i < LEVELS - 1; i++) {
-        const Level *level = &registration->levels[i];
-        if (!level->n) continue;
-        rf_luma_reduce(frame, REDUCTION[i], scratch->picture[i]);
-        soften(scratch->picture[i], level->width, level->height);
-    }
+    const Level *level = &registration->levels[which];
+    if (!level->n) return;
+    rf_luma_reduce(frame, REDUCTION[which], scratch->picture[which]);
+    soften(scratch->picture[which], level->width, level->height);
 }
 
 /* Correlation of the smallest pictures' steep pixels at a shift of whole pixels, or -1 where too few overlap. */
@@ -528,9 +526,10 @@ bool rf_registration_find(const RfRegistration *registration, RfRegistrationScra
     g_assert(frame->width == registration->width && frame->height == registration->height);
     Guess near = {.gain = 1}, far = {.gain = 1};
     *pose = (RfPose){0};
-    fill_pictures(registration, scratch, frame);
+    fill_picture(registration, scratch, frame, 1);
     bool is_near = descend(registration, scratch, frame, 1, &near);
     if (!is_near || near.support < AGREEING) {
+        fill_picture(registration, scratch, frame, 0); /* seldom needed */
         search_coarsely(registration, scratch, &far.pose);
         stay_across(registration, &far.pose);
         bool is_far = descend(registration, scratch, frame, 0, &far);
