@@ -16,7 +16,7 @@ static RfExit run(char **arguments, GError **error)
         !rf_command_required(paths, "--paths", "FILE", error) ||
         !rf_command_required(out, "--out", "DIR", error))
         return RF_EXIT_USAGE;
-    return rf_deliver(sheet, paths, out, RF_DELIVER_CHARGE, error);
+    return rf_deliver(sheet, paths, out, RF_DELIVER_CHARGE, RF_DELIVER_NO_FILM, error);
 }
 
 const RfCommand rf_command_charge = {

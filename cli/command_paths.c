@@ -14,7 +14,7 @@ static RfExit run(char **arguments, GError **error)
     if (!rf_command_one_argument(arguments, "a run sheet", &sheet, error) ||
         !rf_command_required(out, "--out", "DIR", error))
         return RF_EXIT_USAGE;
-    return rf_deliver(sheet, NULL, out, RF_DELIVER_PATHS, error);
+    return rf_deliver(sheet, NULL, out, RF_DELIVER_PATHS, RF_DELIVER_NO_FILM, error);
 }
 
 const RfCommand rf_command_paths = {

@@ -2,9 +2,12 @@
 #include "cli/deliver.h"
 
 static char *out;
+static int has_no_preview; /* GOption writes ints */
 
 static const GOptionEntry entries[] = {
     {"out", 'o', 0, G_OPTION_ARG_FILENAME, &out, "result folder; an earlier result there is replaced", "DIR"},
+    {"no-preview", 0, 0, G_OPTION_ARG_NONE, &has_no_preview,
+     "no footage in the report: saves a second look at the recording", NULL},
     {0},
 };
 
@@ -14,7 +17,8 @@ static RfExit run(char **arguments, GError **error)
     if (!rf_command_one_argument(arguments, "a run sheet", &sheet, error) ||
         !rf_command_required(out, "--out", "DIR", error))
         return RF_EXIT_USAGE;
-    return rf_deliver(sheet, NULL, out, RF_DELIVER_RUN, error);
+    return rf_deliver(sheet, NULL, out, RF_DELIVER_RUN,
+                      has_no_preview ? RF_DELIVER_NO_FILM : RF_DELIVER_PREVIEW, error);
 }
 
 const RfCommand rf_command_run = {

@@ -2,6 +2,7 @@
 
 #include "cli/ledger_keep.h"
 #include "cli/pipeline.h"
+#include "cli/preview_film.h"
 #include "cli/result_folder.h"
 #include "cli/screen_summary.h"
 #include "cli/text_wrap.h"
@@ -36,28 +37,50 @@ const RfCommandFile rf_deliver_paths_files[] = {
     {0},
 };
 
-static RfResults *make(const RfSettings *settings, const char *paths_csv, RfDeliverKind kind, GError **error)
+typedef struct {
+    const char *paths_csv, *out;
+    RfDeliverKind kind;
+    unsigned films;
+    RfWatchHooks hooks;
+} Order;
+
+static RfResults *make(const RfSettings *settings, const Order *order, GError **error)
 {
-    const RfWatchHooks hooks = {
-        .threads = rf_command_common()->threads,
-        .progress = rf_command_progress,
-    };
-    switch (kind) {
+    switch (order->kind) {
     case RF_DELIVER_PATHS:
-        return rf_pipeline_paths(settings, &hooks, error);
+        return rf_pipeline_paths(settings, &order->hooks, error);
     case RF_DELIVER_CHARGE:
-        return rf_pipeline_charge(settings, paths_csv, &hooks, error);
+        return rf_pipeline_charge(settings, order->paths_csv, &order->hooks, error);
     case RF_DELIVER_RUN:
         break;
     }
-    return rf_pipeline_run(settings, &hooks, error);
+    return rf_pipeline_run(settings, &order->hooks, error);
 }
 
-static bool write_down(RfResults *results, const char *out, RfDeliverKind kind, GError **error)
+/* A report without footage is no reason to lose the run; to be told to stop is. */
+static bool film_preview(const RfSettings *settings, const Order *order, RfResults *results,
+                         const RfResultFolder *folder, GError **error)
 {
-    g_autoptr(RfResultFolder) folder = rf_result_folder_open(out, error);
-    RfWriteResultsPart part = kind == RF_DELIVER_PATHS ? RF_WRITE_RESULTS_PATHS : RF_WRITE_RESULTS_ALL;
-    return folder && rf_write_results(results, folder, part, error) && rf_result_folder_commit(folder, error);
+    if (!(order->films & RF_DELIVER_PREVIEW)) return true;
+    g_autoptr(GError) failure = NULL;
+    const RfFilmHooks hooks = {order->hooks.threads, order->hooks.progress, rf_command_is_cancelled};
+    g_autofree char *scratch = g_build_filename(rf_result_folder_path(folder), "preview.webm", NULL);
+    results->preview = rf_preview_film(settings, results, &hooks, scratch, &failure);
+    if (!failure) return true;
+    if (g_error_matches(failure, RF_VIDEO_ERROR, RF_VIDEO_ERROR_CANCELLED)) {
+        g_propagate_error(error, g_steal_pointer(&failure));
+        return false;
+    }
+    rf_results_warn(results, "no footage in the report: %s", failure->message);
+    return true;
+}
+
+static bool write_down(const RfSettings *settings, const Order *order, RfResults *results, GError **error)
+{
+    g_autoptr(RfResultFolder) folder = rf_result_folder_open(order->out, error);
+    RfWriteResultsPart part = order->kind == RF_DELIVER_PATHS ? RF_WRITE_RESULTS_PATHS : RF_WRITE_RESULTS_ALL;
+    return folder && film_preview(settings, order, results, folder, error) &&
+           rf_write_results(results, folder, part, error) && rf_result_folder_commit(folder, error);
 }
 
 static void note(const char *text)
@@ -122,17 +145,31 @@ static bool spares_inputs(const char *out, const RfSettings *settings, GError **
            spares(out, settings->log, error) && spares(out, settings->timings, error);
 }
 
+static RfExit carry_out(const RfSettings *settings, const Order *order, GError **error)
+{
+    g_autoptr(RfResults) results = make(settings, order, error);
+    rf_command_progress_end();
+    const bool is_written = results && write_down(settings, order, results, error);
+    rf_command_progress_end();
+    if (!is_written) return RF_EXIT_INPUT;
+    tell(results, order->out, order->kind);
+    if (order->kind == RF_DELIVER_RUN) enter(results, order->out);
+    return results->measured ? RF_EXIT_DONE : RF_EXIT_NOT_MEASURED;
+}
+
 RfExit rf_deliver(const char *sheet, const char *paths_csv, const char *out, RfDeliverKind kind,
-                  GError **error)
+                  unsigned films, GError **error)
 {
     /* A target that can't be replaced is said now, not after the work. */
     if (!rf_result_folder_may_replace(out, error)) return RF_EXIT_INPUT;
     g_autoptr(RfSettings) settings = rf_settings_load(sheet, error);
     if (!settings || !spares_inputs(out, settings, error)) return RF_EXIT_INPUT;
-    g_autoptr(RfResults) results = make(settings, paths_csv, kind, error);
-    rf_command_progress_end();
-    if (!results || !write_down(results, out, kind, error)) return RF_EXIT_INPUT;
-    tell(results, out, kind);
-    if (kind == RF_DELIVER_RUN) enter(results, out);
-    return results->measured ? RF_EXIT_DONE : RF_EXIT_NOT_MEASURED;
+    const Order order = {
+        .paths_csv = paths_csv,
+        .out = out,
+        .kind = kind,
+        .films = films,
+        .hooks = {.threads = rf_command_common()->threads, .progress = rf_command_progress},
+    };
+    return carry_out(settings, &order, error);
 }

@@ -14,6 +14,11 @@ typedef enum {
     RF_DELIVER_CHARGE,
 } RfDeliverKind;
 
-/* `paths_csv` for RF_DELIVER_CHARGE only. */
+typedef enum { /* what is filmed besides: a second look at the recording, RF_DELIVER_RUN only */
+               RF_DELIVER_NO_FILM = 0,
+               RF_DELIVER_PREVIEW = 1 << 0, /* footage in the report */
+} RfDeliverFilms;
+
+/* `paths_csv` for RF_DELIVER_CHARGE only; `films`: RfDeliverFilms. */
 RfExit rf_deliver(const char *sheet, const char *paths_csv, const char *out, RfDeliverKind kind,
-                  GError **error);
+                  unsigned films, GError **error);

@@ -22,7 +22,7 @@ static int by_weight(const void *left, const void *right)
     return a->entry < b->entry ? -1 : a->entry > b->entry;
 }
 
-static void audit_row(GString *out, const RfAuditRow *row)
+static void audit_row(GString *out, const RfResults *results, const RfAuditRow *row)
 {
     if (row->droplet)
         g_string_append_printf(out, "<tr data-droplet=\"%u\">", row->droplet);
@@ -47,8 +47,11 @@ static void audit_row(GString *out, const RfAuditRow *row)
                                row->droplet, row->droplet);
     else
         g_string_append(out, "<td class=\"number\">–</td>");
-    rf_report_text_cell(out, false, row->evidence);
-    g_string_append(out, "</tr>\n");
+    g_string_append(out, "<td>");
+    rf_report_text(out, row->evidence);
+    rf_report_moment_button(out, results, RF_MOMENT_TIMED_START, row->entry);
+    rf_report_moment_button(out, results, RF_MOMENT_TIMED_STOP, row->entry);
+    g_string_append(out, "</td></tr>\n");
 }
 
 static void person_line(GString *out, const char *name, RfValue value, const char *unit)
@@ -136,7 +139,7 @@ void rf_report_audit(GString *out, const RfResults *results)
         "<th scope=\"col\" class=\"number\">Difference<small>s</small></th><th scope=\"col\" "
         "class=\"number\">E<sub>n</sub></th>"
         "<th scope=\"col\" class=\"number\">Droplet</th><th scope=\"col\">Evidence</th>");
-    for (guint i = 0; i < MIN(rows->len, MOST_ROWS); i++) audit_row(out, rows->pdata[i]);
+    for (guint i = 0; i < MIN(rows->len, MOST_ROWS); i++) audit_row(out, results, rows->pdata[i]);
     rf_report_text_table_end(out);
     if (rows->len > MOST_ROWS)
         g_string_append_printf(out, "<p>%u more entries are in audit.csv.</p>\n", rows->len - MOST_ROWS);

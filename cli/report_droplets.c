@@ -120,8 +120,9 @@ void rf_report_set_aside(GString *out, const RfResults *results)
     rf_report_text_close(out);
 }
 
-static void switches(GString *out, const GArray *rows)
+static void switches(GString *out, const RfResults *results)
 {
+    const GArray *rows = results->switches;
     g_string_append(out, "<h3>Field switches</h3>\n");
     if (rows->len == 0) {
         g_string_append(out, "<p>None found.</p>\n");
@@ -135,7 +136,7 @@ static void switches(GString *out, const GArray *rows)
     for (guint i = 0; i < rows->len; i++) {
         const RfSwitchRow *row = &g_array_index(rows, RfSwitchRow, i);
         g_string_append_printf(out, "<tr><th scope=\"row\">%u</th>", row->number);
-        rf_report_text_number_cell(out, row->time_s);
+        rf_report_moment_time_cell(out, results, RF_MOMENT_SWITCH, row->number, row->time_s);
         rf_report_text_cell(out, false, rf_tally_field_to_string(row->from));
         rf_report_text_cell(out, false, rf_tally_field_to_string(row->to));
         g_string_append_printf(out, "<td class=\"number\">%u</td>", row->droplets);
@@ -148,8 +149,9 @@ static void switches(GString *out, const GArray *rows)
     rf_report_text_table_end(out);
 }
 
-static void steps(GString *out, const GArray *rows)
+static void steps(GString *out, const RfResults *results)
 {
+    const GArray *rows = results->steps;
     g_string_append(out, "<h3>Charge steps</h3>\n");
     if (rows->len == 0) {
         g_string_append(out, "<p>None found.</p>\n");
@@ -164,7 +166,7 @@ static void steps(GString *out, const GArray *rows)
     for (guint i = 0; i < rows->len; i++) {
         const RfStepRow *row = &g_array_index(rows, RfStepRow, i);
         open_row(out, row->droplet, false);
-        rf_report_text_number_cell(out, row->time_s);
+        rf_report_moment_time_cell(out, results, RF_MOMENT_STEP, i + 1, row->time_s);
         rf_report_text_charge_cell(out, row->before_C);
         rf_report_text_charge_cell(out, row->after_C);
         if (row->whole_multiples_p >= 0)
@@ -179,7 +181,7 @@ static void steps(GString *out, const GArray *rows)
 void rf_report_events(GString *out, const RfResults *results)
 {
     rf_report_text_open(out, "events", "When something happened");
-    switches(out, results->switches);
-    steps(out, results->steps);
+    switches(out, results);
+    steps(out, results);
     rf_report_text_close(out);
 }

@@ -9,6 +9,7 @@ static const char *const STYLE[] = {
 };
 
 static const char *const SCRIPT[] = {
+#include "cli/report_player.inc"
 #include "cli/report_script.inc"
 #include "cli/report_review_script.inc"
 };
@@ -35,13 +36,13 @@ static void head(GString *out, const RfResults *results, const char *script)
 {
     g_autofree char *style = joined(STYLE, G_N_ELEMENTS(STYLE));
     g_autofree char *digest = script_digest(script);
-    g_string_append_printf(
-        out,
-        "<!DOCTYPE html>\n<html lang=\"en\">\n<head>\n<meta charset=\"utf-8\">\n"
-        "<meta name=\"viewport\" content=\"width=device-width, initial-scale=1\">\n"
-        "<meta http-equiv=\"Content-Security-Policy\" content=\"default-src 'none'; img-src data:; "
-        "style-src 'unsafe-inline'; script-src 'sha256-%s'\">\n<title>",
-        digest);
+    g_string_append_printf(out,
+                           "<!DOCTYPE html>\n<html lang=\"en\">\n<head>\n<meta charset=\"utf-8\">\n"
+                           "<meta name=\"viewport\" content=\"width=device-width, initial-scale=1\">\n"
+                           "<meta http-equiv=\"Content-Security-Policy\" content=\"default-src 'none'; "
+                           "img-src data:; media-src blob:; "
+                           "style-src 'unsafe-inline'; script-src 'sha256-%s'\">\n<title>",
+                           digest);
     rf_report_text(out, results->sheet_path            ? results->sheet_path
                         : results->recordings->len > 0 ? "pool of recordings"
                                                        : "report");
@@ -134,16 +135,17 @@ static void unit_section(GString *out, const RfResults *results, const RfFigureS
     rf_report_text_close(out);
 }
 
-static void foot(GString *out, const char *script)
+static void foot(GString *out, const RfResults *results, const char *script)
 {
-    g_string_append_printf(
+    g_string_append(
         out,
         "</main>\n<footer>Written by risefall " RF_VERSION
         ". The tables behind this page are the CSV and JSON files "
         "beside it; the figures, with their data and scripts, are in <code>figures/</code>.</footer>\n"
         "<div id=\"chosen\" class=\"is-empty\"><span role=\"status\"></span><button type=\"button\">Show "
-        "all</button></div>\n<script>%s</script>\n</body>\n</html>\n",
-        script);
+        "all</button></div>\n");
+    rf_report_preview(out, results);
+    g_string_append_printf(out, "<script>%s</script>\n</body>\n</html>\n", script);
 }
 
 GString *rf_report_html_new(const RfResults *results, const RfFigureSet *figures)
@@ -170,7 +172,7 @@ GString *rf_report_html_new(const RfResults *results, const RfFigureSet *figures
     rf_report_budget(out, results, figures);
     rf_report_audit(out, results);
     rf_report_sources(out, results);
-    foot(out, script);
+    foot(out, results, script);
     return out;
 }
 
@@ -190,7 +192,7 @@ GString *rf_report_html_pool_new(const RfResults *results, const RfFigureSet *fi
     unit_section(out, results, figures);
     rf_report_budget(out, results, figures);
     rf_report_pool_sources(out, results);
-    foot(out, script);
+    foot(out, results, script);
     return out;
 }
 
@@ -201,6 +203,6 @@ GString *rf_report_html_audit_new(const RfResults *results)
     head(out, results, script);
     banner(out, results);
     rf_report_audit(out, results);
-    foot(out, script);
+    foot(out, results, script);
     return out;
 }

@@ -31,9 +31,17 @@ void rf_report_text_table_end(GString *out);
 /* The figure with its caption, or a line that says where its data are; nothing where there was nothing to draw. */
 void rf_report_text_figure(GString *out, const RfFigureSet *figures, const char *name, const char *caption);
 
+/* Opens the frames around a moment; nothing where they weren't filmed. */
+void rf_report_moment_button(GString *out, const RfResults *results, RfMomentKind kind, unsigned number);
+
+/* A cell with a time, and that button behind it. */
+void rf_report_moment_time_cell(GString *out, const RfResults *results, RfMomentKind kind, unsigned number,
+                                RfValue time_s);
+
 /* ---- one file each ---- */
 void rf_report_first_screen(GString *out, const RfResults *results);
 void rf_report_view(GString *out, const RfResults *results);
+void rf_report_preview(GString *out, const RfResults *results); /* the player with its film, hidden */
 void rf_report_droplets(GString *out, const RfResults *results);
 void rf_report_set_aside(GString *out, const RfResults *results);
 void rf_report_review(GString *out, const RfResults *results);

@@ -17,11 +17,12 @@
     });
     status.textContent = chosen === null ? '' : 'Droplet ' + chosen + ' is marked in every figure and table.';
     bar.classList.toggle('is-empty', chosen === null);
+    document.dispatchEvent(new CustomEvent('droplet-chosen', { detail: chosen }));
   }
 
   document.addEventListener('click', function (event) {
     var hit = event.target.closest('[data-droplet]');
-    if (!hit || String(window.getSelection()) !== '') return;
+    if (!hit || event.target.closest('button') || String(window.getSelection()) !== '') return;
     event.preventDefault();
     choose(hit.dataset.droplet === chosen ? null : hit.dataset.droplet);
   });
@@ -29,6 +30,9 @@
     if (event.key === 'Escape') choose(null);
   });
   bar.querySelector('button').addEventListener('click', function () { choose(null); });
+  document.addEventListener('choose-droplet', function (event) {
+    if (event.detail !== chosen) choose(event.detail);
+  });
   var asked = /^#droplet-(\d+)$/.exec(window.location.hash);
-  if (asked) choose(asked[1]);
+  if (asked) document.addEventListener('DOMContentLoaded', function () { choose(asked[1]); });
 })();

@@ -152,6 +152,9 @@ void rf_report_view(GString *out, const RfResults *results)
     g_string_append(out, "</svg><figcaption class=\"caption\">A dot and the droplet’s number stand where its "
                          "path begins. Broken lines: "
                          "droplets set aside. Choose a droplet here or in any table, and it is marked "
-                         "everywhere.</figcaption></figure>\n");
+                         "everywhere.");
+    if (results->preview)
+        g_string_append(out, " <button type=\"button\" class=\"look\">Watch the footage</button>");
+    g_string_append(out, "</figcaption></figure>\n");
     rf_report_text_close(out);
 }

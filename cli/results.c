@@ -134,6 +134,7 @@ void rf_results_free(RfResults *results)
     if (results->warnings) g_ptr_array_unref(results->warnings);
     if (results->cuts) g_ptr_array_unref(results->cuts);
     if (results->view_png) g_bytes_unref(results->view_png);
+    rf_preview_free(results->preview);
     g_free(results->sheet_path);
     g_free(results->recording_summary);
     g_free(results->scale.source);

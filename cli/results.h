@@ -8,6 +8,7 @@
 #include <stdint.h>
 
 #include "calib/units.h"
+#include "cli/preview.h"
 #include "physics/agreement.h"
 #include "physics/charge_budget.h"
 #include "physics/trail.h"
@@ -270,6 +271,7 @@ struct RfResults {
     RfScaleRow scale;
     RfUnitResult unit;
     GBytes *view_png;        /* the background with the paths drawn over it, or NULL */
+    RfPreview *preview;      /* footage for the report; NULL: none was filmed */
     RfPersonRow person;
     GArray *hand_charges;    /* RfHandChargeRow */
     bool has_log_clock;      /* a voltage log was lined up with the recording */
