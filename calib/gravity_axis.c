@@ -203,7 +203,7 @@ static void test_tilt(const RfMotionLeg *legs, Turned *turned, size_t n, RfGravi
     size_t kept = 0;
     g_autofree Turned *parts = g_new(Turned, n);
     for (size_t i = 0; i < n; i++) {
-        double fall;
+        double fall = 0;
         if (!mean_fall(legs, turned, n, legs[i].droplet, &fall)) continue;
         parts[kept] = turned[i];
         parts[kept].fall = legs[i].is_off ? turned[i].along : fall;

@@ -275,6 +275,18 @@ static void fill_scale(const RfLineFit *fit, const RfLengthScaleOptions *o, RfLe
     scale->residual_px = fit->residual_px;
 }
 
+/* A fit to what isn't lines can end anywhere: upright, inside out, at infinity. */
+static bool is_sensible(const RfLineFit *fit, const Family families[2], int n, double pixel_aspect)
+{
+    double most_rad = atan(2.0 * steepest * fmax(pixel_aspect, 1.0 / pixel_aspect));
+    bool is_good = fabs(fit->rotation_rad.value) <= most_rad && isfinite(fit->rotation_rad.sigma);
+    for (int i = 0; i < n; i++) {
+        RfValue period_px = families[i].is_horizontal ? fit->period_y_px : fit->period_x_px;
+        is_good = is_good && period_px.value > 0.0 && isfinite(period_px.value) && isfinite(period_px.sigma);
+    }
+    return is_good;
+}
+
 static bool measure(const RfPicture *picture, const RfLengthScaleOptions *o, Family families[2], int n,
                     RfLengthScale *scale, GError **error)
 {
@@ -286,7 +298,8 @@ static bool measure(const RfPicture *picture, const RfLengthScaleOptions *o, Fam
         add_pieces(&families[i], picture, o->pixel_aspect, pieces);
         can_tell_k1 = can_tell_k1 && families[i].lines >= least_lines_for_k1;
     }
-    if (!fit_lines(pieces, picture, o->pixel_aspect, can_tell_k1, &fit, scale))
+    if (!fit_lines(pieces, picture, o->pixel_aspect, can_tell_k1, &fit, scale) ||
+        !is_sensible(&fit, families, n, o->pixel_aspect))
         return refuse_lines(
             &families[0], RF_LENGTH_SCALE_ERROR_FEW_LINES, error,
             "what was found doesn't determine angle and spacing; more or longer lines are needed");

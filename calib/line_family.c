@@ -70,7 +70,7 @@ static void sum_along(const RfLinePlane *flat, double slope, Profile *profile)
     for (int b = 0; b < flat->along; b++) {
         const float *row = flat->v + (size_t)b * (size_t)flat->across;
         int shift = (int)lround(slope * block_px * (b - 0.5 * (flat->along - 1)));
-        int from = MAX(0, shift), to = MIN(flat->across, flat->across + shift);
+        int from = MAX(0, shift), to = flat->across + MIN(0, shift);
         for (int c = from; c < to; c++) {
             profile->mean[c - shift] += (double)row[c];
             profile->count[c - shift]++;
