@@ -44,12 +44,32 @@ static bool find_columns(const RfTable *table, int column[COLUMNS], GError **err
     return true;
 }
 
+/* What no camera, clock or bench comes near: beyond it squares are no numbers any more. */
+static const double farthest = 1e12;
+
+static bool is_sigma(int column)
+{
+    return g_str_has_prefix(names[column], "u_");
+}
+
+static bool read_cell(const RfTable *table, size_t row, int column, size_t at, double *cell, GError **error)
+{
+    if (!rf_table_number(table, row, at, cell, error))
+        return false;
+    const char *needed = fabs(*cell) > farthest            ? "a number within 1e12"
+                         : is_sigma(column) && *cell < 0 ? "an uncertainty, not below zero"
+                                                           : NULL;
+    if (needed)
+        rf_table_cell_error(table, row, at, needed, error);
+    return needed == NULL;
+}
+
 static bool read_cells(const RfTable *table, size_t row, const int column[COLUMNS], double cell[COLUMNS], GError **error)
 {
     for (int i = 0; i < COLUMNS; i++) {
         cell[i] = 0;
         if (column[i] >= 0 && !rf_table_is_blank(table, row, (size_t)column[i]) &&
-            !rf_table_number(table, row, (size_t)column[i], &cell[i], error))
+            !read_cell(table, row, i, (size_t)column[i], &cell[i], error))
             return false;
     }
     return true;
@@ -62,10 +82,6 @@ static bool row_of(const RfTable *table, size_t row, const int column[COLUMNS], 
         return false;
     if (!(cell[DROPLET] >= 1 && cell[DROPLET] <= 1e9)) {
         rf_table_cell_error(table, row, (size_t)column[DROPLET], "a droplet's number, from 1", error);
-        return false;
-    }
-    if (fabs(cell[FRAME]) > 1e15) {
-        rf_table_cell_error(table, row, (size_t)column[FRAME], "the index of a frame", error);
         return false;
     }
     *out = (RfPathRow){

@@ -115,6 +115,21 @@ static bool take_lines(RfSheetText *sheet, const char *text, GError **error)
     return is_good;
 }
 
+/* GKeyFile sets one error over another where a value has two such mistakes. */
+static bool check_escapes(const RfSheetText *sheet, const RfSheetEntry *entry, GError **error)
+{
+    g_autofree char *raw = g_key_file_get_value(sheet->key_file, entry->group, entry->key, NULL);
+    for (const char *at = raw; at && (at = strchr(at, '\\')); at += 2) {
+        if (at[1] != '\0' && strchr("sntr\\", at[1])) continue;
+        g_autofree char *seen = rf_quoted_text(raw);
+        g_set_error(error, RF_SETTINGS_ERROR, RF_SETTINGS_ERROR_FILE,
+                    "%s: line %u: [%s] %s: seen `%s`; a backslash is written twice here, as in C:\\\\data",
+                    sheet->path, entry->line, entry->group, entry->key, seen);
+        return false;
+    }
+    return true;
+}
+
 static bool read_values(RfSheetText *sheet, const char *text, GError **error)
 {
     g_autoptr(GError) why = NULL;
@@ -126,6 +141,7 @@ static bool read_values(RfSheetText *sheet, const char *text, GError **error)
     for (unsigned i = 0; i < sheet->entries->len; i++) {
         RfSheetEntry *entry = sheet->entries->pdata[i];
         bool is_note = strcmp(entry->group, "notes") == 0; /* word for word: a backslash is a backslash */
+        if (!is_note && !check_escapes(sheet, entry, error)) return false;
         entry->value = is_note ? g_key_file_get_value(sheet->key_file, entry->group, entry->key, &why)
                                : g_key_file_get_string(sheet->key_file, entry->group, entry->key, &why);
         if (!entry->value || why) { /* an invalid escape gives both */

@@ -310,7 +310,7 @@ static const Bad bad_sheets[] = {
     {"", "", "[shared]\nheight=site\n", RF_SETTINGS_ERROR_VALUE,
      "line 20: [shared] height: ", "doesn't hold"},
     {"gravity=down", "timings=a\\q", "", RF_SETTINGS_ERROR_FILE,
-     "line 3: [recording] timings: ", "can't be read"},
+     "line 3: [recording] timings: ", "a backslash is written twice"},
 };
 
 static void every_error_says_where_and_what(void)
