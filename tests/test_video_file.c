@@ -386,9 +386,16 @@ static void test_refuses_what_is_no_video(void)
     static const char wav[] =
         "RIFF\x2c\0\0\0WAVEfmt \x10\0\0\0\1\0\1\0\x40\x1f\0\0\x40\x1f\0\0\1\0\x08\0data\x08\0\0\0"
         "\x80\x90\x80\x70\x80\x90\x80\x70";
+    /* Matroska with one track, of sound */
+    static const char sound[] =
+        "\x1a\x45\xdf\xa3\x8b\x42\x82\x88matroska\x18S\x80g\xd1\x15I\xa9\x66\x87*\xd7\xb1\x83\x0f"
+        "\x42@\x16T\xaek\xaa\xae\xa8\xd7\x81\x01s\xc5\x81\x01\x83\x81\x02\x86\x8d\x41_PCM/INT/L"
+        "IT\xe1\x8d\xb5\x84\x45\xfa\x00\x00\x9f\x81\x01\x62\x64\x81\x10\x1f\x43\xb6u\x91\xe7\x81"
+        "\x00\xa3\x8c\x81\x00\x00\x80\x00\x01\x00\x01\x00\x01\x00\x01";
     refuse("empty.mkv", "", 0, RF_VIDEO_ERROR_NOT_VIDEO, "not a video");
     refuse("text.mkv", "Dear diary, today the droplets fell.\n", -1, RF_VIDEO_ERROR_NOT_VIDEO, "not a video");
-    refuse("sound.wav", wav, sizeof wav - 1, RF_VIDEO_ERROR_NOT_VIDEO, "not a video");
+    refuse("sound.wav", wav, sizeof wav - 1, RF_VIDEO_ERROR_NOT_VIDEO, "no video stream");
+    refuse("sound.mkv", sound, sizeof sound - 1, RF_VIDEO_ERROR_NOT_VIDEO, "no video stream");
     refuse("zeros.mp4", (const char[4096]){0}, 4096, RF_VIDEO_ERROR_NOT_VIDEO, "not a video");
 }
 

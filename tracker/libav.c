@@ -12,10 +12,12 @@
 #define LONGEST_WORDS 200
 
 /* Containers that hold all of their own data. A positive list: what isn't here (concat scripts, playlists, image
- * patterns, session descriptions, devices) can't be opened however it is named or disguised. */
+ * patterns, session descriptions, devices) can't be opened however it is named or disguised. The last line's hold sound: let
+ * in to be told that there is no video stream in them. */
 #define CONTAINERS                                                                                           \
     "matroska,webm,mov,mp4,3gp,avi,mpeg,mpegts,mpegvideo,m4v,h264,hevc,obu,ivf,mjpeg,yuv4mpegpipe,nut,"      \
-    "flv,ogg,dv,asf,mxf,cine,gif,apng"
+    "flv,ogg,dv,asf,mxf,cine,gif,apng,"                                                                      \
+    "wav,w64,aiff,au,mp3,flac,aac"
 
 /* All that differs between FFmpeg 5.1 and 7: two fields of a frame became flags (libavutil 58.7). */
 #if LIBAVUTIL_VERSION_INT >= AV_VERSION_INT(58, 7, 100)
