@@ -98,3 +98,19 @@ measured_recording() {
 cell() {
     awk -F, -v droplet="$2" -v column="$3" 'NR == 1 { for (i = 1; i <= NF; i++) at[$i] = i; next } $1 == droplet { print $(at[column]) }' "$1"
 }
+
+# A result of `recording` in the folder earlier, made once for all cases of a file, with its paths.csv and scale.json here too.
+result() {
+    recording && { [ -d "$work/earlier" ] || "$program" run sheet.ini --out "$work/earlier" --quiet; } &&
+        cp -r "$work/earlier" . && cp earlier/paths.csv earlier/scale.json .
+}
+
+# The voltage log of the next run: what printf makes of the arguments.
+log_of() {
+    sheet 's/^voltage=.*/&\nlog=volts.csv/' && printf "$@" >volts.csv
+}
+
+# The same for a stopwatch record.
+timings_of() {
+    sheet 's/^video=.*/&\ntimings=watch.csv/' && printf "$@" >watch.csv
+}
