@@ -1,8 +1,7 @@
 #include <stdio.h>
-#include <string.h>
 
 #include "cli/command.h"
-#include "cli/ledger.h"
+#include "cli/ledger_options.h"
 #include "cli/ledger_text.h"
 
 static char *kind, *since, *until, *input, *export_to;
@@ -23,28 +22,20 @@ static const GOptionEntry entries[] = {
     {0},
 };
 
-static bool is_date(const char *option, const char *text, GError **error)
+static RfLedgerFilter filter(void)
 {
-    if (!text || g_regex_match_simple("^\\d{4}(-\\d{2}(-\\d{2})?)?$", text, 0, 0)) return true;
-    g_set_error(error, RF_COMMAND_ERROR, RF_COMMAND_ERROR_USAGE,
-                "%s=%s: a day, month or year is needed, as in 2026-03-14", option, text);
-    return false;
+    return (RfLedgerFilter){kind, since, until, input, (const char *const *)with};
 }
 
-static bool are_options_right(GError **error)
+static bool are_options_right(char **arguments, GError **error)
 {
-    if (!is_date("--since", since, error) || !is_date("--until", until, error)) return false;
+    const RfLedgerFilter wanted = filter();
+    if (!rf_ledger_options_are_right(arguments, &wanted, error)) return false;
     if (kind && !g_strv_contains((const char *const[]){"run", "audit", "pool", NULL}, kind)) {
         g_set_error(error, RF_COMMAND_ERROR, RF_COMMAND_ERROR_USAGE,
                     "--kind=%s: run, audit or pool is needed", kind);
         return false;
     }
-    for (int i = 0; with && with[i]; i++)
-        if (!strchr(with[i], '=')) {
-            g_set_error(error, RF_COMMAND_ERROR, RF_COMMAND_ERROR_USAGE,
-                        "--with=%s: KEY=VALUE is needed, as in operator=A. Example", with[i]);
-            return false;
-        }
     if (export_to && !g_str_has_suffix(export_to, ".csv") && !g_str_has_suffix(export_to, ".json")) {
         g_set_error(error, RF_COMMAND_ERROR, RF_COMMAND_ERROR_USAGE,
                     "--export=%s: a name that ends in .csv or .json is needed", export_to);
@@ -74,8 +65,8 @@ static char *as_json(RfLedger *ledger, const GPtrArray *listed, GError **error)
 
 static RfExit list(RfLedger *ledger, GError **error)
 {
-    const RfLedgerFilter filter = {kind, since, until, input, (const char *const *)with};
-    g_autoptr(GPtrArray) found = rf_ledger_list(ledger, &filter, error);
+    const RfLedgerFilter wanted = filter();
+    g_autoptr(GPtrArray) found = rf_ledger_list(ledger, &wanted, error);
     if (!found) return RF_EXIT_INPUT;
     const bool is_json = export_to ? g_str_has_suffix(export_to, ".json") : rf_command_common()->as_json;
     g_autofree char *text = is_json ? as_json(ledger, found, error)
@@ -104,20 +95,8 @@ static RfExit show(RfLedger *ledger, GError **error)
 
 static RfExit run(char **arguments, GError **error)
 {
-    if (arguments && arguments[0]) {
-        g_set_error(error, RF_COMMAND_ERROR, RF_COMMAND_ERROR_USAGE,
-                    "argument '%s': options only, such as --show %s", arguments[0], arguments[0]);
-        return RF_EXIT_USAGE;
-    }
-    if (!are_options_right(error)) return RF_EXIT_USAGE;
-    g_autofree char *place = rf_ledger_place(rf_command_common()->ledger);
-    if (!place) {
-        g_set_error(
-            error, RF_COMMAND_ERROR, RF_COMMAND_ERROR_USAGE,
-            "no ledger is kept, as RISEFALL_LEDGER or --ledger is empty; name one with --ledger FILE");
-        return RF_EXIT_USAGE;
-    }
-    g_autoptr(RfLedger) ledger = rf_ledger_open_to_read(place, error);
+    if (!are_options_right(arguments, error)) return RF_EXIT_USAGE;
+    g_autoptr(RfLedger) ledger = rf_ledger_options_open(error);
     if (!ledger) return RF_EXIT_INPUT;
     return number ? show(ledger, error) : list(ledger, error);
 }

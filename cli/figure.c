@@ -92,23 +92,34 @@ static void draw_all(RfFigureSet *set, const char *program, const char *inside)
     }
 }
 
-RfFigureSet *rf_figure_draw_with(const RfResults *results, RfResultFolder *folder, const char *plotter,
-                                 GError **error)
+RfFigureSet *rf_figure_set_new(void)
 {
-    g_autoptr(RfFigureSet) set = g_new0(RfFigureSet, 1);
+    RfFigureSet *set = g_new0(RfFigureSet, 1);
     set->figures = g_ptr_array_new_with_free_func(figure_free);
-    for (size_t i = 0; i < rf_figure_scripts_n; i++)
-        if (!add_figure(set, &rf_figure_scripts[i], results, folder, error)) return NULL;
-    if (set->figures->len == 0) return g_steal_pointer(&set);
+    return set;
+}
+
+void rf_figure_set_draw(RfFigureSet *set, const RfResultFolder *folder, const char *plotter)
+{
+    if (set->figures->len == 0) return;
     g_autofree char *program = g_find_program_in_path(plotter);
     if (!program) {
         set->warning = g_strdup_printf(
             "figures: %s is not installed, so there are no pictures; data and scripts are in figures/",
             plotter);
-        return g_steal_pointer(&set);
+        return;
     }
     g_autofree char *inside = g_build_filename(rf_result_folder_path(folder), "figures", NULL);
     draw_all(set, program, inside);
+}
+
+RfFigureSet *rf_figure_draw_with(const RfResults *results, RfResultFolder *folder, const char *plotter,
+                                 GError **error)
+{
+    g_autoptr(RfFigureSet) set = rf_figure_set_new();
+    for (size_t i = 0; i < rf_figure_scripts_n; i++)
+        if (!add_figure(set, &rf_figure_scripts[i], results, folder, error)) return NULL;
+    rf_figure_set_draw(set, folder, plotter);
     return g_steal_pointer(&set);
 }
 

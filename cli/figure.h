@@ -24,6 +24,11 @@ typedef struct {
 
 /* Draws into figures/ of the folder. Fails only where the folder can't be written. (returns new) */
 RfFigureSet *rf_figure_draw(const RfResults *results, RfResultFolder *folder, GError **error);
+/* For figures of other things than results: make a set, add RfFigure whose NAME.dat and NAME.gp are in figures/ already, and
+ * draw them all. What goes wrong is in set->warning. */
+RfFigureSet *rf_figure_set_new(void);
+void rf_figure_set_draw(RfFigureSet *set, const RfResultFolder *folder, const char *plotter);
+
 /* NULL where that figure was not drawn. (borrowed) */
 const RfFigure *rf_figure_find(const RfFigureSet *set, const char *name);
 void rf_figure_set_free(RfFigureSet *set);

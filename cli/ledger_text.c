@@ -3,6 +3,7 @@
 #include <inttypes.h>
 #include <math.h>
 
+#include "cli/csv_text.h"
 #include "cli/json_text.h"
 #include "cli/text_number.h"
 
@@ -131,16 +132,6 @@ static GPtrArray *figure_names(const GPtrArray *entries)
     return names;
 }
 
-static void append_cell(GString *out, const char *text)
-{
-    g_string_append_c(out, '"');
-    for (; text && *text; text++) {
-        if (*text == '"') g_string_append_c(out, '"');
-        g_string_append_c(out, *text);
-    }
-    g_string_append(out, "\",");
-}
-
 static void append_number(GString *out, double value)
 {
     char text[G_ASCII_DTOSTR_BUF_SIZE];
@@ -158,9 +149,9 @@ char *rf_ledger_text_csv(const GPtrArray *entries)
         const RfLedgerEntry *entry = g_ptr_array_index(entries, i);
         g_string_append_printf(out, "%" PRId64 ",%s,%s,%s,%s,%d,", entry->number, entry->kind,
                                entry->measured_on, entry->entered, entry->version, entry->measured);
-        append_cell(out, entry->sheet);
-        append_cell(out, entry->folder);
-        append_cell(out, entry->verdict);
+        rf_csv_text_append(out, entry->sheet);
+        rf_csv_text_append(out, entry->folder);
+        rf_csv_text_append(out, entry->verdict);
         for (guint j = 0; j < names->len; j++) {
             const RfLedgerFigure *figure = rf_ledger_entry_figure(entry, names->pdata[j]);
             if (figure) append_number(out, figure->value.value);

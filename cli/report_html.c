@@ -206,3 +206,16 @@ GString *rf_report_html_audit_new(const RfResults *results)
     foot(out, results, script);
     return out;
 }
+
+GString *rf_report_html_bench_new(const GPtrArray *charts, const RfFigureSet *figures)
+{
+    g_autofree char *script = joined(SCRIPT, G_N_ELEMENTS(SCRIPT));
+    g_autoptr(RfResults) nobody = rf_results_new(); /* no one recording is behind this page */
+    nobody->recording_summary = g_strdup("a bench over time");
+    GString *out = g_string_sized_new(1 << 16);
+    head(out, nobody, script);
+    banner(out, nobody);
+    rf_report_bench(out, charts, figures);
+    foot(out, script);
+    return out;
+}

@@ -5,6 +5,7 @@
 
 #include <glib.h>
 
+#include "cli/bench.h"
 #include "cli/figure.h"
 #include "cli/results.h"
 
@@ -16,3 +17,6 @@ GString *rf_report_html_pool_new(const RfResults *results, const RfFigureSet *fi
 
 /* Only the section on hand timings, as a page of its own. (returns new) */
 GString *rf_report_html_audit_new(const RfResults *results);
+
+/* Control charts: RfBenchChart, and the figures chart-1, chart-2 ... of them. (returns new) */
+GString *rf_report_html_bench_new(const GPtrArray *charts, const RfFigureSet *figures);

@@ -4,6 +4,7 @@
 #include <glib.h>
 
 #include "calib/units.h"
+#include "cli/bench.h"
 #include "cli/figure.h"
 #include "cli/results.h"
 
@@ -56,3 +57,4 @@ void rf_report_cautions(GString *out);                        /* report_sources.
 void rf_report_recordings(GString *out, const RfResults *results,
                           const RfFigureSet *figures);               /* report_pool.c */
 void rf_report_pool_sources(GString *out, const RfResults *results); /* report_pool.c */
+void rf_report_bench(GString *out, const GPtrArray *charts, const RfFigureSet *figures);

@@ -3,6 +3,7 @@
 #include <math.h>
 #include <string.h>
 
+#include "cli/csv_text.h"
 #include "cli/tally.h"
 #include "cli/text_number.h"
 
@@ -57,23 +58,6 @@ static void whole(GString *out, int64_t value)
     } while (rest);
     if (value < 0) text[--at] = '-';
     g_string_append_len(out, text + at, (gssize)(sizeof text - at));
-}
-
-/* RFC 4180, 2.6 and 2.7. */
-static void words(GString *out, const char *text)
-{
-    if (!text) text = "";
-    if (!strpbrk(text, ",\"\r\n")) {
-        g_string_append(out, text);
-    } else {
-        g_string_append_c(out, '"');
-        for (const char *c = text; *c; c++) {
-            if (*c == '"') g_string_append_c(out, '"');
-            g_string_append_c(out, *c);
-        }
-        g_string_append_c(out, '"');
-    }
-    g_string_append_c(out, ',');
 }
 
 /* Every cell ends in a comma; the last one of a row becomes the end of the line. */
@@ -162,7 +146,7 @@ GString *rf_write_csv_segments(const RfResults *results)
         whole(out, row->segment);
         fixed(out, row->start_s, TIME);
         fixed(out, row->end_s, TIME);
-        words(out, rf_tally_field_to_string(row->field));
+        rf_csv_text_append(out, rf_tally_field_to_string(row->field));
         fixed(out, row->voltage_V, VOLTS);
         fixed(out, row->fall_mm_s.value, SPEED);
         fixed(out, row->fall_mm_s.sigma, SPEED);
@@ -182,8 +166,8 @@ GString *rf_write_csv_switches(const RfResults *results)
         whole(out, row->number);
         fixed(out, row->time_s.value, TIME);
         fixed(out, row->time_s.sigma, TIME);
-        words(out, rf_tally_field_to_string(row->from));
-        words(out, rf_tally_field_to_string(row->to));
+        rf_csv_text_append(out, rf_tally_field_to_string(row->from));
+        rf_csv_text_append(out, rf_tally_field_to_string(row->to));
         whole(out, row->droplets);
         fixed_if(out, row->has_log_time, row->log_time_s, TIME);
         end_row(out);
@@ -230,8 +214,8 @@ static void droplet_row(GString *out, const RfDropletRow *row)
         whole(out, row->units);
     else
         g_string_append_c(out, ',');
-    words(out, row->accepted ? "accepted" : "set aside");
-    words(out, row->reason);
+    rf_csv_text_append(out, row->accepted ? "accepted" : "set aside");
+    rf_csv_text_append(out, row->reason);
     fixed_if(out, row->has_charge, row->units_probability, CHANCE);
     const bool from_fall = row->radius_fall_um.sigma > 0, from_spread = row->radius_spread_um.sigma > 0;
     fixed_if(out, from_fall, row->radius_fall_um.value, RADIUS);
@@ -277,13 +261,13 @@ GString *rf_write_csv_audit(const RfResults *results)
         fixed_if(out, row->has_tracked, row->tracked_time_s.value, TIME);
         fixed_if(out, row->has_tracked, row->difference_s, TIME);
         fixed_if(out, row->has_tracked, row->en_number, RATIO);
-        words(out, row->finding);
-        words(out, row->label);
+        rf_csv_text_append(out, row->finding);
+        rf_csv_text_append(out, row->label);
         fixed(out, row->hand_time_s.sigma, TIME);
         fixed_if(out, row->has_tracked, row->tracked_time_s.sigma, TIME);
         fixed(out, row->match_confidence, CHANCE);
         fixed_if(out, row->has_tracked, row->start_s, TIME);
-        words(out, row->evidence);
+        rf_csv_text_append(out, row->evidence);
         end_row(out);
     }
     return out;
@@ -319,8 +303,8 @@ GString *rf_write_csv_budget(const RfResults *results)
                          results->budget->len, 80);
     for (guint i = 0; i < results->budget->len; i++) {
         const RfBudgetRow *row = &g_array_index(results->budget, RfBudgetRow, i);
-        words(out, row->input);
-        words(out, row->stated);
+        rf_csv_text_append(out, row->input);
+        rf_csv_text_append(out, row->stated);
         exponent(out, row->relative_u);
         exponent(out, row->charge_relative_u);
         exponent_if(out, row->charge_relative_u_mc >= 0, row->charge_relative_u_mc);

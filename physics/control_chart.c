@@ -26,6 +26,7 @@ bool rf_control_chart_limits(const double *values, size_t n, RfControlLimits *li
     const double centre = sum / (double)n, mean_range = ranges / (double)(n - 1),
                  sigma = mean_range / range_mean();
     *limits = (RfControlLimits){
+        .n = n,
         .centre = centre,
         .sigma = sigma,
         .lower = centre - 3 * sigma,
@@ -70,32 +71,35 @@ void rf_control_chart_signals(const RfControlLimits *limits, const double *value
     }
 }
 
-/* Of a shift at point `first`, its size free: m (mean - centre)^2 / (2 sigma^2) over the m points from there to the signal. */
-static double log_likelihood(const RfControlLimits *limits, double sum, double m)
+/* A lasting shift over the last m points: their mean against the centre, both uncertain. */
+static RfControlShift shift_of(const RfControlLimits *limits, size_t first, double sum, double m)
 {
-    return sum * sum / (2 * m * limits->sigma * limits->sigma);
+    const double size = sum / m, variance = 1 / m + (limits->n ? 1 / (double)limits->n : 0);
+    const double u_size = limits->sigma * sqrt(variance);
+    return (RfControlShift){first, first, first, size, u_size, size * size / (2 * u_size * u_size)};
 }
 
 RfControlShift rf_control_chart_shift(const RfControlLimits *limits, const double *values, size_t baseline,
                                       size_t signal)
 {
+    static const double WITHIN = 2; /* chi-squared of one degree of freedom: 4, about 95 % */
     const size_t begin = baseline <= signal ? baseline : 0;
-    RfControlShift shift = {.first = signal, .from = signal, .to = signal};
+    RfControlShift best = {.first = signal, .from = signal, .to = signal};
     double sum = 0;
     for (size_t i = signal + 1; i-- > begin;) {
         sum += values[i] - limits->centre;
-        const double m = (double)(signal + 1 - i), found = log_likelihood(limits, sum, m);
-        if (found > shift.log_likelihood)
-            shift = (RfControlShift){i, i, i, sum / m, limits->sigma / sqrt(m), found};
+        const RfControlShift shift = shift_of(limits, i, sum, (double)(signal + 1 - i));
+        if (shift.log_likelihood > best.log_likelihood) best = shift;
     }
     sum = 0;
     for (size_t i = signal + 1; i-- > begin;) {
         sum += values[i] - limits->centre;
-        if (log_likelihood(limits, sum, (double)(signal + 1 - i)) < shift.log_likelihood - 2) continue;
-        shift.from = i < shift.from ? i : shift.from;
-        shift.to = i > shift.to ? i : shift.to;
+        if (shift_of(limits, i, sum, (double)(signal + 1 - i)).log_likelihood < best.log_likelihood - WITHIN)
+            continue;
+        best.from = i < best.from ? i : best.from;
+        best.to = i > best.to ? i : best.to;
     }
-    return shift;
+    return best;
 }
 
 /* Points so far in a row: state s > 0 above, s < 0 below, always fewer than RUN. Expected further points from each state solve

@@ -13,6 +13,7 @@ enum {
 };
 
 typedef struct {
+    size_t n;             /* points that centre comes from; 0: it is known */
     double centre, sigma; /* sigma: of one point, mean moving range over d2 */
     double lower, upper;  /* centre -+ 3 sigma */
     double mean_range, range_upper;
@@ -40,7 +41,7 @@ void rf_control_chart_signals(const RfControlLimits *limits, const double *value
                               unsigned *signals);
 
 /* The most likely instant of a lasting shift before or at point `signal` (0 < signal < n), among the points from
- * `baseline` on where baseline > 0, else anywhere: the centre is taken as known, the points up to `signal` are used. */
+ * `baseline` on where baseline > 0, else anywhere; the points up to `signal` are used, the centre with the uncertainty of its n points. */
 RfControlShift rf_control_chart_shift(const RfControlLimits *limits, const double *values, size_t baseline,
                                       size_t signal);
 
