@@ -1,5 +1,7 @@
 #include "calib/table.h"
 #include "cli/command.h"
+#include "cli/digest.h"
+#include "cli/ledger_keep.h"
 #include "cli/pool.h"
 #include "cli/result_folder.h"
 #include "cli/write_json.h"
@@ -86,6 +88,18 @@ static void tell(const RfResults *results)
         fprintf(stderr, "risefall: note: %s\n", (const char *)g_ptr_array_index(results->warnings, i));
 }
 
+/* What went in are the summaries of the pooled results: their digests say which runs these were. */
+static void enter(const RfResults *results, char **folders)
+{
+    g_autoptr(RfLedgerEntry) entry = rf_ledger_entry_from_results("pool", results, out);
+    for (; *folders; folders++) {
+        g_autofree char *summary = g_build_filename(*folders, "summary.json", NULL),
+                        *sha256 = rf_digest_file(summary, NULL);
+        if (sha256) rf_ledger_entry_add_input(entry, "results", summary, sha256);
+    }
+    rf_ledger_keep(entry);
+}
+
 static bool is_usage_right(char **arguments, GError **error)
 {
     if (arguments && *arguments)
@@ -105,8 +119,8 @@ static RfExit run(char **arguments, GError **error)
     g_autoptr(RfResults) results = rf_pool_join(recordings, failures, error);
     rf_command_progress_end();
     if (!results || !write_down(results, error)) return RF_EXIT_INPUT;
-    /* The pool is in place: from here on it can be told, and entered in a record. */
     tell(results);
+    enter(results, arguments);
     return results->measured ? RF_EXIT_DONE : RF_EXIT_NOT_MEASURED;
 }
 
@@ -140,5 +154,6 @@ const RfCommand rf_command_pool = {
     .files = files,
     .entries = entries,
     .has_json = true,
+    .has_ledger = true,
     .run = run,
 };

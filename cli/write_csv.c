@@ -282,7 +282,7 @@ static void influence_rows(GString *out, const RfInfluenceRow *row, const GArray
         if (fabs(charge_C) == 0) continue;
         whole(out, row->droplet);
         whole(out, row->spell);
-        words(out, input->input);
+        rf_csv_text_append(out, input->input);
         exponent(out, charge_C);
         end_row(out);
     }
@@ -323,11 +323,11 @@ static void value_if(GString *out, bool is_there, RfValue value)
 static void recording_row(GString *out, const RfRecordingRow *row)
 {
     const bool is_pooled = row->state == RF_RECORDING_POOLED, has_others = is_pooled && row->offset.sigma > 0;
-    words(out, row->name);
-    words(out, rf_tally_recording_to_string(row->state));
+    rf_csv_text_append(out, row->name);
+    rf_csv_text_append(out, rf_tally_recording_to_string(row->state));
     whole(out, row->droplets_accepted);
     whole(out, row->droplets_set_aside);
-    words(out, !is_pooled ? "" : row->stands_alone ? "alone" : "together");
+    rf_csv_text_append(out, !is_pooled ? "" : row->stands_alone ? "alone" : "together");
     value_if(out, is_pooled, row->unit_C);
     exponent_if(out, is_pooled, row->u_random_C);
     fixed_if(out, is_pooled, row->weight, CHANCE);
@@ -335,8 +335,8 @@ static void recording_row(GString *out, const RfRecordingRow *row)
     fixed_if(out, has_others, row->deviate, RATIO);
     exponent_if(out, has_others, row->deviate_p);
     value_if(out, has_others, row->without_C);
-    words(out, row->reason);
-    words(out, row->sheet);
+    rf_csv_text_append(out, row->reason);
+    rf_csv_text_append(out, row->sheet);
     end_row(out);
 }
 
@@ -357,8 +357,8 @@ GString *rf_write_csv_measurements(const RfResults *results)
     GString *out = table("input,shared,recordings,unit_relative_u\n", results->measurements->len, 60);
     for (guint i = 0; i < results->measurements->len; i++) {
         const RfMeasurementRow *row = &g_array_index(results->measurements, RfMeasurementRow, i);
-        words(out, row->input);
-        words(out, row->name);
+        rf_csv_text_append(out, row->input);
+        rf_csv_text_append(out, row->name);
         whole(out, row->recordings);
         exponent(out, row->unit_relative_u);
         end_row(out);
@@ -368,7 +368,7 @@ GString *rf_write_csv_measurements(const RfResults *results)
 
 static void pooled_droplet_row(GString *out, const RfDropletRow *row, const char *recording)
 {
-    words(out, recording);
+    rf_csv_text_append(out, recording);
     whole(out, row->droplet_there);
     whole(out, row->spell);
     fixed(out, row->start_s, TIME);
@@ -378,8 +378,8 @@ static void pooled_droplet_row(GString *out, const RfDropletRow *row, const char
     fixed_if(out, is_fitted, row->radius_um.sigma, RADIUS);
     value_if(out, row->has_charge, row->charge_C);
     exponent_if(out, row->has_charge, row->u_random_C);
-    words(out, row->accepted ? "accepted" : "set aside");
-    words(out, row->reason);
+    rf_csv_text_append(out, row->accepted ? "accepted" : "set aside");
+    rf_csv_text_append(out, row->reason);
     end_row(out);
 }
 
