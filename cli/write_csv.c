@@ -224,17 +224,17 @@ static void droplet_row(GString *out, const RfDropletRow *row)
     fixed_if(out, from_spread, row->radius_spread_um.sigma, RADIUS);
     fixed_if(out, from_fall && from_spread, row->radius_agreement_p, CHANCE);
     fixed(out, row->median_snr, RATIO);
-    words(out, !row->is_overruled ? "" : row->accepted ? "restored" : "set aside");
+    rf_csv_text_append(out, !row->is_overruled ? "" : row->accepted ? "restored" : "set aside");
     end_row(out);
 }
 
 GString *rf_write_csv_droplets(const RfResults *results)
 {
-    GString *out =
-        table("droplet,spell,start_s,end_s,frames,fall_mm_s,u_fall_mm_s,radius_um,u_radius_um,charge_C,"
-              "u_charge_C,u_random_C,units,verdict,reason,units_probability,radius_fall_um,"
-              "u_radius_fall_um,radius_spread_um,u_radius_spread_um,radius_agreement_p,median_snr,overruled\n",
-              results->droplets->len, 240);
+    GString *out = table(
+        "droplet,spell,start_s,end_s,frames,fall_mm_s,u_fall_mm_s,radius_um,u_radius_um,charge_C,"
+        "u_charge_C,u_random_C,units,verdict,reason,units_probability,radius_fall_um,"
+        "u_radius_fall_um,radius_spread_um,u_radius_spread_um,radius_agreement_p,median_snr,overruled\n",
+        results->droplets->len, 240);
     for (guint i = 0; i < results->droplets->len; i++)
         droplet_row(out, &g_array_index(results->droplets, RfDropletRow, i));
     return out;
