@@ -216,6 +216,6 @@ GString *rf_report_html_bench_new(const GPtrArray *charts, const RfFigureSet *fi
     head(out, nobody, script);
     banner(out, nobody);
     rf_report_bench(out, charts, figures);
-    foot(out, script);
+    foot(out, nobody, script);
     return out;
 }
