@@ -69,7 +69,7 @@ JobAcctGatherType=jobacct_gather/none
 SelectType=select/cons_tres
 SelectTypeParameters=CR_Core
 SchedulerParameters=batch_sched_delay=1,sched_interval=2
-MinJobAge=600
+MinJobAge=6000
 KillWait=3
 ReturnToService=2
 SlurmdParameters=config_overrides
