@@ -9,14 +9,19 @@
 
 /* ---- the file ---- */
 
-static double bits_per_pixel(const char *path, const RfVideoInfo *info)
+static double bits_per_pixel(const GPtrArray *videos, const RfVideoInfo *info)
 {
-    GStatBuf about;
     const double pixels = (double)info->width * info->height * (double)info->frames;
-    return g_stat(path, &about) == 0 && pixels > 0 ? 8.0 * (double)about.st_size / pixels : 0;
+    double bytes = 0;
+    for (guint i = 0; i < videos->len; i++) {
+        GStatBuf about;
+        if (g_stat(g_ptr_array_index(videos, i), &about) != 0) return 0;
+        bytes += (double)about.st_size;
+    }
+    return pixels > 0 ? 8 * bytes / pixels : 0;
 }
 
-static void describe_file(const char *path, const RfVideoInfo *info, RfFitnessFigures *figures)
+static void describe_file(const GPtrArray *videos, const RfVideoInfo *info, RfFitnessFigures *figures)
 {
     *figures = (RfFitnessFigures){
         .width_px = info->width,
@@ -26,7 +31,7 @@ static void describe_file(const char *path, const RfVideoInfo *info, RfFitnessFi
         .is_limited_range = info->is_limited_range,
         .is_interlaced = info->is_interlaced,
         .is_lossless = info->is_lossless,
-        .bits_per_pixel = bits_per_pixel(path, info),
+        .bits_per_pixel = bits_per_pixel(videos, info),
         .frame_rate_hz = info->frame_rate_hz,
         .is_rate_constant = info->is_rate_constant,
         .tick_s = info->tick_s,
@@ -159,17 +164,30 @@ static void describe_droplets(const RfWatch *watch, const RfPaths *paths, RfFitn
 
 /* ---- all of it ---- */
 
+static void describe_sightings(const RfWatch *watch, const RfPaths *paths, RfFitnessFigures *figures)
+{
+    describe_part(watch, figures);
+    describe_light(watch, figures);
+    describe_camera(watch->sightings, figures);
+    describe_droplets(watch, paths, figures);
+    rf_examine_errors(watch, paths, figures);
+}
+
+void rf_examine_watched(const GPtrArray *videos, const RfWatch *watch, const RfPaths *paths,
+                        RfFitnessFigures *figures)
+{
+    describe_file(videos, rf_video_file_info(watch->video), figures);
+    describe_sightings(watch, paths, figures);
+    figures->is_combing_untested = true;
+}
+
 static bool examine_part(const RfSettings *settings, const RfWatchHooks *hooks, RfFitnessFigures *figures,
                          GError **error)
 {
     g_autoptr(RfWatch) watch = rf_watch_recording(settings, hooks, error);
     g_autoptr(RfPaths) paths = watch ? rf_linker_run(watch->sightings, NULL, NULL, error) : NULL;
     if (!paths) return false;
-    describe_part(watch, figures);
-    describe_light(watch, figures);
-    describe_camera(watch->sightings, figures);
-    describe_droplets(watch, paths, figures);
-    rf_examine_errors(watch, paths, figures);
+    describe_sightings(watch, paths, figures);
     return figures->is_interlaced || rf_examine_combing(watch, paths, &figures->combing, error);
 }
 
@@ -182,7 +200,7 @@ bool rf_examine_recording(const char *path, bool is_whole, const RfWatchHooks *h
     g_autoptr(RfVideoFile) video = rf_watch_open(&settings, error);
     if (!video) return false;
     const RfVideoInfo *info = rf_video_file_info(video);
-    describe_file(path, info, figures);
+    describe_file(videos, info, figures);
     choose_part(info, is_whole, &settings);
     return examine_part(&settings, hooks, figures, error);
 }

@@ -139,7 +139,9 @@ static void judge_interlacing(GArray *lines, const RfFitnessFigures *f)
         return;
     }
     if (!(c.sigma > 0)) {
-        add(lines, "interlacing", g_strdup("none said; too little moves to test it"), RF_FITNESS_FIT, NULL);
+        add(lines, "interlacing",
+            g_strdup(f->is_combing_untested ? "none said; risefall check tests it"
+                                            : "none said; too little moves to test it"), RF_FITNESS_FIT, NULL);
         return;
     }
     g_autofree char *apart = rf_text_number_concise((RfValue){fabs(c.value), c.sigma});

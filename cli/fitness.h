@@ -56,6 +56,7 @@ typedef struct {
         keyframe_jump_px; /* onwards along the motion where the encoder starts afresh; sigma 0: not determined */
     RfValue combing;      /* of footage said to be progressive: 0 as it should be, +-0.5 where two fields
                                         are woven into one frame; sigma 0: not determined */
+    bool is_combing_untested; /* nobody looked for it */
 } RfFitnessFigures;
 
 typedef enum {

@@ -1,5 +1,7 @@
 #include "cli/health.h"
 
+#include "cli/examine.h"
+
 #include <math.h>
 
 static void warn_of_file(RfResults *results, const RfWatch *watch)
@@ -56,7 +58,15 @@ static void warn_of_axis(RfResults *results, const RfGravityAxis *axis)
              axis->tilt_rad.value * 180 / G_PI, axis->tilt_rad.sigma * 180 / G_PI, axis->tilt_p);
 }
 
-void rf_health_describe(RfResults *results, const RfWatch *watch, const RfFollow *follow)
+static GArray *fitness_of(const GPtrArray *videos, const RfWatch *watch, const RfPaths *paths)
+{
+    RfFitnessFigures figures;
+    rf_examine_watched(videos, watch, paths, &figures);
+    return rf_fitness_judge(&figures);
+}
+
+void rf_health_describe(RfResults *results, const GPtrArray *videos, const RfWatch *watch,
+                        const RfFollow *follow)
 {
     const RfVideoInfo *info = rf_video_file_info(watch->video);
     results->width = info->width;
@@ -66,6 +76,7 @@ void rf_health_describe(RfResults *results, const RfWatch *watch, const RfFollow
     results->duration_s = info->duration_s;
     results->recording_summary = rf_video_file_summary(watch->video);
     results->gravity_axis_deg = follow->frame.gravity_rad * 180 / G_PI;
+    results->fitness = fitness_of(videos, watch, follow->paths);
     warn_of_file(results, watch);
     warn_of_picture(results, watch, follow);
     warn_of_lost_frames(results, watch->sightings);

@@ -113,7 +113,7 @@ static bool follow_recording(Road *road, const RfSettings *settings, const RfWat
     g_array_unref(results->paths);
     results->paths = g_steal_pointer(&follow->rows);
     rf_write_csv_settle_paths(results->paths);
-    rf_health_describe(results, watch, follow);
+    rf_health_describe(results, settings->videos, watch, follow);
     results->view_png = rf_view_background_png(background);
     return true;
 }

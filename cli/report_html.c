@@ -83,6 +83,7 @@ static void contents(GString *out, const RfResults *results, const RfFigureSet *
         {"radius", "Radius twice", rf_figure_find(figures, "radius") != NULL},
         {"budget", "Uncertainty", results->budget->len > 0},
         {"audit", "Hand timings", results->audit->len > 0},
+        {"health", "The recording", results->fitness != NULL},
         {"sources", "Inputs", true},
         {"cautions", "Cautions", true},
     };
@@ -171,6 +172,7 @@ GString *rf_report_html_new(const RfResults *results, const RfFigureSet *figures
                    "deserve a second look.");
     rf_report_budget(out, results, figures);
     rf_report_audit(out, results);
+    rf_report_health(out, results);
     rf_report_sources(out, results);
     foot(out, results, script);
     return out;

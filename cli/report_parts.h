@@ -51,6 +51,7 @@ void rf_report_review_notice(GString *out, const RfResults *results); /* within 
 void rf_report_events(GString *out, const RfResults *results);
 void rf_report_audit(GString *out, const RfResults *results);
 void rf_report_budget(GString *out, const RfResults *results, const RfFigureSet *figures);
+void rf_report_health(GString *out, const RfResults *results);
 void rf_report_sources(GString *out, const RfResults *results);
 void rf_report_files(GString *out, const RfResults *results); /* report_sources.c: input files and program */
 void rf_report_cautions(GString *out);                        /* report_sources.c */

@@ -128,7 +128,7 @@ void rf_results_free(RfResults *results)
                         results->steps,  results->droplets,          results->budget,
                         results->audit,  results->unit.curve_unit_C, results->unit.curve_log_likelihood,
                         results->hand_charges, results->effects, results->certificate,
-                        results->common, results->influences, results->recordings, results->measurements, results->review};
+                        results->fitness, results->common, results->influences, results->recordings, results->measurements, results->review};
     for (size_t i = 0; i < G_N_ELEMENTS(arrays); i++) free_array(arrays[i]);
     rf_results_free(results->without);
     if (results->warnings) g_ptr_array_unref(results->warnings);

@@ -8,6 +8,7 @@
 #include <stdint.h>
 
 #include "calib/units.h"
+#include "cli/fitness.h"
 #include "cli/preview.h"
 #include "physics/agreement.h"
 #include "physics/charge_budget.h"
@@ -259,6 +260,7 @@ struct RfResults {
     RfValue air_temperature_kelvin; /* in the cell; value 0: not known */
     double gravity_axis_deg; /* from the picture's +y towards its -x: camera roll found */
 
+    GArray *fitness;         /* RfFitnessLine: what the recording is like; NULL: it wasn't watched */
     GArray *paths;           /* RfPathRow, by droplet, then time */
     GArray *segments;        /* RfSegmentRow */
     GArray *switches;        /* RfSwitchRow */

@@ -159,6 +159,31 @@ static void warnings(JsonBuilder *json, const GPtrArray *list)
     json_builder_end_array(json);
 }
 
+/* As `check --json` has it, without the figures behind it. */
+static void health(JsonBuilder *json, const GArray *lines)
+{
+    json_builder_set_member_name(json, "health");
+    if (!lines) {
+        json_builder_add_null_value(json);
+        return;
+    }
+    json_builder_begin_object(json);
+    words(json, "verdict", rf_fitness_verdict_to_string(rf_fitness_overall(lines)));
+    json_builder_set_member_name(json, "findings");
+    json_builder_begin_object(json);
+    for (guint i = 0; i < lines->len; i++) {
+        const RfFitnessLine *line = &g_array_index(lines, RfFitnessLine, i);
+        json_builder_set_member_name(json, line->key);
+        json_builder_begin_object(json);
+        words(json, "verdict", rf_fitness_verdict_to_string(line->verdict));
+        words(json, "figure", line->figure);
+        words(json, "advice", line->advice);
+        json_builder_end_object(json);
+    }
+    json_builder_end_object(json);
+    json_builder_end_object(json);
+}
+
 static void effects(JsonBuilder *json, const GArray *rows)
 {
     json_builder_set_member_name(json, "effects");
@@ -301,6 +326,7 @@ char *rf_write_json_summary(const RfResults *results)
     number_if(json, "log_drift", results->has_log_clock, results->log_drift.value);
     warnings(json, results->warnings);
     certificate(json, results->certificate);
+    health(json, results->fitness);
     effects(json, results->effects);
     words(json, "sheet", results->sheet_path);
     recording(json, results);

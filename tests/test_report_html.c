@@ -118,6 +118,18 @@ static void audit_by_weight(void)
     g_assert_true(slip < lost && lost < good);
 }
 
+static void health_has_figure_and_verdict(void)
+{
+    g_autoptr(RfResults) results = sample_results_new(), empty = sample_results_empty_new();
+    g_autoptr(GString) page = page_with(results, SVG), none = page_with(empty, SVG);
+    assert_has(page, "<strong>usable with care</strong>: of 17 matters looked at, 2 call for care.");
+    assert_has(page, "<th scope=\"row\">compression</th><td class=\"finding care\">care</td>"
+                     "<td>h264, lossy, 0.25 bit per pixel</td><td>Lossy compression can hide");
+    assert_has(page, "<th scope=\"row\">noise</th><td class=\"finding good\">fit</td>");
+    assert_has(page, "none said; risefall check tests it");
+    assert_lacks(none, "id=\"health\"");
+}
+
 /* What a person decided stands on the first screen, and with name, date and reason in its own section. */
 static void overruled_with_a_trail(void)
 {
@@ -251,6 +263,7 @@ int main(int argc, char **argv)
 {
     g_test_init(&argc, &argv, NULL);
     g_test_add_func("/report/review/overruled-with-a-trail", overruled_with_a_trail);
+    g_test_add_func("/report_html/health/has-figure-and-verdict", health_has_figure_and_verdict);
     g_test_add_func("/report/review/never-markup", reasons_and_names_are_never_markup);
     g_test_add_func("/report/review/form-starts-from-it", form_starts_from_the_review);
     g_test_add_func("/report_html/first-screen/says-it", first_screen_says_it);

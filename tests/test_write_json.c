@@ -54,6 +54,12 @@ static void summary_says_what_was_used(void)
     JsonObject *video = json_array_get_object_element(json_object_get_array_member(object, "inputs"), 1);
     g_assert_cmpstr(json_object_get_string_member(video, "path"), ==, "cell & view.mkv");
     g_assert_cmpuint(strlen(json_object_get_string_member(video, "sha256")), ==, 64);
+    JsonObject *health = json_object_get_object_member(object, "health"),
+               *findings = json_object_get_object_member(health, "findings");
+    g_assert_cmpstr(json_object_get_string_member(health, "verdict"), ==, "usable with care");
+    g_assert_cmpstr(
+        json_object_get_string_member(json_object_get_object_member(findings, "exposure"), "verdict"), ==,
+        "usable with care");
 }
 
 static void summary_unresolved_is_null_with_reason(void)

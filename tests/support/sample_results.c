@@ -270,6 +270,37 @@ static void add_sheet(RfResults *results)
     results->sheet_path = g_strdup("run.sheet");
 }
 
+/* A good recording, but lossy and with every fiftieth droplet's picture saturated. */
+static GArray *fitness(void)
+{
+    const RfFitnessFigures figures = {
+        .codec = "h264",
+        .container = "matroska",
+        .width_px = 640,
+        .height_px = 480,
+        .bit_depth = 8,
+        .pixel_aspect = 1,
+        .bits_per_pixel = 0.25,
+        .frame_rate_hz = FRAMES_PER_S,
+        .is_rate_constant = true,
+        .duration_s = SECONDS,
+        .frames = FRAMES_PER_S * SECONDS,
+        .part_frames = FRAMES_PER_S * SECONDS,
+        .part_exposures = FRAMES_PER_S * SECONDS,
+        .noise_sd = 1.4,
+        .noise_correlation = 0.08,
+        .droplets = DROPLETS,
+        .droplets_per_exposure = DROPLETS,
+        .snr_median = 14.2,
+        .followed_mean_s = SECONDS,
+        .spot_width_px = 1.4,
+        .saturated_share = 0.021,
+        .excess_scatter = {1.1, 0.05},
+        .is_combing_untested = true,
+    };
+    return rf_fitness_judge(&figures);
+}
+
 RfResults *sample_results_new(void)
 {
     RfResults *results = rf_results_new();
@@ -279,6 +310,7 @@ RfResults *sample_results_new(void)
     results->duration_s = SECONDS;
     results->recording_summary = g_strdup("640 x 480, H.264, 30 frames/s, 60.0 s");
     results->gravity_axis_deg = 0.7;
+    results->fitness = fitness();
     results->measured = true;
     results->verdict =
         g_strdup("Six of seven droplets carry whole multiples of one unit of charge, 1.6049(13)e-19 C");
