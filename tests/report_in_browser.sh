@@ -34,7 +34,7 @@ grep -q 'Droplet 4 is marked' "$place/dom" || fail 'nobody says that droplet 4 i
 echo "ok: droplet 4 marked in all $all places"
 
 # Two packages from the npm registry, kept beside the build from one run to the next.
-modules=$(dirname "$1")/npm
+modules=$(cd "$(dirname "$1")" && pwd)/npm
 command -v node >/dev/null && command -v npm >/dev/null || { echo "no node here: not used as a person would"; exit 0; }
 [ -d "$modules/node_modules/axe-core" ] ||
     npm install --silent --no-audit --no-fund --prefix "$modules" playwright-core@1.65.1 axe-core@4.14.1 ||
