@@ -9,6 +9,8 @@ static const double BRIEF_S = 0.35;
 /* Gain in log-likelihood for a switch: its instant, its level, and the price of any switch. A droplet's part is bounded by
  * 7, so that one alone, which may have changed its charge, can't decide. */
 static const double GAIN_MIN = 12;
+/* Where the labels had a switch there already, only which one it was is in question. */
+static const double GAIN_MIN_LABELLED = 4;
 
 typedef struct {
     RfFieldTimeline *timeline;
@@ -21,19 +23,20 @@ static RfFieldInterval *interval_at(const RfFieldTimeline *timeline, unsigned k)
 }
 
 /* The brief interval at this end is given back to its neighbour. */
-static void give_up_brief(const End *end)
+static bool give_up_brief(const End *end)
 {
     GArray *intervals = end->timeline->intervals;
-    if (intervals->len < 2) return;
+    if (intervals->len < 2) return false;
     unsigned brief = end->is_start ? 0 : intervals->len - 1, beside = end->is_start ? 1 : brief - 1;
     const RfFieldInterval *v = interval_at(end->timeline, brief);
-    if (v->end_s - v->start_s >= BRIEF_S) return;
+    if (v->end_s - v->start_s >= BRIEF_S) return false;
     if (end->is_start)
         interval_at(end->timeline, beside)->start_s = v->start_s;
     else
         interval_at(end->timeline, beside)->end_s = v->end_s;
     g_array_remove_index(intervals, brief);
     g_array_remove_index(end->timeline->switches, end->is_start ? 0 : brief - 1);
+    return true;
 }
 
 /* A level for the last moment at this end; returns the new switch's number. */
@@ -104,7 +107,7 @@ static void fill_witnesses(const End *end, const RfTrail *trails, const RfFieldR
 }
 
 static void settle(const End *end, const RfSwitchWitness *witnesses, size_t n, const RfFieldLevel *levels,
-                   size_t n_levels)
+                   size_t n_levels, double gain_min)
 {
     const RfFieldTimeline *timeline = end->timeline;
     const RfFieldInterval now = *interval_at(timeline, end->is_start ? 0 : timeline->intervals->len - 1);
@@ -116,7 +119,7 @@ static void settle(const End *end, const RfSwitchWitness *witnesses, size_t n, c
         unsigned number = put_in(end, &levels[l]);
         RfSwitchGain gain = rf_switch_instant_gain(end->timeline, number, witnesses, n, end->is_start);
         take_out(end);
-        if (!(gain.bounded > GAIN_MIN) || !(gain.open > best)) continue;
+        if (!(gain.bounded > gain_min) || !(gain.open > best)) continue;
         best = gain.open;
         to = &levels[l];
     }
@@ -130,8 +133,8 @@ void rf_end_switch_settle(RfFieldTimeline *timeline, const RfTrail *trails, cons
     g_autofree double *per_volt = g_new(double, 2 * runs->droplets);
     for (int start = 0; start < 2; start++) {
         const End end = {timeline, start == 1};
-        give_up_brief(&end);
+        double gain_min = give_up_brief(&end) ? GAIN_MIN_LABELLED : GAIN_MIN;
         fill_witnesses(&end, trails, runs, droplets, per_volt, witnesses);
-        settle(&end, witnesses, runs->droplets, levels, n_levels);
+        settle(&end, witnesses, runs->droplets, levels, n_levels, gain_min);
     }
 }

@@ -74,6 +74,7 @@ static void measure(gsl_rng *random, Tally *tally)
     RfTrail trails[4];
     for (size_t i = 0; i < n; i++) {
         walks[i] = random_walk(truth, random);
+        if (i == 0) walks[i].start_s = 0; /* the field is off when the recording starts, as the sheet says */
         trails[i] = walk_trail_new(&walks[i], (unsigned)i + 1, random);
     }
     g_autoptr(RfDropletSet) set = rf_droplet_set_measure(trails, n, &settings, NULL);
