@@ -90,8 +90,8 @@ static void name_whole_multiple(RfDropletRow *row)
 
 static RfChargeEstimate estimate_of(const RfDropletFit *fit, const RfSpellFit *spell)
 {
-    return (RfChargeEstimate){fit->radius_m, spell->charge_coulomb, fit->spread_share,
-                              spell->fall_leak_per_v};
+    return (RfChargeEstimate){fit->radius_m,          spell->charge_coulomb,     fit->spread_share,
+                              spell->fall_leak_per_v, fit->evaporation_radius_m, spell->evaporation_coulomb};
 }
 
 /* Random and common parts in one sigma, first order; and what each line does. */
@@ -102,7 +102,7 @@ static bool charge_with_common(const RfChargeInputs *inputs, const RfChargeEstim
     g_autoptr(RfBudget) budget = rf_charge_budget_new(inputs, estimate, &first_order, NULL, error);
     if (!budget) return false;
     *charge = (RfValue){estimate->charge_coulomb.value, budget->sigma};
-    for (int line = 0; line < RF_CHARGE_LINES; line++)
+    for (size_t line = 0; line < budget->n; line++)
         influences_coulomb[line] = budget->parts[line].contribution;
     return true;
 }

@@ -225,3 +225,13 @@ void rf_common_inputs_state(RfResults *results, const RfSettings *settings, cons
     add_alone(results, settings, RF_CHARGE_LINE_AIR_DRIFT, "air_drift", (RfValue){0, 0}, "m s-1");
     warn_of_idle_names(results, settings->shared);
 }
+
+void rf_common_inputs_add_evaporation(RfResults *results, RfValue k_m2_s)
+{
+    RfCommonRow row = {.input = "evaporation",
+                       .line = RF_CHARGE_LINE_EVAPORATION,
+                       .line_share = 1,
+                       .value = k_m2_s,
+                       .unit = "m2 s-1"};
+    g_array_append_val(results->common, row);
+}

@@ -9,3 +9,5 @@
 
 /* Fills results->common. `inputs` as the budget has them. Warns of names for what charges don't hang on. */
 void rf_common_inputs_state(RfResults *results, const RfSettings *settings, const RfChargeInputs *inputs);
+/* A shrinkage that was taken off all paths: known only once they are measured. */
+void rf_common_inputs_add_evaporation(RfResults *results, RfValue k_m2_s);

@@ -76,10 +76,13 @@ char *rf_conditions_stated(const RfChargeInputs *inputs, RfChargeLine line)
                    ? rf_quantity_format(scaled(inputs->viscosity_pa_s, 1e6), "uPa s")
                    : g_strdup(rf_air_viscosity_law_to_string(inputs->viscosity_law));
     case RF_CHARGE_LINE_SLIP:
-        return inputs->slip_law == RF_SLIP_ONE_TERM ? rf_quantity_format(scaled(inputs->slip_b_pa_m, 1e3), "mPa m")
-                                                    : g_strdup(rf_slip_law_to_string(inputs->slip_law));
+        return inputs->slip_law == RF_SLIP_ONE_TERM
+                   ? rf_quantity_format(scaled(inputs->slip_b_pa_m, 1e3), "mPa m")
+                   : g_strdup(rf_slip_law_to_string(inputs->slip_law));
     case RF_CHARGE_LINE_AIR_DRIFT:
         return g_strdup_printf("0 within %.2g um/s", 1e6 * inputs->air_drift_u_m_s);
+    case RF_CHARGE_LINE_EVAPORATION:
+        return rf_quantity_format(scaled(inputs->evaporation_m2_s, 1e12), "um^2/s");
     case RF_CHARGE_LINES:
         break;
     }

@@ -45,33 +45,46 @@ static Extremes extremes_of(const RfTrail *trails, const RfDropletSet *set)
     return most;
 }
 
-static void state_evaporation(RfResults *results, const RfTrail *trails, const RfDropletSet *set,
-                              const RfMedium *medium, const Extremes *most)
+static char *what_evaporation_does(const RfEvaporation *found, const Extremes *most)
 {
-    const RfEvaporation found = rf_evaporation_pool(trails, set, medium);
-    if (found.droplets == 0) {
+    if (rf_evaporation_is_plain(found))
+        return g_strdup(
+            "taken off the paths; radius stated for the middle of the time a droplet was watched");
+    if (found->p < evaporation_p && found->k_m2_s.value > 0)
+        return g_strdup(found->air_log_odds < 0
+                            ? "not taken off: droplets differ in it by more than one evaporation allows"
+                            : "not taken off: air that begins to rise explains it as well");
+    double reach_m2_s = fabs(found->k_m2_s.value) + 2 * found->k_m2_s.sigma;
+    double share = reach_m2_s * most->longest_s / (2 * most->smallest_m * most->smallest_m);
+    return g_strdup_printf(
+        "not beyond chance: taken as none; over %.0f s it could change the smallest radius by "
+        "%.2g %% at most",
+        most->longest_s, 100 * share);
+}
+
+static void state_evaporation(RfResults *results, const RfEvaporation *found, const Extremes *most)
+{
+    if (found->droplets == 0) {
         add(results, "evaporation", g_strdup("can't be told: no droplet kept its charge long enough"),
             g_strdup("none assumed"));
         return;
     }
     g_autofree char *k =
-        rf_quantity_format((RfValue){found.k_m2_s.value * 1e12, found.k_m2_s.sigma * 1e12}, "um^2/s");
-    bool is_seen = found.p < evaporation_p && found.k_m2_s.value > 0;
-    double reach_m2_s = fabs(found.k_m2_s.value) + 2 * found.k_m2_s.sigma;
-    double share = reach_m2_s * most->longest_s / (2 * most->smallest_m * most->smallest_m);
+        rf_quantity_format((RfValue){found->k_m2_s.value * 1e12, found->k_m2_s.sigma * 1e12}, "um^2/s");
     add(results, "evaporation",
-        g_strdup_printf("radius squared falls by %s (%u droplets, p = %.2g)", k, found.droplets, found.p),
-        is_seen ? g_strdup("radius stated for the middle of the time a droplet was watched")
-                : g_strdup_printf(
-                      "not beyond chance: taken as none; over %.0f s it could change the smallest radius by "
-                      "%.2g %% at most",
-                      most->longest_s, 100 * share));
-    if (is_seen)
-        g_ptr_array_add(
-            results->warnings,
-            g_strdup_printf("droplets slow down as if they evaporated (or the air began to rise): radius "
-                            "squared falls by %s, p = %.1g; radii are those of the middle of their time",
-                            k, found.p));
+        g_strdup_printf("radius squared falls by %s (%u droplets, p = %.2g)", k, found->droplets, found->p),
+        what_evaporation_does(found, most));
+    if (rf_evaporation_is_plain(found))
+        rf_results_warn(
+            results,
+            "droplets evaporate: radius squared falls by %s, p = %.1g; taken off their paths, and "
+            "radii are those of the middle of their time",
+            k, found->p);
+    else if (found->p < evaporation_p && found->k_m2_s.value > 0)
+        rf_results_warn(results,
+                        "droplets slow down as if they evaporated or the air began to rise: radius squared "
+                        "falls by %s, p = %.1g; not taken off, radii are those of the middle of their time",
+                        k, found->p);
 }
 
 static void state_drift(RfResults *results, const RfCommonDrift *drift)
@@ -120,7 +133,7 @@ void rf_effects_state(RfResults *results, const RfTrail *trails, const RfDroplet
     const RfMedium medium = rf_charge_budget_medium(inputs);
     const Extremes most = extremes_of(trails, set);
     if (!(most.radius_m > 0)) return;
-    state_evaporation(results, trails, set, &medium, &most);
+    state_evaporation(results, &set->evaporation, &most);
     state_drift(results, set->drift);
     state_small(results, &medium, &most);
 }

@@ -2,6 +2,7 @@
 
 #include "calib/voltage_log.h"
 #include "cli/assess.h"
+#include "cli/common_inputs.h"
 #include "cli/effects.h"
 #include "cli/review_verdicts.h"
 #include "cli/trails.h"
@@ -290,6 +291,10 @@ static bool measure_droplets(RfResults *results, const RfChargeInputs *inputs, c
     /* Vertical drift of the air can't be told from falling; as much of it as shows by changing is carried. */
     RfChargeInputs shared = *inputs;
     shared.air_drift_u_m_s = set->drift->fall_rms_m_s;
+    if (rf_evaporation_is_plain(&set->evaporation)) {
+        shared.evaporation_m2_s = set->evaporation.k_m2_s;
+        rf_common_inputs_add_evaporation(results, shared.evaporation_m2_s);
+    }
     if (!rf_assess_droplets(results, trails->trails, set, &shared, error)) return false;
     rf_review_verdicts_apply(results);
     if (!rf_assess_budget(results, trails->trails, set, &shared, error)) return false;

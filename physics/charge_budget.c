@@ -18,6 +18,7 @@ static const char *const LINE_NAMES[RF_CHARGE_LINES] = {
     [RF_CHARGE_LINE_VISCOSITY] = "viscosity law",
     [RF_CHARGE_LINE_SLIP] = "slip law",
     [RF_CHARGE_LINE_AIR_DRIFT] = "drift of the air",
+    [RF_CHARGE_LINE_EVAPORATION] = "evaporation",
 };
 
 const char *rf_charge_line_to_string(RfChargeLine line)
@@ -30,6 +31,7 @@ typedef struct {
     const RfChargeInputs *inputs;
     double settling_m_s, slope_m_s_V, diffusion_m2_s;
     double spread_share, radius_sigma_m, charge_sigma_coulomb, fall_leak_per_v;
+    double evaporation_radius_m, evaporation_coulomb;
 } Context;
 
 /* x: one value per line. Scale, voltage and viscosity are factors about 1; slip is a factor of Cc - 1; path is in standard
@@ -77,12 +79,25 @@ static bool radius_at(const Context *context, const RfMedium *medium, const doub
     return true;
 }
 
+/* Paths without shrinkage don't have this input at all. */
+static bool has_evaporation(const RfChargeInputs *inputs)
+{
+    return inputs->evaporation_m2_s.sigma > 0.0;
+}
+
+static double evaporation_sigmas(const RfChargeInputs *inputs, const double *x)
+{
+    if (!has_evaporation(inputs)) return 0.0;
+    return (x[RF_CHARGE_LINE_EVAPORATION] - inputs->evaporation_m2_s.value) / inputs->evaporation_m2_s.sigma;
+}
+
 static bool radius_model(const double *x, const void *user, double *radius_m)
 {
     const Context *context = user;
     const RfMedium medium = medium_at(context->inputs, x);
     if (!is_possible(&medium, x) || !radius_at(context, &medium, x, radius_m)) return false;
-    *radius_m += x[RF_CHARGE_LINE_PATH] * context->radius_sigma_m;
+    *radius_m += x[RF_CHARGE_LINE_PATH] * context->radius_sigma_m +
+                 evaporation_sigmas(context->inputs, x) * context->evaporation_radius_m;
     return true;
 }
 
@@ -104,7 +119,8 @@ static bool charge_model(const double *x, const void *user, double *charge_coulo
     if (!is_possible(&medium, x) || !radius_at(context, &medium, x, &radius_m)) return false;
     *charge_coulomb = rf_drag_coefficient_kg_s(&medium, radius_m) * medium.plate_gap_m *
                           slope_at(context, &medium, x, radius_m) +
-                      x[RF_CHARGE_LINE_PATH] * context->charge_sigma_coulomb;
+                      x[RF_CHARGE_LINE_PATH] * context->charge_sigma_coulomb +
+                      evaporation_sigmas(context->inputs, x) * context->evaporation_coulomb;
     return true;
 }
 
@@ -155,6 +171,8 @@ static void fill_lines(const RfChargeInputs *in, RfBudgetInput *lines)
     set_line(lines, RF_CHARGE_LINE_SLIP, 1.0, slip_relative_u(in),
              is_slip_law ? RF_SPREAD_RECTANGULAR : RF_SPREAD_NORMAL);
     set_line(lines, RF_CHARGE_LINE_AIR_DRIFT, 0.0, in->air_drift_u_m_s, RF_SPREAD_NORMAL);
+    set_line(lines, RF_CHARGE_LINE_EVAPORATION, in->evaporation_m2_s.value, in->evaporation_m2_s.sigma,
+             RF_SPREAD_NORMAL);
 }
 
 RfMedium rf_charge_budget_medium(const RfChargeInputs *inputs)
@@ -186,11 +204,14 @@ static RfBudget *budget_of(RfBudgetModel model, const RfChargeInputs *inputs,
                              estimate->spread_share,
                              estimate->radius_m.sigma,
                              estimate->charge_coulomb.sigma,
-                             estimate->fall_leak_per_v};
+                             estimate->fall_leak_per_v,
+                             estimate->evaporation_radius_m,
+                             estimate->evaporation_coulomb};
     RfBudgetInput lines[RF_CHARGE_LINES];
     fill_lines(inputs, lines);
     if (inputs_out != NULL) memcpy(inputs_out, lines, sizeof lines);
-    return rf_budget_new(lines, RF_CHARGE_LINES, NULL, model, &context, options, error);
+    const size_t n = has_evaporation(inputs) ? RF_CHARGE_LINES : RF_CHARGE_LINE_EVAPORATION;
+    return rf_budget_new(lines, n, NULL, model, &context, options, error);
 }
 
 RfBudget *rf_charge_budget_new(const RfChargeInputs *inputs, const RfChargeEstimate *estimate,

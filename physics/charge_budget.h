@@ -30,8 +30,9 @@ typedef struct {
     RfViscosityLaw viscosity_law;
     RfValue viscosity_pa_s; /* for RF_VISCOSITY_GIVEN */
     RfSlipLaw slip_law;
-    RfValue slip_b_pa_m;    /* for RF_SLIP_ONE_TERM */
-    double air_drift_u_m_s; /* unknown steady motion of the air along gravity, common to all droplets */
+    RfValue slip_b_pa_m;      /* for RF_SLIP_ONE_TERM */
+    double air_drift_u_m_s;   /* unknown steady motion of the air along gravity, common to all droplets */
+    RfValue evaporation_m2_s; /* shrinkage taken off the paths (evaporation.h); all 0: none was */
 } RfChargeInputs;
 
 /* The medium at the stated values, as the path estimator takes it. */
@@ -43,6 +44,7 @@ typedef struct {
     RfValue charge_coulomb; /* sigma random */
     double spread_share;    /* w, 0..1: the spread's share of the radius' information */
     double fall_leak_per_v; /* c: what the speed per volt gains per speed that the fall is assumed to gain */
+    double evaporation_radius_m, evaporation_coulomb; /* what one sigma of evaporation_m2_s does */
 } RfChargeEstimate;
 
 /* Lines of the budget, in the order of RfBudget.parts. */
@@ -59,6 +61,7 @@ typedef enum {
     RF_CHARGE_LINE_VISCOSITY, /* the law, and moisture */
     RF_CHARGE_LINE_SLIP,      /* the law, or b */
     RF_CHARGE_LINE_AIR_DRIFT,
+    RF_CHARGE_LINE_EVAPORATION, /* no line where none was taken off */
     RF_CHARGE_LINES,
 } RfChargeLine;
 

@@ -46,16 +46,19 @@ typedef struct {
     double covariance_with_next_coulomb2; /* of this charge with the next spell's */
     RfValue speed_per_volt_m_s_v;         /* sigma with the radius held */
     double fall_leak_per_v;               /* what speed_per_volt gains per fall speed assumed, 1/V */
+    double
+        evaporation_coulomb; /* what one sigma of the shrinkage taken off does to the charge; 0: none was */
 } RfSpellFit;
 
 typedef struct {
     RfFitState state; /* the rest holds only when done */
     RfValue radius_m, fall_m_s, across_m_s, diffusion_m2_s;
     RfValue fall_extra_variance_m2, across_extra_variance_m2;
-    RfValue radius_fall_m;     /* from the speed alone; sigma 0: not seen (too uncertain, or not falling) */
-    RfValue radius_spread_m;   /* from the diffusion alone; sigma 0: not seen */
-    double spread_share;       /* of the radius' information, 0..1; the fall has the rest */
-    double radius_agreement_p; /* chance of a difference at least this large; 1 where either is not seen */
+    RfValue radius_fall_m;       /* from the speed alone; sigma 0: not seen (too uncertain, or not falling) */
+    RfValue radius_spread_m;     /* from the diffusion alone; sigma 0: not seen */
+    double spread_share;         /* of the radius' information, 0..1; the fall has the rest */
+    double radius_agreement_p;   /* chance of a difference at least this large; 1 where either is not seen */
+    double evaporation_radius_m; /* as evaporation_coulomb */
     double log_likelihood;
     size_t spells;
     RfSpellFit spell[RF_DROPLET_SPELLS_MAX];

@@ -41,6 +41,11 @@ static void measure_one(void *context, size_t i)
     if (model.steps > 0) rf_droplet_fit(trail, &model, &result->fit);
 }
 
+static void measure_all(Work *work)
+{
+    rf_for_each(&work->settings->side_by_side, work->set->n, measure_one, work);
+}
+
 /* Each step against another droplet from there on. */
 static void look_for_swap(void *context, size_t i)
 {
@@ -161,6 +166,76 @@ static void estimate_memory(const Work *work)
                              &work->set->fall_memory, &work->set->across_memory);
 }
 
+/* ---- evaporation ---- */
+
+static RfEvaporation pool_evaporation(const Work *work)
+{
+    size_t n = work->set->n;
+    RfDropletModel model = model_of(work);
+    g_autofree const RfDropletFit **fits = g_new(const RfDropletFit *, n);
+    for (size_t i = 0; i < n; i++) fits[i] = &work->set->droplets[i].fit;
+    return rf_evaporation_pool(work->trails, fits, n, &model);
+}
+
+/* From paths from which shrinking by k is taken off. Without a drift: what was found so far held part of the shrinkage. */
+static void measure_undone(Work *work, const RfTrail *as_seen, RfTrail *undone, double k_m2_s)
+{
+    RfDropletModel model = model_of(work);
+    for (size_t i = 0; i < work->set->n; i++) {
+        RfSample *samples = rf_evaporation_undo(&as_seen[i], &model, &work->set->droplets[i].fit, k_m2_s);
+        g_free((void *)undone[i].samples);
+        undone[i] = (RfTrail){as_seen[i].droplet, as_seen[i].n, samples};
+    }
+    work->trails = undone;
+    rf_common_drift_free(work->set->drift);
+    work->set->drift = rf_common_drift_new();
+    measure_all(work);
+}
+
+/* One sigma more of shrinkage, and the same fit again. */
+static void measure_effect(void *context, size_t i)
+{
+    const Work *work = context;
+    RfDropletResult *result = &work->set->droplets[i];
+    RfDropletFit *fit = &result->fit, more;
+    RfDropletModel model = model_of(work);
+    double time_s[RF_DROPLET_SPELLS_MAX];
+    model.step_s = time_s;
+    model.steps = fit->state == RF_FIT_DONE ? step_times(result->steps, time_s) : 0;
+    g_autofree RfSample *samples =
+        rf_evaporation_undo(&work->trails[i], &model, fit, work->set->evaporation.k_m2_s.sigma);
+    const RfTrail trail = {work->trails[i].droplet, work->trails[i].n, samples};
+    rf_droplet_fit(&trail, &model, &more);
+    if (fit->state != RF_FIT_DONE || more.state != RF_FIT_DONE) return;
+    fit->evaporation_radius_m = more.radius_m.value - fit->radius_m.value;
+    for (size_t k = 0; k < MIN(fit->spells, more.spells); k++)
+        fit->spell[k].evaporation_coulomb =
+            more.spell[k].charge_coulomb.value - fit->spell[k].charge_coulomb.value;
+}
+
+/* Shrinking taken off until none is left: what is found is of first order, and steps and drift may have passed for part
+ * of it at first. */
+static void take_off_evaporation(Work *work, RfTrail *undone)
+{
+    enum { ROUNDS = 4 };
+    static const double settled = 0.1; /* of its sigma */
+    const RfTrail *as_seen = work->trails;
+    RfEvaporation *found = &work->set->evaporation;
+    measure_undone(work, as_seen, undone, found->k_m2_s.value);
+    for (int round = 0; round < ROUNDS; round++) {
+        RfEvaporation rest = pool_evaporation(work);
+        if (rest.droplets == 0) break;
+        found->droplets = rest.droplets;
+        found->k_m2_s = (RfValue){found->k_m2_s.value + rest.k_m2_s.value, rest.k_m2_s.sigma};
+        measure_undone(work, as_seen, undone, found->k_m2_s.value);
+        if (fabs(rest.k_m2_s.value) < settled * rest.k_m2_s.sigma) break;
+    }
+    fit_common_drift(work);
+    if (work->set->drift->fall_rms_m_s > 0 || work->set->drift->across_rms_m_s > 0) measure_all(work);
+    refine_switches(work);
+    rf_for_each(&work->settings->side_by_side, work->set->n, measure_effect, work);
+}
+
 RfDropletSet *rf_droplet_set_measure(const RfTrail *trails, size_t n, const RfDropletSetSettings *settings,
                                      GError **error)
 {
@@ -174,13 +249,17 @@ RfDropletSet *rf_droplet_set_measure(const RfTrail *trails, size_t n, const RfDr
     if (!set->timeline) return NULL;
     set->drift = rf_common_drift_new();
     Work work = {trails, settings, set};
-    rf_for_each(&settings->side_by_side, n, measure_one, &work);
+    measure_all(&work);
     refine_switches(&work);
     fit_common_drift(&work);
     estimate_memory(&work);
-    rf_for_each(&settings->side_by_side, n, measure_one, &work);
+    measure_all(&work);
     refine_switches(&work);
+    set->evaporation = pool_evaporation(&work);
+    g_autofree RfTrail *undone = g_new0(RfTrail, n);
+    if (rf_evaporation_is_plain(&set->evaporation)) take_off_evaporation(&work, undone);
     rf_for_each(&settings->side_by_side, n, look_for_swap, &work);
+    for (size_t i = 0; i < n; i++) g_free((void *)undone[i].samples);
     return g_steal_pointer(&set);
 }
 

@@ -6,6 +6,7 @@
 
 #include "physics/charge_step.h"
 #include "physics/droplet_swap.h"
+#include "physics/evaporation.h"
 #include "physics/for_each.h"
 
 typedef struct {
@@ -26,6 +27,7 @@ typedef struct {
     RfFieldTimeline *timeline;
     RfCommonDrift *drift;
     RfNoiseMemory fall_memory, across_memory;
+    RfEvaporation evaporation; /* found in the paths; where it is plain, the fits are of paths without it */
     size_t n;
     RfDropletResult *droplets; /* n, in the order of the trails */
 } RfDropletSet;

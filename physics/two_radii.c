@@ -51,8 +51,11 @@ static RfCauseEvidence examine_trend(const RfTrail *trails, const RfDropletSet *
                                      size_t droplet)
 {
     RfValue k_m2_s;
-    if (!rf_evaporation_of(&trails[droplet], set, medium, &set->droplets[droplet].fit, &k_m2_s))
+    const RfDropletModel model = {
+        .medium = medium, .timeline = set->timeline, .fall_memory = set->fall_memory};
+    if (!rf_evaporation_of(&trails[droplet], &model, &set->droplets[droplet].fit, &k_m2_s))
         return (RfCauseEvidence){false, g_strdup("its speed can't be looked at for a trend")};
+    if (rf_evaporation_is_plain(&set->evaporation)) k_m2_s.value -= set->evaporation.k_m2_s.value;
     double p = 2 * gsl_cdf_ugaussian_Q(fabs(k_m2_s.value) / k_m2_s.sigma);
     return (RfCauseEvidence){p < PLAIN_P && k_m2_s.value > 0,
                              g_strdup_printf("trend of its speed as if radius squared fell by %.2g um^2/s "
