@@ -5,6 +5,7 @@
 #include "cli/common_inputs.h"
 #include "cli/effects.h"
 #include "cli/review_verdicts.h"
+#include "cli/tally.h"
 #include "cli/trails.h"
 
 #include <math.h>
@@ -202,8 +203,21 @@ static void warn_of_log(RfResults *results, const RfLogFinding *finding)
     }
 }
 
-static void warn_of_timeline(RfResults *results, const RfFieldTimeline *timeline)
+/* A sheet whose first state isn't the one that the recording starts in. */
+static void warn_of_order(RfResults *results, const RfFieldTimeline *timeline, const RfFieldSheet *sheet)
 {
+    RfFieldState first = g_array_index(timeline->intervals, RfFieldInterval, 0).state;
+    if (timeline->has_log || first == sheet->state[0]) return;
+    rf_results_warn(
+        results,
+        "the droplets contradict the sheet: by their fall and their wander the recording starts with "
+        "the field at %s, not at %s as [supply] states has it first; taken as the droplets have it",
+        rf_tally_field_to_string(first), rf_tally_field_to_string(sheet->state[0]));
+}
+
+static void warn_of_timeline(RfResults *results, const RfFieldTimeline *timeline, const RfFieldSheet *sheet)
+{
+    warn_of_order(results, timeline, sheet);
     double doubtful_s = 0;
     for (guint i = 0; i < timeline->doubts->len; i++) {
         const RfStateDoubt *doubt = &g_array_index(timeline->doubts, RfStateDoubt, i);
@@ -298,7 +312,7 @@ static bool measure_droplets(RfResults *results, const RfChargeInputs *inputs, c
     if (!rf_assess_droplets(results, trails->trails, set, &shared, error)) return false;
     rf_review_verdicts_apply(results);
     if (!rf_assess_budget(results, trails->trails, set, &shared, error)) return false;
-    warn_of_timeline(results, set->timeline);
+    warn_of_timeline(results, set->timeline, &supply->sheet);
     rf_effects_state(results, trails->trails, set, &shared);
     return true;
 }

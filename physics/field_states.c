@@ -9,6 +9,8 @@
 enum { BEAM = 48 };
 /* Price of an explanation outside the model (a step of charge, a mistake of the tracker), and of a switch. */
 static const double SURPRISE_COST = 10, BRIEF_COST = 4, SWITCH_COST = 3;
+/* Price of a sheet that names another state than the recording starts in: one sheet in a hundred. */
+static const double OUT_OF_ORDER_COST = 4.6;
 /* While nobody looked, a switch is as likely as none. */
 static const double BLIND_SWITCH_COST = 0;
 /* What is known of a droplet beforehand: it falls, at tens of micrometres a second; the field moves it by some
@@ -22,7 +24,7 @@ typedef struct {
 
 typedef struct {
     double cost;
-    unsigned used; /* states that have occurred */
+    unsigned used; /* states that have occurred, a bit for each in the sheet's order */
     unsigned last;
     unsigned *label; /* runs */
     Belief *belief;  /* droplets */
@@ -93,13 +95,15 @@ typedef struct {
     const RfFieldLevel *level;
     size_t n;
     unsigned states;
+    unsigned other_start; /* order of the state that the recording may start in against the sheet; 0: none */
     double relative[RF_FIELD_LEVELS]; /* voltages over the largest */
 } Levels;
 
 static void extend(Hypothesis *h, const RfFieldRuns *runs, size_t run, const Levels *levels, unsigned to)
 {
     if (run > 0 && to != h->last) h->cost += runs->is_blind[run] ? BLIND_SWITCH_COST : SWITCH_COST;
-    if (levels->level[to].order == h->used) h->used++;
+    if (run == 0 && levels->level[to].order > 0) h->cost += OUT_OF_ORDER_COST;
+    h->used |= 1u << levels->level[to].order;
     h->last = h->label[run] = to;
     bool is_brief = runs->edge_s[run + 1] - runs->edge_s[run] < 1.5 * runs->bin_s;
     for (size_t j = 0; j < runs->droplets; j++) {
@@ -145,14 +149,22 @@ static int compare_costs(const void *a, const void *b)
     return (x->cost > y->cost) - (x->cost < y->cost);
 }
 
+/* States first occur in the sheet's order; a level that has occurred may come again. */
+static bool may_follow(const Hypothesis *h, size_t run, const Levels *levels, unsigned to)
+{
+    unsigned order = levels->level[to].order, before = (1u << order) - 1;
+    if (run == 0 && order > 0 && order == levels->other_start) return true;
+    return (h->used & 1u << order) || (h->used & before) == before;
+}
+
 static void advance(Beam *beam, const RfFieldRuns *runs, size_t run, const Levels *levels)
 {
     beam->n_next = 0;
     for (size_t i = 0; i < beam->n_now; i++) {
         /* What came first while nobody looked can't be known. */
-        if (runs->is_blind[run]) beam->now[i].used = levels->states;
+        if (runs->is_blind[run]) beam->now[i].used = (1u << levels->states) - 1;
         for (unsigned l = 0; l < levels->n; l++) {
-            if (levels->level[l].order > beam->now[i].used) continue;
+            if (!may_follow(&beam->now[i], run, levels, l)) continue;
             Hypothesis *to = &beam->next[beam->n_next++];
             hypothesis_copy(to, &beam->now[i], runs->runs, runs->droplets);
             extend(to, runs, run, levels, l);
@@ -214,6 +226,20 @@ static Beam *search(const RfFieldRuns *runs, const RfMedium *medium, const Level
     return beam;
 }
 
+/* A droplet's wander tells how fast it falls without field, and so which state has none; which polarity comes first
+ * is the sheet's word alone. So with "off" first the first polarity may come before it, else off before that. */
+static unsigned other_start(const RfFieldLevel *level, size_t n)
+{
+    bool is_off_first = false;
+    unsigned off = 0;
+    for (size_t l = 0; l < n; l++) {
+        if (level[l].state != RF_FIELD_OFF) continue;
+        off = level[l].order;
+        is_off_first = off == 0;
+    }
+    return is_off_first ? 1 : off;
+}
+
 static double levels_init(Levels *levels, const RfFieldLevel *level, size_t n)
 {
     double largest = 0;
@@ -233,6 +259,7 @@ void rf_field_states_label(const RfFieldRuns *runs, const RfFieldLevel *level, s
 {
     Levels levels;
     double largest = levels_init(&levels, level, n_levels);
+    if (medium) levels.other_start = other_start(level, n_levels);
     g_autofree size_t *part = g_new(size_t, runs->runs);
     Beam *rough = search(runs, medium, &levels);
     g_autoptr(RfFieldRuns) merged = rf_field_runs_merge(runs, rough->now[0].label, part);

@@ -1,7 +1,9 @@
 /* Which state each run is in. A droplet's speed is v_g + w V with the state's voltage V, so two numbers per droplet
  * explain all its runs; a third state follows from two. A change of charge draws a new w at a price, a tracking
  * mistake costs the same; hence one droplet can't vote a switch into being against the others. Labels are found by a
- * beam search over sequences in which states first occur in the sheet's order, the levels of a state in any. */
+ * beam search over sequences in which states first occur in the sheet's order, the levels of a state in any. With a
+ * medium the recording may also start without field, or with it, against the sheet, at a price: the fall without field goes
+ * with the wander. */
 #pragma once
 
 #include "physics/field_runs.h"

@@ -233,6 +233,53 @@ static void test_lone_droplets_leave_doubt(void)
     gsl_rng_free(random);
 }
 
+/* The sheet names off first, but all droplets come after the first switch; or it names off second where it came
+ * first. Their wander tells how fast they fall by themselves. */
+static void test_sheet_out_of_order(void)
+{
+    static const double switches_s[] = {0.3, 6, 11, 15, 21, 26};
+    static const RfFieldSheet swapped = {
+        .states = 2, .state = {RF_FIELD_TOP_PLUS, RF_FIELD_OFF}, .top_plus_v = 400, .medium = &WALK_MEDIUM};
+    RfFieldSheet sheet = TWO_STATES;
+    sheet.medium = &WALK_MEDIUM;
+    gsl_rng *random = gsl_rng_alloc(gsl_rng_mt19937);
+    g_autoptr(RfFieldTimeline) truth =
+        walk_timeline_new(switches_s, G_N_ELEMENTS(switches_s), RF_FIELD_TOP_PLUS, 400, 30);
+    for (int start = 0; start < 2; start++) {
+        RfTrail trails[3];
+        const int charges[] = {3, -2, -4};
+        for (unsigned i = 0; i < 3; i++) {
+            Walk walk = lone_walk(truth, start ? 0 : 1, 30, charges[i]);
+            trails[i] = walk_trail_new(&walk, i + 1, random);
+        }
+        g_autoptr(RfFieldTimeline) found = rf_field_timeline_find(trails, 3, start ? &swapped : &sheet, NULL);
+        static const double asked_s[] = {3, 8, 13, 18, 23, 28};
+        for (size_t k = 0; k < G_N_ELEMENTS(asked_s); k++)
+            g_assert_cmpint(rf_field_timeline_at(found, asked_s[k])->state, ==,
+                            rf_field_timeline_at(truth, asked_s[k])->state);
+        g_assert_cmpuint(found->doubts->len, ==, 0);
+        for (unsigned i = 0; i < 3; i++) walk_trail_clear(&trails[i]);
+    }
+    gsl_rng_free(random);
+}
+
+/* One droplet seen briefly on either side of one switch can't tell which side has the field: the sheet's word alone
+ * isn't enough for a charge. */
+static void test_order_that_none_confirms(void)
+{
+    static const double switch_s = 2;
+    RfFieldSheet sheet = TWO_STATES;
+    sheet.medium = &WALK_MEDIUM;
+    gsl_rng *random = gsl_rng_alloc(gsl_rng_mt19937);
+    g_autoptr(RfFieldTimeline) truth = walk_timeline_new(&switch_s, 1, RF_FIELD_TOP_PLUS, 400, 4);
+    const Walk walk = lone_walk(truth, 0, 4, 1);
+    RfTrail trail = walk_trail_new(&walk, 1, random);
+    g_autoptr(RfFieldTimeline) found = rf_field_timeline_find(&trail, 1, &sheet, NULL);
+    g_assert_true(rf_field_timeline_is_doubtful(found, 0, 4));
+    walk_trail_clear(&trail);
+    gsl_rng_free(random);
+}
+
 /* A droplet that leaves soon after a switch, and another that comes when the field is on again: the switch that nobody
  * saw must not make the one before it vanish. */
 static void test_unseen_switch_hides_no_other(void)
@@ -514,6 +561,8 @@ int main(int argc, char **argv)
     g_test_add_func("/field-timeline/find/three-states", test_three_states);
     g_test_add_func("/field-timeline/find/lone-droplets-leave-doubt", test_lone_droplets_leave_doubt);
     g_test_add_func("/field-timeline/find/unseen-switch-hides-no-other", test_unseen_switch_hides_no_other);
+    g_test_add_func("/field-timeline/find/sheet-out-of-order", test_sheet_out_of_order);
+    g_test_add_func("/field-timeline/find/order-that-none-confirms", test_order_that_none_confirms);
     g_test_add_func("/field-timeline/find/step-is-no-switch", test_step_is_no_switch);
     g_test_add_func("/field-timeline/find/fragments", test_fragments);
     g_test_add_func("/field-timeline/clock/by-edges", test_clock_by_edges);
