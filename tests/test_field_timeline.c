@@ -263,20 +263,29 @@ static void test_sheet_out_of_order(void)
     gsl_rng_free(random);
 }
 
-/* One droplet seen briefly on either side of one switch can't tell which side has the field: the sheet's word alone
- * isn't enough for a charge. */
+/* Two droplets seen briefly on either side of one switch, which fall twice as fast on one side as on the other: their
+ * wander doesn't tell yet which is their own fall, and the sheet's word alone isn't enough for a charge. In ten times as
+ * long it does tell. */
 static void test_order_that_none_confirms(void)
 {
-    static const double switch_s = 2;
     RfFieldSheet sheet = TWO_STATES;
     sheet.medium = &WALK_MEDIUM;
     gsl_rng *random = gsl_rng_alloc(gsl_rng_mt19937);
-    g_autoptr(RfFieldTimeline) truth = walk_timeline_new(&switch_s, 1, RF_FIELD_TOP_PLUS, 400, 4);
-    const Walk walk = lone_walk(truth, 0, 4, 1);
-    RfTrail trail = walk_trail_new(&walk, 1, random);
-    g_autoptr(RfFieldTimeline) found = rf_field_timeline_find(&trail, 1, &sheet, NULL);
-    g_assert_true(rf_field_timeline_is_doubtful(found, 0, 4));
-    walk_trail_clear(&trail);
+    for (int times = 1; times <= 10; times += 9) {
+        double switch_s = 2 * times;
+        g_autoptr(RfFieldTimeline) truth =
+            walk_timeline_new(&switch_s, 1, RF_FIELD_TOP_PLUS, 400, 2 * switch_s);
+        RfTrail trails[2];
+        for (unsigned i = 0; i < 2; i++) {
+            Walk walk = lone_walk(truth, 0, 2 * switch_s, 1);
+            walk.radius_m = 0.8e-6;
+            trails[i] = walk_trail_new(&walk, i + 1, random);
+        }
+        g_autoptr(RfFieldTimeline) found = rf_field_timeline_find(trails, 2, &sheet, NULL);
+        g_assert_cmpuint(found->switches->len, ==, 1);
+        g_assert_true(rf_field_timeline_is_doubtful(found, 0, 2 * switch_s) == (times == 1));
+        for (unsigned i = 0; i < 2; i++) walk_trail_clear(&trails[i]);
+    }
     gsl_rng_free(random);
 }
 
