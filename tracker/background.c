@@ -263,17 +263,24 @@ static void stay_put(Learning *learning)
     memset(learning->is_usable, true, learning->n * sizeof *learning->is_usable);
 }
 
+/* How many of the file's grey levels one level at 8 bit is. */
+static double levels_of_8_bit(int bit_depth)
+{
+    return ldexp(1, bit_depth - 8);
+}
+
 /* Noise from the differences of neighbouring pixels in one picture: good enough to tell structure from noise. A mean
  * absolute difference of normal noise is 1.128 sd. */
-static double rough_noise_sd(const float *image, size_t pixels)
+static double rough_noise_sd(const float *image, size_t pixels, int bit_depth)
 {
     enum { TAKEN = 20000 };
+    double unit = levels_of_8_bit(bit_depth);
     double sum = 0, kept = 0;
     for (size_t i = 1; i < pixels; i += MAX(pixels / TAKEN, 1)) {
         double off = fabs((double)(image[i] - image[i - 1]));
-        if (off < 12) sum += off, kept++;
+        if (off < 12 * unit) sum += off, kept++;
     }
-    return kept > 0 ? MAX(0.5, sum / kept / 1.128) : 1;
+    return kept > 0 ? MAX(0.5 * unit, sum / kept / 1.128) : unit;
 }
 
 static void settle_movement(Learning *learning, RfBackground *background)
@@ -283,8 +290,8 @@ static void settle_movement(Learning *learning, RfBackground *background)
     const RfFrame *frame = rf_picture_sample_frame(learning->sample, learning->n / 2);
     for (int y = 0; y < frame->height; y++)
         rf_luma_copy_row(frame, y, middle + (size_t)y * (size_t)frame->width);
-    double noise_sd = rough_noise_sd(middle, pixels);
-    learning->reach = (float)MAX(2.0, 4.5 * noise_sd);
+    double noise_sd = rough_noise_sd(middle, pixels, background->bit_depth);
+    learning->reach = (float)MAX(2 * levels_of_8_bit(background->bit_depth), 4.5 * noise_sd);
     bool is_found = register_frames(learning, background, middle, noise_sd);
     background->movement_rms_px = is_found ? movement(learning, background) : 0;
     background->is_moving = background->movement_rms_px > MOVEMENT_PX;
@@ -299,6 +306,7 @@ static void find_sensor_pixels(int first, int end, void *user)
     RfBackground *background = job->background;
     int width = background->width, height = background->height;
     g_autofree float *off = g_new(float, learning->n);
+    float least = (float)(5 * levels_of_8_bit(background->bit_depth));
     for (int y = MAX(first, 2); y < MIN(end, height - 2); y++)
         for (int x = 2; x < width - 2; x++) {
             unsigned kept = 0;
@@ -307,7 +315,7 @@ static void find_sensor_pixels(int first, int end, void *user)
                 float ring = 0.25f * (rf_luma_at(frame, x - 2, y) + rf_luma_at(frame, x + 2, y) +
                                       rf_luma_at(frame, x, y - 2) + rf_luma_at(frame, x, y + 2));
                 off[kept++] = rf_luma_at(frame, x, y) - ring;
-                if (kept == 3 && fabsf(off[0]) < 5 && fabsf(off[1]) < 5 && fabsf(off[2]) < 5)
+                if (kept == 3 && fabsf(off[0]) < least && fabsf(off[1]) < least && fabsf(off[2]) < least)
                     break; /* nothing sticks out: not worth a median */
             }
             if (kept < learning->n) continue;
