@@ -73,7 +73,7 @@ static void test_kinds(void)
     g_autoptr(RfSightings) sightings = sight(cycle, 3, 900, 0);
     rf_coding_noise_apply(sightings, true);
     for (unsigned k = 0; k < 3; k++) {
-        double expected = rf_coding_noise_factor(cycle[k].coding, true, cycle[k].excess);
+        double expected = rf_coding_noise_factor(cycle[k].coding, true, false, cycle[k].excess);
         double found = widened(sightings, k, 3);
         g_test_message("kind %u: variance times %.3f, expected %.3f", k, found, expected);
         g_assert_cmpfloat_with_epsilon(found, expected, 0.06 * expected);
@@ -105,7 +105,8 @@ static void test_misfits(void)
         g_array_index(sightings->spots, RfSpot, i).excess = 200;
     double total = rf_coding_noise_apply(sightings, true);
     g_assert_cmpfloat_with_epsilon(total * total, widened(sightings, 0, 1), 1e-4);
-    double found = widened(sightings, 0, 1), expected = rf_coding_noise_factor(RF_CODING_ALONE, true, 3);
+    double found = widened(sightings, 0, 1),
+           expected = rf_coding_noise_factor(RF_CODING_ALONE, true, false, 3);
     g_test_message("variance times %.3f, without misfits %.3f", found, expected);
     g_assert_cmpfloat(sqrt(found / expected), <, 1.2);
 }
@@ -114,23 +115,50 @@ static void test_misfits(void)
 static void test_law(void)
 {
     for (int coding = 0; coding < RF_CODINGS; coding++) {
-        g_assert_cmpfloat(rf_coding_noise_factor((RfCoding)coding, true, 0.7), ==, 1);
-        g_assert_cmpfloat(rf_coding_noise_factor((RfCoding)coding, true, 1), ==, 1);
+        g_assert_cmpfloat(rf_coding_noise_factor((RfCoding)coding, true, false, 0.7), ==, 1);
+        g_assert_cmpfloat(rf_coding_noise_factor((RfCoding)coding, true, false, 1), ==, 1);
         double before = 1;
         for (double excess = 1.1; excess < 20; excess *= 1.3) {
-            double now = rf_coding_noise_factor((RfCoding)coding, true, excess);
+            double now = rf_coding_noise_factor((RfCoding)coding, true, false, excess);
             g_assert_cmpfloat(now, >, before);
             before = now;
         }
     }
-    double alone = rf_coding_noise_factor(RF_CODING_ALONE, true, 5);
-    double rough = rf_coding_noise_factor(RF_CODING_PAST, false, 5);
-    double past = rf_coding_noise_factor(RF_CODING_PAST, true, 5);
-    double both = rf_coding_noise_factor(RF_CODING_BOTH, true, 5);
-    g_assert_cmpfloat(alone, >, 5);
-    g_assert_cmpfloat(rough, >, alone);
+    double alone = rf_coding_noise_factor(RF_CODING_ALONE, true, false, 5);
+    double rough = rf_coding_noise_factor(RF_CODING_PAST, false, false, 5);
+    double past = rf_coding_noise_factor(RF_CODING_PAST, true, false, 5);
+    double both = rf_coding_noise_factor(RF_CODING_BOTH, true, false, 5);
+    double jpeg = rf_coding_noise_factor(RF_CODING_ALONE, false, false, 5);
+    g_assert_cmpfloat(alone, >, jpeg);
+    g_assert_cmpfloat(rough, >, jpeg);
     g_assert_cmpfloat(past, >, rough);
     g_assert_cmpfloat(both, >, past);
+}
+
+/* Every fourth spot on a line, with more left there: both get their own factor, and a film with next to none on lines
+ * gives those few what the others get. */
+static void test_lines(void)
+{
+    const Picture picture = {RF_CODING_PAST, 3};
+    g_autoptr(RfSightings) sightings = sight(&picture, 1, 3600, 0);
+    g_autoptr(RfSightings) hardly = sight(&picture, 1, 3600, 0);
+    for (unsigned i = 0; i < sightings->spots->len; i += 4) {
+        RfSpot *spot = &g_array_index(sightings->spots, RfSpot, i);
+        spot->flags = RF_SPOT_LINE;
+        spot->excess *= 2;
+    }
+    g_array_index(hardly->spots, RfSpot, 8).flags = RF_SPOT_LINE;
+    rf_coding_noise_apply(sightings, true);
+    rf_coding_noise_apply(hardly, true);
+    for (unsigned line = 0; line < 2; line++) {
+        double expected = rf_coding_noise_factor(RF_CODING_PAST, true, line, line ? 6 : 3), sum = 0, n = 0;
+        for (unsigned i = !line; i < sightings->spots->len; i += 4, n++)
+            sum += pow((double)(g_array_index(sightings->spots, RfSpot, i).u_x_px / STATED_PX), 2);
+        g_test_message("line %u: variance times %.2f, expected %.2f", line, sum / n, expected);
+        g_assert_cmpfloat_with_epsilon(sum / n, expected, 0.06 * expected);
+    }
+    g_assert_cmpfloat(g_array_index(hardly->spots, RfSpot, 8).u_x_px, ==,
+                      g_array_index(hardly->spots, RfSpot, 9).u_x_px);
 }
 
 static void test_nothing_known(void)
@@ -156,6 +184,7 @@ int main(int argc, char **argv)
     g_test_add_func("/coding-noise/apply/kinds", test_kinds);
     g_test_add_func("/coding-noise/apply/pictures-differ", test_pictures_differ);
     g_test_add_func("/coding-noise/apply/misfits", test_misfits);
+    g_test_add_func("/coding-noise/apply/lines", test_lines);
     g_test_add_func("/coding-noise/apply/nothing-known", test_nothing_known);
     return g_test_run();
 }

@@ -9,15 +9,20 @@ typedef struct {
     double excess, n;
 } Sums;
 
-/* All pictures coded alike. */
+/* All pictures coded alike; in them the spots that lie on lines of the reticle, or those that don't. */
 typedef struct {
     GArray *seen; /* of float: excess of every spot */
+    bool is_on_line;
     double level; /* of the excess, which a few misfits don't move */
     Sums sums;
     double groups, n2;      /* pictures with spots; sum of the squares of their n */
     double inside, between; /* squares about each picture's mean; of those, times n, about the common one */
     double weight;          /* in spots: how firmly a picture is drawn to the common mean */
 } Kind;
+
+typedef struct {
+    Kind of[RF_CODINGS][2]; /* off lines, on lines */
+} Kinds;
 
 static bool is_telling(const RfSpot *spot)
 {
@@ -30,12 +35,18 @@ static double bounded(const Kind *kind, const RfSpot *spot)
     return fmin((double)spot->excess, 3 * kind->level);
 }
 
+/* Encoders spend their bits on edges and drag lines along with spots: what is left there isn't what is left elsewhere. */
+static bool is_on_line(const RfSpot *spot)
+{
+    return (spot->flags & RF_SPOT_LINE) != 0;
+}
+
 static Sums sums_of(const RfSightings *sightings, const RfExposure *exposure, const Kind *kind)
 {
     Sums sums = {0, 0};
     for (unsigned i = 0; i < exposure->spots; i++) {
         const RfSpot *spot = &g_array_index(sightings->spots, RfSpot, exposure->first_spot + i);
-        if (!is_telling(spot)) continue;
+        if (!is_telling(spot) || is_on_line(spot) != kind->is_on_line) continue;
         sums.excess += bounded(kind, spot);
         sums.n++;
     }
@@ -51,7 +62,8 @@ static void collect(const RfSightings *sightings, const RfExposure *exposure, Ki
 {
     for (unsigned i = 0; i < exposure->spots; i++) {
         const RfSpot *spot = &g_array_index(sightings->spots, RfSpot, exposure->first_spot + i);
-        if (is_telling(spot)) g_array_append_val(kind->seen, spot->excess);
+        if (is_telling(spot) && is_on_line(spot) == kind->is_on_line)
+            g_array_append_val(kind->seen, spot->excess);
     }
 }
 
@@ -87,7 +99,8 @@ static void add_squares(const RfSightings *sightings, const RfExposure *exposure
     kind->between += sums.n * away * away;
     for (unsigned i = 0; i < exposure->spots; i++) {
         const RfSpot *spot = &g_array_index(sightings->spots, RfSpot, exposure->first_spot + i);
-        if (is_telling(spot)) kind->inside += pow(bounded(kind, spot) - mean, 2);
+        if (is_telling(spot) && is_on_line(spot) == kind->is_on_line)
+            kind->inside += pow(bounded(kind, spot) - mean, 2);
     }
 }
 
@@ -103,40 +116,46 @@ static void weigh(Kind *kind)
     kind->weight = inside / fmax(spread, 1e-6 * fmax(inside, 1e-300));
 }
 
-static void learn(const RfSightings *sightings, Kind kinds[RF_CODINGS])
+typedef void (*Take)(const RfSightings *sightings, const RfExposure *exposure, Kind *kind);
+
+static void take_sums(const RfSightings *sightings, const RfExposure *exposure, Kind *kind)
 {
-    const GArray *exposures = sightings->exposures;
-    for (unsigned e = 0; e < exposures->len; e++) {
-        const RfExposure *exposure = &g_array_index(exposures, RfExposure, e);
-        collect(sightings, exposure, &kinds[coding_of(exposure)]);
+    Sums sums = sums_of(sightings, exposure, kind);
+    add_sums(kind, &sums);
+}
+
+/* Every picture to both kinds of its coding. */
+static void take_all(const RfSightings *sightings, Kinds *kinds, Take take)
+{
+    for (unsigned e = 0; e < sightings->exposures->len; e++) {
+        const RfExposure *exposure = &g_array_index(sightings->exposures, RfExposure, e);
+        for (int line = 0; line < 2; line++) take(sightings, exposure, &kinds->of[coding_of(exposure)][line]);
     }
-    for (int k = 0; k < RF_CODINGS; k++) find_level(&kinds[k]);
-    for (unsigned e = 0; e < exposures->len; e++) {
-        const RfExposure *exposure = &g_array_index(exposures, RfExposure, e);
-        Kind *kind = &kinds[coding_of(exposure)];
-        Sums sums = sums_of(sightings, exposure, kind);
-        add_sums(kind, &sums);
-    }
-    for (unsigned e = 0; e < exposures->len; e++) {
-        const RfExposure *exposure = &g_array_index(exposures, RfExposure, e);
-        add_squares(sightings, exposure, &kinds[coding_of(exposure)]);
-    }
-    for (int k = 0; k < RF_CODINGS; k++) weigh(&kinds[k]);
+}
+
+static void learn(const RfSightings *sightings, Kinds *kinds)
+{
+    take_all(sightings, kinds, collect);
+    for (int k = 0; k < 2 * RF_CODINGS; k++) find_level(&kinds->of[k / 2][k % 2]);
+    take_all(sightings, kinds, take_sums);
+    take_all(sightings, kinds, add_squares);
+    for (int k = 0; k < 2 * RF_CODINGS; k++) weigh(&kinds->of[k / 2][k % 2]);
 }
 
 /* Displacement over the shape measured, which is finer, and what prediction adds by dragging spots behind their motion:
- * means over synthetic recordings of known truth (H.264 of quality 14 to 23, MPEG-2, MJPEG), in which it holds to 15 %
- * of an uncertainty; at H.264 quality 28 it is 25 % too little. It sets in with the excess: lossless pictures have none. */
-double rf_coding_noise_factor(RfCoding coding, bool is_smooth, double excess)
+ * geometric means over synthetic recordings of known truth (H.264 of quality 16 to 24, MPEG-2, MJPEG), such that
+ * 68 % of the errors lie within what is stated. Single recordings are up to 20 % of an uncertainty away; at H.264
+ * quality 28 it is 40 % too little. It sets in with the excess: lossless pictures have none. */
+double rf_coding_noise_factor(RfCoding coding, bool is_smooth, bool is_on_line, double excess)
 {
-    static const double drag[RF_CODINGS][2] = {
-        [RF_CODING_UNKNOWN] = {1.6, 2.4},
-        [RF_CODING_ALONE] = {1.35, 1.35},
-        [RF_CODING_PAST] = {1.6, 2.4},
-        [RF_CODING_BOTH] = {1.72, 3.25},
+    static const double drag[RF_CODINGS][2][2] = {
+        [RF_CODING_UNKNOWN] = {{1.35, 1.35}, {2.0, 2.3}},
+        [RF_CODING_ALONE] = {{0.9, 1.1}, {1.35, 1.35}},
+        [RF_CODING_PAST] = {{1.35, 1.35}, {2.0, 2.3}},
+        [RF_CODING_BOTH] = {{1.6, 1.6}, {3.25, 3.25}},
     };
     double size = fmax(1, excess);
-    return size * (1 + (drag[coding][is_smooth] - 1) * fmin(1, size - 1));
+    return size * (1 + (drag[coding][is_smooth][is_on_line] - 1) * fmin(1, size - 1));
 }
 
 static void widen(RfSpot *spot, double factor)
@@ -146,31 +165,48 @@ static void widen(RfSpot *spot, double factor)
     spot->cov_xy_px2 *= (float)factor;
 }
 
-/* Sum of the factors of all spots. */
-static double widen_all(RfSightings *sightings, const Kind kinds[RF_CODINGS], bool is_smooth)
+/* Of spots in one picture; 1 where nothing is known. */
+static double factor_of(const RfSightings *sightings, const RfExposure *exposure, const Kind *kind,
+                        bool is_smooth)
 {
-    double sum = sightings->spots->len;
+    if (kind->sums.n < LEAST_SPOTS) return 1;
+    Sums own = sums_of(sightings, exposure, kind);
+    double common = kind->sums.excess / kind->sums.n;
+    double relative = (own.excess / common + kind->weight) / (own.n + kind->weight);
+    return rf_coding_noise_factor(coding_of(exposure), is_smooth, kind->is_on_line, kind->level * relative);
+}
+
+/* Sum of the factors of all spots. Where a film has too few spots on lines to tell, they are taken for others. */
+static double widen_all(RfSightings *sightings, const Kinds *kinds, bool is_smooth)
+{
+    double sum = 0;
     for (unsigned e = 0; e < sightings->exposures->len; e++) {
         const RfExposure *exposure = &g_array_index(sightings->exposures, RfExposure, e);
-        const Kind *kind = &kinds[coding_of(exposure)];
-        if (kind->sums.n < LEAST_SPOTS) continue;
-        Sums own = sums_of(sightings, exposure, kind);
-        double common = kind->sums.excess / kind->sums.n;
-        double relative = (own.excess / common + kind->weight) / (own.n + kind->weight);
-        double factor = rf_coding_noise_factor(coding_of(exposure), is_smooth, kind->level * relative);
-        for (unsigned i = 0; i < exposure->spots; i++)
-            widen(&g_array_index(sightings->spots, RfSpot, exposure->first_spot + i), factor);
-        sum += exposure->spots * (factor - 1);
+        const Kind *pair = kinds->of[coding_of(exposure)];
+        double factor[2];
+        for (int line = 0; line < 2; line++) {
+            bool is_told = pair[line].sums.n >= LEAST_SPOTS;
+            factor[line] = factor_of(sightings, exposure, &pair[is_told ? line : !line], is_smooth);
+        }
+        for (unsigned i = 0; i < exposure->spots; i++) {
+            RfSpot *spot = &g_array_index(sightings->spots, RfSpot, exposure->first_spot + i);
+            widen(spot, factor[is_on_line(spot)]);
+            sum += factor[is_on_line(spot)];
+        }
     }
     return sum;
 }
 
 double rf_coding_noise_apply(RfSightings *sightings, bool is_smooth)
 {
-    Kind kinds[RF_CODINGS] = {0};
-    for (int k = 0; k < RF_CODINGS; k++) kinds[k].seen = g_array_new(false, false, sizeof(float));
-    learn(sightings, kinds);
-    double sum = widen_all(sightings, kinds, is_smooth);
-    for (int k = 0; k < RF_CODINGS; k++) g_array_unref(kinds[k].seen);
+    Kinds kinds = {0};
+    for (int k = 0; k < 2 * RF_CODINGS; k++) {
+        Kind *kind = &kinds.of[k / 2][k % 2];
+        kind->is_on_line = k % 2;
+        kind->seen = g_array_new(false, false, sizeof(float));
+    }
+    learn(sightings, &kinds);
+    double sum = widen_all(sightings, &kinds, is_smooth);
+    for (int k = 0; k < 2 * RF_CODINGS; k++) g_array_unref(kinds.of[k / 2][k % 2].seen);
     return sightings->spots->len ? sqrt(sum / sightings->spots->len) : 1;
 }
