@@ -143,9 +143,10 @@ static void learn(const RfSightings *sightings, Kinds *kinds)
 }
 
 /* Displacement over the shape measured, which is finer, and what prediction adds by dragging spots behind their motion:
- * geometric means over synthetic recordings of known truth (H.264 of quality 16 to 24, MPEG-2, MJPEG), such that
- * 68 % of the errors lie within what is stated. Single recordings are up to 20 % of an uncertainty away; at H.264
- * quality 28 it is 40 % too little. It sets in with the excess: lossless pictures have none. */
+ * geometric means over synthetic recordings of known truth (H.264 of quality 16 to 22, MPEG-2, MJPEG), such that
+ * 68 % of the errors lie within what is stated. Single recordings are up to 20 % of an uncertainty away; from
+ * H.264 quality 24 on, or of the fastest preset, errors can be twice what is stated. It sets in with the excess:
+ * lossless pictures have none. */
 double rf_coding_noise_factor(RfCoding coding, bool is_smooth, bool is_on_line, double excess)
 {
     static const double drag[RF_CODINGS][2][2] = {

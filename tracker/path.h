@@ -72,6 +72,3 @@ typedef struct {
 void rf_path_free(RfPath *path);
 void rf_paths_free(RfPaths *paths);
 G_DEFINE_AUTOPTR_CLEANUP_FUNC(RfPaths, rf_paths_free)
-
-const char *rf_path_birth_to_string(RfPathBirth birth); /* "came in over the edge" */
-const char *rf_path_death_to_string(RfPathDeath death);
