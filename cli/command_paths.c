@@ -2,9 +2,12 @@
 #include "cli/deliver.h"
 
 static char *out;
+static int has_overlay; /* GOption writes an int */
 
 static const GOptionEntry entries[] = {
     {"out", 'o', 0, G_OPTION_ARG_FILENAME, &out, "result folder; an earlier result there is replaced", "DIR"},
+    {"overlay", 0, 0, G_OPTION_ARG_NONE, &has_overlay,
+     "overlay.mp4 besides: all of the recording with rings, numbers and paths over it", NULL},
     {0},
 };
 
@@ -14,7 +17,8 @@ static RfExit run(char **arguments, GError **error)
     if (!rf_command_one_argument(arguments, "a run sheet", &sheet, error) ||
         !rf_command_required(out, "--out", "DIR", error))
         return RF_EXIT_USAGE;
-    return rf_deliver(sheet, NULL, out, RF_DELIVER_PATHS, RF_DELIVER_NO_FILM, error);
+    return rf_deliver(sheet, NULL, out, RF_DELIVER_PATHS,
+                      has_overlay ? RF_DELIVER_OVERLAY : RF_DELIVER_NO_FILM, error);
 }
 
 const RfCommand rf_command_paths = {

@@ -2,12 +2,14 @@
 #include "cli/deliver.h"
 
 static char *out;
-static int has_no_preview; /* GOption writes ints */
+static int has_no_preview, has_overlay; /* GOption writes ints */
 
 static const GOptionEntry entries[] = {
     {"out", 'o', 0, G_OPTION_ARG_FILENAME, &out, "result folder; an earlier result there is replaced", "DIR"},
     {"no-preview", 0, 0, G_OPTION_ARG_NONE, &has_no_preview,
      "no footage in the report: saves a second look at the recording", NULL},
+    {"overlay", 0, 0, G_OPTION_ARG_NONE, &has_overlay,
+     "overlay.mp4 besides: all of the recording with rings, numbers and paths over it", NULL},
     {0},
 };
 
@@ -17,8 +19,9 @@ static RfExit run(char **arguments, GError **error)
     if (!rf_command_one_argument(arguments, "a run sheet", &sheet, error) ||
         !rf_command_required(out, "--out", "DIR", error))
         return RF_EXIT_USAGE;
-    return rf_deliver(sheet, NULL, out, RF_DELIVER_RUN,
-                      has_no_preview ? RF_DELIVER_NO_FILM : RF_DELIVER_PREVIEW, error);
+    const unsigned films = (has_no_preview ? RF_DELIVER_NO_FILM : RF_DELIVER_PREVIEW) |
+                           (has_overlay ? RF_DELIVER_OVERLAY : RF_DELIVER_NO_FILM);
+    return rf_deliver(sheet, NULL, out, RF_DELIVER_RUN, films, error);
 }
 
 const RfCommand rf_command_run = {
@@ -33,6 +36,10 @@ const RfCommand rf_command_run = {
                "The verdict, the unit of charge and the first droplets go to standard output; "
                "report.html shows where they come from. Where the droplets can't show a common unit, or "
                "a droplet's charge can't be defended, that is said with its reason instead of a number.\n\n"
+               "With --overlay a film as long and as large as the recording is drawn besides: a ring and a "
+               "number at each droplet (broken where it was not seen and its place is bridged), the paths so "
+               "far of those in view, and below the picture the time, the frame and the field. Encoding it "
+               "takes longer than everything else.\n\n"
                "With --json the text of summary.json goes to standard output instead.",
     .example = "  risefall run morning.ini --out morning\n"
                "leaves morning/report.html to look at, beside it droplets.csv, summary.json ...",

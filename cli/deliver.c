@@ -1,6 +1,7 @@
 #include "cli/deliver.h"
 
 #include "cli/ledger_keep.h"
+#include "cli/overlay_film.h"
 #include "cli/pipeline.h"
 #include "cli/preview_film.h"
 #include "cli/result_folder.h"
@@ -9,6 +10,7 @@
 #include "cli/write_json.h"
 #include "cli/write_results.h"
 
+#include <glib/gstdio.h>
 #include <stdio.h>
 #include <stdlib.h>
 #include <string.h>
@@ -27,6 +29,7 @@ const RfCommandFile rf_deliver_files[] = {
     {"scale.json", "pixels per millimetre"},
     {"summary.json", "verdict, unit, warnings, every setting and default, digests of all inputs"},
     {"figures/", "each figure as SVG and PDF, its data and its plotting script"},
+    {"overlay.mp4", "with --overlay: the recording with rings, numbers and paths drawn over it"},
     {0},
 };
 
@@ -34,6 +37,7 @@ const RfCommandFile rf_deliver_paths_files[] = {
     {"paths.csv", "every droplet in every frame: place, its uncertainty, measured or bridged"},
     {"scale.json", "pixels per millimetre"},
     {"summary.json", "warnings, every setting and default, digests of all inputs"},
+    {"overlay.mp4", "with --overlay: the recording with rings, numbers and paths drawn over it"},
     {0},
 };
 
@@ -57,29 +61,51 @@ static RfResults *make(const RfSettings *settings, const Order *order, GError **
     return rf_pipeline_run(settings, &order->hooks, error);
 }
 
-/* A report without footage is no reason to lose the run; to be told to stop is. */
-static bool film_preview(const RfSettings *settings, const Order *order, RfResults *results,
-                         const RfResultFolder *folder, GError **error)
+/* A result without a film is no reason to lose the run; to be told to stop is. (takes failure) */
+static bool may_go_on(GError *failure, RfResults *results, const char *what, GError **error)
 {
-    if (!(order->films & RF_DELIVER_PREVIEW)) return true;
-    g_autoptr(GError) failure = NULL;
-    const RfFilmHooks hooks = {order->hooks.threads, order->hooks.progress, rf_command_is_cancelled};
-    g_autofree char *scratch = g_build_filename(rf_result_folder_path(folder), "preview.webm", NULL);
-    results->preview = rf_preview_film(settings, results, &hooks, scratch, &failure);
     if (!failure) return true;
     if (g_error_matches(failure, RF_VIDEO_ERROR, RF_VIDEO_ERROR_CANCELLED)) {
-        g_propagate_error(error, g_steal_pointer(&failure));
+        g_propagate_error(error, failure);
         return false;
     }
-    rf_results_warn(results, "no footage in the report: %s", failure->message);
+    rf_results_warn(results, "%s: %s", what, failure->message);
+    g_error_free(failure);
     return true;
+}
+
+static bool film_preview(const RfSettings *settings, const RfFilmHooks *hooks, RfResults *results,
+                         const RfResultFolder *folder, GError **error)
+{
+    GError *failure = NULL;
+    g_autofree char *scratch = g_build_filename(rf_result_folder_path(folder), "preview.webm", NULL);
+    results->preview = rf_preview_film(settings, results, hooks, scratch, &failure);
+    return may_go_on(failure, results, "no footage in the report", error);
+}
+
+static bool film_overlay(const RfSettings *settings, const RfFilmHooks *hooks, RfResults *results,
+                         const RfResultFolder *folder, GError **error)
+{
+    GError *failure = NULL;
+    g_autofree char *path = g_build_filename(rf_result_folder_path(folder), "overlay.mp4", NULL);
+    if (!rf_overlay_film(settings, results, hooks, path, &failure)) g_remove(path);
+    return may_go_on(failure, results, "no overlay film", error);
+}
+
+static bool film(const RfSettings *settings, const Order *order, RfResults *results,
+                 const RfResultFolder *folder, GError **error)
+{
+    const RfFilmHooks hooks = {order->hooks.threads, order->hooks.progress, rf_command_is_cancelled};
+    if (order->films & RF_DELIVER_PREVIEW && !film_preview(settings, &hooks, results, folder, error))
+        return false;
+    return !(order->films & RF_DELIVER_OVERLAY) || film_overlay(settings, &hooks, results, folder, error);
 }
 
 static bool write_down(const RfSettings *settings, const Order *order, RfResults *results, GError **error)
 {
     g_autoptr(RfResultFolder) folder = rf_result_folder_open(order->out, error);
     RfWriteResultsPart part = order->kind == RF_DELIVER_PATHS ? RF_WRITE_RESULTS_PATHS : RF_WRITE_RESULTS_ALL;
-    return folder && film_preview(settings, order, results, folder, error) &&
+    return folder && film(settings, order, results, folder, error) &&
            rf_write_results(results, folder, part, error) && rf_result_folder_commit(folder, error);
 }
 

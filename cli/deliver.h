@@ -14,9 +14,10 @@ typedef enum {
     RF_DELIVER_CHARGE,
 } RfDeliverKind;
 
-typedef enum { /* what is filmed besides: a second look at the recording, RF_DELIVER_RUN only */
+typedef enum { /* what is filmed besides: each a second look at the recording */
                RF_DELIVER_NO_FILM = 0,
-               RF_DELIVER_PREVIEW = 1 << 0, /* footage in the report */
+               RF_DELIVER_PREVIEW = 1 << 0, /* footage in the report: RF_DELIVER_RUN only */
+               RF_DELIVER_OVERLAY = 1 << 1, /* overlay.mp4: not RF_DELIVER_CHARGE */
 } RfDeliverFilms;
 
 /* `paths_csv` for RF_DELIVER_CHARGE only; `films`: RfDeliverFilms. */

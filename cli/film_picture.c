@@ -7,6 +7,13 @@
 
 enum { TONES = 1024 };
 
+bool rf_film_hooks_are_cancelled(const RfFilmHooks *hooks, GError **error)
+{
+    if (!hooks->is_cancelled || !hooks->is_cancelled()) return false;
+    g_set_error_literal(error, RF_VIDEO_ERROR, RF_VIDEO_ERROR_CANCELLED, "stopped on request");
+    return true;
+}
+
 /* Which stored pixels make up one of the picture, and how much of the outer two. */
 typedef struct {
     int first, last;

@@ -3,6 +3,8 @@
  * droplets. Not for measuring. */
 #pragma once
 
+#include <glib.h>
+#include <stdbool.h>
 #include <stdint.h>
 
 #include "tracker/frame.h"
@@ -14,6 +16,9 @@ typedef struct {
     void (*progress)(const char *label, int64_t done, int64_t total); /* may be NULL */
     int (*is_cancelled)(void);                                        /* may be NULL */
 } RfFilmHooks;
+
+/* True, with an error of RF_VIDEO_ERROR_CANCELLED, where whoever films shall stop. */
+bool rf_film_hooks_are_cancelled(const RfFilmHooks *hooks, GError **error);
 
 typedef struct RfFilmPicture RfFilmPicture; /* one thread at a time */
 

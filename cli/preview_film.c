@@ -77,13 +77,6 @@ static bool skip_ahead(Set *set, int64_t here, double wanted_s, GError **error)
     return true;
 }
 
-static bool is_cancelled(const Set *set, GError **error)
-{
-    if (!set->hooks->is_cancelled || !set->hooks->is_cancelled()) return false;
-    g_set_error_literal(error, RF_VIDEO_ERROR, RF_VIDEO_ERROR_CANCELLED, "stopped on request");
-    return true;
-}
-
 static double last_filmed_s(const Set *set)
 {
     const GArray *frames = set->preview->frames;
@@ -107,7 +100,7 @@ static bool shoot_all(Set *set, GError **error)
         if (step != RF_VIDEO_FRAME) return step == RF_VIDEO_END;
         const double time_s = frame.time_s;
         const int64_t here = frame.index;
-        if (is_cancelled(set, error)) return false;
+        if (rf_film_hooks_are_cancelled(set->hooks, error)) return false;
         if (rf_preview_plan_wants(set->plan, time_s, last_filmed_s(set)) && !shoot(set, &frame, error))
             return false;
         tell_progress(set, time_s);
