@@ -47,7 +47,7 @@ static void audit_row(GString *out, const RfResults *results, const RfAuditRow *
                                row->droplet, row->droplet);
     else
         g_string_append(out, "<td class=\"number\">–</td>");
-    g_string_append(out, "<td>");
+    g_string_append(out, "<td class=\"evidence\">");
     rf_report_text(out, row->evidence);
     rf_report_moment_button(out, results, RF_MOMENT_TIMED_START, row->entry);
     rf_report_moment_button(out, results, RF_MOMENT_TIMED_STOP, row->entry);

@@ -18,7 +18,8 @@ static void unit_fact(GString *out, const RfUnitResult *unit)
         const double away = fabs(unit->unit_C.value - CODATA_E_C) / unit->unit_C.sigma;
         g_string_append(out, "Found from these charges alone. The accepted value of e lies ");
         rf_text_number_append_fixed(out, away, 1);
-        g_string_append(out, " standard uncertainties away.");
+        g_string_append(
+            out, " standard uncertainties away. In brackets: one standard uncertainty, in the last digits.");
     } else {
         rf_report_text_sentence(out, unit->reason);
     }
@@ -102,11 +103,22 @@ static void warnings(GString *out, const GPtrArray *list)
     g_string_append(out, "</ul></div>\n");
 }
 
+/* The screen's "1.614(13)e-19 C" as print has it. */
+static void verdict(GString *out, const char *text)
+{
+    g_autoptr(GString) escaped = g_string_new(NULL);
+    rf_report_text(escaped, text);
+    g_autoptr(GRegex) power = g_regex_new("(\\d[\\d.]*(?:\\(\\d+\\))?)e-(\\d+) C\\b", 0, 0, NULL);
+    g_autofree char *set = g_regex_replace(
+        power, escaped->str, -1, 0, "<span class=\"nowrap\">\\1 × 10<sup>−\\2</sup> C</span>", 0, NULL);
+    g_string_append(out, set);
+}
+
 void rf_report_first_screen(GString *out, const RfResults *results)
 {
     g_string_append(
         out, "<section id=\"verdict\" aria-labelledby=\"verdict-heading\">\n<h1 id=\"verdict-heading\">");
-    rf_report_text(out, results->verdict ? results->verdict : "No verdict was reached");
+    verdict(out, results->verdict ? results->verdict : "No verdict was reached");
     g_string_append(out, "</h1>\n<dl class=\"facts\">\n");
     unit_fact(out, &results->unit);
     if (results->recordings->len > 0)

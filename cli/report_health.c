@@ -21,7 +21,7 @@ static void overall(GString *out, const GArray *lines)
     if (care > 0)
         g_string_append_printf(out, "%s%u call%s for care", unfit > 0 ? " and " : "", care,
                                care == 1 ? "s" : "");
-    g_string_append(out, ". What to do about them at the next recording stands beside each.</p>\n");
+    g_string_append(out, ". What that means, and what to do next time, stands beside it.</p>\n");
 }
 
 static void line_row(GString *out, const RfFitnessLine *line)

@@ -228,6 +228,9 @@
   find('.back').addEventListener('click', function () { step(-1); });
   find('.on').addEventListener('click', function () { step(1); });
   find('.close').addEventListener('click', close);
+  document.addEventListener('make-room', function () { // on a narrow screen the player would lie over the form
+    if (window.innerWidth < 704) close();
+  });
   find('.size').addEventListener('click', function () {
     var isLarge = player.classList.toggle('is-large');
     this.setAttribute('aria-pressed', String(isLarge));

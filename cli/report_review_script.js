@@ -151,6 +151,7 @@
   var way = document.createElement('a');
   way.href = '#overrule';
   way.textContent = 'Overrule …';
+  way.addEventListener('click', function () { document.dispatchEvent(new CustomEvent('make-room')); });
   document.querySelector('#chosen button').before(way);
   var marked = document.querySelector('tr.is-chosen[id^="droplet-"]'); // by the page's address, before this was listening
   if (marked) field('droplet').value = marked.dataset.droplet;

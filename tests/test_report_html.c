@@ -43,6 +43,7 @@ static void first_screen_says_it(void)
     g_autoptr(RfResults) results = sample_results_new();
     g_autoptr(GString) page = page_with(results, SVG);
     assert_has(page, "Six of seven droplets carry whole multiples");
+    assert_has(page, "one unit of charge, <span class=\"nowrap\">1.6049(13) × 10<sup>−19</sup> C</span></h1>");
     assert_has(page, "1.6049(13) × 10<sup>−19</sup> C");
     assert_has(page, "6 accepted, <span class=\"nowrap\">1 set aside</span>");
     assert_has(page, "this droplet&apos;s motion");
