@@ -100,13 +100,13 @@ static void near_cramer_rao_bound_when_faint(void)
 }
 
 /* Photon noise: 1000 photons in a spot of sd 1.3 px on 4 background photons per pixel can be placed to 0.049877 px
- * (Cramer-Rao bound of the pixelised Poisson problem, 31 x 31 pixels, derived numerically; 5000 photons on 25: 0.022855;
+ * (Cramer-Rao bound of the pixelised Poisson problem, 31 x 31 pixels, derived numerically; 5000 photons on 25: 0.022855; 500 on 9 in one of sd 2 px: 0.166337;
  * K. I. Mortensen et al., Nat. Methods 7 (2010) 377, eq. 5, from memory, agrees to 2e-4). A pixel integrates, which widens
  * the spot by 1/12 px^2. */
-static void check_poisson_bound(double photons, double background, double bound_px)
+static void check_poisson_bound(double sd_px, double photons, double background, double bound_px)
 {
-    double width = sqrt(1.3 * 1.3 + 1.0 / 12);
-    g_autoptr(RfSpotShape) shape = rf_spot_shape_new(1.5);
+    double width = sqrt(sd_px * sd_px + 1.0 / 12);
+    g_autoptr(RfSpotShape) shape = rf_spot_shape_new(width);
     RfLocaliser localiser = {shape, 1, 1, 1, width};
     RfSpotFit fit = {.x_px = 15, .y_px = 15, .peak = photons / (2 * G_PI * width * width), .width_px = width};
     RfPatchPixel pixels[SIDE * SIDE];
@@ -124,8 +124,30 @@ static void check_poisson_bound(double photons, double background, double bound_
 
 static void states_photon_bound(void)
 {
-    check_poisson_bound(1000, 4, 0.049877);
-    check_poisson_bound(5000, 25, 0.022855);
+    check_poisson_bound(1.3, 1000, 4, 0.049877);
+    check_poisson_bound(1.3, 5000, 25, 0.022855);
+    check_poisson_bound(2, 500, 9, 0.166337);
+}
+
+/* White noise of sd 1 under a peak of 100: u is sqrt(2 / pi) / 100 = 0.00797885 px whatever the width, from the sum over
+ * pixels of the squared slope, pi A^2 / 2 (derived; where a spot isn't narrower than a pixel). 0.3 %: what fitting the
+ * background too costs in a finite patch. */
+static void states_white_noise_bound(void)
+{
+    for (double width = 1.3; width < 3; width += 0.4) {
+        g_autoptr(RfSpotShape) shape = rf_spot_shape_new(width);
+        RfLocaliser localiser = {shape, 1, 1, 0, width};
+        RfSpotFit fit = {.x_px = 15, .y_px = 15, .peak = 100, .width_px = width};
+        RfPatchPixel pixels[SIDE * SIDE];
+        for (int i = 0; i < SIDE * SIDE; i++) {
+            double r2 = pow(i % SIDE - 15, 2) + pow(i / SIDE - 15, 2);
+            pixels[i] = (RfPatchPixel){(float)(i % SIDE), (float)(i / SIDE),
+                                       (float)(100 * exp(-r2 / (2 * width * width))), 1, 1};
+        }
+        g_assert_true(rf_localise(&localiser, pixels, SIDE * SIDE, &fit, 1).is_converged);
+        g_test_message("width %.1f px: u %.8f px", width, sqrt(fit.var_x_px2));
+        g_assert_cmpfloat_with_epsilon(sqrt(fit.var_x_px2) / 0.00797885, 1, 0.003);
+    }
 }
 
 /* A line 2 px wide that lets 35 % through, at 0 to 4 px from the droplet. */
@@ -199,6 +221,7 @@ int main(int argc, char **argv)
     g_test_init(&argc, &argv, NULL);
     g_test_add_func("/localise/white-noise/reaches-cramer-rao-bound", at_cramer_rao_bound);
     g_test_add_func("/localise/white-noise/near-bound-when-faint", near_cramer_rao_bound_when_faint);
+    g_test_add_func("/localise/white-noise/states-cramer-rao-bound", states_white_noise_bound);
     g_test_add_func("/localise/photon-noise/states-cramer-rao-bound", states_photon_bound);
     g_test_add_func("/localise/line/known-line-does-not-pull", crosses_line_without_pull);
     g_test_add_func("/localise/line/no-bias-without-noise", line_bias_vanishes_without_noise);
