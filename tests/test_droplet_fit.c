@@ -211,8 +211,12 @@ static void refit_start(Refit *refit)
     refit->inputs = refit_inputs();
     fit_as(refit, &refit->inputs, &refit->fit);
     const RfSpellFit *spell = &refit->fit.spell[0];
-    const RfChargeEstimate estimate = {refit->fit.radius_m, spell->charge_coulomb, refit->fit.spread_share,
-                                       spell->fall_leak_per_v};
+    const RfChargeEstimate estimate = {refit->fit.radius_m,
+                                       spell->charge_coulomb,
+                                       refit->fit.spread_share,
+                                       spell->fall_leak_per_v,
+                                       0.0,
+                                       0.0};
     refit->charge = rf_charge_budget_new(&refit->inputs, &estimate, &first_order, NULL, NULL);
     refit->radius = rf_charge_budget_radius_new(&refit->inputs, &estimate, &first_order, NULL, NULL);
 }

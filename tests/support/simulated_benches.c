@@ -89,7 +89,8 @@ static void fill_recording(const Benches *benches, const double *z, double shift
     const RfChargeInputs inputs = stated();
     const RfBudgetOptions first_order = {.coverage = 0.95};
     RfBudgetInput lines[RF_CHARGE_LINES];
-    const RfChargeEstimate any = {{5e-7, 0.0}, {RF_ELEMENTARY_CHARGE_COULOMB, 1e-21}, 0.0, 0.0};
+    const RfChargeEstimate any = {.radius_m = {5e-7, 0.0},
+                                  .charge_coulomb = {RF_ELEMENTARY_CHARGE_COULOMB, 1e-21}};
     rf_budget_free(rf_charge_budget_new(&inputs, &any, &first_order, lines, NULL));
     const RfMedium is = truth(z, lines);
     RfValue *charges = g_new(RfValue, benches->droplets);
