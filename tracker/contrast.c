@@ -1,6 +1,7 @@
 #include "tracker/contrast.h"
 
 #include "tracker/luma.h"
+#include "tracker/wide.h"
 
 #include <math.h>
 
@@ -125,7 +126,7 @@ void rf_contrast_free(RfContrast *contrast)
 }
 
 /* Sums of the cells' pixels in one row of cells: four pixels each, or two of a field. */
-static void sum_row_bytes(const uint8_t *upper, const uint8_t *lower, int width, float *out)
+static RF_WITHIN void sum_row_bytes(const uint8_t *upper, const uint8_t *lower, int width, float *out)
 {
     if (lower)
         for (int x = 0; x < width; x++)
@@ -134,13 +135,13 @@ static void sum_row_bytes(const uint8_t *upper, const uint8_t *lower, int width,
         for (int x = 0; x < width; x++) out[x] = (float)(upper[2 * x] + upper[2 * x + 1]);
 }
 
-static void sum_row_words(const uint16_t *upper, const uint16_t *lower, int width, float *out)
+static RF_WITHIN void sum_row_words(const uint16_t *upper, const uint16_t *lower, int width, float *out)
 {
     for (int x = 0; x < width; x++)
         out[x] = (float)(upper[2 * x] + upper[2 * x + 1] + (lower ? lower[2 * x] + lower[2 * x + 1] : 0));
 }
 
-static void sum_row(const RfExposureView *view, int cell_row, int width, float *out)
+static RF_WITHIN void sum_row(const RfExposureView *view, int cell_row, int width, float *out)
 {
     const RfFrame *frame = view->frame;
     bool is_field = view->line_step == 2;
@@ -153,8 +154,8 @@ static void sum_row(const RfExposureView *view, int cell_row, int width, float *
                       out);
 }
 
-static void weigh_row(const float *light, const float *per_sd, int width, float pixels, float black,
-                      float gain, float scale, float *row)
+static RF_WITHIN void weigh_row(const float *light, const float *per_sd, int width, float pixels, float black,
+                                float gain, float scale, float *row)
 {
     for (int x = 0; x < width; x++)
         row[x] = (row[x] - pixels * (gain * light[x] + black)) * per_sd[x] * scale;
@@ -177,7 +178,8 @@ static Line reference_line(const RfExposureView *view, int y)
 }
 
 /* Linear between box means, which are smooth enough for that. */
-static void light_of_run(const RfContrast *contrast, const Line *line, int x, float black, float *light)
+static RF_WITHIN void light_of_run(const RfContrast *contrast, const Line *line, int x, float black,
+                                   float *light)
 {
     const RfBackground *b = contrast->background;
     double at_x = line->x_px + x * line->step_x, at_y = line->y_px + x * line->step_y;
@@ -224,8 +226,8 @@ static const float *per_sd_at(const RfContrast *contrast, double at_x, double at
     return contrast->box_per_sd + (size_t)y * (size_t)contrast->width + (size_t)x;
 }
 
-static void weigh_posed_row(const RfContrast *contrast, const RfExposureView *view, int y, float pixels,
-                            float gain, float scale, float *row)
+static RF_WITHIN void weigh_posed_row(const RfContrast *contrast, const RfExposureView *view, int y,
+                                      float pixels, float gain, float scale, float *row)
 {
     float black = (float)contrast->background->noise.black_level;
     const uint8_t *is_bad = contrast->is_bad + (size_t)y * (size_t)contrast->width;
@@ -249,7 +251,8 @@ static void weigh_posed_row(const RfContrast *contrast, const RfExposureView *vi
         if (is_bad[x]) row[x] = 0;
 }
 
-void rf_contrast_fill(const RfContrast *contrast, const RfExposureView *view, double sign, float *picture)
+RF_WIDE void rf_contrast_fill(const RfContrast *contrast, const RfExposureView *view, double sign,
+                              float *picture)
 {
     bool is_field = view->line_step == 2;
     float pixels = is_field ? 2 : 4, black = (float)contrast->background->noise.black_level;

@@ -2,6 +2,7 @@
 
 #include "tracker/interpolate.h"
 #include "tracker/luma.h"
+#include "tracker/wide.h"
 
 #include <glib.h>
 #include <math.h>
@@ -15,13 +16,13 @@ double rf_level_stack_units(int bit_depth)
 }
 
 /* A value in units, rounded; what an undone lamp drives out of range stays at its ends. */
-static inline int16_t in_units(float value)
+static RF_WITHIN int16_t in_units(float value)
 {
     float bounded = value < 0 ? 0 : value > UNSEEN - 1 ? UNSEEN - 1 : value;
     return (int16_t)(bounded + 0.5f);
 }
 
-void rf_level_stack_copy_row(const RfFrame *frame, int y, float scale, float offset, int16_t *out)
+RF_WIDE void rf_level_stack_copy_row(const RfFrame *frame, int y, float scale, float offset, int16_t *out)
 {
     float units = (float)rf_level_stack_units(frame->bit_depth), by = scale * units, plus = offset * units;
     const uint8_t *row = rf_luma_row(frame, y);
@@ -33,7 +34,7 @@ void rf_level_stack_copy_row(const RfFrame *frame, int y, float scale, float off
 }
 
 /* Pixels column .. column + RUN + 2 of four rows, as floats. */
-static void fetch(const RfFrame *frame, int column, int row, float taps[4][RUN + 3])
+static RF_WITHIN void fetch(const RfFrame *frame, int column, int row, float taps[4][RUN + 3])
 {
     for (int j = 0; j < 4; j++) {
         const uint8_t *bytes = rf_luma_row(frame, row + j);
@@ -46,8 +47,8 @@ static void fetch(const RfFrame *frame, int column, int row, float taps[4][RUN +
 }
 
 /* RUN pixels whose taps lie side by side: only the fractions change along the line. */
-static void resample_run(float taps[4][RUN + 3], float part_x, float step_x, float part_y, float step_y,
-                         float *out)
+static RF_WITHIN void resample_run(float taps[4][RUN + 3], float part_x, float step_x, float part_y,
+                                   float step_y, float *out)
 {
     float across[4][RUN], down[4][RUN];
     for (int i = 0; i < RUN; i++) {
@@ -88,8 +89,8 @@ static bool is_one_run(const RfFrame *frame, const RfRowLine *line, int x)
            fmax(y0, y1) < frame->height - 2 && (int)x1 - (int)x0 == RUN - 1 && (int)y0 == (int)y1;
 }
 
-void rf_level_stack_resample_row(const RfFrame *frame, const RfRowLine *line, float scale, float offset,
-                                 int16_t *out)
+RF_WIDE void rf_level_stack_resample_row(const RfFrame *frame, const RfRowLine *line, float scale,
+                                         float offset, int16_t *out)
 {
     float units = (float)rf_level_stack_units(frame->bit_depth), by = scale * units, plus = offset * units;
     for (int x = 0; x < frame->width;) {
@@ -116,7 +117,7 @@ typedef struct {
     int n, stride, lowest_bit;
 } Column;
 
-static void count_seen(const Column *column, int16_t *kept)
+static RF_WITHIN void count_seen(const Column *column, int16_t *kept)
 {
     memset(kept, 0, BLOCK * sizeof *kept);
     for (int i = 0; i < column->n; i++) {
@@ -126,7 +127,7 @@ static void count_seen(const Column *column, int16_t *kept)
 }
 
 /* The (kept/2)-th smallest value, bit by bit from the highest: the largest that no more values lie below. */
-static void find_medians(const Column *column, const int16_t *kept, int16_t *median)
+static RF_WITHIN void find_medians(const Column *column, const int16_t *kept, int16_t *median)
 {
     memset(median, 0, BLOCK * sizeof *median);
     for (int bit = 1 << FULL_BITS; bit >= column->lowest_bit; bit >>= 1) {
@@ -144,7 +145,7 @@ typedef struct {
     float sum[BLOCK], square[BLOCK], n[BLOCK]; /* of the values near the median, from there */
 } Near;
 
-static void sum_near(const Column *column, const int16_t *median, int reach, Near *near)
+static RF_WITHIN void sum_near(const Column *column, const int16_t *median, int reach, Near *near)
 {
     memset(near, 0, sizeof *near);
     for (int i = 0; i < column->n; i++) {
@@ -157,8 +158,8 @@ static void sum_near(const Column *column, const int16_t *median, int reach, Nea
     }
 }
 
-static void reduce_block(const RfLevelStack *stack, const Column *column, int pixels, float *level,
-                         float *variance, int16_t *kept)
+static RF_WITHIN void reduce_block(const RfLevelStack *stack, const Column *column, int pixels, float *level,
+                                   float *variance, int16_t *kept)
 {
     int16_t seen[BLOCK], median[BLOCK];
     Near near;
@@ -175,7 +176,7 @@ static void reduce_block(const RfLevelStack *stack, const Column *column, int pi
     }
 }
 
-void rf_level_stack_reduce(const RfLevelStack *stack, float *level, float *variance, int16_t *kept)
+RF_WIDE void rf_level_stack_reduce(const RfLevelStack *stack, float *level, float *variance, int16_t *kept)
 {
     int lowest_bit = stack->is_whole ? MAX(1, (int)rf_level_stack_units(stack->bit_depth)) : 1;
     for (int x = 0; x < stack->width; x += BLOCK) {

@@ -1,6 +1,7 @@
 #include "tracker/luma_reduce.h"
 
 #include "tracker/luma.h"
+#include "tracker/wide.h"
 
 #include <glib.h>
 #include <math.h>
@@ -9,7 +10,8 @@
 enum { STRIP = 512, TAPS = RF_BLUR_TAPS, REACH = RF_BLUR_REACH };
 
 /* Column sums of `reduction` rows over a strip of the picture. */
-static void sum_columns(const RfFrame *frame, int first_row, int rows, int left, int columns, uint32_t *sums)
+static RF_WITHIN void sum_columns(const RfFrame *frame, int first_row, int rows, int left, int columns,
+                                  uint32_t *sums)
 {
     memset(sums, 0, (size_t)columns * sizeof *sums);
     if (frame->bit_depth == 8) {
@@ -27,7 +29,7 @@ static void sum_columns(const RfFrame *frame, int first_row, int rows, int left,
     }
 }
 
-void rf_luma_reduce(const RfFrame *frame, int reduction, float *out)
+RF_WIDE void rf_luma_reduce(const RfFrame *frame, int reduction, float *out)
 {
     g_assert(reduction >= 2 && reduction <= 16);
     int width = frame->width / reduction, height = frame->height / reduction, per_strip = STRIP / reduction;
@@ -56,7 +58,7 @@ void rf_blur_prepare(RfBlur *blur)
     }
 }
 
-static void weigh(const RfBlur *blur, float place, float weights[TAPS])
+static RF_WITHIN void weigh(const RfBlur *blur, float place, float weights[TAPS])
 {
     float phase = (place + 0.5f) * RF_BLUR_PHASES;
     int below = CLAMP((int)phase, 0, RF_BLUR_PHASES);
@@ -65,7 +67,7 @@ static void weigh(const RfBlur *blur, float place, float weights[TAPS])
     for (int i = 0; i < TAPS; i++) weights[i] = a[i] + part * (b[i] - a[i]);
 }
 
-bool rf_blur_sample(const RfBlur *blur, const RfFrame *frame, float x_px, float y_px, float *value)
+RF_WIDE bool rf_blur_sample(const RfBlur *blur, const RfFrame *frame, float x_px, float y_px, float *value)
 {
     if (!(x_px > REACH && y_px > REACH && x_px < (float)(frame->width - TAPS / 2 - 1) &&
           y_px < (float)(frame->height - TAPS / 2 - 1)))

@@ -1,6 +1,7 @@
 #include "tracker/spot_normal.h"
 
 #include "tracker/lanes.h"
+#include "tracker/wide.h"
 
 #include <math.h>
 #include <string.h>
@@ -18,8 +19,8 @@ typedef struct {
     float x_px, y_px, peak;
 } Drawn;
 
-static void draw(const RfLocaliser *localiser, const RfPatchColumns *columns, const RfSpotFit *spot,
-                 Drawn *drawn)
+static RF_WITHIN void draw(const RfLocaliser *localiser, const RfPatchColumns *columns, const RfSpotFit *spot,
+                           Drawn *drawn)
 {
     RfSpotProfile profile = rf_spot_shape_profile(localiser->shape, spot->width_px);
     drawn->x_px = (float)(spot->x_px - columns->origin_x_px);
@@ -46,7 +47,7 @@ static void draw(const RfLocaliser *localiser, const RfPatchColumns *columns, co
     drawn->end = (float)end;
 }
 
-void rf_spot_normal_fill(RfPatchColumns *columns, const RfPatchPixel *pixels, unsigned n)
+RF_WIDE void rf_spot_normal_fill(RfPatchColumns *columns, const RfPatchPixel *pixels, unsigned n)
 {
     columns->n = n;
     columns->padded = (n + BLOCK - 1) / BLOCK * BLOCK;
@@ -62,7 +63,7 @@ void rf_spot_normal_fill(RfPatchColumns *columns, const RfPatchPixel *pixels, un
     }
 }
 
-void rf_spot_normal_weigh(RfPatchColumns *columns, double factor, double photon_var_per_level)
+RF_WIDE void rf_spot_normal_weigh(RfPatchColumns *columns, double factor, double photon_var_per_level)
 {
     float f = (float)factor, photon = (float)photon_var_per_level;
     const float *var = columns->var, *model = columns->model;
@@ -84,8 +85,8 @@ typedef struct {
 } Block;
 
 /* Places in the profile; false where the whole block lies beyond it. */
-static bool measure_radii(const RfPatchColumns *columns, unsigned first, const Drawn *drawn, float aspect,
-                          float *dx, float *dy, float *at)
+static RF_WITHIN bool measure_radii(const RfPatchColumns *columns, unsigned first, const Drawn *drawn,
+                                    float aspect, float *dx, float *dy, float *at)
 {
     float nearest = 1e30f, per_px = drawn->per_px, end = drawn->end, middle_x = drawn->x_px,
           middle_y = drawn->y_px;
@@ -99,7 +100,8 @@ static bool measure_radii(const RfPatchColumns *columns, unsigned first, const D
     return nearest < end;
 }
 
-static void look_up(const Drawn *drawn, const float *at, float *value, float *per_r2, float *per_width)
+static RF_WITHIN void look_up(const Drawn *drawn, const float *at, float *value, float *per_r2,
+                              float *per_width)
 {
     for (int j = 0; j < BLOCK; j++) {
         int i = (int)at[j];
@@ -110,8 +112,8 @@ static void look_up(const Drawn *drawn, const float *at, float *value, float *pe
     }
 }
 
-static void add_spot(const RfPatchColumns *columns, unsigned first, const Drawn *drawn, float aspect,
-                     unsigned which, Block *block)
+static RF_WITHIN void add_spot(const RfPatchColumns *columns, unsigned first, const Drawn *drawn,
+                               float aspect, unsigned which, Block *block)
 {
     _Alignas(16) float dx[BLOCK], dy[BLOCK], at[BLOCK], value[BLOCK], per_r2[BLOCK], per_width[BLOCK];
     if (!measure_radii(columns, first, drawn, aspect, dx, dy, at)) return;
@@ -130,8 +132,8 @@ static void add_spot(const RfPatchColumns *columns, unsigned first, const Drawn 
     block->rows += PER_SPOT;
 }
 
-static void fill_block(const RfLocaliser *localiser, RfPatchColumns *columns, unsigned first,
-                       const Drawn *drawn, unsigned n, Block *block)
+static RF_WITHIN void fill_block(const RfLocaliser *localiser, RfPatchColumns *columns, unsigned first,
+                                 const Drawn *drawn, unsigned n, Block *block)
 {
     block->rows = 0;
     memset(block->model, 0, sizeof block->model);
@@ -140,14 +142,14 @@ static void fill_block(const RfLocaliser *localiser, RfPatchColumns *columns, un
     memcpy(columns->model + first, block->model, sizeof block->model);
 }
 
-static inline double dot(const float *a, const float *b)
+static RF_WITHIN double dot(const float *a, const float *b)
 {
     return rf_lanes_total(rf_lanes_dot(a, b, BLOCK));
 }
 
 /* The block's share of all sums. The offset's gradient is 1. */
-static void add_block(const RfPatchColumns *columns, unsigned first, float offset, Block *block,
-                      unsigned last, RfNormal *normal)
+static RF_WITHIN void add_block(const RfPatchColumns *columns, unsigned first, float offset, Block *block,
+                                unsigned last, RfNormal *normal)
 {
     _Alignas(16) float residual[BLOCK], weighted[BLOCK];
     const float *excess = columns->excess + first, *weight = columns->weight + first;
@@ -168,8 +170,8 @@ static void add_block(const RfPatchColumns *columns, unsigned first, float offse
     }
 }
 
-void rf_spot_normal_gather(const RfLocaliser *localiser, RfPatchColumns *columns, const RfSpotFit *spots,
-                           unsigned n, double offset, RfNormal *normal)
+RF_WIDE void rf_spot_normal_gather(const RfLocaliser *localiser, RfPatchColumns *columns,
+                                   const RfSpotFit *spots, unsigned n, double offset, RfNormal *normal)
 {
     Drawn drawn[RF_LOCALISE_MOST_SPOTS];
     Block block;
@@ -186,8 +188,8 @@ void rf_spot_normal_gather(const RfLocaliser *localiser, RfPatchColumns *columns
     }
 }
 
-void rf_spot_normal_model(const RfLocaliser *localiser, RfPatchColumns *columns, const RfSpotFit *spots,
-                          unsigned n)
+RF_WIDE void rf_spot_normal_model(const RfLocaliser *localiser, RfPatchColumns *columns,
+                                  const RfSpotFit *spots, unsigned n)
 {
     Drawn drawn[RF_LOCALISE_MOST_SPOTS];
     Block block;
