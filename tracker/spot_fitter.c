@@ -23,6 +23,7 @@ struct RfSpotFitter {
     bool is_taken[RF_FITTER_MOST_CANDIDATES];
     RfPatchPixel pixels[RF_LOCALISE_MOST_PIXELS];
     float residuals[RF_LOCALISE_MOST_PIXELS];
+    double vars[RF_LOCALISE_MOST_PIXELS]; /* of the residuals, the shape's error included */
 };
 
 RfSpotFitter *rf_spot_fitter_new(void)
@@ -204,24 +205,33 @@ typedef struct {
     double peak, significance;
 } Leftover;
 
+static void fill_vars(RfSpotFitter *fitter, const RfFitterSettings *settings, unsigned n_pixels)
+{
+    for (unsigned p = 0; p < n_pixels; p++) {
+        double model = (double)fitter->pixels[p].excess - (double)fitter->residuals[p];
+        fitter->vars[p] = settings->localiser.var_factor * (double)fitter->pixels[p].var +
+                          settings->localiser.photon_var_per_level * fmax(model, 0) +
+                          settings->shape_error * settings->shape_error * model * model;
+    }
+}
+
 /* Best peak of a sharp spot at a pixel for what the fit left. */
 static Leftover leftover_at(const RfSpotFitter *fitter, const RfFitterSettings *settings, unsigned n_pixels,
                             unsigned at, const RfSpotProfile *profile)
 {
     double aspect = settings->localiser.pixel_aspect, product = 0, square = 0;
     const RfPatchPixel *middle = &fitter->pixels[at];
-    for (unsigned p = 0; p < n_pixels; p++) {
+    unsigned first = at;
+    while (first > 0 && middle->y_px - fitter->pixels[first - 1].y_px <= 3 * profile->width_px) first--;
+    for (unsigned p = first; p < n_pixels && fitter->pixels[p].y_px - middle->y_px <= 3 * profile->width_px;
+         p++) { /* they lie row by row */
         const RfPatchPixel *pixel = &fitter->pixels[p];
         float dx = (pixel->x_px - middle->x_px) * (float)aspect, dy = pixel->y_px - middle->y_px,
               r2 = dx * dx + dy * dy;
         if (r2 > 9 * profile->width_px * profile->width_px) continue;
         double value = (double)(pixel->shade * rf_spot_profile_at(profile, r2).value);
-        double model = (double)pixel->excess - (double)fitter->residuals[p];
-        double var = settings->localiser.var_factor * (double)pixel->var +
-                     settings->localiser.photon_var_per_level * fmax(model, 0) +
-                     settings->shape_error * settings->shape_error * model * model;
-        product += value * (double)fitter->residuals[p] / var;
-        square += value * value / var;
+        product += value * (double)fitter->residuals[p] / fitter->vars[p];
+        square += value * value / fitter->vars[p];
     }
     return square > 0 ? (Leftover){product / square, product / sqrt(square)} : (Leftover){0, 0};
 }
@@ -236,6 +246,7 @@ static bool find_hidden(RfSpotFitter *fitter, const RfFitterSettings *settings, 
     bool is_found = false;
     for (unsigned i = 0; i < group->n; i++) brightest = fmax(brightest, fabs(group->members[i].fit.peak));
     RfSpotProfile profile = rf_spot_shape_profile(settings->localiser.shape, width);
+    fill_vars(fitter, settings, n_pixels);
     for (unsigned p = 0; p < n_pixels; p++) {
         double residual = settings->sign * (double)fitter->residuals[p];
         if (residual < 1.5 * sqrt(settings->localiser.var_factor * (double)fitter->pixels[p].var) ||
