@@ -4,8 +4,9 @@
 #include "cli/report_parts.h"
 #include "cli/text_number.h"
 
-/* A path of two hours has a quarter of a million points; what a page can show is this many per droplet. */
-enum { MOST_POINTS = 1500 };
+/* A path of two hours has a quarter of a million points; what a page can show is this many per droplet, fewer where there
+ * are many: a browser takes seconds over the points of two hundred. */
+enum { MOST_POINTS = 1500, LEAST_POINTS = 150, POINTS_IN_ALL = 50000 };
 
 /* From here on the numbers are set smaller, to leave the picture visible. */
 enum { MANY = 40 };
@@ -57,10 +58,10 @@ static void open_mark(GString *out, const RfResults *results, unsigned droplet)
 }
 
 /* The line, and the same line again, wide and unseen, so that a finger can hit it. */
-static void line(GString *out, const RfResults *results, const RfPathRow *rows, guint n)
+static void line(GString *out, const RfResults *results, const RfPathRow *rows, guint n, unsigned most)
 {
     double apart = 1;
-    while (thin(rows, n, results->pixel_aspect, apart, NULL) > MOST_POINTS) apart *= 1.5;
+    while (thin(rows, n, results->pixel_aspect, apart, NULL) > most) apart *= 1.5;
     open_mark(out, results, rows->droplet);
     g_string_append_printf(out, "<polyline id=\"path-%u\" class=\"line hue-%u\" points=\"", rows->droplet,
                            (rows->droplet - 1) % RF_FIGURE_HUES + 1);
@@ -105,9 +106,10 @@ static unsigned count_paths(const GArray *all)
 static void paths(GString *out, const RfResults *results, double text_px)
 {
     const GArray *all = results->paths;
+    const unsigned most = CLAMP(POINTS_IN_ALL / MAX(1, count_paths(all)), LEAST_POINTS, MOST_POINTS);
     for (guint first = 0, end; first < all->len; first = end) {
         end = path_end(all, first);
-        line(out, results, &g_array_index(all, RfPathRow, first), end - first);
+        line(out, results, &g_array_index(all, RfPathRow, first), end - first, most);
     }
     for (guint first = 0; first < all->len; first = path_end(all, first))
         label(out, results, &g_array_index(all, RfPathRow, first), text_px);
