@@ -83,8 +83,8 @@ static void fill_witnesses(const End *end, const RfTrail *trails, const RfFieldR
         interval_at(end->timeline, end->is_start ? 0 : end->timeline->intervals->len - 1);
     for (size_t j = 0; j < runs->droplets; j++) {
         double moved_m = 0, time_s = 0;
-        for (size_t r = 0; r < runs->runs; r++) {
-            const RfRunSpeed *seen = &runs->speed[j * runs->runs + r];
+        for (size_t r = runs->span[j].first; r < runs->span[j].end; r++) {
+            const RfRunSpeed *seen = rf_field_runs_speed(runs, j, r);
             bool is_inside = runs->edge_s[r] >= v->start_s + (end->is_start ? BRIEF_S : -0.05) &&
                              runs->edge_s[r + 1] <= v->end_s - (end->is_start ? -0.05 : BRIEF_S);
             if (!is_inside) continue;

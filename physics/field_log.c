@@ -124,7 +124,7 @@ static double power_to_see(const RfFieldRuns *runs, const RfStateDroplet *drople
     size_t run = 0;
     while (run + 1 < runs->runs && runs->edge_s[run + 1] < time_s) run++;
     for (size_t j = 0; j < runs->droplets; j++) {
-        const RfRunSpeed *seen = &runs->speed[j * runs->runs + run];
+        const RfRunSpeed *seen = rf_field_runs_speed(runs, j, run);
         double w = droplets[j].speed_per_volt_m_s_v;
         if (seen->time_s < 1 || fabs(w) < 3 * droplets[j].u_speed_per_volt_m_s_v) continue;
         power += w * w * change_v * change_v / (4 * seen->variance_m2_s2);

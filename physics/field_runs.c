@@ -120,12 +120,60 @@ static void bin_all(const RfTrail *trails, size_t n, const double *diffusion, co
     }
 }
 
+/* Trails that runs ending at the present bin may touch, in the order of all trails. */
+typedef struct {
+    size_t *by_first; /* trails with bins, in the order in which they come into view */
+    size_t n_trails, next;
+    size_t *open;
+    size_t n_open;
+} InView;
+
+static int compare_firsts(const void *a, const void *b, void *data)
+{
+    const BinnedTrail *trail = data;
+    size_t i = *(const size_t *)a, j = *(const size_t *)b;
+    if (trail[i].first != trail[j].first) return trail[i].first < trail[j].first ? -1 : 1;
+    return (i > j) - (i < j);
+}
+
+static void in_view_init(InView *view, const Binned *binned)
+{
+    *view =
+        (InView){.by_first = g_new(size_t, binned->trails + 1), .open = g_new(size_t, binned->trails + 1)};
+    for (size_t j = 0; j < binned->trails; j++)
+        if (binned->trail[j].end > binned->trail[j].first) view->by_first[view->n_trails++] = j;
+    g_qsort_with_data(view->by_first, (int)view->n_trails, sizeof(size_t), compare_firsts, binned->trail);
+}
+
+static void in_view_clear(InView *view)
+{
+    g_free(view->by_first);
+    g_free(view->open);
+}
+
+/* Keeps those that end after bin `from` and begin before bin `to`; both never go back. */
+static void in_view_move(InView *view, const Binned *binned, size_t from, size_t to)
+{
+    size_t kept = 0;
+    for (size_t i = 0; i < view->n_open; i++)
+        if (binned->trail[view->open[i]].end > from) view->open[kept++] = view->open[i];
+    view->n_open = kept;
+    for (; view->next < view->n_trails; view->next++) {
+        size_t j = view->by_first[view->next], at = view->n_open;
+        if (binned->trail[j].first >= to) break;
+        if (binned->trail[j].end <= from) continue;
+        for (; at > 0 && view->open[at - 1] > j; at--) view->open[at] = view->open[at - 1];
+        view->open[at] = j;
+        view->n_open++;
+    }
+}
+
 /* What a run from bin a to bin b explains: half the squared displacement over its variance, less the cost. */
-static double run_gain(const Binned *binned, size_t a, size_t b)
+static double run_gain(const Binned *binned, const InView *view, size_t a, size_t b)
 {
     double gain = -CUT_COST;
-    for (size_t j = 0; j < binned->trails; j++) {
-        const BinnedTrail *t = &binned->trail[j];
+    for (size_t i = 0; i < view->n_open; i++) {
+        const BinnedTrail *t = &binned->trail[view->open[i]];
         size_t from = MAX(a, t->first), to = MIN(b, t->end);
         if (from >= to) continue;
         double moved = t->place_m[to - t->first] - t->place_m[from - t->first];
@@ -134,44 +182,67 @@ static double run_gain(const Binned *binned, size_t a, size_t b)
     return gain;
 }
 
+/* The most that a cut at a bin can cost: itself and a speed more for each trail that goes on across it. */
+static double cut_cost(const Binned *binned, const InView *view, size_t b)
+{
+    size_t across = 0;
+    for (size_t i = 0; i < view->n_open; i++) {
+        const BinnedTrail *t = &binned->trail[view->open[i]];
+        across += t->first < b && b < t->end;
+    }
+    return CUT_COST + SPEED_COST * (double)across;
+}
+
 /* cut[b]: where the run that ends at bin b begins, in the best partition of what lies before b. */
 static void partition(const Binned *binned, size_t *cut)
 {
-    g_autofree double *best = g_new(double, binned->bins + 1);
+    g_autofree double *best = g_new(double, binned->bins + 1), *with = g_new(double, binned->bins + 1);
     g_autofree size_t *alive = g_new(size_t, binned->bins + 1);
-    double slack = CUT_COST + SPEED_COST * (double)binned->trails;
+    InView view;
+    in_view_init(&view, binned);
     size_t n_alive = 0;
     best[0] = 0;
     for (size_t b = 1; b <= binned->bins; b++) {
         alive[n_alive++] = b - 1;
         best[b] = -HUGE_VAL;
-        g_autofree double *with = g_new(double, n_alive);
+        in_view_move(&view, binned, alive[0], b);
         for (size_t i = 0; i < n_alive; i++) {
-            with[i] = best[alive[i]] + run_gain(binned, alive[i], b);
+            with[i] = best[alive[i]] + run_gain(binned, &view, alive[i], b);
             if (with[i] <= best[b]) continue;
             best[b] = with[i];
             cut[b] = alive[i];
         }
         size_t kept = 0; /* a start that lags by more than a new cut could cost never leads again */
+        double slack = cut_cost(binned, &view, b) + 1e-6; /* sums of costs are rounded */
         for (size_t i = 0; i < n_alive; i++)
             if (with[i] + slack >= best[b]) alive[kept++] = alive[i];
         n_alive = kept;
     }
+    in_view_clear(&view);
+}
+
+/* How many trails go on across each bin, and how many begin or end there; both bins + 1. */
+static void count_trails(const Binned *binned, int *spanning, int *beside)
+{
+    for (size_t j = 0; j < binned->trails; j++) {
+        const BinnedTrail *t = &binned->trail[j];
+        if (t->end <= t->first) continue;
+        spanning[t->first + 1]++;
+        spanning[t->end]--;
+        beside[t->first]++;
+        beside[t->end]++;
+    }
+    for (size_t b = 1; b <= binned->bins; b++) spanning[b] += spanning[b - 1];
 }
 
 /* Bins at which trails begin or end with one other in view at most; of several in a row the middle one. */
 static void mark_blind(const Binned *binned, bool *blind)
 {
+    g_autofree int *spanning = g_new0(int, binned->bins + 2), *beside = g_new0(int, binned->bins + 2);
     size_t first = 0;
+    count_trails(binned, spanning, beside);
     for (size_t b = 1; b <= binned->bins; b++) {
-        size_t spanning = 0, beside = 0;
-        for (size_t j = 0; j < binned->trails; j++) {
-            const BinnedTrail *t = &binned->trail[j];
-            if (t->end <= t->first) continue;
-            spanning += t->first < b && b < t->end;
-            beside += t->first == b || t->end == b;
-        }
-        bool is_blind = b < binned->bins && (spanning == 0 || (spanning == 1 && beside > 0));
+        bool is_blind = b < binned->bins && (spanning[b] == 0 || (spanning[b] == 1 && beside[b] > 0));
         if (is_blind && first == 0) first = b;
         if (is_blind || first == 0) continue;
         blind[(first + b - 1) / 2] = true;
@@ -179,15 +250,60 @@ static void mark_blind(const Binned *binned, bool *blind)
     }
 }
 
-static void fill_speeds(const Binned *binned, const size_t *edges, RfFieldRuns *runs)
+static const RfRunSpeed UNWATCHED = {0};
+
+const RfRunSpeed *rf_field_runs_speed(const RfFieldRuns *runs, size_t droplet, size_t run)
+{
+    const RfRunSpan *span = &runs->span[droplet];
+    return run >= span->first && run < span->end ? &runs->speed[span->at + run - span->first] : &UNWATCHED;
+}
+
+/* Lays out the speeds of a span behind those of the droplet before. */
+static void place_span(RfFieldRuns *runs, size_t droplet, size_t first, size_t end)
+{
+    const RfRunSpan *before = droplet > 0 ? &runs->span[droplet - 1] : NULL;
+    runs->span[droplet] = (RfRunSpan){first, end, before ? before->at + before->end - before->first : 0};
+}
+
+static void alloc_speeds(RfFieldRuns *runs)
+{
+    const RfRunSpan *last = runs->droplets > 0 ? &runs->span[runs->droplets - 1] : NULL;
+    runs->speed = g_new0(RfRunSpeed, last ? last->at + last->end - last->first : 0);
+}
+
+/* The first edge at or beyond a bin. */
+static size_t edge_from(const size_t *edges, size_t n, size_t bin)
+{
+    size_t low = 0, high = n;
+    while (low < high) {
+        size_t middle = low + (high - low) / 2;
+        if (edges[middle] < bin)
+            low = middle + 1;
+        else
+            high = middle;
+    }
+    return low;
+}
+
+static void place_spans(const Binned *binned, const size_t *edges, RfFieldRuns *runs)
 {
     for (size_t j = 0; j < runs->droplets; j++) {
         const BinnedTrail *t = &binned->trail[j];
-        for (size_t r = 0; r < runs->runs; r++) {
-            RfRunSpeed *speed = &runs->speed[j * runs->runs + r];
+        bool is_watched = t->end > t->first;
+        size_t first = is_watched ? edge_from(edges, runs->runs, t->first + 1) - 1 : 0;
+        place_span(runs, j, first, is_watched ? edge_from(edges, runs->runs, t->end) : 0);
+    }
+    alloc_speeds(runs);
+}
+
+static void fill_speeds(const Binned *binned, const size_t *edges, RfFieldRuns *runs)
+{
+    place_spans(binned, edges, runs);
+    for (size_t j = 0; j < runs->droplets; j++) {
+        const BinnedTrail *t = &binned->trail[j];
+        RfRunSpeed *speed = runs->speed + runs->span[j].at;
+        for (size_t r = runs->span[j].first; r < runs->span[j].end; r++, speed++) {
             size_t from = MAX(edges[r], t->first), to = MIN(edges[r + 1], t->end);
-            *speed = (RfRunSpeed){0};
-            if (from >= to) continue;
             speed->time_s = (double)(to - from) * binned->bin_s;
             speed->speed_m_s = (t->place_m[to - t->first] - t->place_m[from - t->first]) / speed->time_s;
             speed->variance_m2_s2 = t->rate / speed->time_s;
@@ -201,7 +317,7 @@ static RfFieldRuns *alloc_runs(size_t n_runs, size_t droplets, double bin_s)
     *runs = (RfFieldRuns){.runs = n_runs, .droplets = droplets, .bin_s = bin_s};
     runs->edge_s = g_new(double, n_runs + 1);
     runs->is_blind = g_new0(bool, n_runs + 1);
-    runs->speed = g_new0(RfRunSpeed, droplets * n_runs);
+    runs->span = g_new0(RfRunSpan, droplets);
     return runs;
 }
 
@@ -234,6 +350,21 @@ static void add_speed(RfRunSpeed *to, const RfRunSpeed *more)
     to->time_s = time_s;
 }
 
+static void merge_speeds(const RfFieldRuns *runs, const size_t *part, RfFieldRuns *merged)
+{
+    for (size_t j = 0; j < runs->droplets; j++) {
+        const RfRunSpan *span = &runs->span[j];
+        bool is_watched = span->end > span->first;
+        place_span(merged, j, is_watched ? part[span->first] : 0, is_watched ? part[span->end - 1] + 1 : 0);
+    }
+    alloc_speeds(merged);
+    for (size_t j = 0; j < runs->droplets; j++) {
+        RfRunSpeed *to = merged->speed + merged->span[j].at;
+        for (size_t r = runs->span[j].first; r < runs->span[j].end; r++)
+            add_speed(&to[part[r] - merged->span[j].first], rf_field_runs_speed(runs, j, r));
+    }
+}
+
 RfFieldRuns *rf_field_runs_merge(const RfFieldRuns *runs, const unsigned *label, size_t *part)
 {
     size_t n = 0;
@@ -247,9 +378,8 @@ RfFieldRuns *rf_field_runs_merge(const RfFieldRuns *runs, const unsigned *label,
             merged->edge_s[part[r]] = runs->edge_s[r];
             merged->is_blind[part[r]] = runs->is_blind[r];
         }
-        for (size_t j = 0; j < runs->droplets; j++)
-            add_speed(&merged->speed[j * merged->runs + part[r]], &runs->speed[j * runs->runs + r]);
     }
+    merge_speeds(runs, part, merged);
     merged->edge_s[n + 1] = runs->edge_s[runs->runs];
     merged->diffusion_m2_s = g_memdup2(runs->diffusion_m2_s, runs->droplets * sizeof(double));
     merged->own_diffusion_m2_s = g_memdup2(runs->own_diffusion_m2_s, runs->droplets * sizeof(double));
@@ -280,6 +410,7 @@ void rf_field_runs_free(RfFieldRuns *runs)
     if (!runs) return;
     g_free(runs->edge_s);
     g_free(runs->is_blind);
+    g_free(runs->span);
     g_free(runs->speed);
     g_free(runs->diffusion_m2_s);
     g_free(runs->own_diffusion_m2_s);

@@ -1,6 +1,7 @@
 #include "physics/field_states.h"
 
 #include <math.h>
+#include <stdint.h>
 #include <stdlib.h>
 #include <string.h>
 
@@ -26,8 +27,8 @@ typedef struct {
     double cost;
     unsigned used; /* states that have occurred, a bit for each in the sheet's order */
     unsigned last;
-    unsigned *label; /* runs */
-    Belief *belief;  /* droplets */
+    unsigned parent; /* which of the run before it extends */
+    Belief *belief;  /* droplets; of those that left before this run, nobody's any more */
 } Hypothesis;
 
 static const Belief PRIOR = {{FALL_PRIOR_M_S, 0},
@@ -68,25 +69,37 @@ static double learn_or_wonder(Belief *b, double h, const RfRunSpeed *seen, bool 
     return fmin(cost, otherwise);
 }
 
-static void hypothesis_init(Hypothesis *h, size_t runs, size_t droplets)
+/* Who is watched in which run. */
+typedef struct {
+    size_t *at;      /* runs + 1; where a run's droplets begin in `droplet` */
+    size_t *droplet; /* rising within a run */
+} Watched;
+
+static void watched_init(Watched *watched, const RfFieldRuns *runs)
 {
-    *h = (Hypothesis){.label = g_new0(unsigned, runs), .belief = g_new(Belief, droplets)};
+    watched->at = g_new0(size_t, runs->runs + 1);
+    for (size_t j = 0; j < runs->droplets; j++)
+        for (size_t r = runs->span[j].first; r < runs->span[j].end; r++) watched->at[r + 1]++;
+    for (size_t r = 0; r < runs->runs; r++) watched->at[r + 1] += watched->at[r];
+    watched->droplet = g_new(size_t, watched->at[runs->runs] + 1);
+    g_autofree size_t *next = g_memdup2(watched->at, (runs->runs + 1) * sizeof(size_t));
+    for (size_t j = 0; j < runs->droplets; j++)
+        for (size_t r = runs->span[j].first; r < runs->span[j].end; r++) watched->droplet[next[r]++] = j;
 }
 
-static void hypothesis_clear(Hypothesis *h)
+static void watched_clear(Watched *watched)
 {
-    g_free(h->label);
-    g_free(h->belief);
+    g_free(watched->at);
+    g_free(watched->droplet);
 }
 
-static void hypothesis_copy(Hypothesis *to, const Hypothesis *from, size_t runs, size_t droplets)
+/* Beliefs about those who are watched in this run; whoever comes later is what it was in all hypotheses. */
+static void hypothesis_copy(Hypothesis *to, const Hypothesis *from, const Watched *watched, size_t run)
 {
-    unsigned *label = to->label;
     Belief *belief = to->belief;
-    memcpy(label, from->label, runs * sizeof *label);
-    memcpy(belief, from->belief, droplets * sizeof *belief);
+    for (size_t i = watched->at[run]; i < watched->at[run + 1]; i++)
+        belief[watched->droplet[i]] = from->belief[watched->droplet[i]];
     *to = *from;
-    to->label = label;
     to->belief = belief;
 }
 
@@ -99,17 +112,27 @@ typedef struct {
     double relative[RF_FIELD_LEVELS]; /* voltages over the largest */
 } Levels;
 
-static void extend(Hypothesis *h, const RfFieldRuns *runs, size_t run, const Levels *levels, unsigned to)
+/* Returns what the speeds seen in this run cost. */
+static double learn_run(Belief *belief, const RfFieldRuns *runs, const Watched *watched, size_t run,
+                        double relative_voltage, double cost)
+{
+    bool is_brief = runs->edge_s[run + 1] - runs->edge_s[run] < 1.5 * runs->bin_s;
+    for (size_t i = watched->at[run]; i < watched->at[run + 1]; i++) {
+        size_t j = watched->droplet[i];
+        const RfRunSpeed *seen = rf_field_runs_speed(runs, j, run);
+        if (seen->time_s > 0) cost += learn_or_wonder(&belief[j], relative_voltage, seen, is_brief);
+    }
+    return cost;
+}
+
+static void extend(Hypothesis *h, const RfFieldRuns *runs, const Watched *watched, size_t run,
+                   const Levels *levels, unsigned to)
 {
     if (run > 0 && to != h->last) h->cost += runs->is_blind[run] ? BLIND_SWITCH_COST : SWITCH_COST;
     if (run == 0 && levels->level[to].order > 0) h->cost += OUT_OF_ORDER_COST;
     h->used |= 1u << levels->level[to].order;
-    h->last = h->label[run] = to;
-    bool is_brief = runs->edge_s[run + 1] - runs->edge_s[run] < 1.5 * runs->bin_s;
-    for (size_t j = 0; j < runs->droplets; j++) {
-        const RfRunSpeed *seen = &runs->speed[j * runs->runs + run];
-        if (seen->time_s > 0) h->cost += learn_or_wonder(&h->belief[j], levels->relative[to], seen, is_brief);
-    }
+    h->last = to;
+    h->cost = learn_run(h->belief, runs, watched, run, levels->relative[to], h->cost);
 }
 
 /* The fall that belongs to a droplet's wander, as far as that is known (sd of D about sqrt(6/n) of it, twice that in
@@ -141,7 +164,12 @@ static Belief first_belief(const RfFieldRuns *runs, size_t droplet, const RfMedi
 typedef struct {
     Hypothesis now[BEAM], next[BEAM * RF_FIELD_LEVELS];
     size_t n_now, n_next;
+    Watched watched;
+    uint8_t *parent, *label; /* [run * BEAM + i]: how the i-th best up to that run came about */
+    Belief *first;           /* droplets */
 } Beam;
+
+G_STATIC_ASSERT(BEAM <= 256 && RF_FIELD_LEVELS <= 256);
 
 static int compare_costs(const void *a, const void *b)
 {
@@ -166,20 +194,37 @@ static void advance(Beam *beam, const RfFieldRuns *runs, size_t run, const Level
         for (unsigned l = 0; l < levels->n; l++) {
             if (!may_follow(&beam->now[i], run, levels, l)) continue;
             Hypothesis *to = &beam->next[beam->n_next++];
-            hypothesis_copy(to, &beam->now[i], runs->runs, runs->droplets);
-            extend(to, runs, run, levels, l);
+            hypothesis_copy(to, &beam->now[i], &beam->watched, run);
+            to->parent = (unsigned)i;
+            extend(to, runs, &beam->watched, run, levels, l);
         }
     }
     qsort(beam->next, beam->n_next, sizeof *beam->next, compare_costs);
     beam->n_now = MIN(beam->n_next, BEAM);
-    for (size_t i = 0; i < beam->n_now; i++)
-        hypothesis_copy(&beam->now[i], &beam->next[i], runs->runs, runs->droplets);
+    for (size_t i = 0; i < beam->n_now; i++) {
+        hypothesis_copy(&beam->now[i], &beam->next[i], &beam->watched, run);
+        beam->parent[run * BEAM + i] = (uint8_t)beam->now[i].parent;
+        beam->label[run * BEAM + i] = (uint8_t)beam->now[i].last;
+    }
 }
 
-static void report(const Hypothesis *best, size_t droplets, double largest_v, RfStateDroplet *droplet)
+/* The labels of all runs in the i-th best reading. */
+static void trace(const Beam *beam, size_t runs, size_t i, unsigned *label)
 {
-    for (size_t j = 0; j < droplets; j++) {
-        const Belief *b = &best->belief[j];
+    for (size_t r = runs; r-- > 0;) {
+        label[r] = beam->label[r * BEAM + i];
+        i = beam->parent[r * BEAM + i];
+    }
+}
+
+/* What the best reading makes of the droplets: their speeds once more, under its labels. */
+static void report(const Beam *beam, const RfFieldRuns *runs, const Levels *levels, const unsigned *label,
+                   double largest_v, RfStateDroplet *droplet)
+{
+    for (size_t r = 0; r < runs->runs; r++)
+        learn_run(beam->first, runs, &beam->watched, r, levels->relative[label[r]], 0);
+    for (size_t j = 0; j < runs->droplets; j++) {
+        const Belief *b = &beam->first[j];
         droplet[j].fall_m_s = b->mean[0];
         droplet[j].speed_per_volt_m_s_v = largest_v > 0 ? b->mean[1] / largest_v : 0;
         droplet[j].u_speed_per_volt_m_s_v = largest_v > 0 ? sqrt(b->cov[2]) / largest_v : 0;
@@ -187,41 +232,50 @@ static void report(const Hypothesis *best, size_t droplets, double largest_v, Rf
 }
 
 /* Chance, run by run, that the label is not the best reading's: readings weighted by their likelihoods. */
-static void weigh_doubts(const Beam *beam, size_t runs, double *doubt)
+static void weigh_doubts(const Beam *beam, size_t runs, const unsigned *best, double *doubt)
 {
-    const Hypothesis *best = &beam->now[0];
+    g_autofree unsigned *label = g_new(unsigned, runs);
     double sum = 0;
     for (size_t r = 0; r < runs; r++) doubt[r] = 0;
     for (size_t i = 0; i < beam->n_now; i++) {
-        double weight = exp(best->cost - beam->now[i].cost);
+        double weight = exp(beam->now[0].cost - beam->now[i].cost);
         sum += weight;
+        trace(beam, runs, i, label);
         for (size_t r = 0; r < runs; r++)
-            if (beam->now[i].label[r] != best->label[r]) doubt[r] += weight;
+            if (label[r] != best[r]) doubt[r] += weight;
     }
     for (size_t r = 0; r < runs; r++) doubt[r] /= sum;
 }
 
-static Beam *beam_new(const RfFieldRuns *runs, const RfMedium *medium)
+static Beam *beam_new(const RfFieldRuns *runs, const RfMedium *medium, size_t levels)
 {
     Beam *beam = g_new0(Beam, 1);
-    for (int i = 0; i < BEAM; i++) hypothesis_init(&beam->now[i], runs->runs, runs->droplets);
-    for (int i = 0; i < BEAM * RF_FIELD_LEVELS; i++)
-        hypothesis_init(&beam->next[i], runs->runs, runs->droplets);
-    for (size_t j = 0; j < runs->droplets; j++) beam->now[0].belief[j] = first_belief(runs, j, medium);
+    size_t bytes = MAX(runs->droplets, 1) * sizeof(Belief);
+    watched_init(&beam->watched, runs);
+    beam->parent = g_new(uint8_t, runs->runs * BEAM);
+    beam->label = g_new(uint8_t, runs->runs * BEAM);
+    beam->first = g_malloc0(bytes);
+    for (size_t j = 0; j < runs->droplets; j++) beam->first[j] = first_belief(runs, j, medium);
+    for (size_t i = 0; i < BEAM; i++) beam->now[i].belief = g_memdup2(beam->first, bytes);
+    for (size_t i = 0; i < BEAM * levels; i++) beam->next[i].belief = g_memdup2(beam->first, bytes);
     beam->n_now = 1;
     return beam;
 }
 
 static void beam_free(Beam *beam)
 {
-    for (int i = 0; i < BEAM; i++) hypothesis_clear(&beam->now[i]);
-    for (int i = 0; i < BEAM * RF_FIELD_LEVELS; i++) hypothesis_clear(&beam->next[i]);
+    for (int i = 0; i < BEAM; i++) g_free(beam->now[i].belief);
+    for (int i = 0; i < BEAM * RF_FIELD_LEVELS; i++) g_free(beam->next[i].belief);
+    watched_clear(&beam->watched);
+    g_free(beam->parent);
+    g_free(beam->label);
+    g_free(beam->first);
     g_free(beam);
 }
 
 static Beam *search(const RfFieldRuns *runs, const RfMedium *medium, const Levels *levels)
 {
-    Beam *beam = beam_new(runs, medium);
+    Beam *beam = beam_new(runs, medium, levels->n);
     for (size_t r = 0; r < runs->runs; r++) advance(beam, runs, r, levels);
     return beam;
 }
@@ -261,16 +315,19 @@ void rf_field_states_label(const RfFieldRuns *runs, const RfFieldLevel *level, s
     double largest = levels_init(&levels, level, n_levels);
     if (medium) levels.other_start = other_start(level, n_levels);
     g_autofree size_t *part = g_new(size_t, runs->runs);
-    Beam *rough = search(runs, medium, &levels);
-    g_autoptr(RfFieldRuns) merged = rf_field_runs_merge(runs, rough->now[0].label, part);
-    Beam *beam = search(merged, medium, &levels);
+    Beam *beam = search(runs, medium, &levels);
+    trace(beam, runs->runs, 0, label);
+    beam_free(beam);
+    g_autoptr(RfFieldRuns) merged = rf_field_runs_merge(runs, label, part);
+    beam = search(merged, medium, &levels);
+    g_autofree unsigned *merged_label = g_new(unsigned, merged->runs);
     g_autofree double *merged_doubt = g_new(double, merged->runs);
-    weigh_doubts(beam, merged->runs, merged_doubt);
+    trace(beam, merged->runs, 0, merged_label);
+    weigh_doubts(beam, merged->runs, merged_label, merged_doubt);
     for (size_t r = 0; r < runs->runs; r++) {
-        label[r] = beam->now[0].label[part[r]];
+        label[r] = merged_label[part[r]];
         doubt[r] = merged_doubt[part[r]];
     }
-    report(&beam->now[0], runs->droplets, largest, droplet);
-    beam_free(rough);
+    report(beam, merged, &levels, merged_label, largest, droplet);
     beam_free(beam);
 }

@@ -155,7 +155,7 @@ static void refine_roughly(RfFieldTimeline *timeline, unsigned number, const RfT
     g_autofree RfSwitchWitness *witnesses = g_new0(RfSwitchWitness, n);
     g_autofree double *per_volt = g_new(double, 2 * n);
     for (size_t j = 0; j < n; j++) {
-        const RfRunSpeed *a = &runs->speed[j * runs->runs + run_a], *b = &runs->speed[j * runs->runs + run_b];
+        const RfRunSpeed *a = rf_field_runs_speed(runs, j, run_a), *b = rf_field_runs_speed(runs, j, run_b);
         if (a->time_s < watched_s || b->time_s < watched_s) continue;
         per_volt[2 * j] = (b->speed_m_s - a->speed_m_s) / change_v;
         per_volt[2 * j + 1] = sqrt(a->variance_m2_s2 + b->variance_m2_s2) / fabs(change_v);

@@ -39,12 +39,24 @@ static bool is_step_near(const RfSwitchWitness *w, double from_s, double to_s)
     return false;
 }
 
+static size_t first_from(const RfTrail *trail, double from_s)
+{
+    size_t low = 0, high = trail->n;
+    while (low < high) {
+        size_t middle = low + (high - low) / 2;
+        if (trail->samples[middle].time_s < from_s)
+            low = middle + 1;
+        else
+            high = middle;
+    }
+    return low;
+}
+
 /* Positions in [from, to]; at least two on either side of the grid's middle, else none. */
 static bool cut_slice(const RfTrail *trail, double from_s, double middle_s, double to_s, size_t *first,
                       size_t *n)
 {
-    size_t i = 0, before = 0, after = 0;
-    while (i < trail->n && trail->samples[i].time_s < from_s) i++;
+    size_t i = first_from(trail, from_s), before = 0, after = 0;
     *first = i;
     for (; i < trail->n && trail->samples[i].time_s <= to_s && i - *first < SLICE_MAX; i++)
         if (trail->samples[i].time_s < middle_s)

@@ -28,8 +28,8 @@ static void test_nile_changed_after_1898(void)
     g_test_message("last year before the change: %.0f", 1870 + runs->edge_s[1]);
     /* Bins are two years long: the edge that holds the end of 1898, to a bin. */
     g_assert_cmpfloat_with_epsilon(1870 + runs->edge_s[1], 1898, 2);
-    g_assert_cmpfloat_with_epsilon(runs->speed[0].speed_m_s, 1097.75, 15);
-    g_assert_cmpfloat_with_epsilon(runs->speed[1].speed_m_s, 849.97, 15);
+    g_assert_cmpfloat_with_epsilon(rf_field_runs_speed(runs, 0, 0)->speed_m_s, 1097.75, 15);
+    g_assert_cmpfloat_with_epsilon(rf_field_runs_speed(runs, 0, 1)->speed_m_s, 849.97, 15);
 }
 
 static void test_nothing_watched(void)
@@ -37,7 +37,7 @@ static void test_nothing_watched(void)
     RfTrail empty = {1, 0, NULL};
     g_autoptr(RfFieldRuns) runs = rf_field_runs_new(&empty, 1);
     g_assert_cmpuint(runs->runs, ==, 1);
-    g_assert_cmpfloat(runs->speed[0].time_s, ==, 0);
+    g_assert_cmpfloat(rf_field_runs_speed(runs, 0, 0)->time_s, ==, 0);
 }
 
 int main(int argc, char **argv)
