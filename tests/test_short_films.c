@@ -187,7 +187,7 @@ static void check_truth(const char *film, const char *result, int least_accepted
     read_paths(match, result);
     g_test_message("%s: %d of %d visible places found", result, match->found, match->visible);
     g_assert_cmpint(match->visible, >, FRAMES);
-    g_assert_cmpfloat(match->found, >=, 0.95 * match->visible);
+    g_assert_cmpfloat(match->found, >=, 0.98 * match->visible);
     g_assert_cmpint(check_charges(match, film, result), >=, least_accepted);
     check_switches(film, result);
     for (int f = 0; f < FRAMES; f++) g_array_unref(match->at[f]);
