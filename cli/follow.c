@@ -44,9 +44,16 @@ static RfPathRow row_of(const RfPath *path, const RfPathPoint *point, const RfSi
     };
 }
 
+static guint count_points(const RfPaths *paths)
+{
+    guint n = 0;
+    for (guint i = 0; i < paths->paths->len; i++) n += ((const RfPath *)g_ptr_array_index(paths->paths, i))->points->len;
+    return n;
+}
+
 static GArray *rows_of(const RfPaths *paths, const RfSightings *sightings, const RfPictureFrame *frame)
 {
-    GArray *rows = g_array_new(FALSE, FALSE, sizeof(RfPathRow));
+    GArray *rows = g_array_sized_new(FALSE, FALSE, sizeof(RfPathRow), count_points(paths));
     for (guint i = 0; i < paths->paths->len; i++) {
         const RfPath *path = g_ptr_array_index(paths->paths, i);
         for (guint k = 0; k < path->points->len; k++) {
@@ -55,6 +62,12 @@ static GArray *rows_of(const RfPaths *paths, const RfSightings *sightings, const
         }
     }
     return rows;
+}
+
+static RfTrailSet *trails_of(const RfPaths *paths, const RfSightings *sightings, const RfPictureFrame *frame)
+{
+    g_autoptr(GArray) rows = rows_of(paths, sightings, frame);
+    return rf_trails_new(rows);
 }
 
 /* ---- the axis of gravity, from droplets' velocities between switches ---- */
@@ -167,8 +180,7 @@ static GArray *course_of(const RfFieldTimeline *timeline)
 static RfFieldTimeline *timeline_in(const RfFollow *follow, const RfSightings *sightings, const RfFieldSheet *sheet,
                                     GError **error)
 {
-    g_autoptr(GArray) rows = rows_of(follow->paths, sightings, &follow->frame);
-    g_autoptr(RfTrailSet) trails = rf_trails_new(rows);
+    g_autoptr(RfTrailSet) trails = trails_of(follow->paths, sightings, &follow->frame);
     return rf_field_timeline_find(trails->trails, trails->n, sheet, error);
 }
 
@@ -177,8 +189,7 @@ static RfFieldTimeline *read_field_and_axis(RfFollow *follow, const RfSightings 
                                             const RfSettings *settings, const RfFieldSheet *sheet, GError **error)
 {
     follow->frame = unturned_frame(sightings, scale);
-    g_autoptr(GArray) rows = rows_of(follow->paths, sightings, &follow->frame);
-    g_autoptr(RfTrailSet) trails = rf_trails_new(rows);
+    g_autoptr(RfTrailSet) trails = trails_of(follow->paths, sightings, &follow->frame);
     follow->frame.gravity_rad = first_guess_rad(trails, settings);
     g_autoptr(RfFieldTimeline) timeline = timeline_in(follow, sightings, sheet, error);
     if (!timeline)
