@@ -104,7 +104,7 @@ static bool shoot_all(Set *set, GError **error)
         if (rf_preview_plan_wants(set->plan, time_s, last_filmed_s(set)) && !shoot(set, &frame, error))
             return false;
         tell_progress(set, time_s);
-        const double next_s = rf_preview_plan_next_s(set->plan, nextafter(time_s, INFINITY));
+        const double next_s = rf_preview_plan_next_s(set->plan, nextafter(time_s, HUGE_VAL));
         if (!isfinite(next_s)) return true;
         if (next_s > time_s + 0.5 && !skip_ahead(set, here, next_s, error)) return false;
     }
@@ -115,7 +115,7 @@ static bool shoot_all(Set *set, GError **error)
 static void find_moment(const RfPreview *preview, RfMoment *moment, double frame_rate_hz)
 {
     const double reach_s = (RF_PREVIEW_MOMENT_FRAMES / 2 + 0.5) / frame_rate_hz;
-    double nearest_s = INFINITY;
+    double nearest_s = HUGE_VAL;
     for (guint i = 0; i < preview->frames->len; i++) {
         const double off_s = fabs(g_array_index(preview->frames, RfPreviewFrame, i).time_s - moment->time_s);
         if (off_s > reach_s) continue;

@@ -181,7 +181,7 @@ static bool is_within_budget(const RfPreviewPlan *plan)
 
 static RfPreviewSpan all_lives(const GArray *droplets)
 {
-    RfPreviewSpan all = {INFINITY, -INFINITY};
+    RfPreviewSpan all = {HUGE_VAL, -HUGE_VAL};
     for (guint i = 0; i < droplets->len; i++) {
         all.start_s = fmin(all.start_s, g_array_index(droplets, Life, i).start_s);
         all.stop_s = fmax(all.stop_s, g_array_index(droplets, Life, i).stop_s);

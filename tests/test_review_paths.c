@@ -163,6 +163,7 @@ static void one_already(void)
     const RfReviewPlace late = {4, 9, 180, 50};
     add_entry(results, (RfReviewRow){.action = RF_REVIEW_JOIN, .place = in_1, .other = late});
     g_autofree char *paths = reviewed(results, rows);
+    g_assert_nonnull(paths);
     g_assert_cmpint(entry(results, 0)->outcome, ==, RF_REVIEW_ALREADY);
 }
 
