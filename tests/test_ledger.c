@@ -248,7 +248,7 @@ static void killed_while_entering(Place *place, const void *unused)
     enter(place->path, sample_entry("2026-03-14", "A")); /* makes the file */
     const gint64 start_us = g_get_monotonic_time();
     enter(place->path, sample_entry("2026-03-14", "A"));
-    const gint64 one_us = CLAMP(g_get_monotonic_time() - start_us, 1000, 300000);
+    const gint64 one_us = CLAMP(g_get_monotonic_time() - start_us, 15000, 300000);
     guint entered = 2;
     g_autoptr(GRand) random = g_rand_new_with_seed(9);
     for (int i = 0; i < KILLS; i++) {
