@@ -32,7 +32,7 @@ figure() { # name, comparison
     told $? "$1: $value, needed $2"
 }
 
-"$program" run "$footage/calm/sheet.ini" --out "$work/calm" --quiet
+"$program" run "$footage/calm/sheet.ini" --out "$work/calm" --quiet --no-preview
 told $? 'calm is measured'
 "$python" "$footage/score" "$footage/calm" "$work/calm" --json >"$work/score.json"
 told $? 'the score is told'
