@@ -6,8 +6,15 @@ static const int FILLED[RF_FIGURE_SHAPES] = {7, 5, 9, 13,
                                              11}; /* gnuplot's point types: circle, square, ... */
 static const char INK[] = "222222", RULE[] = "808080";
 
-static void droplet_look(GString *script, unsigned droplet)
+/* Above so many bars a browser takes longer over their symbols than over all the rest of the page: bars and hues alone then. */
+enum { MOST_SYMBOLS = 500 };
+
+static void droplet_look(GString *script, unsigned droplet, bool has_symbol)
 {
+    if (!has_symbol) {
+        g_string_append_printf(script, "lc rgb '#%s' pt -1", rf_figure_hue[(droplet - 1) % RF_FIGURE_HUES]);
+        return;
+    }
     g_string_append_printf(script, "lc rgb '#%s' pt %d", rf_figure_hue[(droplet - 1) % RF_FIGURE_HUES],
                            FILLED[(droplet - 1) % RF_FIGURE_SHAPES]);
 }
@@ -60,7 +67,7 @@ bool rf_figure_velocities_write(const RfResults *results, GString *data, GString
                 "  'velocities.dat' index %u using (($2+$3)/2):4:(($3-$2)/2):5 with xyerrorbars "
                 "lw 1.8 ps 0.7 ",
                 blocks++);
-            droplet_look(script, part->droplet);
+            droplet_look(script, part->droplet, segments->len <= MOST_SYMBOLS);
             g_string_append_printf(script, " title 'droplet %u'", part->droplet);
         }
         rf_figure_text_row(data,
