@@ -1,6 +1,5 @@
 #include "cli/fitness_text.h"
 
-#include <json-glib/json-glib.h>
 #include <math.h>
 #include <string.h>
 
@@ -69,69 +68,42 @@ static void number(JsonBuilder *json, const char *key, double value)
 
 static void number_if(JsonBuilder *json, const char *key, bool is_known, double value)
 {
-    if (is_known) {
-        number(json, key, value);
-        return;
-    }
-    json_builder_set_member_name(json, key);
-    json_builder_add_null_value(json);
-}
-
-static void whole(JsonBuilder *json, const char *key, int64_t value)
-{
-    json_builder_set_member_name(json, key);
-    json_builder_add_int_value(json, value);
-}
-
-static void truth(JsonBuilder *json, const char *key, bool value)
-{
-    json_builder_set_member_name(json, key);
-    json_builder_add_boolean_value(json, value);
-}
-
-static void words(JsonBuilder *json, const char *key, const char *text)
-{
-    json_builder_set_member_name(json, key);
-    g_autofree char *valid = text ? g_utf8_make_valid(text, -1) : NULL;
-    if (valid)
-        json_builder_add_string_value(json, valid);
-    else
-        json_builder_add_null_value(json);
+    number(json, key, is_known ? value : (double)NAN);
 }
 
 static void add_file(JsonBuilder *json, const RfFitnessFigures *f)
 {
-    words(json, "codec", f->codec);
-    words(json, "container", f->container);
-    whole(json, "width_px", f->width_px);
-    whole(json, "height_px", f->height_px);
+    rf_json_text_words(json, "codec", f->codec);
+    rf_json_text_words(json, "container", f->container);
+    rf_json_text_whole(json, "width_px", f->width_px);
+    rf_json_text_whole(json, "height_px", f->height_px);
     number(json, "pixel_aspect", f->pixel_aspect);
-    whole(json, "bit_depth", f->bit_depth);
-    truth(json, "is_limited_range", f->is_limited_range);
-    truth(json, "is_interlaced", f->is_interlaced);
-    truth(json, "is_lossless", f->is_lossless);
+    rf_json_text_whole(json, "bit_depth", f->bit_depth);
+    rf_json_text_truth(json, "is_limited_range", f->is_limited_range);
+    rf_json_text_truth(json, "is_interlaced", f->is_interlaced);
+    rf_json_text_truth(json, "is_lossless", f->is_lossless);
     number_if(json, "bits_per_pixel", f->bits_per_pixel > 0, f->bits_per_pixel);
     number(json, "frame_rate_hz", f->frame_rate_hz);
-    truth(json, "is_rate_constant", f->is_rate_constant);
+    rf_json_text_truth(json, "is_rate_constant", f->is_rate_constant);
     number(json, "tick_s", f->tick_s);
     number(json, "duration_s", f->duration_s);
-    whole(json, "frames", f->frames);
-    whole(json, "times_missing", f->times_missing);
-    whole(json, "times_backwards", f->times_backwards);
-    whole(json, "gaps", f->gaps);
+    rf_json_text_whole(json, "frames", f->frames);
+    rf_json_text_whole(json, "times_missing", f->times_missing);
+    rf_json_text_whole(json, "times_backwards", f->times_backwards);
+    rf_json_text_whole(json, "gaps", f->gaps);
 }
 
 static void add_part(JsonBuilder *json, const RfFitnessFigures *f)
 {
     number(json, "part_start_s", f->part_start_s);
     number(json, "part_stop_s", f->part_stop_s);
-    whole(json, "part_frames", f->part_frames);
-    whole(json, "part_exposures", f->part_exposures);
+    rf_json_text_whole(json, "part_frames", f->part_frames);
+    rf_json_text_whole(json, "part_exposures", f->part_exposures);
     number_if(json, "interval_shortest_s", f->part_exposures > 1, f->interval_shortest_s);
     number_if(json, "interval_longest_s", f->part_exposures > 1, f->interval_longest_s);
-    whole(json, "frames_damaged", f->frames_damaged);
-    whole(json, "frames_lost", f->frames_lost);
-    whole(json, "exposures_repeated", f->exposures_repeated);
+    rf_json_text_whole(json, "frames_damaged", f->frames_damaged);
+    rf_json_text_whole(json, "frames_lost", f->frames_lost);
+    rf_json_text_whole(json, "exposures_repeated", f->exposures_repeated);
     number(json, "mean_level_grey", f->mean_level);
     number(json, "noise_sd_grey", f->noise_sd);
     number(json, "noise_correlation", f->noise_correlation);
@@ -146,7 +118,7 @@ static void add_part(JsonBuilder *json, const RfFitnessFigures *f)
 static void add_droplets(JsonBuilder *json, const RfFitnessFigures *f)
 {
     const bool is_any = f->droplets > 0;
-    whole(json, "droplets", f->droplets);
+    rf_json_text_whole(json, "droplets", f->droplets);
     number(json, "droplets_per_exposure", f->droplets_per_exposure);
     number_if(json, "snr_median", is_any, f->snr_median);
     number_if(json, "snr_lower_quartile", is_any, f->snr_lower_quartile);
@@ -164,7 +136,7 @@ static void add_droplets(JsonBuilder *json, const RfFitnessFigures *f)
     number_if(json, "u_combing_frames", f->combing.sigma > 0, f->combing.sigma);
 }
 
-static void add_lines(JsonBuilder *json, const GArray *lines)
+void rf_fitness_text_findings(JsonBuilder *json, const GArray *lines)
 {
     json_builder_set_member_name(json, "findings");
     json_builder_begin_object(json);
@@ -172,9 +144,9 @@ static void add_lines(JsonBuilder *json, const GArray *lines)
         const RfFitnessLine *line = &g_array_index(lines, RfFitnessLine, i);
         json_builder_set_member_name(json, line->key);
         json_builder_begin_object(json);
-        words(json, "verdict", rf_fitness_verdict_to_string(line->verdict));
-        words(json, "figure", line->figure);
-        words(json, "advice", line->advice);
+        rf_json_text_words(json, "verdict", rf_fitness_verdict_to_string(line->verdict));
+        rf_json_text_words(json, "figure", line->figure);
+        rf_json_text_words(json, "advice", line->advice);
         json_builder_end_object(json);
     }
     json_builder_end_object(json);
@@ -199,10 +171,10 @@ char *rf_fitness_json(const char *path, const RfFitnessFigures *figures, const G
 {
     g_autoptr(JsonBuilder) json = json_builder_new_immutable();
     json_builder_begin_object(json);
-    words(json, "program", "risefall " RF_VERSION);
-    words(json, "recording", path);
-    words(json, "verdict", rf_fitness_verdict_to_string(rf_fitness_overall(lines)));
-    add_lines(json, lines);
+    rf_json_text_words(json, "program", "risefall " RF_VERSION);
+    rf_json_text_words(json, "recording", path);
+    rf_json_text_words(json, "verdict", rf_fitness_verdict_to_string(rf_fitness_overall(lines)));
+    rf_fitness_text_findings(json, lines);
     json_builder_set_member_name(json, "figures");
     json_builder_begin_object(json);
     add_file(json, figures);

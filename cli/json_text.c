@@ -1,6 +1,7 @@
 #include "cli/json_text.h"
 
 #include <math.h>
+#include <string.h>
 
 static void name(JsonBuilder *json, const char *key)
 {
@@ -33,6 +34,7 @@ void rf_json_text_truth(JsonBuilder *json, const char *key, bool value)
     json_builder_add_boolean_value(json, value);
 }
 
+/* JSON is UTF-8: a path or note in another encoding is carried over with the odd bytes marked. */
 void rf_json_text_words(JsonBuilder *json, const char *key, const char *text)
 {
     name(json, key);
@@ -56,6 +58,7 @@ static gboolean shorten(const GMatchInfo *match, GString *out, void *unused)
     const bool is_same =
         *token != '"' && g_ascii_strtod(text, NULL) >= value && g_ascii_strtod(text, NULL) <= value;
     g_string_append(out, is_same ? text : token);
+    if (is_same && !strpbrk(text, ".e")) g_string_append(out, ".0"); /* stays a number with a fraction */
     return FALSE;
 }
 

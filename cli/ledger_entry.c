@@ -4,23 +4,6 @@
 
 #include <math.h>
 
-static void input_clear(void *item)
-{
-    RfInputFile *input = item;
-    g_free(input->role);
-    g_free(input->path);
-    g_free(input->sha256);
-}
-
-static void setting_clear(void *item)
-{
-    RfUsedSetting *setting = item;
-    g_free(setting->group);
-    g_free(setting->key);
-    g_free(setting->value);
-    g_free(setting->remark);
-}
-
 static void figure_clear(void *item)
 {
     g_free(((RfLedgerFigure *)item)->name);
@@ -47,8 +30,8 @@ RfLedgerEntry *rf_ledger_entry_new(const char *kind)
     entry->entered = g_date_time_format(now, "%Y-%m-%dT%H:%M:%SZ");
     entry->measured_on = g_date_time_format(now, "%Y-%m-%d");
     entry->version = g_strdup(RF_VERSION);
-    entry->inputs = rows(sizeof(RfInputFile), input_clear);
-    entry->settings = rows(sizeof(RfUsedSetting), setting_clear);
+    entry->inputs = rf_results_inputs_new();
+    entry->settings = rf_results_settings_new();
     entry->figures = rows(sizeof(RfLedgerFigure), figure_clear);
     entry->remarks = rows(sizeof(RfLedgerRemark), remark_clear);
     return entry;

@@ -85,12 +85,22 @@ static GArray *rows(size_t size, GDestroyNotify clear)
     return array;
 }
 
+GArray *rf_results_inputs_new(void)
+{
+    return rows(sizeof(RfInputFile), input_clear);
+}
+
+GArray *rf_results_settings_new(void)
+{
+    return rows(sizeof(RfUsedSetting), setting_clear);
+}
+
 RfResults *rf_results_new(void)
 {
     RfResults *results = g_new0(RfResults, 1);
-    results->inputs = rows(sizeof(RfInputFile), input_clear);
-    results->settings = rows(sizeof(RfUsedSetting), setting_clear);
-    results->notes = rows(sizeof(RfUsedSetting), setting_clear);
+    results->inputs = rf_results_inputs_new();
+    results->settings = rf_results_settings_new();
+    results->notes = rf_results_settings_new();
     results->warnings = g_ptr_array_new_with_free_func(g_free);
     results->cuts = g_ptr_array_new_with_free_func(g_free);
     results->pixel_aspect = 1;
@@ -123,12 +133,27 @@ static void free_array(GArray *array)
 void rf_results_free(RfResults *results)
 {
     if (!results) return;
-    GArray *arrays[] = {results->inputs, results->settings,          results->notes,
-                        results->paths,  results->segments,          results->switches,
-                        results->steps,  results->droplets,          results->budget,
-                        results->audit,  results->unit.curve_unit_C, results->unit.curve_log_likelihood,
-                        results->hand_charges, results->effects, results->certificate,
-                        results->fitness, results->common, results->influences, results->recordings, results->measurements, results->review};
+    GArray *arrays[] = {results->inputs,
+                        results->settings,
+                        results->notes,
+                        results->paths,
+                        results->segments,
+                        results->switches,
+                        results->steps,
+                        results->droplets,
+                        results->budget,
+                        results->audit,
+                        results->unit.curve_unit_C,
+                        results->unit.curve_log_likelihood,
+                        results->hand_charges,
+                        results->effects,
+                        results->certificate,
+                        results->fitness,
+                        results->common,
+                        results->influences,
+                        results->recordings,
+                        results->measurements,
+                        results->review};
     for (size_t i = 0; i < G_N_ELEMENTS(arrays); i++) free_array(arrays[i]);
     rf_results_free(results->without);
     if (results->warnings) g_ptr_array_unref(results->warnings);

@@ -293,6 +293,10 @@ struct RfResults {
 
 RfResults *rf_results_new(void);
 
+/* Empty arrays of RfInputFile and of RfUsedSetting that free what their rows hold. (returns new) */
+GArray *rf_results_inputs_new(void);
+GArray *rf_results_settings_new(void);
+
 /* Adds to results->warnings: what a reader should know before using the numbers. */
 void rf_results_warn(RfResults *results, const char *format, ...) G_GNUC_PRINTF(2, 3);
 
